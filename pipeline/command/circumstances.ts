@@ -1,0 +1,136 @@
+/** From facts and recipes to what judging and measuring must know. Pure; opens nothing. */
+import type { Recipe, Settings } from '../archive/types.ts';
+import { classRanges } from '../judge/class-ranges.ts';
+import type { Circumstances, IonPotential } from '../judge/types.ts';
+import { spikeCriteria } from '../measure/spike-criteria.ts';
+import type { CellContext, MeasureContext } from '../measure/types.ts';
+import { junctionPotential } from '../membrane/junction.ts';
+import { dissolve, equilibria } from '../membrane/solutions.ts';
+import { clockSeconds, type FactValues, numberFact, textFact } from './facts.ts';
+
+/** Half-width (95 %) taken for a stated bath temperature, °C; common practice, no source. */
+const temperatureUncertaintyC = 1;
+
+/** The shipped class whose ranges and criteria hold for a class fact: itself, or what the lab says it is like. */
+export function shippedClass(settings: Settings, classId: string | null): string {
+  if (!classId) return 'any';
+  const like = settings.classes[classId]?.like ?? classId;
+  return like in classRanges ? like : 'any';
+}
+
+export function measureContext(facts: FactValues, settings: Settings, filterKhz: number | null): MeasureContext {
+  return {
+    ...spikeCriteria(shippedClass(settings, textFact(facts, 'class'))),
+    filter_khz: numberFact(facts, 'filter_khz') ?? filterKhz,
+    mains_hz: numberFact(facts, 'mains_hz') ?? settings.mains_hz,
+    capacitance_pf: numberFact(facts, 'capacitance_pf'),
+  };
+}
+
+interface Ions {
+  e_na: IonPotential | null;
+  e_k: IonPotential | null;
+  ljp_mv: number | null;
+  pipette_sodium_mm: number | null;
+}
+
+const noIons: Ions = { e_na: null, e_k: null, ljp_mv: null, pipette_sodium_mm: null };
+
+function ionsOf(pipette: Recipe | undefined, bath: Recipe | undefined, celsius: number | null): Ions {
+  if (!pipette || !bath || celsius === null) return noIons;
+  const inside = dissolve(pipette, celsius);
+  const outside = dissolve(bath, celsius);
+  const potentials = equilibria({
+    pipette: inside,
+    bath: outside,
+    celsius,
+    celsiusUncertainty: temperatureUncertaintyC,
+  });
+  const sodium = inside.ions.find((ion) => ion.ion === 'Na')?.millimolar ?? null;
+  return {
+    e_na: potentials.e_na,
+    e_k: potentials.e_k,
+    ljp_mv: junctionPotential(inside.ions, outside.ions, celsius).mv,
+    pipette_sodium_mm: sodium !== null && sodium > 0 ? sodium : null,
+  };
+}
+
+/** Which fact keys would have to be stated for equilibrium potentials. */
+function missingForIons(facts: FactValues, recipes: ReadonlyMap<string, Recipe>): string[] {
+  const missing: string[] = [];
+  for (const key of ['pipette', 'bath']) if (!recipes.has(textFact(facts, key) ?? '')) missing.push(key);
+  if (numberFact(facts, 'temperature_c') === null) missing.push('temperature_c');
+  if (textFact(facts, 'configuration') === null) missing.push('configuration');
+  return missing;
+}
+
+/**
+ * What is known of the conditions of one stretch. The junction state and the potential that was removed belong to
+ * the whole recording (the pipette is zeroed once, in the bath of the first condition); solutions and temperature
+ * belong to the stretch.
+ *
+ * @param facts facts in force for the stretch
+ * @param first facts in force for the cell's first condition
+ */
+export function circumstancesOf(
+  condition: string,
+  facts: FactValues,
+  first: FactValues,
+  settings: Settings,
+  recipes: ReadonlyMap<string, Recipe>,
+  recorded: { rate_hz: number | null; filter_khz: number | null },
+): Circumstances {
+  const recipe = (values: FactValues, key: string): Recipe | undefined => recipes.get(textFact(values, key) ?? '');
+  const celsius = numberFact(facts, 'temperature_c');
+  // Only a whole-cell pipette fills the cell with its solution; elsewhere the cell's own ions are not known.
+  const wholeCell = textFact(facts, 'configuration') === 'whole-cell';
+  const ions = ionsOf(recipe(facts, 'pipette'), recipe(facts, 'bath'), celsius);
+  const atZeroing = ionsOf(recipe(first, 'pipette'), recipe(first, 'bath'), numberFact(first, 'temperature_c'));
+  const stated = numberFact(first, 'ljp_mv');
+  const junction = (textFact(first, 'junction') ?? 'unstated') as Circumstances['junction'];
+  const ljp = stated ?? atZeroing.ljp_mv;
+  const applied = junction === 'uncorrected' && ljp !== null ? ljp : 0;
+  const missing = missingForIons(facts, recipes);
+  const classId = textFact(facts, 'class');
+  return {
+    condition,
+    class_id: classId,
+    class_label: classId ? (settings.classes[classId]?.label ?? classId) : null,
+    like: shippedClass(settings, classId),
+    temperature_c: celsius,
+    configuration: textFact(facts, 'configuration') as Circumstances['configuration'],
+    spike_ion: textFact(facts, 'spike_ion') as Circumstances['spike_ion'],
+    junction,
+    ljp_mv: ljp,
+    ljp_from: stated !== null ? 'stated' : ljp !== null ? 'computed' : null,
+    ljp_applied_mv: applied,
+    reading: junction === 'corrected' || (junction === 'uncorrected' && ljp !== null) ? 'corrected' : 'recorded',
+    e_na: wholeCell ? ions.e_na : null,
+    e_k: wholeCell ? ions.e_k : null,
+    missing_e_na: missing,
+    missing_e_k: missing,
+    pipette_sodium_mm: ions.pipette_sodium_mm,
+    filter_khz: numberFact(facts, 'filter_khz') ?? recorded.filter_khz,
+    mains_hz: numberFact(facts, 'mains_hz') ?? settings.mains_hz,
+    rate_hz: recorded.rate_hz,
+    bridge_mohm: numberFact(facts, 'bridge_mohm'),
+    bias_pa: numberFact(facts, 'bias_pa'),
+  };
+}
+
+/** What the cell-level quantities need besides the sweeps. */
+export function cellContext(circumstances: Circumstances, facts: FactValues, settings: Settings): CellContext {
+  const start = clockSeconds(textFact(facts, 'time'));
+  const breakIn = clockSeconds(textFact(facts, 'break_in'));
+  return {
+    ...measureContext(facts, settings, circumstances.filter_khz),
+    e_na_mv: circumstances.e_na?.mv ?? null,
+    e_k_mv: circumstances.e_k?.mv ?? null,
+    bias_pa: circumstances.bias_pa,
+    stated_capacitance_pf: numberFact(facts, 'capacitance_pf'),
+    stated_access_mohm: numberFact(facts, 'access_mohm'),
+    break_in_to_start_s: start !== null && breakIn !== null && start >= breakIn ? start - breakIn : null,
+    missing_for_e_na: circumstances.missing_e_na,
+    missing_for_e_k: circumstances.missing_e_k,
+  };
+}
