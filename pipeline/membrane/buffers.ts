@@ -1,0 +1,218 @@
+/**
+ * Weak acids and bases of physiological solutions: their forms from the most to the least protonated, apparent
+ * acid constants near 0.1–0.15 M ionic strength with their change per kelvin, and what they bind.
+ */
+
+export interface Form {
+  ion: string;
+  valence: number;
+}
+
+export type Metal = 'Ca' | 'Mg';
+
+export interface Buffer {
+  forms: readonly Form[];
+  /** One for each step from a form to the next, at `celsius`. */
+  pka: readonly number[];
+  celsius: number;
+  /** Change of each pKa per kelvin. */
+  perKelvin: readonly number[];
+  /** log10 of the association constants (1/M) with the fully deprotonated form, and with one proton on it. */
+  binds?: Partial<Record<Metal, { bare: number; protonated?: number; perKelvin?: number }>>;
+  source: string;
+}
+
+const good = 'Good et al. 1966, Biochemistry 5:467–477 (from memory)';
+const martell = 'Martell & Smith, Critical Stability Constants, 0.1 M (from memory)';
+const usual = 'apparent constant near 0.15 M ionic strength (from memory)';
+
+/** '2-', '3+', '-' for a single one, '0' for none. */
+export const chargeText = (valence: number): string =>
+  valence === 0 ? '0' : `${Math.abs(valence) === 1 ? '' : Math.abs(valence)}${valence > 0 ? '+' : '-'}`;
+
+/** Forms of a buffer whose names carry their charge: chain('EGTA', 0, 5) is EGTA0, EGTA-, … EGTA4-. */
+const chain = (name: string, top: number, count: number): Form[] =>
+  Array.from({ length: count }, (_, step) => {
+    const valence = top - step;
+    return { ion: `${name}${chargeText(valence)}`, valence };
+  });
+const acid = (name: string, pka: number, perKelvin: number, source: string, celsius = 20): Buffer => ({
+  forms: [
+    { ion: `${name} (uncharged)`, valence: 0 },
+    { ion: name, valence: -1 },
+  ],
+  pka: [pka],
+  celsius,
+  perKelvin: [perKelvin],
+  source,
+});
+const base = (name: string, pka: number, perKelvin: number, source: string, celsius = 25): Buffer => ({
+  forms: [
+    { ion: name, valence: 1 },
+    { ion: `${name} (uncharged)`, valence: 0 },
+  ],
+  pka: [pka],
+  celsius,
+  perKelvin: [perKelvin],
+  source,
+});
+const triphosphate = (name: string): Buffer => ({
+  forms: [
+    { ion: `H2${name}2-`, valence: -2 },
+    { ion: `H${name}3-`, valence: -3 },
+    { ion: `${name}4-`, valence: -4 },
+  ],
+  pka: [4.06, 6.5],
+  celsius: 25,
+  perKelvin: [0, 0],
+  binds: { Mg: { bare: 4.1, protonated: 2.2 }, Ca: { bare: 3.8, protonated: 2.0 } },
+  source: `${martell}, lowered for the potassium it binds`,
+});
+const diphosphate = (name: string): Buffer => ({
+  forms: [
+    { ion: `H2${name}-`, valence: -1 },
+    { ion: `H${name}2-`, valence: -2 },
+    { ion: `${name}3-`, valence: -3 },
+  ],
+  pka: [3.9, 6.4],
+  celsius: 25,
+  perKelvin: [0, 0],
+  binds: { Mg: { bare: 3.1, protonated: 1.5 }, Ca: { bare: 2.8, protonated: 1.5 } },
+  source: martell,
+});
+
+export const buffers: Readonly<Record<string, Buffer>> = {
+  HEPES: acid('HEPES', 7.55, -0.014, good),
+  MES: acid('MES', 6.15, -0.011, good),
+  MOPS: acid('MOPS', 7.2, -0.013, good),
+  TES: acid('TES', 7.5, -0.02, good),
+  BES: acid('BES', 7.15, -0.016, good),
+  PIPES: {
+    forms: [
+      { ion: 'PIPES-', valence: -1 },
+      { ion: 'PIPES2-', valence: -2 },
+    ],
+    pka: [6.8],
+    celsius: 20,
+    perKelvin: [-0.0085],
+    source: good,
+  },
+  Tris: base('Tris', 8.1, -0.028, usual),
+  NMDG: base('NMDG', 9.6, -0.03, usual),
+  '4-aminopyridine': base('4-aminopyridine', 9.17, -0.028, usual),
+  phosphate: {
+    forms: [
+      { ion: 'H2PO4', valence: -1 },
+      { ion: 'HPO4', valence: -2 },
+    ],
+    pka: [6.81],
+    celsius: 25,
+    perKelvin: [-0.0028],
+    source: usual,
+  },
+  EGTA: {
+    forms: chain('EGTA', 0, 5),
+    // Concentration constants plus 0.11 each: a pH electrode reads activity.
+    pka: [2.11, 2.76, 8.96, 9.58],
+    celsius: 20,
+    perKelvin: [0, 0, -0.0148, -0.0148],
+    binds: { Ca: { bare: 10.97, protonated: 5.3, perKelvin: -0.02 }, Mg: { bare: 5.21, protonated: 3.4 } },
+    source: `${martell}; electrode correction and heats after Tsien & Pozzan 1989, Methods Enzymol 172:230–262 (from memory)`,
+  },
+  BAPTA: {
+    forms: chain('BAPTA', -2, 3),
+    pka: [5.47, 6.36],
+    celsius: 22,
+    perKelvin: [0, 0],
+    binds: { Ca: { bare: 6.97 }, Mg: { bare: 1.77 } },
+    source: 'Tsien 1980, Biochemistry 19:2396–2404 (from memory)',
+  },
+  EDTA: {
+    forms: chain('EDTA', 0, 5),
+    pka: [2.0, 2.68, 6.16, 10.26],
+    celsius: 20,
+    perKelvin: [0, 0, 0, -0.012],
+    binds: { Ca: { bare: 10.7, protonated: 3.5 }, Mg: { bare: 8.7, protonated: 2.3 } },
+    source: martell,
+  },
+  citrate: {
+    forms: chain('citrate', 0, 4),
+    pka: [2.9, 4.35, 5.7],
+    celsius: 25,
+    perKelvin: [0, 0, 0],
+    binds: { Ca: { bare: 3.5, protonated: 2.1 }, Mg: { bare: 3.4, protonated: 1.8 } },
+    source: martell,
+  },
+  ATP: triphosphate('ATP'),
+  GTP: triphosphate('GTP'),
+  ADP: diphosphate('ADP'),
+  GDP: diphosphate('GDP'),
+  phosphocreatine: {
+    forms: [
+      { ion: 'phosphocreatine-', valence: -1 },
+      { ion: 'phosphocreatine2-', valence: -2 },
+    ],
+    pka: [4.6],
+    celsius: 25,
+    perKelvin: [0],
+    binds: { Mg: { bare: 1.3 }, Ca: { bare: 1.15 } },
+    source: usual,
+  },
+  spermine: {
+    forms: chain('spermine', 4, 5),
+    pka: [8.0, 8.9, 10.1, 10.9],
+    celsius: 25,
+    perKelvin: [-0.025, -0.025, -0.025, -0.025],
+    source: usual,
+  },
+  succinate: { forms: chain('succinate', 0, 3), pka: [4.0, 5.3], celsius: 25, perKelvin: [0, 0], source: usual },
+  malate: { forms: chain('malate', 0, 3), pka: [3.3, 4.7], celsius: 25, perKelvin: [0, 0], source: usual },
+};
+
+/** Ions whose charge does not change between pH 5 and 9, by name. */
+export const fixedIons: Readonly<Record<string, number>> = {
+  Na: 1,
+  K: 1,
+  Li: 1,
+  Rb: 1,
+  Cs: 1,
+  NH4: 1,
+  TEA: 1,
+  TMA: 1,
+  choline: 1,
+  'QX-314': 1,
+  Mg: 2,
+  Ca: 2,
+  Ba: 2,
+  Sr: 2,
+  Co: 2,
+  Cd: 2,
+  Mn: 2,
+  Ni: 2,
+  Zn: 2,
+  Gd: 3,
+  La: 3,
+  Cl: -1,
+  Br: -1,
+  F: -1,
+  I: -1,
+  NO3: -1,
+  ClO4: -1,
+  SCN: -1,
+  SO4: -2,
+  HCO3: -1,
+  gluconate: -1,
+  methanesulfonate: -1,
+  methylsulfate: -1,
+  aspartate: -1,
+  glutamate: -1,
+  acetate: -1,
+  propionate: -1,
+  butyrate: -1,
+  benzoate: -1,
+  isethionate: -1,
+  lactate: -1,
+  pyruvate: -1,
+  ascorbate: -1,
+  kynurenate: -1,
+};

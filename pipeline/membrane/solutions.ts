@@ -1,0 +1,244 @@
+/** From a recipe as a laboratory writes it to the ions in the bottle. */
+import { speciate } from './binding.ts';
+import { buffers, fixedIons } from './buffers.ts';
+import { requireAmount, requireCelsius } from './guards.ts';
+import type { DissolvedIon } from './junction.ts';
+import { readSubstance, readTitrant } from './names.ts';
+
+export interface SolutionRecipe {
+  /** Substance as written → mmol/L. */
+  millimolar: Record<string, number>;
+  ph: number | null;
+  /** Base or acid that brought it to pH: 'KOH'. */
+  titrant: string | null;
+  /** 'carbogen', 'none'. */
+  gas: string;
+}
+
+export interface Dissolved {
+  /** Charged species above a nanomolar, free concentrations, sorted by name. Their charges cancel. */
+  ions: DissolvedIon[];
+  /** Null where no calcium was added: what is left as contamination nobody knows. */
+  free_calcium_mm: number | null;
+  /** Everything assumed or approximated, in sentences. */
+  notes: string[];
+  /** Names that could not be read; counted as uncharged. */
+  unknown: string[];
+}
+
+/** 95 % half-width of a weighed amount, as a share. Common practice, no source. */
+const weighing = 0.02;
+/** 95 % half-width of pH meter and apparent constants together, and of a pH that is assumed. */
+const statedPhHalfWidth = 0.1;
+const assumedPhHalfWidth = 0.3;
+
+export interface Composition {
+  /** Fixed ions and buffers in total, mmol/L, before anything was added to reach the pH. */
+  totals: Map<string, number>;
+  /** Extra 95 % half-width of an ion from names that leave its count open, mmol/L. */
+  open: Map<string, number>;
+  /** Ions named as titrants inside names ('HEPES-NaOH'). */
+  titrants: string[];
+  notes: string[];
+  unknown: string[];
+}
+
+const add = (map: Map<string, number>, key: string, amount: number): void => {
+  map.set(key, (map.get(key) ?? 0) + amount);
+};
+const shown = (millimolar: number): string => String(Number(millimolar.toPrecision(3)));
+
+/**
+ * What the substances of a recipe bring in, before the pH is set.
+ * @param millimolar substance as written → mmol/L, 0 or more
+ * @throws RangeError naming the substance whose amount is impossible
+ */
+export function compose(millimolar: Readonly<Record<string, number>>): Composition {
+  const composition: Composition = { totals: new Map(), open: new Map(), titrants: [], notes: [], unknown: [] };
+  for (const [name, amount] of Object.entries(millimolar)) {
+    requireAmount(`millimolar["${name}"]`, amount);
+    const substance = readSubstance(name);
+    if (!substance) {
+      composition.unknown.push(name);
+      composition.notes.push(
+        amount < 0.5
+          ? `"${name}" (${shown(amount)} mM) is no salt or buffer known here and is counted as uncharged; at this amount it changes nothing.`
+          : `"${name}" (${shown(amount)} mM) is no salt or buffer known here and is counted as uncharged. If it is a salt, write it as cation-anion: K-gluconate.`,
+      );
+      continue;
+    }
+    for (const [part, count] of substance.parts) add(composition.totals, part, count * amount);
+    if (substance.titratedWith) composition.titrants.push(substance.titratedWith);
+    if (amount === 0) continue;
+    if (substance.openCation) {
+      add(composition.open, substance.openCation, amount);
+      composition.notes.push(
+        `"${name}" does not say how many ${substance.openCation} it holds: one is counted, ±${shown(amount)} mM. Write Na2-… or Na3-… as on the bottle.`,
+      );
+    }
+    if (substance.lonely)
+      composition.notes.push(
+        `"${name}" stands without its counter-ion, which is left to what sets the pH. Write the salt as on the bottle.`,
+      );
+    if (substance.completed && !/[A-Za-z]{6}/.test(name))
+      composition.notes.push(`"${name}" is read with the counts that make it neutral.`);
+  }
+  return composition;
+}
+
+const valenceOf = (name: string): number => fixedIons[name]!;
+
+interface Settled {
+  ions: Map<string, { valence: number; millimolar: number }>;
+  freeCalcium: number;
+  /** Net charge before anything was added to cancel it, mmol/L. */
+  charge: number;
+}
+
+/** All ions at one pH before titration. */
+function settle(totals: ReadonlyMap<string, number>, ph: number, celsius: number): Settled {
+  const ions = new Map<string, { valence: number; millimolar: number }>();
+  const put = (ion: string, valence: number, millimolar: number): void => {
+    const before = ions.get(ion);
+    ions.set(ion, { valence, millimolar: (before?.millimolar ?? 0) + millimolar });
+  };
+  const weak = new Map<string, number>();
+  for (const [name, total] of totals) {
+    if (Object.hasOwn(buffers, name)) weak.set(name, total);
+    else if (name !== 'Ca' && name !== 'Mg') put(name, valenceOf(name), total);
+  }
+  const { species, freeCalcium, freeMagnesium } = speciate(
+    weak,
+    totals.get('Ca') ?? 0,
+    totals.get('Mg') ?? 0,
+    ph,
+    celsius,
+  );
+  if (totals.has('Ca')) put('Ca', 2, freeCalcium);
+  if (totals.has('Mg')) put('Mg', 2, freeMagnesium);
+  for (const one of species) if (one.valence !== 0) put(one.ion, one.valence, one.millimolar);
+  let charge = 0;
+  for (const { valence, millimolar } of ions.values()) charge += valence * millimolar;
+  return { ions, freeCalcium, charge };
+}
+
+interface Closing {
+  /** What cancels a lack and an excess of positive charge: a fixed ion or 'Tris'. */
+  base: string;
+  acid: string;
+}
+
+/** Adds the ion that cancels the charge; bicarbonate may lose what it has, since it leaves with the gas. */
+function close(settled: Settled, closing: Closing | 'bicarbonate'): { ion: string; added: number } {
+  const ion = closing === 'bicarbonate' ? 'HCO3' : settled.charge < 0 ? closing.base : closing.acid;
+  const valence = ion === 'HCO3' ? -1 : Object.hasOwn(buffers, ion) ? 1 : valenceOf(ion);
+  const added = -settled.charge / valence;
+  const before = settled.ions.get(ion)?.millimolar ?? 0;
+  settled.ions.set(ion, { valence, millimolar: before + added });
+  return { ion, added };
+}
+
+function mostAbundant(totals: ReadonlyMap<string, number>, valence: 1 | -1): string | null {
+  let best: string | null = null;
+  for (const [name, total] of totals)
+    if (fixedIons[name] === valence && name !== 'HCO3' && total > (best === null ? 0 : totals.get(best)!)) best = name;
+  return best;
+}
+
+/**
+ * The ions of a solution at its pH: salts dissociated, buffers in their forms, calcium and magnesium shared out
+ * between chelators and nucleotides with published apparent constants, and the ion of the titrant in the amount that
+ * cancels the charge. A solution in carbogen with bicarbonate and no stated titrant cancels it with bicarbonate, which
+ * the gas supplies. Ion pairs of sulfate, gluconate, phosphate and bicarbonate are left out.
+ * @param recipe amounts in mmol/L; pH 0 to 14 or null
+ * @param celsius temperature at which it was brought to pH, °C, above absolute zero
+ * @returns free ions with 95 % half-widths, notes on everything assumed
+ * @throws RangeError naming an impossible amount, pH or temperature; never for a name it does not know
+ */
+export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
+  requireCelsius('celsius', celsius);
+  if (recipe.ph !== null && !(recipe.ph >= 0 && recipe.ph <= 14))
+    throw new RangeError(`ph must be between 0 and 14 or null, got ${recipe.ph}`);
+  const { totals, open, titrants, notes, unknown } = compose(recipe.millimolar);
+  const total = (name: string): number => totals.get(name) ?? 0;
+  const weak = [...totals.keys()].filter((name) => Object.hasOwn(buffers, name) && total(name) > 0);
+
+  const assumedPh = total('Na') > total('K') + total('Cs') ? 7.4 : 7.3;
+  const ph = recipe.ph ?? assumedPh;
+  if (recipe.ph === null && weak.length > 0)
+    notes.push(`The pH is not stated: ${assumedPh} ± ${assumedPhHalfWidth} is assumed. State "ph".`);
+
+  const stated = recipe.titrant?.trim() ? recipe.titrant.trim() : null;
+  let titrant = stated ? readTitrant(stated) : null;
+  if (stated && titrant === null && !/^none$/i.test(stated))
+    notes.push(`The titrant "${stated}" is not known here and is set aside. Write KOH, NaOH, CsOH, HCl or the like.`);
+  titrant ??= titrants[0] ?? null;
+  const known = titrant !== null;
+  const charged = titrant === null ? 0 : Object.hasOwn(buffers, titrant) ? 1 : valenceOf(titrant);
+  const closing: Closing = {
+    base: charged > 0 ? titrant! : (mostAbundant(totals, 1) ?? 'Na'),
+    acid: charged < 0 ? titrant! : 'Cl',
+  };
+
+  const carbogen = /carbogen|co2/i.test(recipe.gas);
+  const settled = settle(totals, ph, celsius);
+  const byBicarbonate = !known && total('HCO3') > 0 && total('HCO3') + settled.charge > 0.5 * total('HCO3');
+  const way = byBicarbonate ? 'bicarbonate' : closing;
+  const { ion, added } = close(settled, way);
+
+  const halfWidth = recipe.ph === null ? assumedPhHalfWidth : statedPhHalfWidth;
+  const lower = settle(totals, ph - halfWidth, celsius);
+  const upper = settle(totals, ph + halfWidth, celsius);
+  close(lower, way);
+  close(upper, way);
+
+  const significant = Math.abs(added) > Math.max(0.1, 0.002 * total(closing.base));
+  if (way === 'bicarbonate') {
+    if (significant)
+      notes.push(
+        `Bicarbonate is ${shown(settled.ions.get('HCO3')!.millimolar)} mM after the other buffers took their share at pH ${ph}${carbogen ? '' : '; the gas is not stated as carbogen'}.`,
+      );
+  } else if (significant && known) {
+    const other = (ion === closing.base) !== charged > 0;
+    notes.push(
+      other
+        ? `At pH ${ph} the stated salts need ${shown(added)} mM ${ion} rather than ${titrant}: a salt may be written otherwise than weighed.`
+        : `Bringing it to pH ${ph} takes ${shown(added)} mM ${ion}.`,
+    );
+  } else if (significant) {
+    notes.push(
+      `The titrant is not stated: ${shown(added)} mM ${ion} is assumed to cancel the charge at pH ${ph}, and may be another ion. State "titrant".`,
+    );
+  }
+  const chelators = weak.filter((name) => buffers[name]!.binds);
+  if (chelators.length > 0 && (total('Ca') > 0 || total('Mg') > 0))
+    notes.push(
+      `Calcium and magnesium bound by ${chelators.join(', ')} are approximate, from apparent constants: ${[...new Set(chelators.map((name) => buffers[name]!.source))].join('; ')}.`,
+    );
+
+  const openSum = [...open].reduce((sum, [name, amount]) => (name === ion ? sum : sum + amount), 0);
+  const ions: DissolvedIon[] = [];
+  for (const [name, { valence, millimolar }] of settled.ions) {
+    if (millimolar <= 1e-6) continue;
+    const below = lower.ions.get(name)?.millimolar ?? 0;
+    const above = upper.ions.get(name)?.millimolar ?? 0;
+    const assumedAmount = name === ion && way !== 'bicarbonate' && !known ? Math.abs(added) : 0;
+    ions.push({
+      ion: name,
+      valence,
+      millimolar,
+      uncertainty_mm: Math.hypot(
+        weighing * millimolar,
+        Math.max(Math.abs(above - millimolar), Math.abs(millimolar - below)),
+        open.get(name) ?? 0,
+        // What the open counts leave out, the titrant makes good.
+        name === ion ? openSum : 0,
+        assumedAmount,
+      ),
+    });
+  }
+  ions.sort((a, b) => (a.ion < b.ion ? -1 : a.ion > b.ion ? 1 : 0));
+  return { ions, free_calcium_mm: total('Ca') > 0 ? settled.freeCalcium : null, notes, unknown };
+}
+
+export { type Equilibria, type Equilibrium, equilibria } from './equilibria.ts';
