@@ -7,7 +7,11 @@ export interface PoolOptions {
   jobs: number;
   /** A file that gives no sign of life for this long is given up, ms. */
   patienceMs: number;
+  /** The worker's code; tests put in one that hangs or dies. */
+  worker?: URL;
 }
+
+const readingWorker = new URL('./reading-worker.ts', import.meta.url);
 
 const stuck = (patienceMs: number): Problem => ({
   code: 'READ_STUCK',
@@ -43,7 +47,7 @@ export async function readAll(
     try {
       while (next < tasks.length) {
         const index = next++;
-        worker ??= startWorker();
+        worker ??= startWorker(options.worker ?? readingWorker);
         const answer = await ask(worker, tasks[index]!, options.patienceMs);
         if (needsFreshWorker(answer)) {
           await worker.terminate();
@@ -59,9 +63,9 @@ export async function readAll(
   await Promise.all(Array.from({ length: lanes }, lane));
 }
 
-const startWorker = (): Worker =>
+const startWorker = (code: URL): Worker =>
   // Messages that the HDF5 library prints about damaged files would only repeat the problem in its own words.
-  new Worker(new URL('./reading-worker.ts', import.meta.url), { stdout: true, stderr: true });
+  new Worker(code, { stdout: true, stderr: true });
 
 function needsFreshWorker(answer: Answer): boolean {
   if (answer.kind === 'failed') return true;
