@@ -81,6 +81,8 @@ export interface SweepInput {
   stated_stimulus: StatedStimulus | null;
   /** Bridge balance and capacitance the amplifier is said to have compensated, where the file says so. */
   bridge_mohm: number | null;
+  /** Constant current injected beside the recorded one, pA, where the file says so; absent or null: not known. */
+  bias_pa?: number | null;
 }
 
 /** What measuring must know besides the samples. Every number may be null: it then says so in its readings. */
@@ -141,6 +143,8 @@ export interface Envelope {
   end_s: number;
   low: number[];
   high: number[];
+  /** Half-open column ranges without a readable sample: the bounds there only join their neighbours. Absent: none. */
+  gaps?: [number, number][];
 }
 
 /** A full-resolution excerpt around one spike. */
@@ -169,6 +173,11 @@ export interface SweepMeasure {
   first_spike: Excerpt | null;
   /** Mean response in equal bins, for cell-level fits that need the waveform of small hyperpolarizing steps. */
   step_response: { start_s: number; rate_hz: number; mv: number[] } | null;
+  /** Firing outside any stimulus: spikes, the time they were counted over, the lowest potential of each cycle. */
+  spontaneous?: { spikes: number; seconds: number; minima_mv: number[] } | null;
+  /** Bridge balance in force, MΩ, and bias already counted in `holding_pa`, pA, where the file says so. */
+  bridge_mohm?: number | null;
+  bias_pa?: number | null;
 }
 
 /** One measured sweep in its cell, potentials already in the stated reading (see `junction.ts`). */
@@ -188,6 +197,8 @@ export interface CellContext extends MeasureContext {
   bias_pa: number | null;
   stated_capacitance_pf: number | null;
   stated_access_mohm: number | null;
+  /** Bridge balance stated as a fact, MΩ; used where the sweeps themselves do not say. */
+  stated_bridge_mohm?: number | null;
   /** Seconds from break-in to the first sweep, where both clock times are known. */
   break_in_to_start_s: number | null;
   /** Quantities that depend on a missing fact name it here: fact keys by need. */

@@ -1,0 +1,87 @@
+/** Order statistics and moments that leave unreadable samples (NaN) out. Empty input gives null, never NaN. */
+
+type Numbers = ArrayLike<number>;
+
+/** Finite values in ascending order, as a new array. */
+export function sortedFinite(values: Numbers): Float64Array {
+  const kept = new Float64Array(values.length);
+  let count = 0;
+  for (let i = 0; i < values.length; i++) {
+    const value = values[i]!;
+    if (Number.isFinite(value)) kept[count++] = value;
+  }
+  return kept.slice(0, count).sort();
+}
+
+/**
+ * Quantile of values that are already sorted and finite, linear between order statistics (Hyndman & Fan 1996, type 7).
+ * @param sorted ascending, without NaN. @param p from 0 to 1. @returns null for an empty list
+ * @throws RangeError when p lies outside 0 to 1
+ */
+export function quantileSorted(sorted: Numbers, p: number): number | null {
+  if (!(p >= 0 && p <= 1)) throw new RangeError(`p must lie between 0 and 1, got ${p}`);
+  if (sorted.length === 0) return null;
+  const position = (sorted.length - 1) * p;
+  const below = Math.floor(position);
+  const low = sorted[below]!;
+  const high = sorted[Math.min(below + 1, sorted.length - 1)]!;
+  return low + (high - low) * (position - below);
+}
+
+/** Quantile of the finite values (type 7). @returns null where there is none */
+export const quantile = (values: Numbers, p: number): number | null => quantileSorted(sortedFinite(values), p);
+
+/** Median of the finite values. @returns null where there is none */
+export const median = (values: Numbers): number | null => quantile(values, 0.5);
+
+/** Arithmetic mean of the finite values. @returns null where there is none */
+export function mean(values: Numbers): number | null {
+  let sum = 0;
+  let count = 0;
+  for (let i = 0; i < values.length; i++) {
+    const value = values[i]!;
+    if (Number.isFinite(value)) {
+      sum += value;
+      count++;
+    }
+  }
+  return count > 0 ? sum / count : null;
+}
+
+/** Sample standard deviation (n − 1) of the finite values, two passes. @returns null for fewer than two */
+export function standardDeviation(values: Numbers): number | null {
+  const centre = mean(values);
+  if (centre === null) return null;
+  let sum = 0;
+  let count = 0;
+  for (let i = 0; i < values.length; i++) {
+    const value = values[i]!;
+    if (Number.isFinite(value)) {
+      sum += (value - centre) ** 2;
+      count++;
+    }
+  }
+  return count > 1 ? Math.sqrt(sum / (count - 1)) : null;
+}
+
+/** 1/Φ⁻¹(3/4): turns a median absolute deviation into the standard deviation of a normal distribution. */
+export const madToSd = 1.482602218505602;
+
+/**
+ * Standard deviation estimated from the median absolute deviation; up to half the values may be outliers.
+ * @returns null where there is no finite value. @see Hampel 1974, J Am Stat Assoc 69:383–393 (from memory)
+ */
+export function robustSpread(values: Numbers): number | null {
+  const sorted = sortedFinite(values);
+  const centre = quantileSorted(sorted, 0.5);
+  if (centre === null) return null;
+  const deviations = sorted.map((value) => Math.abs(value - centre)).sort();
+  return madToSd * quantileSorted(deviations, 0.5)!;
+}
+
+/** Finite values, counted. */
+export function countFinite(values: Numbers): number {
+  let count = 0;
+  for (let i = 0; i < values.length; i++) if (Number.isFinite(values[i]!)) count++;
+  return count;
+}
