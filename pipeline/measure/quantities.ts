@@ -319,6 +319,7 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'V_cmd',
     ...mv,
     decimals: 1,
+    absolute_potential: true,
     clamp: 'voltage',
     definition: 'Command potential during the largest step of a voltage-clamp sweep.',
     formula: 'V_step',

@@ -1,0 +1,24 @@
+import type { AbsenceCode, Reading } from './types.ts';
+
+/**
+ * A reading with a value, or `unresolved` where arithmetic did not give a finite one: NaN and infinity never leave
+ * measuring.
+ */
+export function measured(value: number, extra: Omit<Reading, 'value' | 'why'> = {}): Reading {
+  if (!Number.isFinite(value)) return absent('unresolved');
+  const reading: Reading = { value };
+  if (extra.n !== undefined && Number.isFinite(extra.n)) reading.n = extra.n;
+  if (extra.sd !== undefined && Number.isFinite(extra.sd)) reading.sd = extra.sd;
+  if (extra.se !== undefined && Number.isFinite(extra.se)) reading.se = extra.se;
+  if (extra.at) reading.at = extra.at;
+  if (extra.note) reading.note = extra.note;
+  return reading;
+}
+
+/** A reading without a value, and why; `missing` names fact keys, `note` adds words to the reason. */
+export function absent(why: AbsenceCode, extra: { missing?: string[]; note?: string } = {}): Reading {
+  const reading: Reading = { value: null, why };
+  if (extra.missing?.length) reading.missing = extra.missing;
+  if (extra.note) reading.note = extra.note;
+  return reading;
+}
