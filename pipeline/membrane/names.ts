@@ -7,8 +7,8 @@ export interface Substance {
   parts: ReadonlyMap<string, number>;
   /** 'HEPES-NaOH', 'Tris-HCl': a buffer brought to its pH with this ion; the ion's amount follows from the pH. */
   titratedWith: string | null;
-  /** A salt whose number of cations the name leaves open ('Na-GTP'): the cation taken once. */
-  openCation: string | null;
+  /** A salt whose number of cations the name leaves open ('Na-GTP'): counted once, though up to `most` are sold. */
+  openCation: { ion: string; most: number } | null;
   /** An ion or acid without its counter-ion ('ATP', 'TEA'). */
   lonely: boolean;
   /** Counts were completed so that the charges cancel ('Ca-gluconate', 'calcium chloride'). */
@@ -244,6 +244,9 @@ const basic = new Set(['Tris', 'NMDG', '4-aminopyridine', 'spermine']);
 const acts = (name: string): 'cation' | 'anion' =>
   isBuffer(name) ? (basic.has(name) ? 'cation' : 'anion') : fixedIons[name]! > 0 ? 'cation' : 'anion';
 
+/** Monovalent cations in the fullest salt that is sold. */
+const mostCations: Record<string, number> = { ATP: 2, GTP: 3, ADP: 2, GDP: 2, phosphocreatine: 2 };
+
 const nothing: Substance = {
   parts: new Map(),
   titratedWith: null,
@@ -286,15 +289,16 @@ function toSubstance(parts: Part[]): Substance | null {
     const down = -fixedIons[anion.means]!;
     if (up * (cation.count ?? 1) !== down * (anion.count ?? 1)) {
       // One count may follow from the other; two stated counts that disagree stay as written.
-      if (anion.count === null) counted.set(anion.means, (up * (cation.count ?? 1)) / down);
+      if (anion.count === null && cation.count === null && down > up) counted.set(cation.means, down / up);
+      else if (anion.count === null) counted.set(anion.means, (up * (cation.count ?? 1)) / down);
       else if (cation.count === null) counted.set(cation.means, (down * anion.count) / up);
       completed = anion.count === null || cation.count === null;
     }
   }
-  const polyacid = anions.find((part) => ['ATP', 'GTP', 'ADP', 'GDP', 'phosphocreatine'].includes(part.means));
+  const polyacid = anions.find((part) => Object.hasOwn(mostCations, part.means));
   const openCation =
     polyacid && cations.length === 1 && cations[0]!.count === null && fixedIons[cations[0]!.means] !== 2
-      ? cations[0]!.means
+      ? { ion: cations[0]!.means, most: mostCations[polyacid.means]! }
       : null;
   const selfContained = real.every((part) => isBuffer(part.means)) && !polyacid;
   const lonely = !selfContained && !hydroxide && !proton && (cations.length === 0 || anions.length === 0);
@@ -321,7 +325,7 @@ export function readSubstance(name: string): Substance | null {
  * @returns null where the name is no strong base, strong acid or organic base that is known
  */
 export function readTitrant(name: string): string | null {
-  const first = name.split(/\s+(?:or|and|then)\s+|[,;+]|\/(?=[A-Z])/)[0]!;
+  const first = name.replace(/^\s*\d+(?:\.\d+)?\s*m?[MN]\s+/, '').split(/\s+(?:or|and|then)\s+|[,;+]|\/(?=[A-Z])/)[0]!;
   const substance = readSubstance(first);
   if (substance?.parts.size !== 1) return null;
   const ion = [...substance.parts.keys()][0]!;

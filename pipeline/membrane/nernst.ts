@@ -26,7 +26,8 @@ export function nernstPotential(valence: number, outsideMm: number, insideMm: nu
   requireValence('valence', valence);
   requireConcentration('outsideMm', outsideMm);
   requireConcentration('insideMm', insideMm);
-  return (thermalVoltageMv(celsius) / valence) * Math.log(outsideMm / insideMm);
+  // `+ 0` turns the -0 of equal sides into 0.
+  return (thermalVoltageMv(celsius) / valence) * Math.log(outsideMm / insideMm) + 0;
 }
 
 export interface UncertainNernst {

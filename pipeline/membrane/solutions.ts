@@ -35,7 +35,7 @@ const assumedPhHalfWidth = 0.3;
 export interface Composition {
   /** Fixed ions and buffers in total, mmol/L, before anything was added to reach the pH. */
   totals: Map<string, number>;
-  /** Extra 95 % half-width of an ion from names that leave its count open, mmol/L. */
+  /** What an ion may have beyond the total, from names that leave its count open, mmol/L. */
   open: Map<string, number>;
   /** Ions named as titrants inside names ('HEPES-NaOH'). */
   titrants: string[];
@@ -71,9 +71,10 @@ export function compose(millimolar: Readonly<Record<string, number>>): Compositi
     if (substance.titratedWith) composition.titrants.push(substance.titratedWith);
     if (amount === 0) continue;
     if (substance.openCation) {
-      add(composition.open, substance.openCation, amount);
+      const { ion, most } = substance.openCation;
+      add(composition.open, ion, (most - 1) * amount);
       composition.notes.push(
-        `"${name}" does not say how many ${substance.openCation} it holds: one is counted, ±${shown(amount)} mM. Write Na2-… or Na3-… as on the bottle.`,
+        `"${name}" does not say how many ${ion} it holds: ${(most + 1) / 2} ± ${(most - 1) / 2} are counted. Write ${ion}2-…${most === 3 ? ` or ${ion}3-…` : ''} as on the bottle.`,
       );
     }
     if (substance.lonely)
@@ -160,6 +161,8 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
   if (recipe.ph !== null && !(recipe.ph >= 0 && recipe.ph <= 14))
     throw new RangeError(`ph must be between 0 and 14 or null, got ${recipe.ph}`);
   const { totals, open, titrants, notes, unknown } = compose(recipe.millimolar);
+  // The middle of what an open count allows, so that the half-width covers both ends.
+  for (const [name, more] of open) add(totals, name, more / 2);
   const total = (name: string): number => totals.get(name) ?? 0;
   const weak = [...totals.keys()].filter((name) => Object.hasOwn(buffers, name) && total(name) > 0);
 
@@ -216,7 +219,7 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
       `Calcium and magnesium bound by ${chelators.join(', ')} are approximate, from apparent constants: ${[...new Set(chelators.map((name) => buffers[name]!.source))].join('; ')}.`,
     );
 
-  const openSum = [...open].reduce((sum, [name, amount]) => (name === ion ? sum : sum + amount), 0);
+  const openSum = [...open].reduce((sum, [name, amount]) => (name === ion ? sum : sum + amount / 2), 0);
   const ions: DissolvedIon[] = [];
   for (const [name, { valence, millimolar }] of settled.ions) {
     if (millimolar <= 1e-6) continue;
@@ -230,7 +233,7 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
       uncertainty_mm: Math.hypot(
         weighing * millimolar,
         Math.max(Math.abs(above - millimolar), Math.abs(millimolar - below)),
-        open.get(name) ?? 0,
+        (open.get(name) ?? 0) / 2,
         // What the open counts leave out, the titrant makes good.
         name === ion ? openSum : 0,
         assumedAmount,
