@@ -1,0 +1,28 @@
+/** Small tables that belong to one cell and lie beside its page. */
+import { stringify } from 'csv-stringify/sync';
+import type { CellRow } from '../../pipeline/ledger/types.ts';
+import { quantitiesOf } from '../../pipeline/measure/quantities.ts';
+import type { Excerpt } from '../../pipeline/measure/types.ts';
+
+const csv = (rows: (string | number | null | undefined)[][]): string => stringify(rows, { record_delimiter: '\r\n' });
+
+const cut = (value: number | null | undefined): number | null =>
+  value === null || value === undefined ? null : Number(value.toPrecision(9));
+
+/** Every cell-level number under every condition, with spread, n, unit and the reason where it is missing. */
+export function numbersCsv(cell: CellRow): string {
+  const head = ['cell', 'condition', 'quantity', 'value', 'unit', 'sd', 'se', 'n', 'why_missing'];
+  const rows = cell.measure.conditions.flatMap(({ condition, readings }) =>
+    quantitiesOf('cell').flatMap(({ id, unit }) => {
+      const one = readings[id];
+      return one ? [[cell.cell, condition, id, cut(one.value), unit, cut(one.sd), cut(one.se), one.n, one.why]] : [];
+    }),
+  );
+  return csv([head, ...rows]);
+}
+
+/** The spike that the page shows, sample by sample, time from the start of its sweep. */
+export function spikeCsv(excerpt: Excerpt): string {
+  const rows = excerpt.mv.map((mv, i) => [cut(excerpt.start_s + i / excerpt.rate_hz), cut(mv)]);
+  return csv([['time_s', 'membrane_potential_mv'], ...rows]);
+}

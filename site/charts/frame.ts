@@ -1,0 +1,153 @@
+/**
+ * The grammar that every chart shares: a frame in pixels, linear scales, quiet axes with units, direct labels. Charts
+ * are pure functions from data to an SVG text; colours and line weights are classes that the style sheet sets, so that
+ * light, dark and print follow it. No ids, no clock, two decimals.
+ */
+import { type ScaleLinear, scaleLinear } from 'd3';
+import { number } from '../format.ts';
+
+export interface Margins {
+  top: number;
+  right: number;
+  bottom: number;
+  left: number;
+}
+
+export interface Frame {
+  width: number;
+  height: number;
+  margins: Margins;
+}
+
+export type Scale = ScaleLinear<number, number>;
+
+/** A drawn chart: the picture and what it says in words, for those who cannot see it. */
+export interface Chart {
+  svg: string;
+  alt: string;
+}
+
+export const escapeText = (text: string): string =>
+  text.replace(/&/g, '&amp;').replace(/</g, '&lt;').replace(/>/g, '&gt;').replace(/"/g, '&quot;');
+
+/** A coordinate with at most two decimals. */
+export const px = (value: number): string => String(Math.round(value * 100) / 100);
+
+export interface Attributes {
+  [name: string]: string | number | undefined;
+}
+
+/** One SVG element. Numbers are cut to two decimals; undefined attributes are left out. */
+export function element(name: string, attributes: Attributes, content = ''): string {
+  const list = Object.entries(attributes)
+    .filter(([, value]) => value !== undefined)
+    .map(([key, value]) => ` ${key}="${typeof value === 'number' ? px(value) : escapeText(value!)}"`)
+    .join('');
+  return content === '' ? `<${name}${list}/>` : `<${name}${list}>${content}</${name}>`;
+}
+
+export const label = (x: number, y: number, text: string, className: string, anchor?: 'middle' | 'end'): string =>
+  element('text', { x, y, class: className, 'text-anchor': anchor }, escapeText(text));
+
+export const line = (x1: number, y1: number, x2: number, y2: number, className: string): string =>
+  element('line', { x1, y1, x2, y2, class: className });
+
+/** The whole picture. `group` when it holds links, else one image. */
+export function picture(frame: Frame, alt: string, content: string, role: 'img' | 'group' = 'img'): Chart {
+  const svg = element(
+    'svg',
+    {
+      viewBox: `0 0 ${frame.width} ${frame.height}`,
+      width: frame.width,
+      height: frame.height,
+      class: 'chart',
+      role,
+      'aria-label': alt,
+    },
+    content,
+  );
+  return { svg, alt };
+}
+
+/** A domain that holds all finite values, with some air; `include` is held too. One value gets a domain around it. */
+export function domainOf(
+  values: Iterable<number>,
+  include: readonly number[] = [],
+  air = 0.05,
+): [number, number] | null {
+  let low = Number.POSITIVE_INFINITY;
+  let high = Number.NEGATIVE_INFINITY;
+  for (const list of [values, include])
+    for (const value of list) {
+      if (!Number.isFinite(value)) continue;
+      if (value < low) low = value;
+      if (value > high) high = value;
+    }
+  if (low > high) return null;
+  const span = high - low || Math.abs(high) * 0.1 || 1;
+  return [low - air * span, high + air * span];
+}
+
+export const xScale = (frame: Frame, domain: [number, number]): Scale =>
+  scaleLinear(domain, [frame.margins.left, frame.width - frame.margins.right]);
+
+export const yScale = (
+  frame: Frame,
+  domain: [number, number],
+  from = frame.margins.top,
+  to = frame.height - frame.margins.bottom,
+): Scale => scaleLinear(domain, [to, from]);
+
+/** Decimals that tell neighbouring ticks apart. */
+function tickDecimals(ticks: readonly number[]): number {
+  const step = ticks.length > 1 ? Math.abs(ticks[1]! - ticks[0]!) : Math.abs(ticks[0] ?? 1) || 1;
+  return Math.max(0, Math.min(6, -Math.floor(Math.log10(step) + 1e-9)));
+}
+
+const named = (title: string, unit: string): string => (unit === '' ? title : `${title} (${unit})`);
+
+/** Ticks, numbers and name along the bottom at `y`. */
+export function xAxis(scale: Scale, y: number, title: string, unit: string, count = 5): string {
+  const ticks = scale.ticks(count);
+  const decimals = tickDecimals(ticks);
+  const [from, to] = scale.range() as [number, number];
+  return [
+    line(from, y, to, y, 'axis'),
+    ...ticks.map((tick) => line(scale(tick), y, scale(tick), y + 4, 'axis')),
+    ...ticks.map((tick) => label(scale(tick), y + 16, number(tick, decimals), 'tick', 'middle')),
+    title === '' ? '' : label(to, y + 31, named(title, unit), 'axis-name', 'end'),
+  ].join('');
+}
+
+/** Ticks and numbers along the left at `x`, hairlines across to `acrossTo`, the name above the top. */
+export function yAxis(scale: Scale, x: number, title: string, unit: string, acrossTo: number, count = 5): string {
+  const ticks = scale.ticks(count);
+  const decimals = tickDecimals(ticks);
+  const [, top] = scale.range() as [number, number];
+  return [
+    ...ticks.map((tick) => line(x, scale(tick), acrossTo, scale(tick), tick === 0 ? 'grid zero' : 'grid')),
+    ...ticks.map((tick) => label(x - 6, scale(tick) + 4, number(tick, decimals), 'tick', 'end')),
+    title === '' ? '' : label(x, top - 8, named(title, unit), 'axis-name'),
+  ].join('');
+}
+
+/** A level across the chart with its name and value at the right end. */
+export function level(scale: Scale, value: number, from: number, to: number, name: string, className: string): string {
+  const y = scale(value);
+  return line(from, y, to, y, className) + label(to, y - 4, name, 'level-name', 'end');
+}
+
+/** Path data through points; gaps where a value is not finite. */
+export function path(points: Iterable<readonly [number, number]>, x: Scale, y: Scale): string {
+  let text = '';
+  let pen: 'M' | 'L' = 'M';
+  for (const [a, b] of points) {
+    if (!Number.isFinite(a) || !Number.isFinite(b)) {
+      pen = 'M';
+      continue;
+    }
+    text += `${pen}${px(x(a))},${px(y(b))}`;
+    pen = 'L';
+  }
+  return text;
+}

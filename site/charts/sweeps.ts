@@ -1,0 +1,193 @@
+/** All sweeps of a cell over each other, the stimulus beneath on the same time. */
+
+import type { SweepRow } from '../../pipeline/ledger/types.ts';
+import type { Envelope } from '../../pipeline/measure/types.ts';
+import { counted, number } from '../format.ts';
+import {
+  type Chart,
+  domainOf,
+  element,
+  type Frame,
+  level,
+  path,
+  picture,
+  type Scale,
+  xAxis,
+  xScale,
+  yAxis,
+  yScale,
+} from './frame.ts';
+import { coarser, envelopeLine, simplified } from './reduce.ts';
+
+export interface SweepsChartOptions {
+  width?: number;
+  height?: number;
+  e_na_mv?: number | null;
+  e_k_mv?: number | null;
+  /** The sweep that is drawn in full ink; the others recede. */
+  highlight?: number | null;
+  /** Window in s from the start of the sweep; the whole sweep where absent. */
+  from_s?: number | null;
+  to_s?: number | null;
+}
+
+const columns = 360;
+
+function windowed(envelope: Envelope, from: number, to: number): Envelope {
+  const n = envelope.low.length;
+  const width = (envelope.end_s - envelope.start_s) / n;
+  if (!(width > 0)) return envelope;
+  const first = Math.max(0, Math.floor((from - envelope.start_s) / width));
+  const last = Math.min(n, Math.ceil((to - envelope.start_s) / width));
+  return {
+    start_s: envelope.start_s + first * width,
+    end_s: envelope.start_s + Math.max(first, last) * width,
+    low: envelope.low.slice(first, last),
+    high: envelope.high.slice(first, last),
+  };
+}
+
+function trace(envelope: Envelope, x: Scale, y: Scale, className: string): string {
+  const reduced = coarser(envelope, columns);
+  const points = [...envelopeLine(reduced, Math.abs(y.invert(0) - y.invert(0.8)))].map(
+    ([t, value]) => [x(t), y(value)] as [number, number],
+  );
+  const parts: string[] = [];
+  let run: [number, number][] = [];
+  const flush = (): void => {
+    if (run.length > 1) {
+      const same: Scale = ((value: number) => value) as unknown as Scale;
+      parts.push(
+        path(
+          simplified(run, 0.35).map(([a, b]) => [Math.round(a * 10) / 10, Math.round(b * 10) / 10]),
+          same,
+          same,
+        ),
+      );
+    }
+    run = [];
+  };
+  for (const point of points) {
+    if (Number.isFinite(point[1])) run.push(point);
+    else flush();
+  }
+  flush();
+  return parts.length === 0 ? '' : element('path', { d: parts.join(''), class: className });
+}
+
+const finite = (list: readonly (number | null)[]): number[] =>
+  list.filter((value): value is number => value !== null && Number.isFinite(value));
+
+function valuesIn(envelopes: (Envelope | null)[], from: number, to: number): number[] {
+  return envelopes.flatMap((envelope) => {
+    if (!envelope) return [];
+    const part = windowed(envelope, from, to);
+    return [...finite(part.low), ...finite(part.high)];
+  });
+}
+
+/** Sweeps that share a clamp mode and a length belong on one chart; others would not share its axes. */
+export function sweepGroups(sweeps: readonly SweepRow[]): SweepRow[][] {
+  const groups = new Map<string, SweepRow[]>();
+  for (const sweep of sweeps) {
+    // Lengths within a tenth of each other share an axis well enough.
+    const key = `${sweep.clamp} ${Math.round(Math.log(Math.max(sweep.duration_s, 1e-3)) / Math.log(1.35))}`;
+    groups.set(key, [...(groups.get(key) ?? []), sweep]);
+  }
+  return [...groups.values()];
+}
+
+/**
+ * @param sweeps of one clamp mode and like length, any number from 1
+ * @returns null where no sweep has anything to draw
+ */
+export function sweepsChart(sweeps: readonly SweepRow[], options: SweepsChartOptions = {}): Chart | null {
+  const clamp = sweeps[0]?.clamp ?? 'current';
+  const main = (sweep: SweepRow) => (clamp === 'current' ? sweep.voltage_envelope : sweep.current_envelope);
+  const below = (sweep: SweepRow) => (clamp === 'current' ? sweep.current_envelope : sweep.voltage_envelope);
+  const drawn = sweeps.filter((sweep) => (main(sweep)?.low.length ?? 0) > 1);
+  if (drawn.length === 0) return null;
+  const from = options.from_s ?? Math.min(...drawn.map((sweep) => main(sweep)!.start_s));
+  const to = options.to_s ?? Math.max(...drawn.map((sweep) => main(sweep)!.end_s));
+  if (!(to > from)) return null;
+  const hasBelow = drawn.some((sweep) => (below(sweep)?.low.length ?? 0) > 1);
+  const frame: Frame = {
+    width: options.width ?? 760,
+    height: options.height ?? 400,
+    margins: { top: 26, right: 14, bottom: 38, left: 54 },
+  };
+  const bottom = frame.height - frame.margins.bottom;
+  const mainBottom = hasBelow ? frame.margins.top + (bottom - frame.margins.top) * 0.72 : bottom;
+  const levels = finite([options.e_na_mv ?? null, options.e_k_mv ?? null]);
+  const mainDomain = domainOf(valuesIn(drawn.map(main), from, to), clamp === 'current' ? levels : []);
+  if (!mainDomain) return null;
+  const x = xScale(frame, [from, to]);
+  const y = yScale(frame, mainDomain, frame.margins.top, mainBottom);
+  const right = frame.width - frame.margins.right;
+  const highlight = options.highlight ?? null;
+  const className = (sweep: SweepRow): string =>
+    highlight === null || drawn.length === 1 ? 'trace' : sweep.sweep === highlight ? 'trace chosen' : 'trace receding';
+  const ordered = [...drawn].sort((a, b) => Number(a.sweep === highlight) - Number(b.sweep === highlight));
+  const parts = [
+    yAxis(
+      y,
+      frame.margins.left,
+      clamp === 'current' ? 'Membrane potential' : 'Current',
+      clamp === 'current' ? 'mV' : 'pA',
+      right,
+    ),
+    ...(clamp === 'current' ? equilibriumLevels(y, frame, options) : []),
+    ...ordered.map((sweep) => trace(windowed(main(sweep)!, from, to), x, y, className(sweep))),
+  ];
+  if (hasBelow) {
+    const domain = domainOf(valuesIn(drawn.map(below), from, to), [0], 0.12);
+    if (domain) {
+      const low = yScale(frame, domain, mainBottom + 30, bottom);
+      parts.push(
+        yAxis(
+          low,
+          frame.margins.left,
+          clamp === 'current' ? 'Injected current' : 'Command',
+          clamp === 'current' ? 'pA' : 'mV',
+          right,
+          3,
+        ),
+        ...ordered
+          .filter((sweep) => below(sweep))
+          .map((sweep) => trace(windowed(below(sweep)!, from, to), x, low, className(sweep))),
+      );
+    }
+  }
+  parts.push(xAxis(x, bottom, 'Time', 's', 8));
+  return picture(frame, altOf(drawn, clamp, mainDomain, from, to, highlight), parts.join(''));
+}
+
+function equilibriumLevels(y: Scale, frame: Frame, options: SweepsChartOptions): string[] {
+  const right = frame.width - frame.margins.right;
+  const one = (value: number | null | undefined, name: string): string =>
+    value === null || value === undefined
+      ? ''
+      : level(y, value, frame.margins.left, right, `${name} ${number(value, 0)} mV`, 'level');
+  return [one(options.e_na_mv, 'E_Na'), one(options.e_k_mv, 'E_K')];
+}
+
+function altOf(
+  sweeps: readonly SweepRow[],
+  clamp: string,
+  domain: readonly [number, number],
+  from: number,
+  to: number,
+  highlight: number | null,
+): string {
+  const spikes = sweeps.reduce((sum, sweep) => sum + sweep.spikes.length, 0);
+  const unit = clamp === 'current' ? 'mV' : 'pA';
+  return [
+    `${counted(sweeps.length, 'sweep')} in ${clamp} clamp from ${number(from, 2)} to ${number(to, 2)} s`,
+    `between ${number(domain[0], 0)} and ${number(domain[1], 0)} ${unit}`,
+    clamp === 'current' ? `with ${counted(spikes, 'spike')} in all` : '',
+    highlight === null || sweeps.length === 1 ? '' : `sweep ${highlight} stands out`,
+  ]
+    .filter((part) => part !== '')
+    .join(', ')
+    .concat('. The numbers stand in the table of sweeps.');
+}
