@@ -43,5 +43,15 @@ const byClass: Readonly<Record<string, SpikeCriteria>> = {
 /** Class ids that bring criteria of their own. */
 export const classesWithCriteria: readonly string[] = Object.keys(byClass);
 
-/** Criteria of a shipped class; those of `any` for a class that is not shipped. */
-export const spikeCriteria = (like: string): SpikeCriteria => (Object.hasOwn(byClass, like) ? byClass[like]! : neuron);
+/** Calcium spikes of non-spiking muscle and neurons: tens of milliseconds wide, often below 20 mV high. */
+const calcium: SpikeCriteria = slow(8, 200);
+
+/**
+ * Criteria of a shipped class; those of `any` for a class that is not shipped. Where the spikes are stated to be
+ * carried by calcium and the class is not a slow one already, those of calcium spikes.
+ * @param like shipped class id. @param spikeIon the fact `spike_ion`, where stated
+ */
+export function spikeCriteria(like: string, spikeIon: 'sodium' | 'calcium' | 'mixed' | null = null): SpikeCriteria {
+  const held = Object.hasOwn(byClass, like) ? byClass[like]! : neuron;
+  return spikeIon === 'calcium' && !held.slow ? calcium : held;
+}

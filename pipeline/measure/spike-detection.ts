@@ -1,0 +1,345 @@
+/** Which excursions of a trace are spikes, and where each has its steepest point and its threshold. */
+import { crossing } from '../signal/crossing.ts';
+import { type Excursion, excursions } from '../signal/excursions.ts';
+import { type Slope, type SlopeBook, type SpikeTrace, slopesOf, unreadable } from './spike-trace.ts';
+import type { AbsenceCode, MeasureContext, Stimulus } from './types.ts';
+
+export interface FoundSpike {
+  /** Sample indices: lowest point before the rise, steepest point, highest sample. */
+  base: number;
+  steepest: number;
+  peak: number;
+  /** Fractional sample index where dV/dt crosses the criterion, or why there is none. */
+  threshold: number | null;
+  why_no_threshold: AbsenceCode | null;
+  /** Index of the segment of the trace that it lies in. */
+  segment: number;
+  /** Slope used for this spike's threshold and for its steepest rise and fall. */
+  slope: Slope;
+  rateSlope: Slope;
+}
+
+export interface Detection {
+  spikes: FoundSpike[];
+  remarks: string[];
+}
+
+/** Excursions narrower than this at half their height are electrical artefacts, ms: no membrane is that fast. */
+const narrowestFast_ms = 0.1;
+/** Heart and calcium spikes last tens of milliseconds; what is narrower than this is a stimulus artefact. */
+const narrowestSlow_ms = 4;
+/** A slow spike must, at its steepest, cover its class's prominence within this time; drift does not. */
+const slowestRise_ms = 100;
+/** Share of a slow spike's own maximum rise that makes its threshold. */
+const relativeCriterion = 0.05;
+/** So many slow excursions without a single spike deserve a word; one or two are rebounds and steps. */
+const severalSlow = 3;
+/** How many standard deviations of slope noise a criterion must clear. */
+const clearOfNoise = 5;
+
+/**
+ * Fall that ends an excursion: half its own rise, but at most the class's prominence and at least half of it. Noise
+ * and notches on a plateau stay inside; a train whose troughs climb is still told apart.
+ */
+const fallFor =
+  (prominence: number) =>
+  (rise: number): number =>
+    Math.max(prominence / 2, Math.min(rise / 2, prominence));
+
+interface Candidate extends Excursion {
+  segment: number;
+}
+
+export function detectSpikes(trace: SpikeTrace, stimulus: Stimulus, context: MeasureContext): Detection {
+  const slopes = slopesOf(trace);
+  const remarks: string[] = [];
+  const candidates: Candidate[] = trace.segments.flatMap(({ from, to }, segment) =>
+    excursions(trace.masked.subarray(from, to), context.prominence_mv, fallFor(context.prominence_mv)).map((found) => ({
+      ...found,
+      base: found.base + from,
+      peak: found.peak + from,
+      end: found.end + from,
+      segment,
+    })),
+  );
+  if (looksInverted(trace, candidates, context)) {
+    remarks.push(
+      'Every fast excursion goes down from the level where the trace rests and comes back more slowly: the voltage looks inverted, and no spike is counted. Check the sign of its gain.',
+    );
+    return { spikes: [], remarks };
+  }
+  const tally = { narrow: 0, slow: 0, cut: 0, passive: 0, raised: 0 };
+  const spikes: FoundSpike[] = [];
+  let floor = 0;
+  for (const candidate of candidates) {
+    const { from } = trace.segments[candidate.segment]!;
+    floor = Math.max(floor, from);
+    const verdict = context.slow
+      ? slowSpike(trace, slopes, candidate, context, floor)
+      : fastSpike(trace, slopes, candidate, context, floor, stimulus.from === 'absent');
+    if (typeof verdict === 'string') {
+      tally[verdict]++;
+      continue;
+    }
+    if (verdict.raised) tally.raised++;
+    spikes.push(verdict.spike);
+    floor = candidate.peak;
+  }
+  const times = (count: number): string => (count === 1 ? 'One excursion' : `${count} excursions`);
+  if (tally.narrow > 0)
+    remarks.push(
+      `${times(tally.narrow)} too brief for a membrane ${tally.narrow === 1 ? 'is' : 'are'} taken for an artefact.`,
+    );
+  if (tally.slow >= severalSlow && spikes.length === 0 && !context.slow)
+    remarks.push(
+      `${tally.slow} excursions of ${context.prominence_mv} mV or more rise more slowly than ${context.rise_criterion_v_per_s} V/s and are no spikes by this class's criterion. For heart or calcium spikes state the class, or spike_ion: calcium.`,
+    );
+  if (tally.cut > 0) remarks.push('A rise that the sweep cuts off before its peak is not counted as a spike.');
+  if (tally.raised > 0)
+    remarks.push(
+      `Noise would cross the dV/dt criterion: it was raised to ${clearOfNoise} standard deviations of the noise for ${tally.raised} of ${spikes.length} spikes.`,
+    );
+  return { spikes, remarks };
+}
+
+type Verdict = { spike: FoundSpike; raised: boolean } | 'narrow' | 'slow' | 'cut' | 'passive';
+
+/** Whether the peak was seen: the trace came down again by more than noise before the samples ended. */
+function peakSeen(trace: SpikeTrace, candidate: Candidate): boolean {
+  if (candidate.fell) return true;
+  const top = trace.masked[candidate.peak]!;
+  let lowest = top;
+  for (let i = candidate.peak; i <= candidate.end; i++) lowest = Math.min(lowest, trace.masked[i]!);
+  return top - lowest > Math.max(6 * trace.noiseMv, 0.02 * candidate.rise);
+}
+
+function widthMs(trace: SpikeTrace, candidate: Candidate): number {
+  const level = trace.masked[candidate.peak]! - candidate.rise / 2;
+  const up = crossing(trace.masked, level, { from: candidate.peak, to: candidate.base, direction: 'up' });
+  const { to } = trace.segments[candidate.segment]!;
+  const down = crossing(trace.masked, level, { from: candidate.peak, to: to - 1, direction: 'down' });
+  if (up === null || down === null) return Number.POSITIVE_INFINITY;
+  return ((down - up) / trace.rateHz) * 1000;
+}
+
+/**
+ * The stretch of continuous rise through the middle of an excursion, as an index range: from where the slope was last
+ * below 2 % of the excursion's steepest, to the peak. A stimulus artefact earlier on the rise is outside it.
+ */
+function mainRise(trace: SpikeTrace, slope: Slope, candidate: Candidate): { from: number; to: number } {
+  const level = trace.masked[candidate.peak]! - candidate.rise / 2;
+  const middle = crossing(trace.masked, level, { from: candidate.peak, to: candidate.base, direction: 'up' });
+  const centre = middle === null ? candidate.peak : Math.round(middle);
+  let steepest = Number.NEGATIVE_INFINITY;
+  for (let i = candidate.base; i <= candidate.peak; i++) if (slope.values[i]! > steepest) steepest = slope.values[i]!;
+  let from = centre;
+  while (from > candidate.base && slope.values[from]! > 0.02 * steepest) from--;
+  return { from, to: candidate.peak };
+}
+
+/** Index of the largest slope in a range, stimulus edges left out; −1 where nothing is left. */
+function steepestIn(trace: SpikeTrace, slope: Slope, from: number, to: number): number {
+  let best = -1;
+  for (let i = from; i <= to; i++) {
+    const value = slope.values[i]!;
+    if (touchesEdge(trace, i, slope.m) || !Number.isFinite(value)) continue;
+    if (best < 0 || value > slope.values[best]!) best = i;
+  }
+  return best;
+}
+
+function touchesEdge(trace: SpikeTrace, index: number, m: number): boolean {
+  for (let i = Math.max(0, index - m); i <= Math.min(trace.underEdge.length - 1, index + m); i++)
+    if (trace.underEdge[i] === 1) return true;
+  return false;
+}
+
+function fastSpike(
+  trace: SpikeTrace,
+  slopes: SlopeBook,
+  candidate: Candidate,
+  context: MeasureContext,
+  floor: number,
+  inferEdges: boolean,
+): Verdict {
+  const stated = context.rise_criterion_v_per_s ?? 20;
+  const widest = Math.floor(trace.rateHz * 0.00025);
+  const slope = slopes.quietest(stated / clearOfNoise, widest);
+  const criterion = Math.max(stated, clearOfNoise * slope.noise);
+  if (widthMs(trace, candidate) < narrowestFast_ms) return 'narrow';
+  const run = mainRise(trace, slope, candidate);
+  const steepest = steepestIn(trace, slope, run.from, run.to);
+  if (steepest < 0) return 'passive';
+  if (slope.values[steepest]! < criterion) return 'slow';
+  if (!peakSeen(trace, candidate)) return 'cut';
+  const found = thresholdBefore(trace, slope, steepest, criterion, floor, inferEdges);
+  if (found === 'passive') return 'passive';
+  const rateSlope = slopes.quietest(0.03 * slope.values[steepest]!, widest);
+  return {
+    spike: {
+      base: candidate.base,
+      steepest: rateSlope === slope ? steepest : Math.max(0, steepestIn(trace, rateSlope, run.from, run.to)),
+      peak: candidate.peak,
+      ...found,
+      segment: candidate.segment,
+      slope,
+      rateSlope,
+    },
+    raised: criterion > stated,
+  };
+}
+
+function slowSpike(
+  trace: SpikeTrace,
+  slopes: SlopeBook,
+  candidate: Candidate,
+  context: MeasureContext,
+  floor: number,
+): Verdict {
+  if (widthMs(trace, candidate) < narrowestSlow_ms) return 'narrow';
+  // First look over 1 ms; then as narrow as noise allows, up to a quarter of the upstroke.
+  const first = slopes.of(Math.max(1, Math.round(trace.rateHz * 0.0005)));
+  const run = mainRise(trace, first, candidate);
+  const roughly = steepestIn(trace, first, run.from, run.to);
+  if (roughly < 0) return 'passive';
+  const rough = first.values[roughly]!;
+  if (!(rough * slowestRise_ms >= context.prominence_mv)) return 'slow';
+  if (!peakSeen(trace, candidate)) return 'cut';
+  const upstroke_ms = candidate.rise / rough;
+  const widest = Math.max(1, Math.round((upstroke_ms / 1000) * trace.rateHz * 0.25));
+  const rateSlope = slopes.quietest(0.03 * rough, widest);
+  const steepest = steepestIn(trace, rateSlope, run.from, run.to);
+  if (steepest < 0) return 'passive';
+  const largest = rateSlope.values[steepest]!;
+  const wanted = relativeCriterion * largest;
+  const slope = slopes.quietest(wanted / clearOfNoise, widest);
+  const criterion = Math.max(wanted, clearOfNoise * slope.noise);
+  if (criterion >= largest) return 'slow';
+  const found = thresholdBefore(trace, slope, steepest, criterion, floor, false);
+  if (found === 'passive') return 'passive';
+  return {
+    spike: {
+      base: candidate.base,
+      steepest,
+      peak: candidate.peak,
+      ...found,
+      segment: candidate.segment,
+      slope,
+      rateSlope,
+    },
+    raised: criterion > wanted,
+  };
+}
+
+type Threshold = Pick<FoundSpike, 'threshold' | 'why_no_threshold'>;
+
+/**
+ * Last upward crossing of the criterion by dV/dt before the steepest point, walking backwards from it. Where the walk
+ * comes to a stimulus edge with dV/dt still above the criterion, the edge itself drove it there: threshold is then
+ * where dV/dt exceeds its lowest value since that edge by the criterion, and an excursion that never does so is the
+ * passive response to the edge, no spike.
+ */
+function thresholdBefore(
+  trace: SpikeTrace,
+  slope: Slope,
+  steepest: number,
+  criterion: number,
+  floor: number,
+  inferEdges: boolean,
+): Threshold | 'passive' {
+  const { values, m } = slope;
+  let i = steepest;
+  let lowest = steepest;
+  while (i > floor) {
+    if (touchesEdge(trace, i - 1, m)) {
+      let before = i - 1;
+      while (before > floor && touchesEdge(trace, before, m)) before--;
+      if (!(values[before]! < criterion) && before > floor) {
+        i = before;
+        continue;
+      }
+      return aboveDrive(trace, slope, lowest, steepest, criterion);
+    }
+    if (values[i]! < values[lowest]!) lowest = i;
+    if (Number.isNaN(values[i - 1]!)) return { threshold: null, why_no_threshold: 'unreadable' };
+    if (values[i - 1]! < criterion && values[i]! >= criterion) {
+      if (inferEdges && jumpsAt(slope, i, lowest, criterion))
+        return aboveDrive(trace, slope, lowest, steepest, criterion);
+      if (unreadable(trace, i - 1 - m, i + m)) return { threshold: null, why_no_threshold: 'unreadable' };
+      return {
+        threshold: i - 1 + (criterion - values[i - 1]!) / (values[i]! - values[i - 1]!),
+        why_no_threshold: null,
+      };
+    }
+    i--;
+  }
+  return { threshold: null, why_no_threshold: 'cut-off-by-sweep-end' };
+}
+
+function aboveDrive(
+  trace: SpikeTrace,
+  slope: Slope,
+  lowest: number,
+  steepest: number,
+  criterion: number,
+): Threshold | 'passive' {
+  const { values, m } = slope;
+  const raised = values[lowest]! + criterion;
+  if (values[steepest]! < raised) return 'passive';
+  const at = crossing(values, raised, { from: steepest, to: lowest, direction: 'up' });
+  if (at === null) return 'passive';
+  if (unreadable(trace, at - m, at + m)) return { threshold: null, why_no_threshold: 'unreadable' };
+  return { threshold: at, why_no_threshold: null };
+}
+
+/**
+ * Without a stimulus channel: a dV/dt that jumps from rest past the criterion within its own window and then sags by a
+ * fifth before it climbs to the spike is a stimulus edge that nobody recorded. A spike's own dV/dt climbs.
+ */
+function jumpsAt(slope: Slope, crossingAt: number, lowest: number, criterion: number): boolean {
+  const { values, m, noise } = slope;
+  const before = values[Math.max(0, crossingAt - 2 * m - 1)]!;
+  let top = values[crossingAt]!;
+  for (let i = crossingAt; i <= Math.min(lowest, crossingAt + 2 * m + 1); i++) top = Math.max(top, values[i]!);
+  return before < 0.25 * criterion && lowest > crossingAt + 1 && top - values[lowest]! > Math.max(0.2 * top, 5 * noise);
+}
+
+/**
+ * An inverted trace shows spikes as fast falls with a slower return, starting from its resting level. Told by the
+ * majority of excursions, the first included: the trace was as high just before the trough as after it, the trough is
+ * narrower than what follows, and the fall into it is steeper than the rise out of it.
+ */
+function looksInverted(trace: SpikeTrace, candidates: Candidate[], context: MeasureContext): boolean {
+  if (candidates.length === 0) return false;
+  const returns = candidates.map((candidate) => returnsFromBelow(trace, candidate, context));
+  return returns[0]! && returns.filter(Boolean).length > 0.8 * returns.length;
+}
+
+function returnsFromBelow(trace: SpikeTrace, candidate: Candidate, context: MeasureContext): boolean {
+  const { from, to } = trace.segments[candidate.segment]!;
+  const level = trace.masked[candidate.peak]! - candidate.rise / 2;
+  const longest = Math.round(trace.rateHz * (context.slow ? 2 : 0.02));
+  const entry = crossing(trace.masked, level, {
+    from: candidate.base,
+    to: Math.max(from, candidate.base - longest),
+    direction: 'down',
+  });
+  const exit = crossing(trace.masked, level, { from: candidate.base, to: candidate.peak, direction: 'up' });
+  if (entry === null || exit === null) return false;
+  const after = crossing(trace.masked, level, { from: candidate.peak, to: to - 1, direction: 'down' });
+  const troughWidth = exit - entry;
+  const topWidth = (after ?? to) - exit;
+  if (!(troughWidth < topWidth)) return false;
+  // A brief hyperpolarizing pulse looks alike, but its edges are known.
+  if (trace.edges.some((edge) => edge >= entry - troughWidth && edge <= exit)) return false;
+  let steepestFall = 0;
+  for (let i = Math.max(from + 1, Math.floor(entry - 2 * troughWidth)); i <= candidate.base; i++)
+    steepestFall = Math.max(steepestFall, trace.masked[i - 1]! - trace.masked[i]!);
+  let steepestRise = 0;
+  for (let i = candidate.base + 1; i <= candidate.peak; i++)
+    steepestRise = Math.max(steepestRise, trace.masked[i]! - trace.masked[i - 1]!);
+  let highestBefore = Number.NEGATIVE_INFINITY;
+  for (let i = Math.max(from, Math.floor(entry - 2 * troughWidth)); i <= entry; i++)
+    highestBefore = Math.max(highestBefore, trace.masked[i]!);
+  return steepestFall > 1.2 * steepestRise && highestBefore > trace.masked[candidate.peak]! - 0.25 * candidate.rise;
+}
