@@ -1,0 +1,116 @@
+/** Plain sentences with the numbers in them. Every finding's wording is put together here. */
+import { quantity } from '../measure/quantities.ts';
+import type { Comparison } from './compare.ts';
+
+/** A minus sign, never a hyphen, and no sign before a zero. */
+function digits(value: number, decimals: number): string {
+  const text = Math.abs(value).toFixed(decimals);
+  // A difference that would round away is shown with two figures: '0.0 mV above' says nothing.
+  const shown = value !== 0 && Number(text) === 0 ? Number(Math.abs(value).toPrecision(2)).toString() : text;
+  return (value < 0 && Number(shown) !== 0 ? '−' : '') + shown;
+}
+
+const withUnit = (text: string, unit: string): string =>
+  unit === '' ? text : unit === '%' ? `${text} %` : `${text} ${unit}`;
+
+/**
+ * A number of one quantity with its unit: '+72.4 mV', '0.84 ms'. Potentials against the bath carry their sign.
+ * @throws RangeError for an id that the registry does not hold
+ */
+export function amount(quantityId: string, value: number): string {
+  const { decimals, unit, absolute_potential } = quantity(quantityId);
+  const text = digits(value, decimals);
+  return withUnit(absolute_potential && value > 0 ? `+${text}` : text, unit);
+}
+
+/** A difference of two numbers of one quantity, without sign: '11.9 mV'. */
+export function difference(quantityId: string, value: number): string {
+  const { decimals, unit } = quantity(quantityId);
+  return withUnit(digits(Math.abs(value), decimals), unit);
+}
+
+/** A range of one quantity: '0.31 to 1.60 ms', 'at most 0.35', 'at least 60.0 mV'. */
+export function span(quantityId: string, low: number | null, high: number | null): string {
+  if (low === null) return high === null ? 'any value' : `at most ${amount(quantityId, high)}`;
+  if (high === null) return `at least ${amount(quantityId, low)}`;
+  const unit = quantity(quantityId).unit;
+  const first = amount(quantityId, low);
+  return `${unit === '' ? first : first.slice(0, -unit.length - 1)} to ${amount(quantityId, high)}`;
+}
+
+/** Mean temperature as people write it: '33 °C', '32.5 °C'. */
+export const celsius = (value: number): string => `${digits(value, Number.isInteger(value) ? 0 : 1)} °C`;
+
+/** '1 sweep', '12 sweeps'. */
+export const count = (n: number, noun: string): string => `${n} ${noun}${n === 1 ? '' : 's'}`;
+
+/** 'a', 'a and b', 'a, b and c'. */
+export function listed(words: readonly string[], last = 'and'): string {
+  if (words.length < 2) return words.join('');
+  return `${words.slice(0, -1).join(', ')} ${last} ${words.at(-1)}`;
+}
+
+const capital = (text: string): string => text.charAt(0).toUpperCase() + text.slice(1);
+
+/** What a check found, in pieces. */
+export interface Telling {
+  quantity: string;
+  /** 'the peak of the first spike'; may name the sweep. */
+  subject: string;
+  value: number;
+  n: number | null;
+  low: number | null;
+  high: number | null;
+  /** What the limits are, as a noun: 'E_Na (+60.5 mV at 33 °C)'. */
+  lowName: string;
+  highName: string;
+  comparison: Comparison;
+  uncertainty: number;
+  /** What it means when outside: 'no sodium spike can do that'. */
+  meaning: string;
+  /** The condition when it is not the cell's first, else null. */
+  condition: string | null;
+  /** Further sentence, full stop included; '' for none. */
+  remark: string;
+}
+
+const opening = (subject: string, condition: string | null): string =>
+  condition === null ? capital(subject) : `In the condition “${condition}”, ${subject}`;
+
+/** One plain sentence (and a remark, where there is one) that tells an outcome with its numbers. */
+export function tell(telling: Telling): string {
+  const { quantity: id, comparison, value, uncertainty, low, high } = telling;
+  const n = telling.n !== null && telling.n > 1 ? ` (n = ${telling.n})` : '';
+  const moved =
+    comparison.shift === 0 || comparison.disagree
+      ? ''
+      : `, read as ${amount(id, value + comparison.shift)} with the junction potential removed`;
+  const head = `${opening(telling.subject, telling.condition)}, ${amount(id, value)}${n}${moved},`;
+  const name = comparison.side === 'low' ? telling.lowName : telling.highName;
+  const beyond = comparison.margin < 0;
+  const direction = (comparison.side === 'low') === beyond ? 'below' : 'above';
+  const away = difference(id, comparison.margin);
+  const lies = comparison.margin === 0 ? `lies exactly at ${name}` : `lies ${away} ${direction} ${name}`;
+  const sentence = (() => {
+    if (comparison.outcome === 'outside') return `${head} ${lies}; ${telling.meaning}.`;
+    if (comparison.outcome === 'near limit')
+      return comparison.disagree
+        ? `${head} comes out differently against ${name} with and without the junction potential; state “junction” to settle it.`
+        : `${head} ${lies}, inside the uncertainty of ±${difference(id, uncertainty)}: too close to call.`;
+    if (low !== null && high !== null && telling.lowName === telling.highName) return `${head} lies within ${name}.`;
+    if (comparison.margin === 0) return `${head} meets ${name}.`;
+    return `${head} stays ${away} ${direction} ${name}.`;
+  })();
+  return telling.remark === '' ? sentence : `${sentence} ${telling.remark}`;
+}
+
+/** The sentence of a check that could not be held: what is missing, and the facts that would settle it. */
+export function tellMissing(
+  subject: string,
+  why: string,
+  missing: readonly string[],
+  condition: string | null,
+): string {
+  const facts = missing.length === 0 ? '' : ` State ${listed(missing.map((key) => `“${key}”`))} to have it judged.`;
+  return `${opening(subject, condition)} was not judged: ${why}.${facts}`;
+}
