@@ -16,6 +16,8 @@ interface Ligand {
   weightSum: number;
   /** Weight per mmol/L of free metal of the bare and the protonated complex. */
   complexes: Record<Metal, { bare: number; protonated: number }>;
+  /** Both complexes together. */
+  affinity: Record<Metal, number>;
 }
 
 function ligandAt(name: string, total: number, ph: number, celsius: number): Ligand {
@@ -33,29 +35,31 @@ function ligandAt(name: string, total: number, ph: number, celsius: number): Lig
       protonated: constants.protonated === undefined ? 0 : weights.at(-2)! * 10 ** (constants.protonated + moved - 3),
     };
   };
+  const complexes = { Ca: complex('Ca'), Mg: complex('Mg') };
   return {
     name,
     buffer,
     total,
     weights,
     weightSum: weights.reduce((sum, weight) => sum + weight, 0),
-    complexes: { Ca: complex('Ca'), Mg: complex('Mg') },
+    complexes,
+    affinity: {
+      Ca: complexes.Ca.bare + complexes.Ca.protonated,
+      Mg: complexes.Mg.bare + complexes.Mg.protonated,
+    },
   };
 }
 
-const affinity = (ligand: Ligand, metal: Metal): number =>
-  ligand.complexes[metal].bare + ligand.complexes[metal].protonated;
-
 const bareForm = (ligand: Ligand, calcium: number, magnesium: number): number =>
-  ligand.total / (ligand.weightSum + calcium * affinity(ligand, 'Ca') + magnesium * affinity(ligand, 'Mg'));
+  ligand.total / (ligand.weightSum + calcium * ligand.affinity.Ca + magnesium * ligand.affinity.Mg);
 
 /** Free concentration at which free plus bound comes to the total; bound grows with free, so halving finds it. */
 function solveFree(total: number, boundPerFree: (free: number) => number): number {
   if (total === 0) return 0;
-  // In logarithms: free calcium beside a chelator may be a millionth of the total.
-  let low = Math.log(total) - 70;
+  // In logarithms: free calcium beside a chelator may be a millionth of the total. 46 halvings of 40 leave 6e-13.
+  let low = Math.log(total) - 40;
   let high = Math.log(total);
-  for (let round = 0; round < 60; round++) {
+  for (let round = 0; round < 46; round++) {
     const middle = (low + high) / 2;
     const free = Math.exp(middle);
     if (free * (1 + boundPerFree(free)) > total) high = middle;
@@ -80,7 +84,7 @@ export function speciate(
   const ligands = [...totals].map(([name, total]) => ligandAt(name, total, ph, celsius));
   const binding = ligands.filter((ligand) => ligand.buffer.binds);
   const boundTo = (metal: Metal, freeCalcium: number, freeMagnesium: number): number =>
-    binding.reduce((sum, ligand) => sum + affinity(ligand, metal) * bareForm(ligand, freeCalcium, freeMagnesium), 0);
+    binding.reduce((sum, ligand) => sum + ligand.affinity[metal] * bareForm(ligand, freeCalcium, freeMagnesium), 0);
   const magnesiumBeside = (freeCalcium: number): number =>
     solveFree(magnesium, (free) => boundTo('Mg', freeCalcium, free));
   const freeCalcium =
