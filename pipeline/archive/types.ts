@@ -42,6 +42,8 @@ export interface Recipe {
   id: string;
   path: string;
   name: string;
+  /** Other names that facts may use for it. */
+  aliases?: string[];
   role: 'pipette' | 'bath';
   ph: number | null;
   titrant: string | null;
@@ -120,6 +122,8 @@ export interface FoundFile {
   /** Statements for single electrodes from `cells:` in the sidecar. */
   electrode_statements: Record<string, Statement[]>;
   conditions: ConditionStatement[];
+  /** Set when the file must not be opened: how to read it was stated, and the statement cannot be used. */
+  blocked?: Problem;
 }
 
 export interface Archive {
@@ -153,6 +157,8 @@ export interface CellRecord {
   facts: Facts;
   conditions: ConditionStatement[];
   sweeps: CellSweepRef[];
+  /** Facts that one file of several states for itself (bridge, protocol, filter …), by path. */
+  file_facts?: Record<string, Record<string, string | number>>;
   /** Contradictions found while working it out: same id without a stated `cell`, facts that disagree. */
   problems: (Problem & { path: string })[];
 }
