@@ -40,3 +40,54 @@ export const heart: MeasureContext = {
   ahp_window_ms: 1000,
   slow: true,
 };
+
+export interface Circuit {
+  rest_mv: number;
+  resistance_mohm: number;
+  tau_ms: number;
+  /** Resistance that the bridge has not taken off; negative when it took too much. */
+  bridge_left_mohm?: number;
+  /** Time constant of the pipette's own charging, ms. */
+  pipette_tau_ms?: number;
+  noise_mv?: number;
+  seed?: number;
+  hum?: { mv: number; hz: number };
+  drift_mv_per_s?: number;
+}
+
+/** A passive cell that answers a step: exact solution of the RC circuit behind an electrode. */
+export function passiveSweep(
+  circuit: Circuit,
+  step: { pa: number; from_s: number; to_s: number; holding_pa?: number },
+  seconds = 1,
+  rateHz = 20000,
+): { voltage: Signal; current: Signal } {
+  const holding = step.holding_pa ?? 0;
+  const noise = normalNoise(circuit.seed ?? 1);
+  const charged = (ms: number, tau: number): number => (ms <= 0 ? 0 : 1 - Math.exp(-ms / tau));
+  // The small allowance keeps a sample that lies on an edge on the right side of it.
+  const after = (t: number, edge: number): number => (t - edge + 1e-9) * 1000;
+  const voltage = signalOf(seconds, rateHz, (t) => {
+    const [on, off] = [after(t, step.from_s), after(t, step.to_s)];
+    const membrane =
+      (step.pa * circuit.resistance_mohm * (charged(on, circuit.tau_ms) - charged(off, circuit.tau_ms))) / 1000;
+    const electrode = (ms: number): number =>
+      ms < 0 ? 0 : circuit.pipette_tau_ms ? charged(ms, circuit.pipette_tau_ms) : 1;
+    const left = (step.pa * (circuit.bridge_left_mohm ?? 0) * (electrode(on) - electrode(off))) / 1000;
+    return (
+      circuit.rest_mv +
+      (holding * circuit.resistance_mohm) / 1000 +
+      membrane +
+      left +
+      (circuit.noise_mv ?? 0) * noise() +
+      (circuit.hum ? circuit.hum.mv * Math.sin(2 * Math.PI * circuit.hum.hz * t + 0.7) : 0) +
+      (circuit.drift_mv_per_s ?? 0) * t
+    );
+  });
+  const current = signalOf(
+    seconds,
+    rateHz,
+    (t) => holding + (after(t, step.from_s) >= 0 && after(t, step.to_s) < 0 ? step.pa : 0),
+  );
+  return { voltage, current };
+}

@@ -1,0 +1,146 @@
+import { mean, standardDeviation } from '../signal/statistics.ts';
+import { absent, measured } from './reading.ts';
+import { indexAt, timeAt } from './stretches.ts';
+import type { MeasureContext, Reading, Readings, Signal, Spike, Stimulus, SweepMeasure } from './types.ts';
+
+const peakOf = (spike: Spike): number => spike.values['peak_at_s'] ?? Number.NaN;
+const startOf = (spike: Spike): number => spike.values['threshold_at_s'] ?? peakOf(spike);
+
+/** Stimuli shorter than this have no rate, s: one spike would already count as tens of hertz. */
+const shortestForRate_s = 0.05;
+/** A spike may follow a brief pulse by this much and still be its answer, s. */
+const afterBriefPulse_s = 0.1;
+
+/** Spikes that begin while the stimulus lasts; all of them where there is none. */
+export function spikesDuring(spikes: readonly Spike[], stimulus: Stimulus): Spike[] {
+  const { onset_s, end_s } = stimulus;
+  if (onset_s === null || end_s === null) return [...spikes];
+  const brief = end_s - onset_s < shortestForRate_s;
+  const until = brief ? end_s + afterBriefPulse_s : end_s;
+  return spikes.filter((spike) => startOf(spike) >= onset_s && startOf(spike) < until);
+}
+
+/** Rate, latency and the three measures of intervals of a current-clamp sweep. */
+export function measureFiring(spikes: readonly Spike[], stimulus: Stimulus, voltage: Signal): Readings {
+  const during = spikesDuring(spikes, stimulus);
+  return {
+    spikes: measured(spikes.length),
+    mean_rate_hz: meanRate(during, stimulus, voltage),
+    first_spike_latency_ms: latency(during, stimulus),
+    ...measureIntervals(during.map(peakOf).filter(Number.isFinite)),
+  };
+}
+
+function meanRate(during: readonly Spike[], stimulus: Stimulus, voltage: Signal): Reading {
+  const ends_s = timeAt(voltage, voltage.samples.length);
+  const from_s = stimulus.onset_s ?? voltage.start_s;
+  const to_s = Math.min(stimulus.end_s ?? ends_s, ends_s);
+  const note = stimulus.onset_s === null ? { note: 'over the whole sweep' } : {};
+  if (!(to_s - from_s >= shortestForRate_s)) return absent('sweep-too-short');
+  return measured(during.length / (to_s - from_s), { n: during.length, at: { from_s, to_s }, ...note });
+}
+
+function latency(during: readonly Spike[], stimulus: Stimulus): Reading {
+  if (stimulus.onset_s === null) return absent('no-stimulus');
+  const first = during[0];
+  if (!first) return absent('no-spikes');
+  const threshold = first.values['threshold_at_s'] ?? null;
+  if (threshold === null) return absent(first.why['threshold_at_s'] ?? 'unresolved');
+  return measured((threshold - stimulus.onset_s) * 1000, {
+    at: { spike: first.spike, from_s: stimulus.onset_s, to_s: threshold },
+  });
+}
+
+/**
+ * Coefficient of variation (sample SD), local variation and mean relative lengthening of the intervals.
+ * @param times_s peak times in order. Three spikes, hence two intervals, are the least for each of them
+ * @see Shinomoto, Shima & Tanji 2003, Neural Comput 15:2823–2842 for Lv
+ */
+export function measureIntervals(times_s: readonly number[]): Readings {
+  const intervals = times_s.slice(1).map((time, k) => time - times_s[k]!);
+  const ids = ['interval_cv', 'interval_lv', 'interval_adaptation'];
+  if (intervals.length < 2) {
+    const why = absent(times_s.length === 0 ? 'no-spikes' : 'too-few-spikes');
+    return Object.fromEntries(ids.map((id) => [id, why]));
+  }
+  const n = intervals.length;
+  const lengthening = intervals.slice(1).map((own, k) => (own - intervals[k]!) / (own + intervals[k]!));
+  const spread = standardDeviation(lengthening);
+  return {
+    interval_cv: measured(standardDeviation(intervals)! / mean(intervals)!, { n }),
+    interval_lv: measured((3 / (n - 1)) * lengthening.reduce((sum, value) => sum + value * value, 0), { n }),
+    interval_adaptation: measured(mean(lengthening)!, {
+      n: lengthening.length,
+      ...(spread === null ? {} : { sd: spread, se: spread / Math.sqrt(lengthening.length) }),
+    }),
+  };
+}
+
+/**
+ * Whether firing stopped inside a step that went on while the membrane stayed depolarized beyond threshold: not the
+ * silence of a cell that adapts, whose potential falls back below it.
+ */
+export function isBlocked(spikes: readonly Spike[], stimulus: Stimulus, voltage: Signal, slow: boolean): boolean {
+  if (slow || stimulus.kind !== 'step' || stimulus.onset_s === null || stimulus.end_s === null) return false;
+  if (!((stimulus.amplitude ?? 0) > 0)) return false;
+  const during = spikesDuring(spikes, stimulus);
+  const last = during.at(-1);
+  const threshold = during[0]?.values['threshold_mv'] ?? null;
+  if (!last || threshold === null) return false;
+  const times = during.map(peakOf);
+  const longest = Math.max(0.01, ...times.slice(1).map((time, k) => time - times[k]!));
+  const silence = stimulus.end_s - peakOf(last);
+  if (silence < Math.max(3 * longest, 0.25 * (stimulus.end_s - stimulus.onset_s))) return false;
+  const plateau = mean(
+    voltage.samples.subarray(indexAt(voltage, stimulus.end_s - 0.5 * silence), indexAt(voltage, stimulus.end_s)),
+  );
+  return plateau !== null && plateau > threshold;
+}
+
+/** After a stimulus the cell is left to settle this long before its firing counts as its own, s. */
+const settling_s = 0.5;
+
+/**
+ * Firing outside any stimulus: how many spikes, over how long, and the lowest potential of each whole cycle. Null
+ * where nothing is known of the stimulus.
+ */
+export function measureSpontaneous(
+  spikes: readonly Spike[],
+  stimulus: Stimulus,
+  voltage: Signal,
+  context: MeasureContext,
+): NonNullable<SweepMeasure['spontaneous']> | null {
+  if (stimulus.kind === 'unknown') return null;
+  const ends_s = timeAt(voltage, voltage.samples.length);
+  const windows =
+    stimulus.onset_s === null || stimulus.end_s === null
+      ? [{ from_s: voltage.start_s, to_s: ends_s }]
+      : [
+          { from_s: voltage.start_s, to_s: Math.min(stimulus.onset_s, ...stimulus.edges_s) },
+          { from_s: Math.max(stimulus.end_s, ...stimulus.edges_s) + settling_s, to_s: ends_s },
+        ];
+  const found = { spikes: 0, seconds: 0, minima_mv: [] as number[] };
+  const block = Math.max(1, Math.round((context.slow ? 0.002 : 0.0003) * voltage.rate_hz));
+  for (const { from_s, to_s } of windows) {
+    if (to_s <= from_s) continue;
+    const inside = spikes.filter((spike) => startOf(spike) >= from_s && startOf(spike) < to_s);
+    found.spikes += inside.length;
+    found.seconds += to_s - from_s;
+    inside.slice(1).forEach((spike, k) => {
+      const lowest = lowestMean(voltage, peakOf(inside[k]!), peakOf(spike), block);
+      if (lowest !== null) found.minima_mv.push(lowest);
+    });
+  }
+  return found;
+}
+
+/** Lowest of the means over blocks: one noisy sample does not set it. */
+function lowestMean(voltage: Signal, from_s: number, to_s: number, block: number): number | null {
+  let lowest: number | null = null;
+  const to = indexAt(voltage, to_s);
+  for (let i = indexAt(voltage, from_s); i + block <= to; i += block) {
+    const value = mean(voltage.samples.subarray(i, i + block));
+    if (value !== null && (lowest === null || value < lowest)) lowest = value;
+  }
+  return lowest;
+}

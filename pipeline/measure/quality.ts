@@ -1,0 +1,207 @@
+import { bandPass } from '../signal/butterworth.ts';
+import { linearFit } from '../signal/line.ts';
+import { clippedRuns, quantum } from '../signal/runs.ts';
+import { type SineFit, sineFit, sineNear } from '../signal/sine.ts';
+import { countFinite, mean, median } from '../signal/statistics.ts';
+import { absent, measured } from './reading.ts';
+import { type Stretch, timeAt } from './stretches.ts';
+import type { Reading, Readings, Signal } from './types.ts';
+
+/** Share of samples that could not be read. */
+export function missingFraction(signal: Signal): Reading {
+  const n = signal.samples.length;
+  return n === 0 ? absent('sweep-too-short') : measured(1 - countFinite(signal.samples) / n, { n });
+}
+
+/** Share of samples stuck at the recorder's upper or lower limit; `at` is the longest such run. */
+export function clippedFraction(signal: Signal): Reading {
+  const { samples } = signal;
+  if (samples.length === 0) return absent('sweep-too-short');
+  if (countFinite(samples) === 0) return absent('unreadable');
+  const runs = clippedRuns(samples);
+  const stuck = runs.reduce((sum, run) => sum + run.to - run.from, 0);
+  const longest = runs.toSorted((a, b) => b.to - b.from - (a.to - a.from))[0];
+  return measured(stuck / samples.length, {
+    n: samples.length,
+    ...(longest ? { at: { from_s: timeAt(signal, longest.from), to_s: timeAt(signal, longest.to) } } : {}),
+  });
+}
+
+/** Step of the digitizer from at most 60 000 samples spread over the sweep. */
+export function digitizerStep(signal: Signal): Reading {
+  const { samples } = signal;
+  if (countFinite(samples) < 3) return absent(samples.length < 3 ? 'sweep-too-short' : 'unreadable');
+  const part = 20000;
+  const some =
+    samples.length <= 3 * part
+      ? samples
+      : Float64Array.from({ length: 3 * part }, (_, i) => {
+          const start = Math.floor((Math.floor(i / part) * (samples.length - part)) / 2);
+          return samples[start + (i % part)]!;
+        });
+  const step = quantum(some);
+  return step === null ? absent('unresolved', { note: 'the values lie on no common grid' }) : measured(step);
+}
+
+export const sampleInterval = (signal: Signal): Reading => measured(1e6 / signal.rate_hz);
+
+const total = (stretches: readonly Stretch[]): number => stretches.reduce((sum, one) => sum + one.to - one.from, 0);
+
+const kilohertz = (hz: number): string => `${Number((hz / 1000).toPrecision(3))} kHz`;
+
+/**
+ * RMS of the potential between 1 kHz and the filter corner, at most 0.4 of the sampling rate, over quiet stretches
+ * (at most 2 s of them). Zero-phase Butterworth band-pass of fourth order; the band stands in the note.
+ */
+export function noise(voltage: Signal, quiet: readonly Stretch[], filterKhz: number | null): Reading {
+  const limit = 0.4 * voltage.rate_hz;
+  const high = filterKhz === null ? limit : Math.min(filterKhz * 1000, limit);
+  const low = 1000;
+  if (limit <= 1.2 * low) return absent('rate-too-low');
+  if (high <= 1.2 * low)
+    return absent('unresolved', { note: `the filter corner of ${kilohertz(high)} leaves no band above 1 kHz` });
+  const shortest = Math.round(0.01 * voltage.rate_hz);
+  let left = 2 * voltage.rate_hz;
+  let sum = 0;
+  let n = 0;
+  let at: Reading['at'];
+  for (const one of quiet) {
+    if (one.to - one.from < shortest || left <= 0) continue;
+    const to = Math.min(one.to, one.from + Math.ceil(left));
+    const band = bandPass(voltage.samples.subarray(one.from, to), voltage.rate_hz, low, high);
+    for (const value of band) {
+      if (!Number.isFinite(value)) continue;
+      sum += value * value;
+      n++;
+    }
+    left -= to - one.from;
+    at = { from_s: at?.from_s ?? timeAt(voltage, one.from), to_s: timeAt(voltage, to) };
+  }
+  if (n < shortest) return absent('no-spike-free-stretch');
+  const rms = Math.sqrt(sum / n);
+  // Twice bandwidth times duration independent values.
+  const freedom = (2 * (high - low) * n) / voltage.rate_hz;
+  const stated = filterKhz === null ? ' (0.4 of the rate; filter corner not stated)' : '';
+  return measured(rms, {
+    n,
+    se: rms / Math.sqrt(2 * freedom),
+    ...(at ? { at } : {}),
+    note: `${kilohertz(low)} to ${kilohertz(high)}${stated}`,
+  });
+}
+
+/** Longest stretch, s, over which hum is fitted: enough for 0.1 Hz. */
+const humSpan_s = 4;
+
+/**
+ * Amplitude and frequency of the mains hum: the least-squares sine near the mains frequency (50 and 60 Hz where it is
+ * not known) in quiet stretches. A line that stands four times above its surroundings counts as hum, and its own
+ * frequency is reported; otherwise the amplitude at the nominal frequency is, and the frequency is `unresolved`.
+ * Where nothing stands out near the mains, a very clear line elsewhere between 20 and 150 Hz is reported instead, with
+ * a remark: a misdeclared sampling rate moves the hum.
+ */
+export function hum(voltage: Signal, quiet: readonly Stretch[], mainsHz: number | null): Readings {
+  const both = (reading: Reading): Readings => ({ mains_hum_mv: reading, mains_hum_hz: reading });
+  const rate = voltage.rate_hz;
+  if (rate < 400) return both(absent('rate-too-low'));
+  const trace = humTrace(voltage, quiet);
+  if (!trace) return both(absent('no-spike-free-stretch'));
+  const seconds = trace.samples.length / rate;
+  const candidates = (mainsHz === null ? [50, 60] : [mainsHz])
+    .filter((hz) => hz < rate * 0.4)
+    .map((hz) => lineNear(trace.samples, rate, hz, Math.max(0.1 * hz, 1 / seconds), seconds))
+    .filter((line) => line !== null);
+  if (candidates.length === 0) return both(absent('sweep-too-short'));
+  const nearest = candidates.reduce((best, line) => (line.fit.amplitude > best.fit.amplitude ? line : best));
+  const extra = (line: Line): Omit<Reading, 'value' | 'why'> => ({
+    n: line.fit.n,
+    at: { from_s: trace.from_s, to_s: trace.from_s + seconds },
+  });
+  const report = (line: Line, note?: string): Readings => ({
+    mains_hum_mv: measured(line.fit.amplitude, { ...extra(line), se: line.floor, ...(note ? { note } : {}) }),
+    // Standard error of a frequency from a sine of this amplitude and duration in white noise (Rife & Boorstyn 1974).
+    mains_hum_hz: measured(line.fit.frequency_hz, {
+      ...extra(line),
+      se: (Math.sqrt(6) * line.floor) / (Math.PI * seconds * line.fit.amplitude),
+      ...(note ? { note } : {}),
+    }),
+  });
+  if (nearest.fit.amplitude > 4 * nearest.floor) return report(nearest);
+  const elsewhere = strayLine(trace.samples, rate, seconds);
+  if (elsewhere) return report(elsewhere, 'no line near the mains frequency; this one stands out instead');
+  const nominal = sineFit(trace.samples, rate, nearest.nominal_hz);
+  return {
+    mains_hum_mv: nominal
+      ? measured(nominal.amplitude, { ...extra(nearest), se: nearest.floor, note: `at ${nearest.nominal_hz} Hz` })
+      : absent('sweep-too-short'),
+    mains_hum_hz: absent('unresolved'),
+  };
+}
+
+interface Line {
+  fit: SineFit;
+  /** Median amplitude at frequencies round about: what noise alone gives. */
+  floor: number;
+  nominal_hz: number;
+}
+
+function lineNear(samples: Float64Array, rate: number, hz: number, range: number, seconds: number): Line | null {
+  const fit = sineNear(samples, rate, hz, range);
+  if (!fit) return null;
+  // Beyond the width of the line itself, which is one over the duration.
+  const beside = [-4.5, -3.5, -2.5, 2.5, 3.5, 4.5]
+    .map((steps) => fit.frequency_hz + steps / seconds)
+    .filter((frequency) => frequency > 2 / seconds && frequency > 8 && frequency < rate * 0.45)
+    .map((frequency) => sineFit(samples, rate, frequency)?.amplitude ?? Number.NaN);
+  const floor = median(beside);
+  return floor === null ? null : { fit, floor: Math.max(floor, fit.se_amplitude), nominal_hz: hz };
+}
+
+function strayLine(samples: Float64Array, rate: number, seconds: number): Line | null {
+  if (seconds < 0.4) return null;
+  const block = Math.max(1, Math.floor(rate / 1500));
+  const coarse = blockMeans(samples.subarray(0, Math.min(samples.length, Math.round(2 * rate))), block);
+  const spacing = 0.5 / Math.min(seconds, 2);
+  let best: SineFit | null = null;
+  for (let hz = 20; hz <= 150 && hz < rate * 0.4; hz += spacing) {
+    const fit = sineFit(coarse, rate / block, hz);
+    if (fit && (!best || fit.amplitude > best.amplitude)) best = fit;
+  }
+  if (!best) return null;
+  const line = lineNear(samples, rate, best.frequency_hz, 2 * spacing, seconds);
+  return line && line.fit.amplitude > 12 * line.floor ? line : null;
+}
+
+function blockMeans(samples: Float64Array, block: number): Float64Array {
+  return Float64Array.from(
+    { length: Math.floor(samples.length / block) },
+    (_, b) => mean(samples.subarray(b * block, (b + 1) * block)) ?? Number.NaN,
+  );
+}
+
+/** Quiet samples as one trace with gaps, each stretch freed of its own level and slope; null below 100 ms. */
+function humTrace(voltage: Signal, quiet: readonly Stretch[]): { samples: Float64Array; from_s: number } | null {
+  const rate = voltage.rate_hz;
+  const usable = quiet.filter((one) => one.to - one.from >= 0.06 * rate);
+  const longest = usable.toSorted((a, b) => b.to - b.from - (a.to - a.from))[0];
+  if (!longest) return null;
+  const span = Math.round(humSpan_s * rate);
+  const chosen =
+    longest.to - longest.from >= 0.25 * rate
+      ? [{ from: longest.from, to: Math.min(longest.to, longest.from + span) }]
+      : usable.filter((one) => one.to - usable[0]!.from <= span);
+  if (total(chosen) < 0.1 * rate) return null;
+  const first = chosen[0]!.from;
+  const samples = new Float64Array(chosen.at(-1)!.to - first).fill(Number.NaN);
+  for (const one of chosen) {
+    const part = voltage.samples.subarray(one.from, one.to);
+    const block = Math.max(1, Math.round(rate / 200));
+    const means = blockMeans(part, block);
+    const line = linearFit(Float64Array.from(means.keys()), means);
+    const level = mean(part) ?? 0;
+    const middle = part.length / block / 2 - 0.5;
+    for (let i = 0; i < part.length; i++)
+      samples[one.from - first + i] = part[i]! - level - (line?.slope ?? 0) * (i / block - 0.5 - middle);
+  }
+  return { samples, from_s: timeAt(voltage, first) };
+}

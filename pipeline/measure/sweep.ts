@@ -1,0 +1,310 @@
+import { countFinite } from '../signal/statistics.ts';
+import { envelopeOf, excerptOf } from './envelope.ts';
+import { isBlocked, measureFiring, measureSpontaneous } from './firing.ts';
+import {
+  measureBaseline,
+  measureBridgeStep,
+  measureDeflections,
+  type PassiveInput,
+  stepResponse,
+  withoutStep,
+} from './passive.ts';
+import { clippedFraction, digitizerStep, hum, missingFraction, noise, sampleInterval } from './quality.ts';
+import { quantitiesOf } from './quantities.ts';
+import { absent, measured } from './reading.ts';
+import { measureSpikes } from './spikes.ts';
+import { type CommandReading, type Level, readCommand } from './stimulus.ts';
+import { gathered, indexAt, readable, type Stretch, spikeHoles, stimulusHoles, timeAt, without } from './stretches.ts';
+import type {
+  AbsenceCode,
+  Clamp,
+  MeasureContext,
+  Reading,
+  Readings,
+  Signal,
+  Spike,
+  Stimulus,
+  SweepInput,
+  SweepMeasure,
+} from './types.ts';
+import { measureVoltageClamp } from './voltage-clamp.ts';
+
+/** Columns of the drawn outline. */
+const outlineColumns = 600;
+
+/**
+ * Measures one sweep. Data never make it throw: every quantity of a sweep in its clamp mode comes with a value or with
+ * the reason why there is none.
+ *
+ * @param input voltage in mV and current in pA as recorded; samples that could not be read are NaN
+ * @param context what measuring must know of the class and the rig
+ */
+export function measureSweep(input: SweepInput, context: MeasureContext): SweepMeasure {
+  const voltage = usable(input.voltage);
+  const current = usable(input.current);
+  const measure = input.clamp === 'voltage' ? voltageClampSweep : currentClampSweep;
+  const sweep = measure(input, voltage, current, context);
+  return { ...sweep, readings: complete(sweep.readings, input.clamp) };
+}
+
+/** A signal with samples and a rate; others count as not recorded. */
+function usable(signal: Signal | null): Signal | null {
+  if (!signal || signal.samples.length === 0) return null;
+  return Number.isFinite(signal.rate_hz) && signal.rate_hz > 0 && Number.isFinite(signal.start_s) ? signal : null;
+}
+
+const sweepIds: Record<Clamp, string[]> = {
+  current: quantitiesOf('sweep').flatMap((entry) => (entry.clamp === 'voltage' ? [] : [entry.id])),
+  voltage: quantitiesOf('sweep').flatMap((entry) => (entry.clamp === 'current' ? [] : [entry.id])),
+};
+
+/** In the registry's order; a quantity that nothing above has spoken of is not measured in this clamp mode. */
+function complete(readings: Readings, clamp: Clamp): Readings {
+  return Object.fromEntries(sweepIds[clamp].map((id) => [id, readings[id] ?? absent('not-this-clamp')]));
+}
+
+const durationOf = (...signals: (Signal | null)[]): number =>
+  Math.max(0, ...signals.map((signal) => (signal ? signal.samples.length / signal.rate_hz : 0)));
+
+function currentClampSweep(
+  input: SweepInput,
+  voltage: Signal | null,
+  current: Signal | null,
+  context: MeasureContext,
+): SweepMeasure {
+  const command = readCommand(current, input.stated_stimulus, 'current');
+  const bias = input.bias_pa ?? null;
+  const carried = { bridge_mohm: input.bridge_mohm, bias_pa: bias };
+  const current_envelope = current && envelopeOf(current, outlineColumns);
+  if (!voltage || countFinite(voltage.samples) === 0) {
+    const why: AbsenceCode = voltage ? 'unreadable' : input.voltage ? 'sweep-too-short' : 'no-voltage';
+    return {
+      clamp: 'current',
+      duration_s: durationOf(voltage, current),
+      stimulus: command.stimulus,
+      readings: {
+        ...Object.fromEntries(sweepIds.current.map((id) => [id, absent(why)])),
+        ...stimulusReadings(command, current, bias),
+        ...(voltage ? { missing_fraction: missingFraction(voltage), sample_interval_us: sampleInterval(voltage) } : {}),
+      },
+      spikes: [],
+      depolarization_block: false,
+      remarks: command.remarks,
+      voltage_envelope: null,
+      current_envelope,
+      first_spike: null,
+      step_response: null,
+      spontaneous: null,
+      ...carried,
+    };
+  }
+
+  const { stimulus, remarks } = alignedTo(voltage, current, command);
+  const found = spikesAndBaseline(voltage, current, stimulus, command.levels, context);
+  const { spikes, passive, baseline } = found;
+  const quiet = quietStretches(passive);
+  const bridgeStep = measureBridgeStep(passive);
+  const readings: Readings = {
+    ...stimulusReadings({ ...command, stimulus }, current, bias),
+    ...baseline,
+    ...measureFiring(spikes, stimulus, voltage),
+    ...measureDeflections(passive, baseline['baseline_mv']!),
+    bridge_step_mv: bridgeStep,
+    access_resistance_mohm: accessFromBridge(input.bridge_mohm, bridgeStep, stimulus),
+    noise_rms_mv: noise(voltage, quiet, context.filter_khz),
+    ...hum(voltage, quiet, context.mains_hz),
+    clipped_fraction: clippedFraction(voltage),
+    missing_fraction: missingFraction(voltage),
+    quantum_mv: digitizerStep(voltage),
+    sample_interval_us: sampleInterval(voltage),
+    rise_samples: fewestOnRise(spikes),
+  };
+  return {
+    clamp: 'current',
+    duration_s: durationOf(voltage),
+    stimulus,
+    readings,
+    spikes,
+    depolarization_block: isBlocked(spikes, stimulus, voltage, context.slow),
+    remarks: [...command.remarks, ...remarks, ...found.remarks],
+    voltage_envelope: envelopeOf(voltage, outlineColumns),
+    current_envelope,
+    first_spike: spikes[0] ? excerptOf(voltage, spikes[0]) : null,
+    step_response: stepResponse(passive),
+    spontaneous: measureSpontaneous(spikes, stimulus, voltage, context),
+    ...carried,
+  };
+}
+
+/**
+ * Spikes need the baseline they are counted from, and the baseline must leave the spikes out: a median that a few
+ * spikes cannot move goes first, and is replaced once the spikes are known.
+ */
+function spikesAndBaseline(
+  voltage: Signal,
+  current: Signal | null,
+  stimulus: Stimulus,
+  levels: readonly Level[],
+  context: MeasureContext,
+): { spikes: Spike[]; passive: PassiveInput; baseline: Readings; remarks: string[] } {
+  const input = (spikes: readonly Spike[]): PassiveInput => ({ voltage, stimulus, levels, spikes, slow: context.slow });
+  const first = measureBaseline(input([]))['baseline_mv']!.value;
+  const found = measureSpikes({ voltage, current, stimulus, baseline_mv: first, context });
+  const passive = input(found.spikes);
+  const baseline = measureBaseline(passive);
+  const level = baseline['baseline_mv']!.value;
+  const spikes = found.spikes.map((spike) => withHeightFromRest(spike, level));
+  return { spikes, passive: { ...passive, spikes }, baseline, remarks: found.remarks };
+}
+
+function withHeightFromRest(spike: Spike, baseline: number | null): Spike {
+  const peak = spike.values['peak_mv'] ?? null;
+  const why = { ...spike.why };
+  const height = peak === null || baseline === null ? null : peak - baseline;
+  if (height === null)
+    why['height_from_rest_mv'] = baseline === null ? 'no-baseline' : (why['peak_mv'] ?? 'unresolved');
+  else delete why['height_from_rest_mv'];
+  return { ...spike, values: { ...spike.values, height_from_rest_mv: height }, why };
+}
+
+/** Holding and stimulus as readings, the bias that the file states added to what was held. */
+function stimulusReadings(command: CommandReading, current: Signal | null, bias: number | null): Readings {
+  const { stimulus, holding_sd } = command;
+  const at =
+    stimulus.onset_s === null || stimulus.end_s === null
+      ? {}
+      : { at: { from_s: stimulus.onset_s, to_s: stimulus.end_s } };
+  const stated = stimulus.from === 'stated' ? { note: 'as stated; no current was recorded' } : {};
+  const amplitude: Reading =
+    stimulus.amplitude !== null
+      ? measured(stimulus.amplitude, { ...at, ...stated })
+      : stimulus.kind === 'none'
+        ? measured(0, { note: 'no stimulus' })
+        : withoutStep(stimulus);
+  const holding: Reading =
+    stimulus.holding === null
+      ? absent('holding-unknown')
+      : measured(stimulus.holding + (bias ?? 0), {
+          ...(holding_sd === null ? {} : { sd: holding_sd }),
+          ...(bias ? { note: `of it ${bias} pA bias` } : stated),
+        });
+  return {
+    stimulus_pa: current || stimulus.from !== 'absent' ? amplitude : absent('no-stimulus'),
+    holding_pa: holding,
+  };
+}
+
+/** Access as the bridge saw it: what it took off, and what it left over at the edges of this step. */
+function accessFromBridge(bridge: number | null, step: Reading, stimulus: Stimulus): Reading {
+  if (bridge === null) return absent('fact-missing', { missing: ['bridge_mohm'] });
+  if (step.value === null) return absent(step.why ?? 'no-electrode-transient');
+  const pa = stimulus.amplitude!;
+  const left = (step.value / pa) * 1000;
+  const error = step.se === undefined ? {} : { se: Math.abs((step.se / pa) * 1000) };
+  return measured(bridge + left, {
+    ...error,
+    note: `bridge ${bridge} MΩ and what it left over, ${left.toFixed(1)} MΩ`,
+  });
+}
+
+function fewestOnRise(spikes: readonly Spike[]): Reading {
+  const counts = spikes.flatMap((spike) => {
+    const value = spike.values['rise_samples'] ?? null;
+    return value === null ? [] : [{ value, spike: spike.spike }];
+  });
+  if (counts.length === 0) return absent(spikes.length === 0 ? 'no-spikes' : 'unresolved');
+  const fewest = counts.reduce((least, one) => (one.value < least.value ? one : least));
+  return measured(fewest.value, { n: counts.length, at: { spike: fewest.spike } });
+}
+
+/** After a stimulus the membrane is not quiet for this long, s. */
+const afterStimulus_s = 0.1;
+
+/**
+ * Where the trace shows the recording and not the cell: outside stimuli and spikes. Where that is less than 50 ms, the
+ * later half of a step without spikes counts too.
+ */
+function quietStretches(input: PassiveInput): Stretch[] {
+  const { voltage, stimulus, levels, spikes, slow } = input;
+  const whole = { from: 0, to: voltage.samples.length };
+  const fromSpikes = spikeHoles(voltage, spikes, slow);
+  const clear = (holes: readonly Stretch[]): Stretch[] =>
+    without(whole, [...fromSpikes, ...holes]).flatMap((one) => readable(voltage.samples, one));
+  const outside = clear(stimulusHoles(voltage, stimulus, levels, afterStimulus_s));
+  const enough = gathered(voltage.samples, outside).length >= 0.05 * voltage.rate_hz;
+  if (enough || stimulus.kind !== 'step') return outside;
+  const settled = (stimulus.onset_s! + stimulus.end_s!) / 2;
+  return clear([
+    { from: indexAt(voltage, stimulus.onset_s!), to: indexAt(voltage, settled) },
+    { from: indexAt(voltage, stimulus.end_s!), to: indexAt(voltage, stimulus.end_s! + afterStimulus_s) },
+  ]);
+}
+
+/**
+ * The stimulus within the time of the voltage. Both are placed by their own clocks; a current of another length or
+ * rate is said so, and what lies beyond the voltage is cut.
+ */
+function alignedTo(
+  voltage: Signal,
+  current: Signal | null,
+  command: CommandReading,
+): { stimulus: Stimulus; remarks: string[] } {
+  const remarks: string[] = [];
+  let stimulus = command.stimulus;
+  const starts = voltage.start_s;
+  const ends = timeAt(voltage, voltage.samples.length);
+  if (current && stimulus.from === 'channel') {
+    if (Math.abs(current.rate_hz / voltage.rate_hz - 1) > 1e-6)
+      remarks.push(
+        `the current is sampled at ${current.rate_hz} Hz and the voltage at ${voltage.rate_hz} Hz; aligned by time`,
+      );
+    const currentEnds = timeAt(current, current.samples.length);
+    const slack = 1.5 / Math.min(current.rate_hz, voltage.rate_hz);
+    if (Math.abs(currentEnds - ends) > slack || Math.abs(current.start_s - starts) > slack)
+      remarks.push(
+        `the current runs from ${seconds(current.start_s)} to ${seconds(currentEnds)}, the voltage from ${seconds(starts)} to ${seconds(ends)}; aligned by time`,
+      );
+  }
+  if (stimulus.onset_s !== null && stimulus.end_s !== null) {
+    if (stimulus.onset_s >= ends || stimulus.end_s <= starts) {
+      remarks.push('the stimulus lies outside the recorded voltage');
+      stimulus = { ...stimulus, kind: 'none', onset_s: null, end_s: null, amplitude: null, edges_s: [] };
+    } else if (stimulus.end_s > ends + 1e-9) {
+      remarks.push('the voltage ends before the stimulus; the stimulus is cut to it');
+      stimulus = { ...stimulus, end_s: ends, edges_s: stimulus.edges_s.filter((edge) => edge < ends) };
+    }
+  }
+  return { stimulus, remarks };
+}
+
+const seconds = (value: number): string => `${Number(value.toPrecision(6))} s`;
+
+function voltageClampSweep(input: SweepInput, voltage: Signal | null, current: Signal | null): SweepMeasure {
+  const command = readCommand(voltage, null, 'voltage');
+  const { stimulus, levels } = command;
+  const recorded: Readings = current
+    ? {
+        clipped_fraction: clippedFraction(current),
+        missing_fraction: missingFraction(current),
+        sample_interval_us: sampleInterval(current),
+      }
+    : Object.fromEntries(
+        ['clipped_fraction', 'missing_fraction', 'sample_interval_us'].map((id) => [id, absent('no-current')]),
+      );
+  return {
+    clamp: 'voltage',
+    duration_s: durationOf(current, voltage),
+    stimulus,
+    readings: { ...recorded, ...measureVoltageClamp(current, voltage, stimulus, levels) },
+    spikes: [],
+    depolarization_block: false,
+    remarks: command.remarks,
+    voltage_envelope: voltage && envelopeOf(voltage, outlineColumns),
+    current_envelope: current && envelopeOf(current, outlineColumns),
+    first_spike: null,
+    step_response: null,
+    spontaneous: null,
+    bridge_mohm: input.bridge_mohm,
+    bias_pa: null,
+  };
+}
