@@ -1,6 +1,6 @@
 /** The archive's own files but folder.yaml and sidecars: almanac.yaml, recipes, decisions, events, criteria sets. */
 import { isQuantity, quantities } from '../measure/quantities.ts';
-import { checkFact, factKey, factKeys, nearestOf, wordList } from './fact-keys.ts';
+import { checkCellReference, checkFact, factKey, factKeys, nearestOf, wordList } from './fact-keys.ts';
 import {
   almanacSchema,
   criteriaSchema,
@@ -152,8 +152,7 @@ export function readDecisions(path: string, bytes: Uint8Array): { decisions: Dec
   for (const [index, entry] of (held.value ?? []).entries()) {
     const line = lineAt(held.tree, [index]);
     const written = spelled(held.tree, [index, 'cell']);
-    const apart = /~\d+$/.exec(written)?.[0] ?? '';
-    const id = checkFact('cell', apart === '' ? written : written.slice(0, -apart.length));
+    const id = checkCellReference(written);
     if (!id.ok) {
       problems.push(
         remark(
@@ -167,7 +166,7 @@ export function readDecisions(path: string, bytes: Uint8Array): { decisions: Dec
       );
       continue;
     }
-    decisions.push({ ...entry, cell: `${id.value}${apart}`, by: spelled(held.tree, [index, 'by']), line });
+    decisions.push({ ...entry, cell: String(id.value), by: spelled(held.tree, [index, 'by']), line });
   }
   return { decisions, problems };
 }

@@ -128,7 +128,7 @@ export function workOutCells(
   const groups = groupParts(parts, archive.cell_statements);
   const cells = groups.map((group) => cellOf(archive, group)).sort((a, b) => byText(a.id, b.id));
   problems.push(...cells.flatMap((cell) => cell.problems.filter((one) => one.code !== 'CELL_FILE_UNREAD')));
-  problems.push(...idleRows(archive, new Set(groups.map((group) => group.asked))));
+  problems.push(...idleRows(archive, new Set(groups.map((group) => group.id))));
   return { cells, problems };
 }
 
@@ -380,8 +380,8 @@ const disagreement = (fact: Fact, other: Fact['disagrees'][number]): PlacedProbl
   );
 
 function cellOf(archive: Archive, group: Group): CellRecord {
-  const { parts, sweeps } = orderSweeps(group.parts, archive.settings.timezone);
-  const sheet = Object.hasOwn(archive.cell_statements, group.asked) ? archive.cell_statements[group.asked]! : [];
+  const sheet = Object.hasOwn(archive.cell_statements, group.id) ? archive.cell_statements[group.id]! : [];
+  const { parts, sweeps } = orderSweeps(group.parts, sheet, archive.settings.timezone);
   const { facts, file_facts } = factsOfCell(group, parts, sheet);
   const stated = new Map<string, FoundFile['conditions'][number]>();
   for (const part of parts)

@@ -308,6 +308,13 @@ function checkCellId(written: string): CheckedFact {
   return { ok: true, value: id };
 }
 
+/** An id by which something speaks of a cell: like a stated one, or that of a cell kept apart (`id~2`). */
+export function checkCellReference(written: string): CheckedFact {
+  const apart = /~[1-9]\d*$/.exec(written.trim())?.[0] ?? '';
+  const checked = checkFact('cell', written.trim().slice(0, written.trim().length - apart.length));
+  return checked.ok ? { ok: true, value: `${checked.value}${apart}` } : checked;
+}
+
 /** Any text made into a cell id: other characters become hyphens, none of them doubled or at an end. */
 export function urlSafeId(written: string): string {
   const id = written

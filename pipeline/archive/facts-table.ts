@@ -1,6 +1,6 @@
 /** facts.csv as labs keep it: saved from a spreadsheet, with a byte order mark, semicolons, blank rows and quotes. */
 import { type CsvError, parse } from 'csv-parse/sync';
-import { checkFact, factKey, factKeys, nearestOf } from './fact-keys.ts';
+import { checkCellReference, checkFact, factKey, factKeys, nearestOf } from './fact-keys.ts';
 import type { Statement } from './types.ts';
 import { type ArchiveProblem, decodeUtf, loss, remark } from './yaml-file.ts';
 
@@ -101,7 +101,7 @@ export function readFactsTable(path: string, bytes: Uint8Array): FactsTable {
           'The values beyond the headings were not used. Check for a stray separator.',
         ),
       );
-    const id = checkFact('cell', record[cellColumn] ?? '');
+    const id = checkCellReference(record[cellColumn] ?? '');
     if (!id.ok) {
       sayOfColumn(
         'cell',
@@ -223,7 +223,7 @@ function readRow(
     // Sheets with a comma as decimal mark are saved with another separator.
     const spelled =
       kind === 'number' && separator !== ',' && /^[+-−–]?\d+,\d+$/.test(value) ? value.replace(',', '.') : value;
-    const checked = checkFact(key, spelled);
+    const checked = key === 'cell' ? checkCellReference(spelled) : checkFact(key, spelled);
     if (checked.ok)
       statements.push({ key, value: checked.value, origin: { level: 'facts.csv', path, line: row.line } });
     else

@@ -20,23 +20,29 @@ export interface Startable {
 interface Start {
   day_s: number | null;
   time_s: number | null;
+  /** Whether the time is this file's alone, and not one that a folder or table states for many. */
+  own: boolean;
 }
 
 /**
  * When a file's session began: what its sidecar says, else its own clock, else what folders or tables say (those speak
  * for many files, so they come last here).
  */
-export function startOf(part: Startable, timezone: string | null): Start {
+export function startOf(part: Startable, sheet: readonly Statement[], timezone: string | null): Start {
   const own = clockOf(part.description?.session_start ?? null, timezone);
   const stated = (key: string, sidecar: boolean): string | undefined => {
-    const found = part.statements.findLast((one) => one.key === key && (one.origin.level === 'sidecar') === sidecar);
+    const found = [...part.statements, ...sheet].findLast(
+      (one) => one.key === key && (one.origin.level === 'sidecar') === sidecar,
+    );
     return found === undefined ? undefined : String(found.value);
   };
   const date = stated('date', true) ?? own?.date ?? stated('date', false);
-  const time = stated('time', true) ?? own?.time ?? stated('time', false);
+  const ofFile = stated('time', true) ?? own?.time ?? null;
+  const time = ofFile ?? stated('time', false);
   return {
     day_s: date === undefined ? null : daySeconds(date),
-    time_s: time === undefined || time === null ? null : clockSeconds(time),
+    time_s: time === undefined ? null : clockSeconds(time),
+    own: ofFile !== null,
   };
 }
 
@@ -46,13 +52,14 @@ export function startOf(part: Startable, timezone: string | null): Start {
  */
 export function orderSweeps<Part extends Startable>(
   parts: readonly Part[],
+  sheet: readonly Statement[],
   timezone: string | null,
 ): { parts: Part[]; sweeps: Ordered[] } {
-  const starts = new Map(parts.map((part) => [part, startOf(part, timezone)]));
-  const known = parts.every((part) => starts.get(part)!.time_s !== null);
+  const starts = new Map(parts.map((part) => [part, startOf(part, sheet, timezone)]));
+  const one = new Set(parts.map((part) => part.path)).size === 1;
+  const known = parts.every((part) => starts.get(part)!.time_s !== null && (one || starts.get(part)!.own));
   const days = new Set(parts.map((part) => starts.get(part)!.day_s !== null));
   const comparable = known && days.size === 1;
-  const one = new Set(parts.map((part) => part.path)).size === 1;
   const keyed = parts.flatMap((part) => {
     const start = starts.get(part)!;
     const base = comparable ? (start.day_s ?? 0) + start.time_s! : 0;

@@ -24,6 +24,8 @@ interface Parts {
   table: TableMapping | null;
   /** Why a table that stands there cannot be used, null where none stands or it can. */
   tableLost: ArchiveProblem | null;
+  /** Whether a table stands there at all, usable or not. */
+  tableStated: boolean;
   electrodes: Record<string, Statement[]>;
   /** Why the file or folder holds no recording, '' where nobody says so. */
   other: string;
@@ -233,7 +235,11 @@ function sortOut(met: Met[]): SortedOut {
 /** The name a file was meant to have, null where its name is its own. */
 function misnamed(below: string, name: string): string | null {
   const lower = name.toLowerCase().replace(/\.yml$/, '.yaml');
-  if (lower === name) return null;
+  if (name.endsWith('.yaml') || name === 'facts.csv') {
+    // Systems that tell capitals apart would not find these.
+    const own = lower === 'folder.yaml' || (below === name && ownNames.includes(lower));
+    return own && lower !== name ? lower : null;
+  }
   if (below === name && ownNames.includes(lower)) return lower;
   if (lower === 'folder.yaml') return lower;
   return lower.endsWith('.yaml') ? name.replace(/\.ya?ml$/i, '.yaml') : null;
@@ -271,6 +277,7 @@ function readParts(below: string, bytes: Uint8Array): { parts: Parts; problems: 
     conditions: [],
     table: null,
     tableLost: null,
+    tableStated: false,
     electrodes: {},
     other: '',
   };
@@ -297,6 +304,7 @@ function readParts(below: string, bytes: Uint8Array): { parts: Parts; problems: 
   parts.other = held.value.other ?? '';
   const table = at('table');
   if (table && !(table.kind === 'scalar' && table.value === null)) {
+    parts.tableStated = true;
     const read = hold(below, table, tableSchema, ['table']);
     // Half a statement on how to read numbers is worse than none: one wrong key and the whole block is out.
     problems.push(
@@ -352,7 +360,6 @@ const homeless = (problem: ArchiveProblem): ArchiveProblem => {
     : problem;
 };
 
-const below = (folder: string, file: string): boolean => folder === '' || file.startsWith(`${folder}/`);
 const folderOf = (file: string): string => (file.includes('/') ? file.slice(0, file.lastIndexOf('/')) : '');
 
 /** One file of the archive with everything said about it, outer folders first. */
@@ -362,9 +369,10 @@ function foundFile(
   parts: ReadonlyMap<string, Parts>,
   defaults: readonly Statement[],
 ): FoundFile {
-  const said = [...parts.values()]
-    .filter((one) => nameOf(one.path) === 'folder.yaml' && below(folderOf(one.path), met.path))
-    .sort((a, b) => a.path.length - b.path.length);
+  const steps = met.path.split('/').slice(0, -1);
+  const said = [0, ...steps.map((_, index) => index + 1)].flatMap(
+    (depth) => parts.get([...steps.slice(0, depth), 'folder.yaml'].join('/')) ?? [],
+  );
   const sidecar = parts.get(`${met.path}.yaml`);
   if (sidecar) said.push(sidecar);
   const file: FoundFile = {
@@ -377,14 +385,14 @@ function foundFile(
     hints: {},
     statements: [...defaults, ...said.flatMap((one) => one.statements)],
     electrode_statements: sidecar?.electrodes ?? {},
-    conditions: said.flatMap((one) => one.conditions),
+    // Each file settles its own conditions, so none is shared between files.
+    conditions: said.flatMap((one) => one.conditions).map((one) => ({ ...one, facts: { ...one.facts } })),
   };
   const claim = claimOf(root, met, said, sidecar);
-  if (typeof claim === 'string') return { ...file, conditions: clone(file.conditions), reason: claim };
+  if ('reason' in claim) return { ...file, reason: claim.reason };
   file.kind = 'recording';
-  file.format = claim;
-  file.conditions = clone(file.conditions);
-  if (claim === 'text') {
+  file.format = claim.format;
+  if (claim.format === 'text') {
     const table = mergeTables(said.flatMap((one) => one.table ?? []));
     if (table) file.hints.table = table;
     const lost = said.findLast((one) => one.tableLost)?.tableLost;
@@ -392,10 +400,6 @@ function foundFile(
   }
   return file;
 }
-
-/** Each file settles its own conditions, so none is shared between files. */
-const clone = (conditions: readonly ConditionStatement[]): ConditionStatement[] =>
-  conditions.map((condition) => ({ ...condition, facts: { ...condition.facts } }));
 
 const blockedBy = (lost: ArchiveProblem): Problem => ({
   code: 'SIDECAR_UNUSABLE',
@@ -406,23 +410,29 @@ const blockedBy = (lost: ArchiveProblem): Problem => ({
 });
 
 /** The format whose reader is to try the file, or in words why none is. */
-function claimOf(root: string, met: Met, said: readonly Parts[], sidecar: Parts | undefined): FormatId | string {
-  if (met.barred) return met.barred.reason;
+function claimOf(
+  root: string,
+  met: Met,
+  said: readonly Parts[],
+  sidecar: Parts | undefined,
+): { format: FormatId } | { reason: string } {
+  if (met.barred) return { reason: met.barred.reason };
   const stated = said.findLast((one) => one.other !== '');
-  if (stated) return stated.other;
+  if (stated) return { reason: stated.other };
   const name = nameOf(met.path);
-  const byName = reasonByName(name);
   const format = recordingEndings[endingOf(name)];
   // A table in the sidecar is a person's word that the file is delimited text, whatever its name.
-  if (sidecar?.table || (sidecar?.tableLost && format === undefined)) return format ?? 'text';
-  if (byName !== null) return byName;
-  if (format === 'nwb') return format;
+  if (sidecar?.table || sidecar?.tableStated) return { format: format ?? 'text' };
+  const byName = reasonByName(name);
+  if (byName !== null) return { reason: byName };
+  if (format === 'nwb') return { format };
   const nature = headOf(path.join(root, met.path));
-  if (nature === null) return format ?? 'a file that could not be opened';
-  if (nature === 'binary') return notOpen;
-  if (format !== undefined) return nature === 'prose' ? 'text without a number in its first lines' : format;
-  if (nature === 'empty') return 'an empty file';
-  return 'text under a name that no reader claims; a sidecar with "table:" has it read as delimited text';
+  if (nature === null) return format ? { format } : { reason: 'a file that could not be opened' };
+  if (nature === 'binary') return { reason: notOpen };
+  if (format !== undefined)
+    return nature === 'prose' ? { reason: 'text without a number in its first lines' } : { format };
+  if (nature === 'empty') return { reason: 'an empty file' };
+  return { reason: 'text under a name that no reader claims; a sidecar with "table:" has it read as delimited text' };
 }
 
 const headBytes = 4096;
