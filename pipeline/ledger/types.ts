@@ -68,6 +68,8 @@ export interface NoteRow {
   title: string;
   date: string | null;
   author: string | null;
+  /** From the front matter; absent where none are stated. */
+  tags?: string[];
   /** Sanitised HTML. Links to cells are `cell:ID`, to notes `note:ID`, to images `file:PATH`; the site resolves them. */
   html: string;
   /** Text without markup, for search and excerpts. */
