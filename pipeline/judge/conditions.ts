@@ -58,6 +58,7 @@ function hold(reading: Reading | undefined, simple: Simple): Answer {
   if (!isPresent(reading)) return unheldReading(simple.subject, reading);
   const held: Held = {
     kind: 'held',
+    quantity: simple.quantity,
     reading,
     low: simple.low ?? null,
     high: simple.high ?? null,
@@ -74,10 +75,12 @@ function hold(reading: Reading | undefined, simple: Simple): Answer {
 const hasVoltage = (setting: Setting): boolean => setting.sweeps.some((sweep) => sweep.clamp === 'current');
 
 /** Potential while nothing but the holding current flows. */
-function quietPotential(setting: Setting): { reading: Reading | undefined; subject: string } {
+function quietPotential(setting: Setting): { reading: Reading | undefined; subject: string; quantity: string } {
   const rest = setting.measure.readings['resting_potential_mv'];
-  if (isPresent(rest)) return { reading: rest, subject: 'the resting potential' };
-  return { reading: cellReading(setting, 'baseline_mv'), subject: 'the baseline' };
+  const baseline = cellReading(setting, 'baseline_mv');
+  if (isPresent(rest) || !(baseline || rest === undefined))
+    return { reading: rest, subject: 'the resting potential', quantity: 'resting_potential_mv' };
+  return { reading: baseline, subject: 'the baseline', quantity: 'baseline_mv' };
 }
 
 const spikesFired = (setting: Setting): number => setting.sweeps.reduce((sum, sweep) => sum + sweep.spikes.length, 0);
@@ -85,9 +88,9 @@ const spikesFired = (setting: Setting): number => setting.sweeps.reduce((sum, sw
 const noCell: CellQuestion = (setting) => {
   // A cell that fires is there; a voltage-clamp recording shows no potential of its own.
   if (!hasVoltage(setting) || spikesFired(setting) > 0) return null;
-  const { reading, subject } = quietPotential(setting);
+  const { reading, subject, quantity } = quietPotential(setting);
   return hold(reading, {
-    quantity: 'baseline_mv',
+    quantity,
     subject,
     high: limits.emptyPipetteMv,
     name: `the ${amount('baseline_mv', limits.emptyPipetteMv)} that an empty or lost pipette stays above`,
@@ -98,9 +101,9 @@ const noCell: CellQuestion = (setting) => {
 
 const baselineNegative: CellQuestion = (setting) => {
   if (!hasVoltage(setting)) return null;
-  const { reading, subject } = quietPotential(setting);
+  const { reading, subject, quantity } = quietPotential(setting);
   return hold(reading, {
-    quantity: 'baseline_mv',
+    quantity,
     subject,
     high: 0,
     name: '0 mV',
@@ -133,7 +136,7 @@ const filterPassesRise: CellQuestion = (setting) => {
     quantity: 'max_rise_v_per_s',
     subject,
     high,
-    name: `the ${amount('max_rise_v_per_s', high)} that a ${corner} kHz filter passes with less than a quarter lost`,
+    name: `the ${amount('max_rise_v_per_s', high)} that a filter at ${corner} kHz passes with less than a quarter lost`,
     meaning: 'the true rise was steeper, and the peak higher, than this recording shows',
     uncertainty: 0.1 * high,
   });
@@ -141,9 +144,7 @@ const filterPassesRise: CellQuestion = (setting) => {
 
 const filterBelowSampling: CellQuestion = (setting) => {
   const subject = 'the sampling interval';
-  const reading =
-    cellReading(setting, 'sample_interval_us') ??
-    (setting.circumstances.rate_hz ? { value: 1e6 / setting.circumstances.rate_hz } : undefined);
+  const reading = cellReading(setting, 'sample_interval_us');
   const corner = setting.circumstances.filter_khz;
   if (!isPresent(reading)) return unheldReading(subject, reading);
   if (corner === null) return unheld(subject, 'the filter corner is not known', ['filter_khz']);
@@ -152,7 +153,7 @@ const filterBelowSampling: CellQuestion = (setting) => {
     quantity: 'sample_interval_us',
     subject,
     high,
-    name: `the ${amount('sample_interval_us', high)} that a ${corner} kHz filter asks for`,
+    name: `the ${amount('sample_interval_us', high)} that a filter at ${corner} kHz asks for`,
     meaning: 'what the filter lets through folds back into the trace as noise',
     // Corners are nominal: about a tenth.
     uncertainty: 0.1 * high,
@@ -245,7 +246,7 @@ const bridgeError: CellQuestion = (setting) => {
 
 const clippedMeaning = 'what lay beyond the recorder’s range is lost, peaks first';
 const clipping = (reading: Reading | undefined, subject: string): Answer =>
-  hold(reading, { quantity: 'clipped_fraction', subject, high: 0, name: 'none at all', meaning: clippedMeaning });
+  hold(reading, { quantity: 'clipped_fraction', subject, high: 0, name: 'the limit of zero', meaning: clippedMeaning });
 
 const missing = (reading: Reading | undefined, subject: string): Answer =>
   hold(reading, {

@@ -57,8 +57,10 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
   const { reading, low, high, uncertainty, shifts } = answer;
   const comparison: Comparison = compareReadings(reading.value, shifts, low, high, uncertainty);
   const readAt = place.sweep === null ? reading.at?.sweep : undefined;
+  const judged = answer.quantity ?? entry.quantity;
   return {
     ...shared,
+    quantity: judged,
     outcome: comparison.outcome,
     value: reading.value,
     uncertainty,
@@ -67,7 +69,7 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
     margin: comparison.margin,
     at_s: reading.at?.from_s ?? null,
     sentence: tell({
-      quantity: entry.quantity,
+      quantity: judged,
       subject: readAt === undefined ? answer.subject : `${answer.subject} (sweep ${readAt})`,
       value: reading.value,
       n: reading.n ?? null,

@@ -13,29 +13,31 @@ function digits(value: number, decimals: number): string {
 const withUnit = (text: string, unit: string): string =>
   unit === '' ? text : unit === '%' ? `${text} %` : `${text} ${unit}`;
 
+/** Shares are told in percent: '0.03 %' reads where '0.0003' does not. */
+function written(quantityId: string, value: number): string {
+  const { decimals, unit } = quantity(quantityId);
+  if (quantityId.endsWith('_fraction')) return `${Number(digits(100 * Math.abs(value), decimals - 2))} %`;
+  return withUnit(digits(value, decimals), unit);
+}
+
 /**
  * A number of one quantity with its unit: '+72.4 mV', '0.84 ms'. Potentials against the bath carry their sign.
  * @throws RangeError for an id that the registry does not hold
  */
 export function amount(quantityId: string, value: number): string {
-  const { decimals, unit, absolute_potential } = quantity(quantityId);
-  const text = digits(value, decimals);
-  return withUnit(absolute_potential && value > 0 ? `+${text}` : text, unit);
+  const text = written(quantityId, value);
+  return quantity(quantityId).absolute_potential && value > 0 ? `+${text}` : text;
 }
 
 /** A difference of two numbers of one quantity, without sign: '11.9 mV'. */
-export function difference(quantityId: string, value: number): string {
-  const { decimals, unit } = quantity(quantityId);
-  return withUnit(digits(Math.abs(value), decimals), unit);
-}
+export const difference = (quantityId: string, value: number): string => written(quantityId, Math.abs(value));
 
 /** A range of one quantity: '0.31 to 1.60 ms', 'at most 0.35', 'at least 60.0 mV'. */
 export function span(quantityId: string, low: number | null, high: number | null): string {
   if (low === null) return high === null ? 'any value' : `at most ${amount(quantityId, high)}`;
   if (high === null) return `at least ${amount(quantityId, low)}`;
-  const unit = quantity(quantityId).unit;
-  const first = amount(quantityId, low);
-  return `${unit === '' ? first : first.slice(0, -unit.length - 1)} to ${amount(quantityId, high)}`;
+  // The unit is said once.
+  return `${amount(quantityId, low).replace(/ \S+$/, '')} to ${amount(quantityId, high)}`;
 }
 
 /** Mean temperature as people write it: '33 °C', '32.5 °C'. */

@@ -16,6 +16,8 @@ export interface Setting {
 /** A number with its limits, ready to be compared. */
 export interface Held {
   kind: 'held';
+  /** The quantity judged, where it is not the registry's own. */
+  quantity?: string;
   reading: Reading & { value: number };
   low: number | null;
   high: number | null;

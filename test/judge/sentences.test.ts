@@ -1,0 +1,63 @@
+import { describe, expect, test } from 'vitest';
+import { amount, celsius, count, difference, listed, span, tellMissing } from '../../pipeline/judge/sentences.ts';
+import { finding, read } from './made.ts';
+
+describe('numbers in words', () => {
+  test.each([
+    ['a potential above the bath', amount('peak_mv', 72.4), '+72.4 mV'],
+    ['a potential below it', amount('peak_mv', -0.04), '−0.04 mV'],
+    ['zero has no sign', amount('peak_mv', 0), '0.0 mV'],
+    ['a width', amount('half_width_ms', 0.84), '0.840 ms'],
+    ['a count', amount('rise_samples', 4), '4'],
+    ['a share', amount('clipped_fraction', 0.0003), '0.03 %'],
+    ['a tiny share is not shown as none', amount('missing_fraction', 0.0000012), '0.00012 %'],
+    ['a difference has no sign', difference('peak_mv', -11.93), '11.9 mV'],
+    ['a difference that would round away', difference('peak_mv', 0.012), '0.012 mV'],
+    ['a span says its unit once', span('half_width_ms', 0.3, 1.6), '0.300 to 1.600 ms'],
+    ['a span without a lower end', span('sag_fraction', null, 0.35), 'at most 35 %'],
+    ['a span without an upper end', span('peak_mv', 10, null), 'at least +10.0 mV'],
+    ['a whole temperature', celsius(33), '33 °C'],
+    ['a temperature with a tenth', celsius(32.54), '32.5 °C'],
+    ['one', count(1, 'sweep'), '1 sweep'],
+    ['several', count(0, 'sweep'), '0 sweeps'],
+    ['a list', listed(['a', 'b', 'c']), 'a, b and c'],
+  ])('%s', (_name, text, expected) => expect(text).toBe(expected));
+  test('an unknown quantity is our own bug and says so', () => expect(() => amount('nonsense', 1)).toThrow(/nonsense/));
+});
+
+describe('sentences', () => {
+  const peak = (value: number, cell = {}) =>
+    finding('peak-below-sodium', { readings: { peak_mv: read(value) }, ...cell }).sentence;
+  test('outside', () =>
+    expect(peak(72.4)).toBe(
+      'The peak of the first spike (sweep 0), +72.4 mV, lies 11.9 mV above E_Na (+60.5 mV at 33 °C); no sodium spike can do that.',
+    ));
+  test('near the limit', () =>
+    expect(peak(61.5)).toBe(
+      'The peak of the first spike (sweep 0), +61.5 mV, lies 1.0 mV above E_Na (+60.5 mV at 33 °C), inside the uncertainty of ±3.0 mV: too close to call.',
+    ));
+  test('within', () =>
+    expect(peak(40)).toBe(
+      'The peak of the first spike (sweep 0), +40.0 mV, stays 20.5 mV below E_Na (+60.5 mV at 33 °C).',
+    ));
+  test('outside under both readings says which one it speaks of', () =>
+    expect(peak(90, { circumstances: { reading: 'recorded', junction: 'unstated', ljp_applied_mv: 0 } })).toBe(
+      'The peak of the first spike (sweep 0), +90.0 mV, read as +75.8 mV with the junction potential removed, lies 15.3 mV above E_Na (+60.5 mV at 33 °C); no sodium spike can do that.',
+    ));
+  test('undecided without the junction state', () =>
+    expect(peak(70, { circumstances: { reading: 'recorded', junction: 'unstated', ljp_applied_mv: 0 } })).toBe(
+      'The peak of the first spike (sweep 0), +70.0 mV, comes out differently against E_Na (+60.5 mV at 33 °C) with and without the junction potential; state “junction” to settle it.',
+    ));
+  test('a missing fact is named', () =>
+    expect(tellMissing('the peak of the first spike', 'E_Na is not known', ['bath', 'pipette'], null)).toBe(
+      'The peak of the first spike was not judged: E_Na is not known. State “bath” and “pipette” to have it judged.',
+    ));
+  test('a later condition is named first', () =>
+    expect(tellMissing('the noise', 'it was not measured', [], 'TTX')).toBe(
+      'In the condition “TTX”, the noise was not judged: it was not measured.',
+    ));
+  test('n stands beside a median', () =>
+    expect(finding('rest-above-potassium').sentence).toBe(
+      'The resting potential, −79.0 mV (n = 12), stays 25.0 mV above E_K (−104.0 mV at 33 °C).',
+    ));
+});
