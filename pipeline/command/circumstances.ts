@@ -20,7 +20,10 @@ export function shippedClass(settings: Settings, classId: string | null): string
 
 export function measureContext(facts: FactValues, settings: Settings, filterKhz: number | null): MeasureContext {
   return {
-    ...spikeCriteria(shippedClass(settings, textFact(facts, 'class'))),
+    ...spikeCriteria(
+      shippedClass(settings, textFact(facts, 'class')),
+      textFact(facts, 'spike_ion') as Circumstances['spike_ion'],
+    ),
     filter_khz: numberFact(facts, 'filter_khz') ?? filterKhz,
     mains_hz: numberFact(facts, 'mains_hz') ?? settings.mains_hz,
     capacitance_pf: numberFact(facts, 'capacitance_pf'),
