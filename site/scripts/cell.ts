@@ -1,0 +1,2 @@
+/** What the page of one cell does with scripts. */
+export {};

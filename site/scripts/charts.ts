@@ -1,0 +1,2 @@
+/** What charts do with scripts. */
+export {};
