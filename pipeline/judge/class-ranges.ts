@@ -1,6 +1,5 @@
 /**
- * Cell classes that ship with the tool: what carries their spike, how their spikes are found, and within which range
- * published cells lie. The numbers follow from `class-studies.ts` by `envelope.ts` (the studies' means ± 3
+ * Cell classes that ship with the tool: what carries their spike, and within which range published cells lie. The numbers follow from `class-studies.ts` by `envelope.ts` (the studies' means ± 3
  * deviations, printed ranges taken in, wide practice ranges beneath); a test derives them again.
  */
 import type { StudyReading } from './class-studies.ts';
@@ -47,13 +46,9 @@ export interface ClassInfo {
   animal: 'mammal' | 'squid' | 'any';
   /** Body temperature of the animal, or that of its sea, °C; null for `any`. */
   temperature_c: number | null;
-  /** How spikes of the class are found: `rise_criterion_v_per_s` null means 5 % of the spike’s own maximum rise. */
-  spikes: { rise_criterion_v_per_s: number | null; prominence_mv: number; ahp_window_ms: number; slow: boolean };
   ranges: Readonly<Record<string, ClassRange>>;
 }
 
-const fast = { rise_criterion_v_per_s: 20, prominence_mv: 20, ahp_window_ms: 60, slow: false } as const;
-const slow = { rise_criterion_v_per_s: null, prominence_mv: 20, ahp_window_ms: 60, slow: true } as const;
 const mammal = { animal: 'mammal', temperature_c: 37 } as const;
 
 type Row = [
@@ -78,7 +73,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Cortical pyramidal neuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -88,
@@ -178,7 +172,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Hippocampal pyramidal neuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -81,
@@ -276,7 +269,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Fast-spiking interneuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -85,
@@ -349,7 +341,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Somatostatin interneuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -75,
@@ -411,7 +402,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Purkinje cell',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -76,
@@ -491,7 +481,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Midbrain dopaminergic neuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: { ...fast, rise_criterion_v_per_s: 10, ahp_window_ms: 150 },
     ranges: table({
       threshold_mv: [
         -53,
@@ -535,7 +524,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Small sensory neuron',
     spike_ion: 'mixed',
     ...mammal,
-    spikes: { ...fast, rise_criterion_v_per_s: 10, ahp_window_ms: 100 },
     ranges: table({
       resting_potential_mv: [
         -75,
@@ -598,7 +586,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Large sensory neuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: { ...fast, ahp_window_ms: 100 },
     ranges: table({
       resting_potential_mv: [
         -76,
@@ -678,7 +665,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Motoneuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: { ...fast, ahp_window_ms: 200 },
     ranges: table({
       resting_potential_mv: [
         -80,
@@ -758,7 +744,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Stem-cell-derived neuron',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: { ...fast, rise_criterion_v_per_s: 10 },
     ranges: table({
       resting_potential_mv: [
         -82,
@@ -811,7 +796,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Ventricular myocyte',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: { ...slow, prominence_mv: 40, ahp_window_ms: 800 },
     ranges: table({
       resting_potential_mv: [
         -106,
@@ -864,7 +848,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Stem-cell-derived cardiomyocyte',
     spike_ion: 'mixed',
     ...mammal,
-    spikes: { ...slow, prominence_mv: 30, ahp_window_ms: 1500 },
     ranges: table({
       resting_potential_mv: [
         -80,
@@ -926,7 +909,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Sinoatrial node cell',
     spike_ion: 'calcium',
     ...mammal,
-    spikes: { ...slow, prominence_mv: 30, ahp_window_ms: 600 },
     ranges: table({
       maximum_diastolic_potential_mv: [
         -77,
@@ -961,7 +943,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Skeletal muscle fibre',
     spike_ion: 'sodium',
     ...mammal,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -95,
@@ -998,7 +979,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     spike_ion: 'sodium',
     animal: 'squid',
     temperature_c: 18.5,
-    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -75,
@@ -1042,7 +1022,6 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Chromaffin cell',
     spike_ion: 'mixed',
     ...mammal,
-    spikes: { ...fast, rise_criterion_v_per_s: 10 },
     ranges: table({
       resting_potential_mv: [
         -88,
@@ -1073,14 +1052,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
       ],
     }),
   },
-  any: {
-    label: 'Any cell (physics only)',
-    spike_ion: null,
-    animal: 'any',
-    temperature_c: null,
-    spikes: fast,
-    ranges: table({}),
-  },
+  any: { label: 'Any cell (physics only)', spike_ion: null, animal: 'any', temperature_c: null, ranges: table({}) },
 };
 
 const isShipped = (id: string): id is ShippedClass => Object.hasOwn(classRanges, id);

@@ -56,7 +56,9 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
     };
   const { reading, low, high, uncertainty, shifts } = answer;
   const comparison: Comparison = compareReadings(reading.value, shifts, low, high, uncertainty);
-  const readAt = place.sweep === null ? reading.at?.sweep : undefined;
+  // A median has no place of its own: `at` then names the sweep nearest to it.
+  const single = (reading.n ?? 1) <= 1 || entry.quantity === 'rise_samples';
+  const readAt = place.sweep === null && single ? reading.at?.sweep : undefined;
   const judged = answer.quantity ?? entry.quantity;
   return {
     ...shared,
@@ -67,7 +69,7 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
     limit_low: low,
     limit_high: high,
     margin: comparison.margin,
-    at_s: reading.at?.from_s ?? null,
+    at_s: single ? (reading.at?.from_s ?? null) : null,
     sentence: tell({
       quantity: judged,
       subject: readAt === undefined ? answer.subject : `${answer.subject} (sweep ${readAt})`,

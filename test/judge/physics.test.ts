@@ -70,7 +70,10 @@ describe('peak against E_Na', () => {
     ['pipette without sodium', { e_na: null, pipette_sodium_mm: 0 }, []],
     ['pipette that states no sodium', { pipette_sodium_mm: null }, ['pipette']],
   ] as const)('not measured: %s', (_name, changes, missing) => {
-    const found = finding('peak-below-sodium', { circumstances: changes, readings: { peak_mv: read(200) } });
+    const found = finding('peak-below-sodium', {
+      circumstances: { ...changes } as Made['circumstances'],
+      readings: { peak_mv: read(200) },
+    });
     expect(found).toMatchObject({ outcome: 'not measured', value: null, margin: null, missing });
     expect(found.sentence).toMatch(/was not judged: .+\./);
   });
