@@ -22,7 +22,10 @@ export interface Buffer {
   source: string;
 }
 
-const good = 'Good et al. 1966, Biochemistry 5:467–477 (from memory)';
+/** The pKa at 20, 25 and 37 °C were read in a chemical supplier's buffer table, which follows Good. */
+const good = 'buffer tables after Good et al. 1966, Biochemistry 5:467–477';
+const alberty =
+  'Alberty 2003, Thermodynamics of Biochemical Reactions, table 1.2, moved to 0.15 M ionic strength by its Debye–Hückel rule';
 const martell = 'Martell & Smith, Critical Stability Constants, 0.1 M (from memory)';
 const usual = 'apparent constant near 0.15 M ionic strength (from memory)';
 
@@ -62,11 +65,11 @@ const triphosphate = (name: string): Buffer => ({
     { ion: `H${name}3-`, valence: -3 },
     { ion: `${name}4-`, valence: -4 },
   ],
-  pka: [4.06, 6.5],
+  pka: [3.95, 6.5],
   celsius: 25,
   perKelvin: [0, 0],
   binds: { Mg: { bare: 4.1, protonated: 2.2 }, Ca: { bare: 3.8, protonated: 2.0 } },
-  source: `${martell}, lowered for the potassium it binds`,
+  source: `${alberty}, MgATP and HATP lowered by 0.1 for the potassium they compete with (from memory)`,
 });
 const diphosphate = (name: string): Buffer => ({
   forms: [
@@ -74,19 +77,19 @@ const diphosphate = (name: string): Buffer => ({
     { ion: `H${name}2-`, valence: -2 },
     { ion: `${name}3-`, valence: -3 },
   ],
-  pka: [3.9, 6.4],
+  pka: [3.89, 6.4],
   celsius: 25,
   perKelvin: [0, 0],
   binds: { Mg: { bare: 3.1, protonated: 1.5 }, Ca: { bare: 2.8, protonated: 1.5 } },
-  source: martell,
+  source: alberty,
 });
 
 export const buffers: Readonly<Record<string, Buffer>> = {
   HEPES: acid('HEPES', 7.55, -0.014, good),
-  MES: acid('MES', 6.15, -0.011, good),
-  MOPS: acid('MOPS', 7.2, -0.013, good),
+  MES: acid('MES', 6.16, -0.011, good),
+  MOPS: acid('MOPS', 7.28, -0.015, good),
   TES: acid('TES', 7.5, -0.02, good),
-  BES: acid('BES', 7.15, -0.016, good),
+  BES: acid('BES', 7.17, -0.016, good),
   PIPES: {
     forms: [
       { ion: 'PIPES-', valence: -1 },
@@ -94,10 +97,10 @@ export const buffers: Readonly<Record<string, Buffer>> = {
     ],
     pka: [6.8],
     celsius: 20,
-    perKelvin: [-0.0085],
+    perKelvin: [-0.0083],
     source: good,
   },
-  Tris: base('Tris', 8.1, -0.028, usual),
+  Tris: base('Tris', 8.06, -0.028, good),
   NMDG: base('NMDG', 9.6, -0.03, usual),
   '4-aminopyridine': base('4-aminopyridine', 9.17, -0.028, usual),
   phosphate: {
@@ -105,10 +108,10 @@ export const buffers: Readonly<Record<string, Buffer>> = {
       { ion: 'H2PO4', valence: -1 },
       { ion: 'HPO4', valence: -2 },
     ],
-    pka: [6.81],
+    pka: [6.73],
     celsius: 25,
     perKelvin: [-0.0028],
-    source: usual,
+    source: alberty,
   },
   EGTA: {
     forms: chain('EGTA', 0, 5),

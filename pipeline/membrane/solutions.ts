@@ -150,7 +150,8 @@ function mostAbundant(totals: ReadonlyMap<string, number>, valence: 1 | -1): str
  * The ions of a solution at its pH: salts dissociated, buffers in their forms, calcium and magnesium shared out
  * between chelators and nucleotides with published apparent constants, and the ion of the titrant in the amount that
  * cancels the charge. A solution in carbogen with bicarbonate and no stated titrant cancels it with bicarbonate, which
- * the gas supplies. Ion pairs of sulfate, gluconate, phosphate and bicarbonate are left out.
+ * the gas supplies. Left out: ion pairs of sulfate, phosphate and bicarbonate; gluconate, which holds calcium with
+ * 53 mM (Anal Biochem 2014, abstract) and so matters only where nothing stronger binds; other metals on chelators.
  * @param recipe amounts in mmol/L; pH 0 to 14 or null
  * @param celsius temperature at which it was brought to pH, °C, above absolute zero
  * @returns free ions with 95 % half-widths, notes on everything assumed
@@ -218,6 +219,10 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
     notes.push(
       `Calcium and magnesium bound by ${chelators.join(', ')} are approximate, from apparent constants: ${[...new Set(chelators.map((name) => buffers[name]!.source))].join('; ')}.`,
     );
+
+  const others = ['Ba', 'Sr', 'Co', 'Cd', 'Mn', 'Ni', 'Zn', 'Gd', 'La'].filter((name) => total(name) > 0);
+  if (chelators.length > 0 && others.length > 0)
+    notes.push(`${others.join(', ')} held by ${chelators.join(', ')} is not computed: all of it is counted as free.`);
 
   const openSum = [...open].reduce((sum, [name, amount]) => (name === ion ? sum : sum + amount / 2), 0);
   const ions: DissolvedIon[] = [];
