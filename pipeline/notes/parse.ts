@@ -94,7 +94,8 @@ interface Drawn {
 function placeFigures(root: Root, cellIds: ReadonlySet<string>): Drawn {
   const drawn: Drawn = { figures: [], problems: [] };
   visit(root, (node: Nodes, index, parent) => {
-    if (node.type === 'html' && !/^<!--[\s\S]*-->$/.test(node.value.trim()))
+    // A comment is no loss, and a closing tag was announced by its opening one.
+    if (node.type === 'html' && !/^(?:<!--[\s\S]*-->|<\/[a-z][\w-]*\s*>)$/i.test(node.value.trim()))
       drawn.problems.push({
         line: lineOf(node),
         message: `Raw HTML is left out: "${node.value.trim().slice(0, 40)}".`,

@@ -359,6 +359,7 @@ describe('hostile notes', () => {
   it('raw HTML is said to be left out, comments are not', () => {
     expect(said(note('A\n\n<div>b</div>'))).toMatch(/^3: Raw HTML is left out: "<div>b<\/div>"\. Write it in Markdown/);
     expect(note('<!-- to do -->').problems).toEqual([]);
+    expect(note('a <b>c</b>').problems).toHaveLength(1);
   });
   it('raw HTML between backticks is shown as text', () =>
     expect(note('`<script>`').html).toBe('<p><code>&#x3C;script></code></p>'));
