@@ -46,9 +46,13 @@ export interface ClassInfo {
   animal: 'mammal' | 'squid' | 'any';
   /** Body temperature of the animal, or that of its sea, °C; null for `any`. */
   temperature_c: number | null;
+  /** How spikes of the class are found, as measuring does it: `rise_criterion_v_per_s` null means 5 % of the spike’s own maximum rise. */
+  spikes: { rise_criterion_v_per_s: number | null; prominence_mv: number; ahp_window_ms: number; slow: boolean };
   ranges: Readonly<Record<string, ClassRange>>;
 }
 
+const fast = { rise_criterion_v_per_s: 20, prominence_mv: 20, ahp_window_ms: 60, slow: false } as const;
+const slow = { rise_criterion_v_per_s: null, slow: true } as const;
 const mammal = { animal: 'mammal', temperature_c: 37 } as const;
 
 type Row = [
@@ -73,6 +77,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Cortical pyramidal neuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -88,
@@ -172,6 +177,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Hippocampal pyramidal neuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -81,
@@ -269,6 +275,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Fast-spiking interneuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -85,
@@ -341,6 +348,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Somatostatin interneuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -75,
@@ -402,6 +410,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Purkinje cell',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -76,
@@ -481,6 +490,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Midbrain dopaminergic neuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: { ...fast, rise_criterion_v_per_s: 10, ahp_window_ms: 200 },
     ranges: table({
       threshold_mv: [
         -53,
@@ -524,6 +534,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Small sensory neuron',
     spike_ion: 'mixed',
     ...mammal,
+    spikes: { ...fast, rise_criterion_v_per_s: 10, ahp_window_ms: 200 },
     ranges: table({
       resting_potential_mv: [
         -75,
@@ -586,6 +597,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Large sensory neuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -76,
@@ -665,6 +677,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Motoneuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: { ...fast, ahp_window_ms: 200 },
     ranges: table({
       resting_potential_mv: [
         -80,
@@ -744,6 +757,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Stem-cell-derived neuron',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: { ...fast, rise_criterion_v_per_s: 10, ahp_window_ms: 100 },
     ranges: table({
       resting_potential_mv: [
         -82,
@@ -796,6 +810,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Ventricular myocyte',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: { ...slow, prominence_mv: 40, ahp_window_ms: 2000 },
     ranges: table({
       resting_potential_mv: [
         -106,
@@ -848,6 +863,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Stem-cell-derived cardiomyocyte',
     spike_ion: 'mixed',
     ...mammal,
+    spikes: { ...slow, prominence_mv: 30, ahp_window_ms: 3000 },
     ranges: table({
       resting_potential_mv: [
         -80,
@@ -909,6 +925,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Sinoatrial node cell',
     spike_ion: 'calcium',
     ...mammal,
+    spikes: { ...slow, prominence_mv: 20, ahp_window_ms: 1000 },
     ranges: table({
       maximum_diastolic_potential_mv: [
         -77,
@@ -943,6 +960,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Skeletal muscle fibre',
     spike_ion: 'sodium',
     ...mammal,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -95,
@@ -979,6 +997,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     spike_ion: 'sodium',
     animal: 'squid',
     temperature_c: 18.5,
+    spikes: fast,
     ranges: table({
       resting_potential_mv: [
         -75,
@@ -1022,6 +1041,7 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
     label: 'Chromaffin cell',
     spike_ion: 'mixed',
     ...mammal,
+    spikes: { ...fast, rise_criterion_v_per_s: 10, ahp_window_ms: 200 },
     ranges: table({
       resting_potential_mv: [
         -88,
@@ -1052,7 +1072,14 @@ export const classRanges: Readonly<Record<ShippedClass, ClassInfo>> = {
       ],
     }),
   },
-  any: { label: 'Any cell (physics only)', spike_ion: null, animal: 'any', temperature_c: null, ranges: table({}) },
+  any: {
+    label: 'Any cell (physics only)',
+    spike_ion: null,
+    animal: 'any',
+    temperature_c: null,
+    spikes: fast,
+    ranges: table({}),
+  },
 };
 
 const isShipped = (id: string): id is ShippedClass => Object.hasOwn(classRanges, id);

@@ -5,6 +5,7 @@ import { type ClassRange, classRanges, shippedClass, shippedClasses } from '../.
 import { practiceRanges, type StudyRow, studyRows } from '../../pipeline/judge/class-studies.ts';
 import { cellSd, deriveRange, quantitiesOfClass, rangeOfRows, scaling } from '../../pipeline/judge/envelope.ts';
 import { quantity } from '../../pipeline/measure/quantities.ts';
+import { spikeCriteria } from '../../pipeline/measure/spike-criteria.ts';
 import { finding, judged, outcome, read } from './made.ts';
 
 const row = (values: Partial<StudyRow>): StudyRow =>
@@ -96,6 +97,9 @@ describe('the table of ranges', () => {
         expect(range.temperature_c[0]).toBeLessThanOrEqual(range.temperature_c[1]);
       }
     },
+  );
+  test.each(shippedClasses)('%s: spikes are told as measuring finds them', (id) =>
+    expect(classRanges[id].spikes).toEqual(spikeCriteria(id)),
   );
   test('“any” has none: physics only', () => expect(classRanges.any.ranges).toEqual({}));
   test('an unknown class is judged by physics only', () => expect(shippedClass('toString')).toBe('any'));
