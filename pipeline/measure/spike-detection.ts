@@ -69,6 +69,7 @@ export function detectSpikes(trace: SpikeTrace, stimulus: Stimulus, context: Mea
     return { spikes: [], remarks };
   }
   const tally = { narrow: 0, slow: 0, cut: 0, passive: 0, raised: 0 };
+  let highest = 0;
   const spikes: FoundSpike[] = [];
   let floor = 0;
   for (const candidate of candidates) {
@@ -81,7 +82,8 @@ export function detectSpikes(trace: SpikeTrace, stimulus: Stimulus, context: Mea
       tally[verdict]++;
       continue;
     }
-    if (verdict.raised) tally.raised++;
+    if (verdict.raised > 0) tally.raised++;
+    highest = Math.max(highest, verdict.raised);
     spikes.push(verdict.spike);
     floor = candidate.peak;
   }
@@ -97,12 +99,15 @@ export function detectSpikes(trace: SpikeTrace, stimulus: Stimulus, context: Mea
   if (tally.cut > 0) remarks.push('A rise that the sweep cuts off before its peak is not counted as a spike.');
   if (tally.raised > 0)
     remarks.push(
-      `Noise would cross the dV/dt criterion: it was raised to ${clearOfNoise} standard deviations of the noise for ${tally.raised} of ${spikes.length} spikes.`,
+      context.slow
+        ? `Noise would cross 5 % of the maximum rise: the criterion for threshold was raised, at most to ${Math.ceil(highest * 100)} %, for ${tally.raised} of ${spikes.length} spikes.`
+        : `Noise would cross the dV/dt criterion: it was raised to ${highest.toFixed(0)} V/s.`,
     );
   return { spikes, remarks };
 }
 
-type Verdict = { spike: FoundSpike; raised: boolean } | 'narrow' | 'slow' | 'cut' | 'passive';
+/** `raised`: 0, or what noise made the criterion be: V/s, for slow spikes as a share of the maximum rise. */
+type Verdict = { spike: FoundSpike; raised: number } | 'narrow' | 'slow' | 'cut' | 'passive';
 
 /** Whether the peak was seen: the trace came down again by more than noise before the samples ended. */
 function peakSeen(trace: SpikeTrace, candidate: Candidate): boolean {
@@ -148,7 +153,9 @@ function steepestIn(trace: SpikeTrace, slope: Slope, from: number, to: number): 
   return best;
 }
 
-function touchesEdge(trace: SpikeTrace, index: number, m: number): boolean {
+/** Whether a slope window of `m` samples on each side reaches under a stimulus edge. */
+export function touchesEdge(trace: SpikeTrace, index: number, m: number): boolean {
+  if (trace.edges.length === 0) return false;
   for (let i = Math.max(0, index - m); i <= Math.min(trace.underEdge.length - 1, index + m); i++)
     if (trace.underEdge[i] === 1) return true;
   return false;
@@ -185,7 +192,7 @@ function fastSpike(
       slope,
       rateSlope,
     },
-    raised: criterion > stated,
+    raised: criterion > stated ? criterion : 0,
   };
 }
 
@@ -227,7 +234,7 @@ function slowSpike(
       slope,
       rateSlope,
     },
-    raised: criterion > wanted,
+    raised: criterion > wanted ? criterion / largest : 0,
   };
 }
 
@@ -251,20 +258,25 @@ function thresholdBefore(
   let i = steepest;
   let lowest = steepest;
   while (i > floor) {
+    if (values[i]! < values[lowest]!) lowest = i;
     if (touchesEdge(trace, i - 1, m)) {
       let before = i - 1;
       while (before > floor && touchesEdge(trace, before, m)) before--;
-      if (!(values[before]! < criterion) && before > floor) {
+      if (before > floor && values[before]! >= criterion) {
         i = before;
         continue;
       }
+      // An edge that takes current away cannot have driven the rise: the crossing is the cell's, hidden under the edge.
+      if (before > floor && !drivesUp(trace, before, i)) {
+        const share = (criterion - values[before]!) / (values[i]! - values[before]!);
+        return { threshold: before + share * (i - before), why_no_threshold: null };
+      }
       return aboveDrive(trace, slope, lowest, steepest, criterion);
     }
-    if (values[i]! < values[lowest]!) lowest = i;
     if (Number.isNaN(values[i - 1]!)) return { threshold: null, why_no_threshold: 'unreadable' };
     if (values[i - 1]! < criterion && values[i]! >= criterion) {
-      if (inferEdges && jumpsAt(slope, i, lowest, criterion))
-        return aboveDrive(trace, slope, lowest, steepest, criterion);
+      const sag = inferEdges ? sagAfterJump(slope, i, steepest, criterion) : null;
+      if (sag !== null) return aboveDrive(trace, slope, sag, steepest, criterion);
       if (unreadable(trace, i - 1 - m, i + m)) return { threshold: null, why_no_threshold: 'unreadable' };
       return {
         threshold: i - 1 + (criterion - values[i - 1]!) / (values[i]! - values[i - 1]!),
@@ -275,6 +287,10 @@ function thresholdBefore(
   }
   return { threshold: null, why_no_threshold: 'cut-off-by-sweep-end' };
 }
+
+/** Whether an edge between two samples adds current, or may do so for all that is known. */
+const drivesUp = (trace: SpikeTrace, from: number, to: number): boolean =>
+  trace.edges.some((edge) => edge.index >= from && edge.index <= to && edge.up !== false);
 
 function aboveDrive(
   trace: SpikeTrace,
@@ -292,16 +308,25 @@ function aboveDrive(
   return { threshold: at, why_no_threshold: null };
 }
 
+/** A stimulus edge drives dV/dt to a few times the criterion; what is steeper is the cell's own. */
+const steepestEdge = 5;
+
 /**
- * Without a stimulus channel: a dV/dt that jumps from rest past the criterion within its own window and then sags by a
- * fifth before it climbs to the spike is a stimulus edge that nobody recorded. A spike's own dV/dt climbs.
+ * Without a stimulus channel: a dV/dt that jumps from rest past the criterion within its own window, to less than five
+ * times it, and then sags before it climbs to the spike, comes from a stimulus edge that nobody recorded. A spike's own
+ * dV/dt climbs from the criterion on.
+ * @returns where dV/dt is lowest between that edge and the steepest point, or null where there is no such jump
  */
-function jumpsAt(slope: Slope, crossingAt: number, lowest: number, criterion: number): boolean {
+function sagAfterJump(slope: Slope, crossingAt: number, steepest: number, criterion: number): number | null {
   const { values, m, noise } = slope;
-  const before = values[Math.max(0, crossingAt - 2 * m - 1)]!;
-  let top = values[crossingAt]!;
-  for (let i = crossingAt; i <= Math.min(lowest, crossingAt + 2 * m + 1); i++) top = Math.max(top, values[i]!);
-  return before < 0.25 * criterion && lowest > crossingAt + 1 && top - values[lowest]! > Math.max(0.2 * top, 5 * noise);
+  const reach = 2 * m + 1;
+  if (!(values[Math.max(0, crossingAt - reach)]! < 0.25 * criterion)) return null;
+  let top = crossingAt;
+  while (top < Math.min(steepest, crossingAt + reach) && values[top + 1]! > values[top]!) top++;
+  if (values[top]! > steepestEdge * criterion) return null;
+  let lowest = top;
+  for (let i = top; i <= steepest; i++) if (values[i]! < values[lowest]!) lowest = i;
+  return values[top]! - values[lowest]! > Math.max(0.02 * values[top]!, clearOfNoise * noise) ? lowest : null;
 }
 
 /**
@@ -331,7 +356,7 @@ function returnsFromBelow(trace: SpikeTrace, candidate: Candidate, context: Meas
   const topWidth = (after ?? to) - exit;
   if (!(troughWidth < topWidth)) return false;
   // A brief hyperpolarizing pulse looks alike, but its edges are known.
-  if (trace.edges.some((edge) => edge >= entry - troughWidth && edge <= exit)) return false;
+  if (trace.edges.some(({ index }) => index >= entry - troughWidth && index <= exit)) return false;
   let steepestFall = 0;
   for (let i = Math.max(from + 1, Math.floor(entry - 2 * troughWidth)); i <= candidate.base; i++)
     steepestFall = Math.max(steepestFall, trace.masked[i - 1]! - trace.masked[i]!);

@@ -29,13 +29,22 @@ export interface SpikeTrace {
   missingBefore: Uint32Array;
   /** Samples of an edge's guard zone before and after the edge. */
   guard: { before: number; after: number };
-  /** Sample index of each stimulus edge inside the trace, ascending. */
-  edges: number[];
-  /** Standard deviation of the fast noise of the potential, mV. */
+  /** Stimulus edges inside the trace in order of time; `up` says whether current is added, null where not known. */
+  edges: { index: number; up: boolean | null }[];
+  /** Standard deviation of the fast noise of the potential, mV (see `fastNoise`). */
   noiseMv: number;
 }
 
-export function prepareTrace(voltage: Signal, edgesS: readonly number[], filterKhz: number | null): SpikeTrace {
+/**
+ * @param edgesS times of the stimulus edges, s. @param filterKhz low-pass corner where known
+ * @param addsCurrent whether the edge at a time adds current; null where not known
+ */
+export function prepareTrace(
+  voltage: Signal,
+  edgesS: readonly number[],
+  filterKhz: number | null,
+  addsCurrent: (time_s: number) => boolean | null = () => null,
+): SpikeTrace {
   const { samples, rate_hz: rateHz, start_s: startS } = voltage;
   const n = samples.length;
   const missingBefore = new Uint32Array(n + 1);
@@ -57,35 +66,23 @@ export function prepareTrace(voltage: Signal, edgesS: readonly number[], filterK
   }
   if (start >= 0) segments.push({ from: start, to: lastRead + 1 });
 
-  // A filter of corner f settles within about 0.7/f; two samples and 0.1 ms are the least.
-  const settle_s = Math.max(0.0001, filterKhz === null ? 0 : 0.0007 / filterKhz);
+  // A filter of corner f settles within about 0.7/f (0.05 ms where it is not known); two samples are the least.
+  const settle_s = filterKhz === null ? 0.00005 : 0.0007 / filterKhz;
   const guard = { before: 1, after: Math.max(2, Math.ceil(settle_s * rateHz)) };
   const masked = mv.slice();
   const underEdge = new Uint8Array(n);
   const edges = edgesS
-    .map((edge) => Math.round((edge - startS) * rateHz))
-    .filter((index) => index >= 0 && index < n)
-    .sort((a, b) => a - b);
-  for (const edge of edges) {
-    const first = Math.max(0, edge - guard.before);
-    const last = Math.min(n - 1, edge + guard.after);
+    .map((edge) => ({ index: Math.round((edge - startS) * rateHz), up: addsCurrent(edge) }))
+    .filter(({ index }) => index >= 0 && index < n)
+    .sort((a, b) => a.index - b.index);
+  for (const { index } of edges) {
+    const first = Math.max(0, index - guard.before);
+    const last = Math.min(n - 1, index + guard.after);
     underEdge.fill(1, first, last + 1);
     if (first > 0 && last < n - 1) join(masked, first - 1, last + 1);
   }
-  const trace: SpikeTrace = {
-    mv,
-    masked,
-    underEdge,
-    rateHz,
-    startS,
-    segments,
-    missingBefore,
-    guard,
-    edges,
-    noiseMv: 0,
-  };
-  trace.noiseMv = (slopeNoise(trace, slopeVPerS(mv, rateHz, 1), 1) * Math.SQRT2) / (rateHz / 1000);
-  return trace;
+  const noiseMv = fastNoise(mv, rateHz);
+  return { mv, masked, underEdge, rateHz, startS, segments, missingBefore, guard, edges, noiseMv };
 }
 
 function join(mv: Float64Array, before: number, after: number): void {
@@ -102,31 +99,60 @@ export function unreadable(trace: SpikeTrace, from: number, to: number): boolean
 
 export const timeOf = (trace: SpikeTrace, index: number): number => trace.startS + index / trace.rateHz;
 
-/**
- * Standard deviation, V/s, that noise gives to a slope over 2m+1 samples: each slope against the mean of the two that
- * share no sample with it. The lower quartile of the differences is used, so that up to half the trace may be spikes.
- * Where the digitizer's step hides the noise, that of rounding stands in.
- */
-export function slopeNoise(trace: SpikeTrace, slope: Float64Array, m: number): number {
-  const lag = 2 * m + 1;
-  const n = slope.length;
-  const stride = Math.max(1, Math.floor(n / 20_000));
+/** Lower quartile of |x| for a normal x of SD 1. With it up to half a trace may be spikes. */
+const lowerQuartile = 0.31864;
+/** Samples looked at for noise: enough for a few per cent. */
+const mostLooks = 20_000;
+
+function quietSpread(count: number, differenceAt: (i: number) => number): number {
+  const stride = Math.max(1, Math.floor(count / mostLooks));
   const differences: number[] = [];
-  for (let i = lag; i < n - lag; i += stride) {
-    const difference = Math.abs(slope[i]! - 0.5 * (slope[i - lag]! + slope[i + lag]!));
+  for (let i = 0; i < count; i += stride) {
+    const difference = Math.abs(differenceAt(i));
     if (Number.isFinite(difference)) differences.push(difference);
   }
-  // Lower quartile of |x| for a normal x of SD 1: 0.31864; the difference has 1.5 times the variance.
-  const found = (quantile(differences, 0.25) ?? 0) / 0.31864 / Math.sqrt(1.5);
-  if (found > 0) return found;
+  return (quantile(differences, 0.25) ?? 0) / lowerQuartile;
+}
+
+/**
+ * Noise of the potential, mV, from third differences 0.05 ms apart, which leave next to nothing of the signal even
+ * where spikes follow each other without pause, but too little of slow noise. The rounding of the digitizer is its
+ * floor.
+ */
+function fastNoise(mv: Float64Array, rateHz: number): number {
+  const k = Math.max(1, Math.round(rateHz * 0.00005));
+  const spread = quietSpread(
+    Math.max(0, mv.length - 3 * k),
+    (i) => mv[i + 3 * k]! - 3 * mv[i + 2 * k]! + 3 * mv[i + k]! - mv[i]!,
+  );
   let step = Number.POSITIVE_INFINITY;
-  for (let i = 1; i < trace.mv.length; i++) {
-    const change = Math.abs(trace.mv[i]! - trace.mv[i - 1]!);
+  for (let i = 1; i < mv.length; i++) {
+    const change = Math.abs(mv[i]! - mv[i - 1]!);
     if (change > 1e-9 && change < step) step = change;
   }
-  if (!Number.isFinite(step)) return 0;
-  return (step / Math.sqrt(12)) * (trace.rateHz / 1000) * Math.sqrt(3 / (m * (m + 1) * (2 * m + 1)));
+  return Math.max(spread / Math.sqrt(20), Number.isFinite(step) ? step / Math.sqrt(12) : 0);
 }
+
+/** How much of the slower noise the third differences may miss. */
+const missedBySlowNoise = 3;
+
+/**
+ * Standard deviation, V/s, that noise gives to a slope over 2m+1 samples: each slope against the mean of the two that
+ * share no sample with it. Bends of the signal itself pass for noise there, the more the wider the window and the
+ * faster the train, so it is bounded by what the fast noise would give, three times over.
+ */
+function slopeNoise(slope: Float64Array, m: number, fastNoiseMv: number, rateHz: number): number {
+  const lag = 2 * m + 1;
+  // The difference has 1.5 times the variance of a slope.
+  const seen =
+    quietSpread(Math.max(0, slope.length - 2 * lag), (i) => slope[i + lag]! - 0.5 * (slope[i]! + slope[i + 2 * lag]!)) /
+    Math.sqrt(1.5);
+  const white = fastNoiseMv * (rateHz / 1000) * whiteShare(m);
+  return seen > 0 ? Math.min(seen, missedBySlowNoise * white) : white;
+}
+
+/** Standard deviation of a slope over 2m+1 samples of white noise of SD 1, per sample interval. */
+const whiteShare = (m: number): number => Math.sqrt(3 / (m * (m + 1) * (2 * m + 1)));
 
 export interface Slope {
   values: Float64Array;
@@ -150,7 +176,10 @@ export function slopesOf(trace: SpikeTrace): SlopeBook {
     const held = known.get(m);
     if (held) return held;
     const values = slopeVPerS(trace.mv, trace.rateHz, m);
-    const slope = { values, m, noise: slopeNoise(trace, values, m) };
+    const seen = slopeNoise(values, m, trace.noiseMv, trace.rateHz);
+    // Noise falls with the window's width as white noise does or, where it is slower, half as well.
+    const bounds = m > 2 ? [1, 2].map((narrow) => (2 * of(narrow).noise * whiteShare(m)) / whiteShare(narrow)) : [];
+    const slope = { values, m, noise: Math.min(seen, ...bounds) };
     known.set(m, slope);
     return slope;
   };

@@ -4,7 +4,7 @@ import { clippedRuns, type Run } from '../signal/runs.ts';
 import { movingAverage } from '../signal/smoothing.ts';
 import { vertex } from '../signal/vertex.ts';
 import { injectedCurrent, phasesOf } from './phases.ts';
-import { detectSpikes, type FoundSpike } from './spike-detection.ts';
+import { detectSpikes, type FoundSpike, touchesEdge } from './spike-detection.ts';
 import { prepareTrace, type SpikeTrace, timeOf, unreadable } from './spike-trace.ts';
 import type { AbsenceCode, MeasureContext, Signal, Spike, Stimulus } from './types.ts';
 
@@ -47,11 +47,18 @@ interface Surroundings {
  */
 export function measureSpikes(input: SpikeInput): { spikes: Spike[]; remarks: string[] } {
   const { voltage, current, stimulus, context } = input;
-  const trace = prepareTrace(voltage, stimulus.edges_s, context.filter_khz);
+  const injected = injectedCurrent(current, stimulus);
+  // 0.3 ms on either side of an edge says whether it adds current.
+  const addsCurrent = (edge_s: number): boolean | null => {
+    const before = injected.mean(edge_s - 0.0005, edge_s - 0.0002);
+    const after = injected.mean(edge_s + 0.0002, edge_s + 0.0005);
+    if (!before || !after || after.pa === before.pa) return null;
+    return after.pa > before.pa;
+  };
+  const trace = prepareTrace(voltage, stimulus.edges_s, context.filter_khz, addsCurrent);
   const { spikes: found, remarks } = detectSpikes(trace, stimulus, context);
   if (found.length === 0) return { spikes: [], remarks };
   const clipped = clippedRuns(voltage.samples);
-  const injected = injectedCurrent(current, stimulus);
   const smoothBy = new Map<number, Float64Array>();
   const smoothed = (m: number): Float64Array => {
     const half = m - 1;
@@ -106,6 +113,7 @@ function measureOne(
   put('threshold_mv', isFound(threshold) ? threshold.value : threshold.why);
   put('threshold_at_s', isFound(threshold) ? timeOf(trace, threshold.at) : threshold.why);
   put('peak_mv', isFound(peak) ? peak.value : peak.why);
+  // Where the very top is clipped or unreadable its time is still known to within that stretch, and is given.
   put('peak_at_s', timeOf(trace, isFound(peak) ? peak.at : spike.peak));
   put('overshoot_mv', isFound(peak) ? peak.value : peak.why);
   put(
@@ -120,12 +128,13 @@ function measureOne(
       ? threshold.why
       : peak.value - threshold.value;
   put('spike_height_mv', height);
-  put('depolarization_ms', isFound(threshold) ? (peakAt - threshold.at) / perMs : threshold.why);
-  put('rise_samples', isFound(threshold) ? peakAt - threshold.at : threshold.why);
+  const toPeak = !isFound(peak) ? peak.why : !isFound(threshold) ? threshold.why : peakAt - threshold.at;
+  put('depolarization_ms', typeof toPeak === 'number' ? toPeak / perMs : toPeak);
+  put('rise_samples', toPeak);
 
   const limit = afterSpike(peakAt, around);
   const back = isFound(threshold) ? fallTo(threshold.value, peakAt, limit.nextSpike, around) : threshold;
-  put('repolarization_ms', isFound(back) ? (back.at - peakAt) / perMs : back.why);
+  put('repolarization_ms', !isFound(peak) ? peak.why : isFound(back) ? (back.at - peakAt) / perMs : back.why);
   put(
     'half_width_ms',
     typeof height === 'number' && isFound(threshold)
@@ -135,26 +144,17 @@ function measureOne(
 
   const rise = extremeSlope(spike, 'rise', isFound(threshold) ? threshold.at : spike.base, peakAt, around);
   put('max_rise_v_per_s', isFound(rise) ? rise.value : rise.why);
-  const fallEnd = isFound(back) ? back.at : limit.end;
+  const lowest = lowestAfter(peakAt, back, limit, around);
+  const fallEnd = isFound(lowest) ? lowest.at : isFound(back) ? back.at : limit.end;
   const fall = extremeSlope(spike, 'fall', peakAt, fallEnd, around);
   put('max_fall_v_per_s', isFound(fall) ? fall.value : fall.why);
 
-  const lowest = lowestAfter(peakAt, back, limit, around);
   put('ahp_minimum_mv', isFound(lowest) ? lowest.value : lowest.why);
   put(
     'ahp_below_threshold_mv',
     !isFound(lowest) ? lowest.why : !isFound(threshold) ? threshold.why : threshold.value - lowest.value,
   );
-  put(
-    'cycle_length_ms',
-    following === null
-      ? around.endsWithSweep
-        ? 'cut-off-by-sweep-end'
-        : 'unreadable'
-      : around.next === null
-        ? 'unreadable'
-        : (vertex(trace.mv, following.peak).position - peakAt) / perMs,
-  );
+  put('cycle_length_ms', cycle(peak, following, around));
   for (const percent of [50, 90])
     put(`apd${percent}_ms`, apd(percent / 100, spike, peak, rise, limit.nextSpike, around));
 
@@ -186,6 +186,15 @@ function peakOf(spike: FoundSpike, { trace, clipped }: Surroundings): Found {
   return { at: position, value };
 }
 
+/** Time from this peak to the next spike's, ms. */
+function cycle(peak: Found, following: FoundSpike | null, around: Surroundings): number | AbsenceCode {
+  if (!isFound(peak)) return peak.why;
+  if (following === null) return around.endsWithSweep ? 'cut-off-by-sweep-end' : 'unreadable';
+  if (around.next === null) return 'unreadable';
+  const next = peakOf(following, around);
+  return isFound(next) ? ((next.at - peak.at) / around.trace.rateHz) * 1000 : next.why;
+}
+
 interface AfterSpike {
   /** Where the afterhyperpolarization window ends, and what ends it. */
   end: number;
@@ -196,11 +205,11 @@ interface AfterSpike {
 
 function afterSpike(peakAt: number, { trace, context, next, last }: Surroundings): AfterSpike {
   const nextSpike = next ? Math.max(peakAt, next.threshold ?? next.base) : last;
-  const edge = trace.edges.find((index) => index - trace.guard.before > peakAt);
+  const edge = trace.edges.find(({ index }) => index - trace.guard.before > peakAt);
   const ends: [number, AfterSpike['endedBy']][] = [
     [nextSpike, next ? 'threshold' : 'samples'],
     [peakAt + (context.ahp_window_ms / 1000) * trace.rateHz, 'window'],
-    [edge === undefined ? Number.POSITIVE_INFINITY : edge - trace.guard.before, 'edge'],
+    [edge === undefined ? Number.POSITIVE_INFINITY : edge.index - trace.guard.before, 'edge'],
   ];
   const [end, endedBy] = ends.reduce((nearest, candidate) => (candidate[0] < nearest[0] ? candidate : nearest));
   return { end, endedBy, nextSpike };
@@ -251,10 +260,7 @@ function extremeSlope(
   const sign = way === 'rise' ? 1 : -1;
   let best = -1;
   for (let i = Math.max(0, Math.floor(from)); i <= Math.min(values.length - 1, Math.ceil(to)); i++) {
-    let blocked = false;
-    for (let j = Math.max(0, i - m); j <= Math.min(values.length - 1, i + m); j++)
-      if (trace.underEdge[j] === 1) blocked = true;
-    if (blocked || !Number.isFinite(values[i]!)) continue;
+    if (touchesEdge(trace, i, m) || !Number.isFinite(values[i]!)) continue;
     if (best < 0 || sign * values[i]! > sign * values[best]!) best = i;
   }
   if (best < 0 || sign * values[best]! <= 0) return missing('unresolved');
@@ -286,7 +292,10 @@ function lowestAfter(peakAt: number, back: Found, limit: AfterSpike, around: Sur
 /** Least stretch before a spike that can show a diastolic level, s. */
 const leastDiastole_s = 0.001;
 
-/** Time from the steepest rise until a share of the way from peak to the preceding diastolic level is gone. */
+/**
+ * Time from the steepest rise until a share of the way from peak to the preceding diastolic level is gone: the lowest
+ * potential since the peak before, at most the class's afterhyperpolarization window back.
+ */
 function apd(
   share: number,
   spike: FoundSpike,
@@ -297,12 +306,12 @@ function apd(
 ): number | AbsenceCode {
   if (!isFound(peak)) return peak.why;
   if (!isFound(rise)) return rise.why;
-  const { trace, smooth, first, previous } = around;
+  const { trace, smooth, first, previous, context } = around;
   const to = Math.floor(spike.threshold ?? spike.base);
-  const from = previous ? previous.peak : first;
+  const from = Math.max(previous ? previous.peak : first, to - (context.ahp_window_ms / 1000) * trace.rateHz);
   if (to - from < leastDiastole_s * trace.rateHz) return 'no-baseline';
   let diastolic = Number.POSITIVE_INFINITY;
-  for (let i = from; i <= to; i++) diastolic = Math.min(diastolic, smooth[i]!);
+  for (let i = Math.ceil(from); i <= to; i++) diastolic = Math.min(diastolic, smooth[i]!);
   const end = fallTo(peak.value - share * (peak.value - diastolic), peak.at, nextSpike, around);
   return isFound(end) ? ((end.at - rise.at) / trace.rateHz) * 1000 : end.why;
 }
