@@ -151,6 +151,18 @@ export function look(parent: Group, name: string): Found {
   }
 }
 
+/**
+ * What tells one object of the file from another, whatever path it is reached by; '' where it cannot be told. Links
+ * give one object several paths, and can lead round in a circle.
+ */
+export function identity(path: string, { file, module }: Hdf5): string {
+  try {
+    return Buffer.from(module.create_object_reference(file.file_id, path)).toString('hex');
+  } catch {
+    return '';
+  }
+}
+
 export function groupAt(parent: Group, name: string): Group | null {
   const found = look(parent, name);
   return found.kind === 'group' ? found.group : null;

@@ -4,6 +4,7 @@ import {
   damaged,
   groupAt,
   type Hdf5,
+  identity,
   inventory,
   look,
   openHdf5,
@@ -63,6 +64,8 @@ interface Candidate {
   stimulus: Piece | null;
   source_sweep: number | null;
   protocol: string;
+  /** Several stimuli fit, and a problem has said so. */
+  ambiguous?: boolean;
 }
 
 function refuseOtherLayouts(hdf5: Hdf5): string {
@@ -156,6 +159,7 @@ function looseCandidates(
           }),
         );
       const stimulus = match && 'stimulus' in match ? match.stimulus : null;
+      const ambiguous = match !== null && stimulus === null;
       return Array.from(
         { length: series.columns },
         (_, column): Candidate => ({
@@ -164,6 +168,7 @@ function looseCandidates(
           stimulus: stimulus && wholeOf(stimulus, stimulus.columns === series.columns ? column : 0),
           source_sweep: numberOf(series),
           protocol: series.label || (stimulus?.label ?? ''),
+          ambiguous,
         }),
       );
     });
@@ -237,7 +242,7 @@ function planStimulus(candidate: Candidate, response: Scaling, context: Context)
   const piece = candidate.stimulus;
   const { series } = candidate.response;
   if (!piece) {
-    if (series.type !== 'IZeroClampSeries')
+    if (series.type !== 'IZeroClampSeries' && !candidate.ambiguous)
       problems.push(
         warning({
           code: 'STIMULUS_MISSING',
@@ -435,7 +440,10 @@ function planFile(hdf5: Hdf5, hints: ReadingHints): { plans: Plan[]; description
   const problems = [...walk.problems];
   const context: Context = { hdf5, hints, problems, settled: new Map() };
   const known = new Map(walk.series.map((series) => [series.path, series]));
-  const seriesAt = (path: string): Series | null => {
+  // Tables may name a series by another of its paths.
+  const usual = (path: string): string => walk.met.get(identity(path, hdf5)) ?? path;
+  const seriesAt = (asNamed: string): Series | null => {
+    const path = usual(asNamed);
     const listed = known.get(path);
     if (listed) return listed;
     const group = groupAt(hdf5.file, path);
@@ -443,7 +451,11 @@ function planFile(hdf5: Hdf5, hints: ReadingHints): { plans: Plan[]; description
     if (described) known.set(path, described);
     return described;
   };
-  const tables = readTables(hdf5);
+  const stored = readTables(hdf5);
+  const tables = {
+    ...stored,
+    sweepNumbers: new Map([...stored.sweepNumbers].map(([path, sweep]) => [usual(path), sweep])),
+  };
   problems.push(...tables.problems);
   const fromTables = tableCandidates(tables, seriesAt, problems);
   const candidates = [...fromTables.candidates, ...looseCandidates(walk.series, fromTables.covered, tables, problems)];
@@ -468,7 +480,7 @@ function planFile(hdf5: Hdf5, hints: ReadingHints): { plans: Plan[]; description
       warning({
         code: 'OTHER_SERIES',
         place: '/acquisition',
-        message: `${count(walk.others.length, 'series')} of other classes were left aside: ${firstFew(walk.others)}.`,
+        message: `Series of other classes (${walk.others.length}) were left aside: ${firstFew(walk.others)}.`,
         remedy: 'If one holds a membrane potential, write it as CurrentClampSeries.',
       }),
     );

@@ -5,6 +5,7 @@ import {
   datasetAt,
   groupAt,
   type Hdf5,
+  identity,
   look,
   missingFilter,
   numberAttribute,
@@ -236,14 +237,18 @@ export interface Walk {
   problems: Problem[];
   /** Paths of series of other kinds, which are not read. */
   others: string[];
+  /** Path under which each object was met first, by its identity. */
+  met: Map<string, string>;
 }
 
 /** Every series under acquisition and stimulus, sub-groups included, by path. */
 export function walkSeries(hdf5: Hdf5): Walk {
-  const walk: Walk = { series: [], problems: [], others: [] };
+  const walk: Walk = { series: [], problems: [], others: [], met: new Map() };
   for (const place of ['/acquisition', '/stimulus/presentation']) {
     const top = groupAt(hdf5.file, place);
-    if (top) walkGroup(top, hdf5, walk, 0);
+    if (!top) continue;
+    walk.met.set(identity(place, hdf5), place);
+    walkGroup(top, hdf5, walk, 0);
   }
   return walk;
 }
@@ -273,6 +278,21 @@ function walkGroup(group: Group, hdf5: Hdf5, walk: Walk, depth: number): void {
         }),
       );
     if (found.kind !== 'group') continue;
+    const self = identity(path, hdf5);
+    const before = walk.met.get(self);
+    if (self !== '' && before !== undefined) {
+      if (isIntracellular(seriesType(found.group, hdf5)))
+        walk.problems.push(
+          warning({
+            code: 'LINK_REPEATED',
+            place: path,
+            message: `This is a link to ${before}, which is read once, under that name.`,
+            remedy: 'Nothing to do.',
+          }),
+        );
+      continue;
+    }
+    walk.met.set(self, path);
     const type = seriesType(found.group, hdf5);
     if (isIntracellular(type)) {
       const series = describeSeries(found.group, hdf5, walk.problems);

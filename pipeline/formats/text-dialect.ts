@@ -232,7 +232,9 @@ export function findDialect(head: Head, mapping: TableMapping): Dialect {
       : found;
   const firstRow = mapping.header === true && headings === trial.cells[block] ? block + 1 : block;
   if (trial.wordy.size > 0 && !headings)
-    throw stop(`This is no table of samples: ${count(trial.wordy.size, 'column')} hold words and there is no header.`);
+    throw stop(
+      `This is no table of samples: ${count(trial.wordy.size, 'column')} hold words, and no header that fits the rows names the others.`,
+    );
   return {
     separator: trial.separator,
     decimal: trial.decimal,

@@ -113,7 +113,10 @@ const rateMissing = (dialect: Dialect, voltage: string | null, current: string |
   new FormatError({
     code: 'RATE_MISSING',
     place: '',
-    message: `The table has ${count(dialect.columns, 'column')} and none of times, so its sampling rate is not known.`,
+    message: [
+      `The table has ${count(dialect.columns, 'column')} and none of times, so its sampling rate is not known.`,
+      ...dialect.problems.map(({ message }) => message),
+    ].join(' '),
     remedy: 'State the sampling rate in the sidecar, and the unit of each column.',
     sidecar: sidecarFor({
       rate: '20000   # samples per second: put the true rate here',
@@ -121,6 +124,10 @@ const rateMissing = (dialect: Dialect, voltage: string | null, current: string |
       ...(current ? { current } : {}),
     }),
   });
+
+/** Behind a unit that is only an example. */
+const orElse = (roles: readonly ColumnRole[], others: string): string =>
+  roles[0]?.unit ? '' : `   # or ${others}: put the true unit here`;
 
 const tooFewRows = (rows: number): FormatError =>
   new FormatError({
@@ -138,8 +145,12 @@ const unitName = (roles: readonly ColumnRole[], otherwise: string): string => ro
 const ratePlease = (dialect: Dialect, { voltage, current }: TablePlan): FormatError =>
   rateMissing(
     dialect,
-    voltage.length > 0 ? `{ columns: ${columnList(voltage)}, unit: ${unitName(voltage, 'mV')} }` : null,
-    current.length > 0 ? `{ columns: ${columnList(current)}, unit: ${unitName(current, 'pA')} }` : null,
+    voltage.length > 0
+      ? `{ columns: ${columnList(voltage)}, unit: ${unitName(voltage, 'mV')} }${orElse(voltage, 'V, uV')}`
+      : null,
+    current.length > 0
+      ? `{ columns: ${columnList(current)}, unit: ${unitName(current, 'pA')} }${orElse(current, 'nA, pA/pF')}`
+      : null,
   );
 
 /** Where a column of times falls back: the file holds one sweep after another. */
