@@ -77,3 +77,7 @@ export function longSteps(sweeps: readonly NumberedSweep[]): NumberedSweep[] {
   const longest = Math.max(0, ...steps.map(stepLength_s));
   return steps.filter((sweep) => stepLength_s(sweep) >= 0.5 * longest);
 }
+
+/** Why a cell has no steps to speak of. */
+export const stimulusReason = (sweeps: readonly NumberedSweep[]): AbsenceCode =>
+  sweeps.some((sweep) => !['none', 'unknown'].includes(sweep.stimulus.kind)) ? 'stimulus-not-a-step' : 'no-stimulus';

@@ -1,4 +1,4 @@
-import { exponentialFit } from '../signal/exponential.ts';
+import { exponentialFit, goldenMinimum } from '../signal/exponential.ts';
 import { linearFit } from '../signal/line.ts';
 import { mean, median, standardDeviation } from '../signal/statistics.ts';
 import {
@@ -81,8 +81,9 @@ interface Response {
   /** ms after onset and mV below the level before it, per pA of the step. */
   ms: number[];
   perPa: number[];
-  /** Steady deflection per pA and share of the largest deflection that is gone by then. */
+  /** Steady and largest deflection per pA, and the share of the largest that is gone by the end. */
   steadyPerPa: number;
+  largestPerPa: number;
   sag: number;
 }
 
@@ -139,6 +140,7 @@ function responseOf({ sweep, value }: Point): Response | null {
     ms: ms.slice(from),
     perPa: mv.slice(from).map((level) => (level - before) / pa),
     steadyPerPa: value / pa,
+    largestPerPa: Math.max(value / pa, largest === null ? 0 : largest / pa),
     sag: largest === null || largest >= 0 ? 0 : Math.max(0, (largest - value) / largest),
   };
 }
@@ -158,6 +160,7 @@ function averaged(responses: readonly Response[]): Response {
     perPa,
     ms: first.ms.slice(0, perPa.length),
     steadyPerPa: mean(responses.map((one) => one.steadyPerPa))!,
+    largestPerPa: mean(responses.map((one) => one.largestPerPa))!,
   };
 }
 
@@ -181,9 +184,39 @@ function fitOnset(response: Response): { tau: number; se_tau: number; to_ms: num
   const from = reached(0.1, Math.max(0, electrode));
   const to = from < 0 ? -1 : reached(0.9, from);
   if (from < 0 || to - from < 5) return null;
-  const fit = exponentialFit(ms.slice(from, to + 1), perPa.slice(from, to + 1));
-  if (!fit?.converged || fit.tau > 5 * (ms[to]! - ms[from]!)) return null;
-  return { tau: fit.tau, se_tau: fit.se_tau, to_ms: ms[to]! };
+  const x = ms.slice(from, to + 1);
+  const y = perPa.slice(from, to + 1);
+  const fit = exponentialFit(x, y);
+  // The level it heads for is known: the steady one, or the largest where some of it sags away. A fit that heads
+  // elsewhere has followed noise or hum, and is led back to the nearer end of that range.
+  const allowed = [0.97 * response.steadyPerPa, 1.03 * response.largestPerPa] as const;
+  if (fit?.converged && fit.offset >= allowed[0] && fit.offset <= allowed[1])
+    return { tau: fit.tau, se_tau: fit.se_tau, to_ms: ms[to]! };
+  const offset = fit && fit.offset < allowed[0] ? allowed[0] : allowed[1];
+  const led = fitToLevel(x, y, offset);
+  return led && { ...led, to_ms: ms[to]! };
+}
+
+/** Time constant of an exponential that heads for a known level. */
+function fitToLevel(x: readonly number[], y: readonly number[], level: number): { tau: number; se_tau: number } | null {
+  const span = x.at(-1)! - x[0]!;
+  const fitted = (logTau: number): { amplitude: number; rss: number } => {
+    const decay = x.map((time) => Math.exp(-(time - x[0]!) / Math.exp(logTau)));
+    const squares = decay.reduce((sum, value) => sum + value * value, 0);
+    const amplitude = decay.reduce((sum, value, k) => sum + value * (y[k]! - level), 0) / squares;
+    return { amplitude, rss: decay.reduce((sum, value, k) => sum + (y[k]! - level - amplitude * value) ** 2, 0) };
+  };
+  const low = Math.log(span / 50);
+  const high = Math.log(span * 5);
+  const logTau = goldenMinimum((value) => fitted(value).rss, low, high);
+  if (logTau < low + 0.01 || logTau > high - 0.01) return null;
+  const tau = Math.exp(logTau);
+  const { amplitude, rss } = fitted(logTau);
+  const slope = x.reduce((sum, time) => {
+    const t = time - x[0]!;
+    return sum + ((amplitude * t * Math.exp(-t / tau)) / tau ** 2) ** 2;
+  }, 0);
+  return { tau, se_tau: Math.sqrt(rss / Math.max(1, x.length - 2) / slope) };
 }
 
 /** ms/MΩ is nF. */

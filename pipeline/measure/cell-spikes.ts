@@ -1,6 +1,15 @@
 import { linearFit } from '../signal/line.ts';
 import { mean, median } from '../signal/statistics.ts';
-import { longSteps, type Point, placeOf, pointsOf, spreadOf, stepLength_s, stepPa } from './cell-numbers.ts';
+import {
+  longSteps,
+  type Point,
+  placeOf,
+  pointsOf,
+  spreadOf,
+  stepLength_s,
+  stepPa,
+  stimulusReason,
+} from './cell-numbers.ts';
 import { spikesDuring } from './firing.ts';
 import { quantitiesOf } from './quantities.ts';
 import { absent, measured } from './reading.ts';
@@ -55,9 +64,6 @@ export function firingReadings(sweeps: readonly NumberedSweep[], fi: readonly Ra
     maximum_diastolic_potential_mv: diastolic(sweeps, own),
   };
 }
-
-const stimulusReason = (sweeps: readonly NumberedSweep[]): AbsenceCode =>
-  sweeps.some((sweep) => !['none', 'unknown'].includes(sweep.stimulus.kind)) ? 'stimulus-not-a-step' : 'no-stimulus';
 
 function rheobaseOf(sweeps: readonly NumberedSweep[], firing: readonly NumberedSweep[], own: boolean): Reading {
   const first = firing[0];

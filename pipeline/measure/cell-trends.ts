@@ -1,6 +1,15 @@
 import { linearFit, theilSen } from '../signal/line.ts';
 import { mean, median } from '../signal/statistics.ts';
-import { commonReason, longSteps, medianOver, type Point, placeOf, pointsOf, stepPa } from './cell-numbers.ts';
+import {
+  commonReason,
+  longSteps,
+  medianOver,
+  type Point,
+  placeOf,
+  pointsOf,
+  stepPa,
+  stimulusReason,
+} from './cell-numbers.ts';
 import { spikesDuring } from './firing.ts';
 import { absent, measured } from './reading.ts';
 import type { CellContext, NumberedSweep, Reading, Readings } from './types.ts';
@@ -137,7 +146,7 @@ export function rundownReadings(sweeps: readonly NumberedSweep[]): Readings {
     return pa > 0 && height !== null ? [{ pa, height, sweep, fired: before.get(sweep)! }] : [];
   });
   if (firsts.length === 0) {
-    const none = absent(longSteps(sweeps).length === 0 ? 'stimulus-not-a-step' : 'never-fired');
+    const none = absent(longSteps(sweeps).length === 0 ? stimulusReason(sweeps) : 'never-fired');
     return { height_rundown_percent_per_100_spikes: none, height_stimulus_slope_mv_per_na: none };
   }
   return {

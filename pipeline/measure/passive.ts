@@ -1,8 +1,8 @@
 import { exponentialFit } from '../signal/exponential.ts';
 import { linearFit } from '../signal/line.ts';
-import { clippedRuns } from '../signal/runs.ts';
 import { movingAverage } from '../signal/smoothing.ts';
 import { countFinite, mean, median, standardDeviation } from '../signal/statistics.ts';
+import { stuckStretches } from './quality.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
 import {
@@ -26,6 +26,7 @@ export interface PassiveInput {
   levels: readonly Level[];
   spikes: readonly Spike[];
   slow: boolean;
+  mains_hz: number | null;
 }
 
 const baselineSpan_s = 0.5;
@@ -184,7 +185,7 @@ function touchesLimit(voltage: Signal, window: Stretch): boolean {
   }
   // Looked at closely only where the window holds an extreme of the whole sweep.
   if (!part.some((value) => value === low || value === high)) return false;
-  return clippedRuns(voltage.samples).some((run) => run.from < window.to && run.to > window.from);
+  return stuckStretches(voltage.samples).some((run) => run.from < window.to && run.to > window.from);
 }
 
 function largestDeflection(input: PassiveInput, baseline: Reading, step: Step): Reading {
@@ -195,8 +196,11 @@ function largestDeflection(input: PassiveInput, baseline: Reading, step: Step): 
   if (part.length === 0 || countFinite(part) < 0.5 * part.length) return absent('unreadable');
   if (spikes.some((spike) => isIn(spike, voltage, window))) return absent('no-spike-free-stretch');
   if (touchesLimit(voltage, window)) return absent('clipped');
-  // Wide enough to average noise out, narrow against a sag, which takes tens of milliseconds.
-  const width_s = Math.max(0.001, Math.min(0.01, (step.to_s - step.from_s) / 50));
+  // Wide enough to average noise out, narrow against a sag, which takes tens of milliseconds. One period of the mains
+  // takes the hum out as well, where the step is long enough for it.
+  const length_s = step.to_s - step.from_s;
+  const period_s = 1 / (input.mains_hz ?? 50);
+  const width_s = length_s >= 15 * period_s ? period_s : Math.max(0.001, Math.min(0.01, length_s / 50));
   const half = Math.max(1, Math.round((width_s * voltage.rate_hz) / 2));
   const smooth = movingAverage(part, half);
   let lowest = -1;

@@ -7,10 +7,24 @@ import { absent, measured } from './reading.ts';
 import { type Stretch, timeAt } from './stretches.ts';
 import type { Reading, Readings, Signal } from './types.ts';
 
+const total = (stretches: readonly Stretch[]): number => stretches.reduce((sum, one) => sum + one.to - one.from, 0);
+
 /** Share of samples that could not be read. */
 export function missingFraction(signal: Signal): Reading {
   const n = signal.samples.length;
   return n === 0 ? absent('sweep-too-short') : measured(1 - countFinite(signal.samples) / n, { n });
+}
+
+/**
+ * Stretches stuck at the recorder's upper or lower limit. Noise on a coarse digitizer makes a run of three equal
+ * samples at an extreme now and then: fewer than five samples at one limit in a whole sweep are no clipping.
+ */
+export function stuckStretches(samples: Float64Array): Stretch[] {
+  const runs = clippedRuns(samples);
+  return (['top', 'bottom'] as const).flatMap((at) => {
+    const own = runs.filter((run) => run.at === at);
+    return total(own) >= 5 ? own.map(({ from, to }) => ({ from, to })) : [];
+  });
 }
 
 /** Share of samples stuck at the recorder's upper or lower limit; `at` is the longest such run. */
@@ -18,8 +32,8 @@ export function clippedFraction(signal: Signal): Reading {
   const { samples } = signal;
   if (samples.length === 0) return absent('sweep-too-short');
   if (countFinite(samples) === 0) return absent('unreadable');
-  const runs = clippedRuns(samples);
-  const stuck = runs.reduce((sum, run) => sum + run.to - run.from, 0);
+  const runs = stuckStretches(samples);
+  const stuck = total(runs);
   const longest = runs.toSorted((a, b) => b.to - b.from - (a.to - a.from))[0];
   return measured(stuck / samples.length, {
     n: samples.length,
@@ -44,8 +58,6 @@ export function digitizerStep(signal: Signal): Reading {
 }
 
 export const sampleInterval = (signal: Signal): Reading => measured(1e6 / signal.rate_hz);
-
-const total = (stretches: readonly Stretch[]): number => stretches.reduce((sum, one) => sum + one.to - one.from, 0);
 
 const kilohertz = (hz: number): string => `${Number((hz / 1000).toPrecision(3))} kHz`;
 
@@ -90,8 +102,8 @@ export function noise(voltage: Signal, quiet: readonly Stretch[], filterKhz: num
   });
 }
 
-/** Longest stretch, s, over which hum is fitted: enough for 0.1 Hz. */
-const humSpan_s = 4;
+/** Longest stretch, s, over which hum is fitted: enough for a few hundredths of a hertz. */
+const humSpan_s = 2;
 
 /**
  * Amplitude and frequency of the mains hum: the least-squares sine near the mains frequency (50 and 60 Hz where it is
@@ -102,10 +114,10 @@ const humSpan_s = 4;
  */
 export function hum(voltage: Signal, quiet: readonly Stretch[], mainsHz: number | null): Readings {
   const both = (reading: Reading): Readings => ({ mains_hum_mv: reading, mains_hum_hz: reading });
-  const rate = voltage.rate_hz;
-  if (rate < 400) return both(absent('rate-too-low'));
+  if (voltage.rate_hz < 400) return both(absent('rate-too-low'));
   const trace = humTrace(voltage, quiet);
   if (!trace) return both(absent('no-spike-free-stretch'));
+  const rate = trace.rate_hz;
   const seconds = trace.samples.length / rate;
   const candidates = (mainsHz === null ? [50, 60] : [mainsHz])
     .filter((hz) => hz < rate * 0.4)
@@ -114,11 +126,15 @@ export function hum(voltage: Signal, quiet: readonly Stretch[], mainsHz: number 
   if (candidates.length === 0) return both(absent('sweep-too-short'));
   const nearest = candidates.reduce((best, line) => (line.fit.amplitude > best.fit.amplitude ? line : best));
   const extra = (line: Line): Omit<Reading, 'value' | 'why'> => ({
-    n: line.fit.n,
+    n: line.fit.n * trace.block,
     at: { from_s: trace.from_s, to_s: trace.from_s + seconds },
   });
   const report = (line: Line, note?: string): Readings => ({
-    mains_hum_mv: measured(line.fit.amplitude, { ...extra(line), se: line.floor, ...(note ? { note } : {}) }),
+    mains_hum_mv: measured(line.fit.amplitude / keptByMeans(line.fit.frequency_hz, trace), {
+      ...extra(line),
+      se: line.floor,
+      ...(note ? { note } : {}),
+    }),
     // Standard error of a frequency from a sine of this amplitude and duration in white noise (Rife & Boorstyn 1974).
     mains_hum_hz: measured(line.fit.frequency_hz, {
       ...extra(line),
@@ -132,7 +148,11 @@ export function hum(voltage: Signal, quiet: readonly Stretch[], mainsHz: number 
   const nominal = sineFit(trace.samples, rate, nearest.nominal_hz);
   return {
     mains_hum_mv: nominal
-      ? measured(nominal.amplitude, { ...extra(nearest), se: nearest.floor, note: `at ${nearest.nominal_hz} Hz` })
+      ? measured(nominal.amplitude / keptByMeans(nearest.nominal_hz, trace), {
+          ...extra(nearest),
+          se: nearest.floor,
+          note: `at ${nearest.nominal_hz} Hz`,
+        })
       : absent('sweep-too-short'),
     mains_hum_hz: absent('unresolved'),
   };
@@ -159,12 +179,14 @@ function lineNear(samples: Float64Array, rate: number, hz: number, range: number
 
 function strayLine(samples: Float64Array, rate: number, seconds: number): Line | null {
   if (seconds < 0.4) return null;
-  const block = Math.max(1, Math.floor(rate / 1500));
-  const coarse = blockMeans(samples.subarray(0, Math.min(samples.length, Math.round(2 * rate))), block);
-  const spacing = 0.5 / Math.min(seconds, 2);
+  // A coarse look first: one second at about 750 Hz.
+  const span_s = Math.min(seconds, 1);
+  const block = Math.max(1, Math.floor(rate / 750));
+  const some = blockMeans(samples.subarray(0, Math.round(span_s * rate)), block);
+  const spacing = 0.5 / span_s;
   let best: SineFit | null = null;
   for (let hz = 20; hz <= 150 && hz < rate * 0.4; hz += spacing) {
-    const fit = sineFit(coarse, rate / block, hz);
+    const fit = sineFit(some, rate / block, hz);
     if (fit && (!best || fit.amplitude > best.amplitude)) best = fit;
   }
   if (!best) return null;
@@ -179,29 +201,43 @@ function blockMeans(samples: Float64Array, block: number): Float64Array {
   );
 }
 
-/** Quiet samples as one trace with gaps, each stretch freed of its own level and slope; null below 100 ms. */
-function humTrace(voltage: Signal, quiet: readonly Stretch[]): { samples: Float64Array; from_s: number } | null {
-  const rate = voltage.rate_hz;
-  const usable = quiet.filter((one) => one.to - one.from >= 0.06 * rate);
+interface HumTrace {
+  /** Means over `block` samples of the quiet stretches, each freed of its own level and slope; NaN between them. */
+  samples: Float64Array;
+  rate_hz: number;
+  block: number;
+  from_s: number;
+}
+
+/** What a mean over a block leaves of a sine. */
+function keptByMeans(hz: number, { rate_hz, block }: HumTrace): number {
+  const angle = (Math.PI * hz) / (rate_hz * block);
+  return block === 1 ? 1 : Math.sin(block * angle) / (block * Math.sin(angle));
+}
+
+/** The quiet stretches at about 3 kHz, which is plenty for hum; null where they are shorter than 100 ms in all. */
+function humTrace(voltage: Signal, quiet: readonly Stretch[]): HumTrace | null {
+  const usable = quiet.filter((one) => one.to - one.from >= 0.06 * voltage.rate_hz);
   const longest = usable.toSorted((a, b) => b.to - b.from - (a.to - a.from))[0];
   if (!longest) return null;
-  const span = Math.round(humSpan_s * rate);
+  const span = Math.round(humSpan_s * voltage.rate_hz);
   const chosen =
-    longest.to - longest.from >= 0.25 * rate
+    longest.to - longest.from >= 0.25 * voltage.rate_hz
       ? [{ from: longest.from, to: Math.min(longest.to, longest.from + span) }]
       : usable.filter((one) => one.to - usable[0]!.from <= span);
-  if (total(chosen) < 0.1 * rate) return null;
+  if (total(chosen) < 0.1 * voltage.rate_hz) return null;
+  const block = Math.max(1, Math.floor(voltage.rate_hz / 3000));
   const first = chosen[0]!.from;
-  const samples = new Float64Array(chosen.at(-1)!.to - first).fill(Number.NaN);
+  const samples = new Float64Array(Math.floor((chosen.at(-1)!.to - first) / block)).fill(Number.NaN);
   for (const one of chosen) {
-    const part = voltage.samples.subarray(one.from, one.to);
-    const block = Math.max(1, Math.round(rate / 200));
-    const means = blockMeans(part, block);
+    // Blocks lie on one grid over all stretches, so that the sine keeps its phase.
+    const start = Math.ceil((one.from - first) / block);
+    const count = Math.floor((one.to - first) / block) - start;
+    const means = blockMeans(voltage.samples.subarray(first + start * block, first + (start + count) * block), block);
     const line = linearFit(Float64Array.from(means.keys()), means);
-    const level = mean(part) ?? 0;
-    const middle = part.length / block / 2 - 0.5;
-    for (let i = 0; i < part.length; i++)
-      samples[one.from - first + i] = part[i]! - level - (line?.slope ?? 0) * (i / block - 0.5 - middle);
+    means.forEach((value, k) => {
+      samples[start + k] = value - (line ? line.intercept + line.slope * k : (mean(means) ?? 0));
+    });
   }
-  return { samples, from_s: timeAt(voltage, first) };
+  return { samples, rate_hz: voltage.rate_hz / block, block, from_s: timeAt(voltage, first) };
 }

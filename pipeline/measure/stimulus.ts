@@ -154,7 +154,10 @@ function fromChannel(x: Float64Array, command: Signal, clamp: Clamp): CommandRea
   }
 
   const tolerance = 0.02 * Math.max(...runs.map((run) => Math.abs(run.level - holding)));
-  const active = runs.filter((run) => Math.abs(run.level - holding) > Math.max(tolerance, rounding));
+  const active = joinedLevels(
+    runs.filter((run) => Math.abs(run.level - holding) > Math.max(tolerance, rounding)),
+    holding,
+  );
   if (active.length === 0 || isChatter(active, holding)) return answer('none', null, null, null, []);
 
   const groups = similarPulses(active, holding);
@@ -165,7 +168,8 @@ function fromChannel(x: Float64Array, command: Signal, clamp: Clamp): CommandRea
     .sort((a, b) => a - b);
   const amplitude = mean(main.map((run) => run.level - holding))!;
   const remarks: string[] = [];
-  if (main.length >= 2) return answer('pulse train', main[0]!.from, main.at(-1)!.to, amplitude, boundaries, remarks);
+  if (main.length >= 2 && main.every((run, k) => k === 0 || run.from > main[k - 1]!.to))
+    return answer('pulse train', main[0]!.from, main.at(-1)!.to, amplitude, boundaries, remarks);
   if (groups.length > 3 && clamp === 'current')
     return answer('unknown', active[0]!.from, active.at(-1)!.to, amplitude, boundaries, [
       `the stimulus steps through ${groups.length} levels; it is not measured as one step`,
@@ -174,6 +178,20 @@ function fromChannel(x: Float64Array, command: Signal, clamp: Clamp): CommandRea
     remarks.push(`the stimulus has ${groups.length} steps; the one that moves most charge is measured`);
   const step = clamp === 'voltage' ? largest(active, holding) : main[0]!;
   return answer('step', step.from, step.to, step.level - holding, boundaries, clamp === 'voltage' ? [] : remarks);
+}
+
+/** A pulse whose edge creeps to its level is one pulse: neighbours within a tenth of its height belong together. */
+function joinedLevels(active: readonly Run[], holding: number): Run[] {
+  const out: Run[] = [];
+  for (const run of active) {
+    const last = out.at(-1);
+    const height = run.level - holding;
+    if (last && last.to === run.from && Math.abs(height - (last.level - holding)) <= 0.1 * Math.abs(height)) {
+      const longer = run.to - run.from > last.to - last.from ? run : last;
+      out[out.length - 1] = { from: last.from, to: run.to, level: longer.level };
+    } else out.push(run);
+  }
+  return out;
 }
 
 const largest = (runs: Run[], holding: number): Run =>

@@ -70,7 +70,8 @@ export function spikeSpan(
     : nextPeak - peak < 0.12
       ? Math.min(0.4 * (nextPeak - peak), (repolarization ?? 3) / 1000 + 0.005)
       : 0.06;
-  return { from_s: threshold - 0.002, to_s: peak + tail_s };
+  // A paced heart cell is pulled up by its stimulus for some milliseconds before threshold.
+  return { from_s: threshold - (slow ? 0.01 : 0.002), to_s: peak + tail_s };
 }
 
 export function spikeHoles(voltage: Signal, spikes: readonly Spike[], slow: boolean): Stretch[] {

@@ -147,7 +147,8 @@ function spikesAndBaseline(
   levels: readonly Level[],
   context: MeasureContext,
 ): { spikes: Spike[]; passive: PassiveInput; baseline: Readings; remarks: string[] } {
-  const input = (spikes: readonly Spike[]): PassiveInput => ({ voltage, stimulus, levels, spikes, slow: context.slow });
+  const { slow, mains_hz } = context;
+  const input = (spikes: readonly Spike[]): PassiveInput => ({ voltage, stimulus, levels, spikes, slow, mains_hz });
   const first = measureBaseline(input([]))['baseline_mv']!.value;
   const found = measureSpikes({ voltage, current, stimulus, baseline_mv: first, context });
   const passive = input(found.spikes);
