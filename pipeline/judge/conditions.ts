@@ -1,7 +1,7 @@
 /** What the recording could and could not have resolved: sampling, filter, electrode, noise, clipping, drift, no cell. */
 import type { NumberedSweep, Reading } from '../measure/types.ts';
 import { measuredUncertainty } from './compare.ts';
-import { firstSpike } from './physics.ts';
+import { firstSpike, ofSpike } from './physics.ts';
 import { amount } from './sentences.ts';
 import {
   type Answer,
@@ -50,6 +50,8 @@ interface Simple {
   meaning: string;
   /** 95 % half-width besides the measured one. */
   uncertainty?: number;
+  /** The number is an extreme: its spread says nothing of how well it is known. */
+  extreme?: boolean;
   shifts?: readonly number[];
   remark?: string;
 }
@@ -62,7 +64,7 @@ function hold(reading: Reading | undefined, simple: Simple): Answer {
     reading,
     low: simple.low ?? null,
     high: simple.high ?? null,
-    uncertainty: Math.hypot(measuredUncertainty(reading), simple.uncertainty ?? 0),
+    uncertainty: Math.hypot(simple.extreme ? 0 : measuredUncertainty(reading), simple.uncertainty ?? 0),
     shifts: simple.shifts ?? [0],
     subject: simple.subject,
     lowName: simple.name,
@@ -115,17 +117,18 @@ const baselineNegative: CellQuestion = (setting) => {
 const riseSamples: CellQuestion = (setting) =>
   hold(cellReading(setting, 'rise_samples'), {
     quantity: 'rise_samples',
-    subject: 'the number of samples from threshold to peak',
+    subject: 'the smallest number of samples from threshold to peak',
     low: limits.riseSamples,
     name: `the ${limits.riseSamples} samples that a rise needs`,
     meaning: 'threshold, peak and maximum rise cannot be read off so few points',
     // Threshold lies between two samples.
     uncertainty: 0.5,
+    extreme: true,
   });
 
 const filterPassesRise: CellQuestion = (setting) => {
-  const subject = 'the maximum rise of the first spike';
   const rise = firstSpike(setting, 'max_rise_v_per_s');
+  const subject = ofSpike('maximum rise', rise);
   const height = firstSpike(setting, 'spike_height_mv').reading;
   if (!rise.reading || !height || height.value <= 0)
     return unheldReading(subject, rise.absent ?? { value: null, why: 'no-spikes' });

@@ -74,7 +74,8 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
       quantity: judged,
       subject: readAt === undefined ? answer.subject : `${answer.subject} (sweep ${readAt})`,
       value: reading.value,
-      n: reading.n ?? null,
+      // Of a sweep, n counts samples; of an extreme, what it was picked from.
+      n: place.sweep === null && entry.quantity !== 'rise_samples' ? (reading.n ?? null) : null,
       low,
       high,
       lowName: answer.lowName,

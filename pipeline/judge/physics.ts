@@ -157,6 +157,10 @@ export function firstSpike(setting: Setting, quantity: string): FirstSpike {
   return { reading: { value, n: 1, at: { sweep: sweep!.sweep } }, absent: undefined, sweep, at_s };
 }
 
+/** 'the peak of the first spike', or of a median over spikes where no step fires the cell: 'the median peak of the spikes'. */
+export const ofSpike = (words: string, spike: FirstSpike): string =>
+  (spike.reading?.n ?? 1) > 1 ? `the median ${words} of the spikes` : `the ${words} of the first spike`;
+
 const located = (spike: FirstSpike): (Reading & { value: number }) | null => {
   if (!spike.reading) return null;
   const place = {
@@ -204,8 +208,8 @@ function afterTrain(setting: Setting, sweep: NumberedSweep): boolean {
 }
 
 const peakBelowSodium: CellQuestion = (setting) => {
-  const subject = 'the peak of the first spike';
   const spike = firstSpike(setting, 'peak_mv');
+  const subject = ofSpike('peak', spike);
   return against({
     setting,
     quantity: 'peak_mv',
@@ -219,8 +223,9 @@ const peakBelowSodium: CellQuestion = (setting) => {
 };
 
 const ahpAbovePotassium: CellQuestion = (setting) => {
-  const subject = 'the minimum after the first spike';
   const spike = firstSpike(setting, 'ahp_minimum_mv');
+  const subject =
+    (spike.reading?.n ?? 1) > 1 ? 'the median minimum after the spikes' : 'the minimum after the first spike';
   const limit = potassium(setting, subject);
   if (spike.reading && limit.ok) {
     if (!spike.sweep || spike.at_s === null)
@@ -353,8 +358,8 @@ const restBelowSodium: CellQuestion = (setting) => {
 };
 
 const heightBelowSpan: CellQuestion = (setting) => {
-  const subject = 'the height of the first spike';
   const spike = firstSpike(setting, 'spike_height_mv');
+  const subject = ofSpike('height', spike);
   const reading = located(spike);
   if (!reading) return unheldReading(subject, spike.absent);
   const na = sodium(setting, subject, true);
@@ -383,7 +388,7 @@ const heightBelowSpan: CellQuestion = (setting) => {
 const spikeGoesUp: CellQuestion = (setting) => {
   const height = firstSpike(setting, 'spike_height_mv').reading;
   const spike = firstSpike(setting, 'height_from_rest_mv');
-  const subject = 'the height of the first spike above the baseline';
+  const subject = `${ofSpike('height', spike)} above the baseline`;
   const reading = located(spike);
   if (!reading || !height) return unheldReading(subject, spike.absent ?? { value: null, why: 'no-spikes' });
   const name = `half the excursion itself (${amount('spike_height_mv', height.value / 2)})`;

@@ -189,6 +189,16 @@ test.each(ladders)(
   },
 );
 
+test('the spread of an extreme says nothing of how well it is known', () =>
+  expect(
+    finding('rise-samples', { readings: { rise_samples: read(27, { n: 2, sd: 8, at: { sweep: 1 } }) } }),
+  ).toMatchObject({
+    outcome: 'within',
+    uncertainty: 0.5,
+    sentence:
+      'The smallest number of samples from threshold to peak (sweep 1), 27, stays 22 above the 5 samples that a rise needs.',
+  }));
+
 describe('facts a check needs', () => {
   test.each([
     ['filter-passes-rise', { filter_khz: null }, ['filter_khz']],

@@ -62,6 +62,10 @@ describe('peak against E_Na', () => {
     expect(found).toMatchObject({ outcome: 'outside', value: 75, at_s: 0.31 });
     expect(found?.sentence).toMatch(/sweep 1/);
   });
+  test('a median over spikes of a cell that no step fires is called so', () =>
+    expect(
+      finding('peak-below-sodium', { readings: { peak_mv: read(40, { n: 12, sd: 1, at: { sweep: 3 } }) } }).sentence,
+    ).toBe('The median peak of the spikes, +40.0 mV (n = 12), stays 20.5 mV below E_Na (+60.5 mV at 33 °C).'));
   test.each([
     ['configuration not stated', { configuration: null }, ['configuration']],
     ['a sharp electrode', { configuration: 'sharp' }, []],
