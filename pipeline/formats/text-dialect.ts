@@ -175,8 +175,12 @@ function findHeadings(rows: readonly Row[], all: readonly Row[], trial: Trial, b
   const above = all.filter(({ line }) => line < rows[block]!.line);
   let at = above.length - 1;
   if (at < 0) return none;
+  // One value a line shows no separator, its header may.
+  const separators: Separator[] = trial.columns > 1 ? [trial.separator] : ['tab', ';', ','];
   const cellsAt = (index: number): string[] =>
-    withoutEmptyEnd(cellsOf(withoutCommentSign(above[index]!.text), trial.separator));
+    separators
+      .map((separator) => withoutEmptyEnd(cellsOf(withoutCommentSign(above[index]!.text), separator)))
+      .reduce((most, cells) => (cells.length > most.length ? cells : most));
   let units: string[] | null = null;
   if (at > 0 && isUnitsRow(cellsAt(at)) && cellsAt(at).length > 1) {
     units = cellsAt(at);
