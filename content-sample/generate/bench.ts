@@ -129,6 +129,7 @@ export function membraneOf(day: DaySpec, cell: CellSpec): Membrane {
     g_na: 20 * spread(0.08),
     g_si: 0.075 * spread(0.1),
     k_factor: spread(0.06),
+    phi: 2.3 ** ((celsius - 36.85) / 10),
     temperature_c: celsius,
     na_out_mm: outside['Na']!.mm,
     na_in_mm: inside['Na']!.mm,
@@ -254,7 +255,8 @@ export function protocolOf(cell: CellSpec, rheobase_pa: number): PlannedSweep[] 
       for (const share of [0.9, 0.96, 1.02, 1.08])
         add(step(Math.round(rheobase_pa * share), 0.1, 0.6, 0.8, 'rheobase', hold), 5);
     if (cell.kind === 'pyramidal') add(ramp(round125(rheobase_pa * 2.2), 0.1, 0.9, 1.1), 5);
-    add(pulseTrain(round125(rheobase_pa * (cell.kind === 'pyramidal' ? 16 : 9)), 0.002, 0.05, 8, 0.1, 0.7), 5);
+    const brief = cell.unit_pa ? 8 * cell.unit_pa : round125(rheobase_pa * (cell.kind === 'pyramidal' ? 16 : 9));
+    add(pulseTrain(brief, 0.002, 0.05, 8, 0.1, 0.7), 5);
   }
   add(testPulse(-70, -5), 3);
   return out;

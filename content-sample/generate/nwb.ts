@@ -53,7 +53,7 @@ export interface NwbContent {
   pairing: 'numbers' | 'tables' | 'sweep-table';
   /** Written instead of the true unit of the voltage, to plant a fault. */
   voltage_unit?: string;
-  /** Multiplies the stored conversions, to plant a fault. */
+  /** Multiplies the stored conversion of the voltage channel, and of all currents, to plant a fault. */
   voltage_factor?: number;
   current_factor?: number;
   /** The sampling rate the file claims over the true one, to plant a fault. */
@@ -227,11 +227,11 @@ function writeSweep(root: Group, acquisition: Group, presentation: Group, conten
       start.create_attribute('unit', 'seconds');
     }
   };
-  const volts = sweep.quantum_mv * 1e-3 * (content.voltage_factor ?? 1);
+  const volts = sweep.quantum_mv * 1e-3;
   const amperes = sweep.quantum_pa * 1e-12 * (content.current_factor ?? 1);
   const response = series(acquisition, name, `${kind}Series`, `${sweep.plan.protocol}, response`);
   if (clamp === 'current') {
-    samples(response, sweep.voltage, volts, content.voltage_unit ?? 'volts');
+    samples(response, sweep.voltage, volts * (content.voltage_factor ?? 1), content.voltage_unit ?? 'volts');
     if (item.bridge_mohm !== null) scalar(response, 'bridge_balance', item.bridge_mohm * 1e6);
     if (item.bias_pa !== null) scalar(response, 'bias_current', item.bias_pa * 1e-12);
   } else samples(response, sweep.current, amperes, 'amperes');

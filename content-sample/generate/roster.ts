@@ -354,6 +354,7 @@ export const days: readonly DaySpec[] = [
         true_bath: 'tyrode',
       }),
       c('2026-05-14', 'd2c1', 'heart', 75, 'none', [], { text: 'semicolon', file: 'd2c1.csv' }),
+      c('2026-05-14', 'd2c2', 'heart', 102, 'temperature-misstated', ['APD90'], { true_temperature_c: 28 }),
     ],
   },
   {
@@ -371,7 +372,7 @@ export const days: readonly DaySpec[] = [
     cells: [
       c('2026-05-20', 's1c1', 'pyramidal', 0),
       c('2026-05-20', 's1c2', 'pyramidal', 37, 'junction-left-in', ['E_Na'], { junction_left: 1, g_na: 46 }),
-      c('2026-05-20', 's2c1', 'pyramidal', 74, 'wrong-class', ['Fast-spiking'], { class: 'fast', phi: 0.45 }),
+      c('2026-05-20', 's2c1', 'pyramidal', 74),
     ],
   },
   {
@@ -465,6 +466,7 @@ export const days: readonly DaySpec[] = [
     folder: '2026-06-16-tank',
     date: '2026-06-16',
     first: '13:30',
+    temperature_c: 32,
     rig: 'tank',
     person: 'y',
     subject: guineaPig('g03', 'P72D', 'M'),
@@ -473,6 +475,7 @@ export const days: readonly DaySpec[] = [
     cells: [
       c('2026-06-16', 'd1c1', 'heart', 0, 'none', [], { size: 1.15 }),
       c('2026-06-16', 'd1c2', 'heart', 35, 'rundown', ['height'], { g_na_end: 0.3 }),
+      c('2026-06-16', 'd2c1', 'heart', 68, 'wrong-class', ['pyramidal'], { class: 'layer5' }),
     ],
   },
   {
@@ -488,16 +491,28 @@ export const days: readonly DaySpec[] = [
     cells: [
       c('2026-06-18', 's1c1', 'nothing', 0, 'no-cell', ['no cell', 'resistance', 'rest'], { unit_pa: 50 }),
       c('2026-06-18', 's1c2', 'pyramidal', 30, 'depolarized', ['est'], {
-        leak_shift_mv: 32,
+        leak_shift_mv: 40,
         leak_factor: 4,
-        g_na: 9,
+        g_na: 1.2,
         unit_pa: 50,
       }),
-      c('2026-06-18', 's2c1', 'pyramidal', 66, 'temperature-misstated', ['width', 'rise'], {
-        true_temperature_c: 22,
-      }),
+      c('2026-06-18', 's2c1', 'pyramidal', 66),
       c('2026-06-18', 's2c2', 'pyramidal', 104, 'none', [], { holding_pa: -35 }),
     ],
+  },
+  {
+    ...slices,
+    folder: '2026-06-19-loft',
+    date: '2026-06-19',
+    first: '11:15',
+    rig: 'loft',
+    person: 'o',
+    temperature_c: 23,
+    ljp: null,
+    subject: mouse('m22', 'P28D', 'F'),
+    batch_pipette: 'kg-15',
+    batch_bath: 'b-0616',
+    cells: [c('2026-06-19', 's1c1', 'pyramidal', 0), c('2026-06-19', 's1c2', 'interneuron', 37)],
   },
   {
     ...slices,
