@@ -34,13 +34,39 @@ interface Ions {
   e_na: IonPotential | null;
   e_k: IonPotential | null;
   ljp_mv: number | null;
+  ljp_uncertainty_mv: number | null;
   pipette_sodium_mm: number | null;
 }
 
-const noIons: Ions = { e_na: null, e_k: null, ljp_mv: null, pipette_sodium_mm: null };
+const noIons: Ions = { e_na: null, e_k: null, ljp_mv: null, ljp_uncertainty_mv: null, pipette_sodium_mm: null };
+
+/** Dissolving takes milliseconds and an archive has few recipes and temperatures: each pair is worked out once. */
+const worked = new WeakMap<Recipe, WeakMap<Recipe, Map<number, Ions>>>();
 
 function ionsOf(pipette: Recipe | undefined, bath: Recipe | undefined, celsius: number | null): Ions {
   if (!pipette || !bath || celsius === null) return noIons;
+  const ofPipette = worked.get(pipette) ?? new WeakMap<Recipe, Map<number, Ions>>();
+  worked.set(pipette, ofPipette);
+  const ofPair = ofPipette.get(bath) ?? new Map<number, Ions>();
+  ofPipette.set(bath, ofPair);
+  const had = ofPair.get(celsius);
+  if (had) return had;
+  const made = workOutIons(pipette, bath, celsius);
+  ofPair.set(celsius, made);
+  return made;
+}
+
+/** Nothing where a recipe is impossible: `recipeProblems` says what is wrong with it, once for the archive. */
+function workOutIons(pipette: Recipe, bath: Recipe, celsius: number): Ions {
+  try {
+    return dissolvedIons(pipette, bath, celsius);
+  } catch (error) {
+    if (error instanceof RangeError) return noIons;
+    throw error;
+  }
+}
+
+function dissolvedIons(pipette: Recipe, bath: Recipe, celsius: number): Ions {
   const inside = dissolve(pipette, celsius);
   const outside = dissolve(bath, celsius);
   const potentials = equilibria({
@@ -50,10 +76,12 @@ function ionsOf(pipette: Recipe | undefined, bath: Recipe | undefined, celsius: 
     celsiusUncertainty: temperatureUncertaintyC,
   });
   const sodium = inside.ions.find((ion) => ion.ion === 'Na')?.millimolar ?? null;
+  const junction = junctionPotential(inside.ions, outside.ions, celsius);
   return {
     e_na: potentials.e_na,
     e_k: potentials.e_k,
-    ljp_mv: junctionPotential(inside.ions, outside.ions, celsius).mv,
+    ljp_mv: junction.mv,
+    ljp_uncertainty_mv: junction.uncertainty_mv,
     pipette_sodium_mm: sodium !== null && sodium > 0 ? sodium : null,
   };
 }
@@ -106,6 +134,8 @@ export function circumstancesOf(
     junction,
     ljp_mv: ljp,
     ljp_from: stated !== null ? 'stated' : ljp !== null ? 'computed' : null,
+    ljp_uncertainty_mv: stated !== null ? 1 : atZeroing.ljp_uncertainty_mv,
+    ljp_computed_mv: atZeroing.ljp_mv,
     ljp_applied_mv: applied,
     reading: junction === 'corrected' || (junction === 'uncorrected' && ljp !== null) ? 'corrected' : 'recorded',
     e_na: wholeCell ? ions.e_na : null,

@@ -13,6 +13,7 @@ import { type ComposedCell, composeCell } from './compose.ts';
 import { entriesByFile, type Measured, measureFiles, unreadShare } from './measure-files.ts';
 import type { Progress } from './progress.ts';
 import type { MeasuredSweeps } from './reading-worker.ts';
+import { recipeProblems } from './recipe-problems.ts';
 import { codeVersion, surveyFiles, unreadable } from './survey.ts';
 import { toolVersion } from './version.ts';
 
@@ -216,6 +217,7 @@ export async function gather(root: string, ledger: Ledger, options: GatherOption
   );
   const problems: ArchiveProblem[] = [
     ...archive.problems,
+    ...recipeProblems(archive.recipes),
     ...noteProblems,
     ...danglingDecisions(archive, cellIds),
     ...worked.problems.map((problem) => ({ ...problem, line: null })),

@@ -74,6 +74,10 @@ export interface Circumstances {
   /** V_membrane = V_recorded − ljp; null where neither stated nor computable. */
   ljp_mv: number | null;
   ljp_from: 'stated' | 'computed' | null;
+  /** 95 % half-width of `ljp_mv`: 1 mV where stated, at least 3.5 mV where computed. */
+  ljp_uncertainty_mv?: number | null;
+  /** What the recipes give, also where another value is stated: the difference is reported. */
+  ljp_computed_mv?: number | null;
   /** What was subtracted from the recorded potentials to get the readings judged here, mV. */
   ljp_applied_mv: number;
   reading: 'corrected' | 'recorded';
