@@ -16,15 +16,55 @@ export function missingFraction(signal: Signal): Reading {
 }
 
 /**
- * Stretches stuck at the recorder's upper or lower limit. Noise on a coarse digitizer makes a run of three equal
- * samples at an extreme now and then: fewer than five samples at one limit in a whole sweep are no clipping.
+ * Stretches stuck at the recorder's upper or lower limit. Equal samples at an extreme are no proof of it: noise on a
+ * coarse digitizer repeats a value now and then, and a quiet trace rests on one. They count where the trace jumps to
+ * the limit and away from it, as a clipped spike does, or where they last far longer than equal samples do elsewhere;
+ * and where there are at least five of them at that limit.
  */
 export function stuckStretches(samples: Float64Array): Stretch[] {
   const runs = clippedRuns(samples);
+  if (runs.length === 0) return [];
+  const least = typicalStep(samples);
   return (['top', 'bottom'] as const).flatMap((at) => {
-    const own = runs.filter((run) => run.at === at);
-    return total(own) >= 5 ? own.map(({ from, to }) => ({ from, to })) : [];
+    const here = runs.filter((run) => run.at === at);
+    if (here.length === 0) return [];
+    const ordinary = longestRepeat(samples, samples[here[0]!.from]!);
+    const own = here
+      .filter((run) => smallerJump(samples, run) > 5 * least || run.to - run.from > 2 * ordinary)
+      .map(({ from, to }) => ({ from, to }));
+    return total(own) >= 5 ? own : [];
   });
+}
+
+/** The smaller of the jumps into and out of a run; at an end of the trace the one there is. */
+function smallerJump(samples: Float64Array, run: Stretch): number {
+  const level = samples[run.from]!;
+  const jumps = [samples[run.from - 1], samples[run.to]].flatMap((value) =>
+    value === undefined || !Number.isFinite(value) ? [] : [Math.abs(value - level)],
+  );
+  return jumps.length === 0 ? 0 : Math.min(...jumps);
+}
+
+/** Longest run of equal samples at any level but one. */
+function longestRepeat(samples: Float64Array, except: number): number {
+  let longest = 1;
+  let length = 1;
+  for (let i = 1; i < samples.length; i++) {
+    length = samples[i] === samples[i - 1] && samples[i] !== except ? length + 1 : 1;
+    if (length > longest) longest = length;
+  }
+  return longest;
+}
+
+/** Median of the differences between neighbouring samples that differ: what the trace ordinarily moves by. */
+function typicalStep(samples: Float64Array): number {
+  const stride = Math.max(1, Math.floor(samples.length / 10000));
+  const moves: number[] = [];
+  for (let i = 1; i < samples.length; i += stride) {
+    const move = Math.abs(samples[i]! - samples[i - 1]!);
+    if (move > 0) moves.push(move);
+  }
+  return median(moves) ?? 0;
 }
 
 /** Share of samples stuck at the recorder's upper or lower limit; `at` is the longest such run. */
@@ -168,8 +208,8 @@ interface Line {
 function lineNear(samples: Float64Array, rate: number, hz: number, range: number, seconds: number): Line | null {
   const fit = sineNear(samples, rate, hz, range);
   if (!fit) return null;
-  // Beyond the width of the line itself, which is one over the duration.
-  const beside = [-4.5, -3.5, -2.5, 2.5, 3.5, 4.5]
+  // Whole multiples of one over the duration away, where the line itself leaves nothing.
+  const beside = [-5, -4, -3, 3, 4, 5]
     .map((steps) => fit.frequency_hz + steps / seconds)
     .filter((frequency) => frequency > 2 / seconds && frequency > 8 && frequency < rate * 0.45)
     .map((frequency) => sineFit(samples, rate, frequency)?.amplitude ?? Number.NaN);

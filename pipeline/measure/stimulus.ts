@@ -110,8 +110,9 @@ function fromChannel(x: Float64Array, command: Signal, clamp: Clamp): CommandRea
   const range = extent(x);
   const edges = range > rounding ? findEdges(x, rate, range) : [];
   const runs = levelRuns(x, edges, rate);
-  const holding = runs[0]!.level;
-  const sd = standardDeviation(x.subarray(runs[0]!.from, runs[0]!.to)) ?? 0;
+  const held = holdingRun(runs, clamp);
+  const holding = held.level;
+  const sd = standardDeviation(x.subarray(held.from, held.to)) ?? 0;
 
   const answer = (
     kind: StimulusKind,
@@ -178,6 +179,16 @@ function fromChannel(x: Float64Array, command: Signal, clamp: Clamp): CommandRea
     remarks.push(`the stimulus has ${groups.length} steps; the one that moves most charge is measured`);
   const step = clamp === 'voltage' ? largest(active, holding) : main[0]!;
   return answer('step', step.from, step.to, step.level - holding, boundaries, clamp === 'voltage' ? [] : remarks);
+}
+
+/**
+ * The run that is the holding level: the first. A current that starts at some level and then stays at exactly zero is
+ * a step that was already on when the sweep began.
+ */
+function holdingRun(runs: readonly Run[], clamp: Clamp): Run {
+  const [first, second] = runs as [Run, Run?];
+  const released = clamp === 'current' && runs.length === 2 && Math.abs(second!.level) <= rounding;
+  return released ? second! : first;
 }
 
 /** A pulse whose edge creeps to its level is one pulse: neighbours within a tenth of its height belong together. */

@@ -1,4 +1,12 @@
-import type { MeasureContext, Signal } from '../../pipeline/measure/types.ts';
+import type {
+  CellContext,
+  MeasureContext,
+  NumberedSweep,
+  Readings,
+  Signal,
+  SweepInput,
+  SweepMeasure,
+} from '../../pipeline/measure/types.ts';
 
 /** A signal made from a formula of time in seconds; the first sample is at 0. */
 export function signalOf(seconds: number, rateHz: number, formula: (t: number) => number): Signal {
@@ -90,4 +98,90 @@ export function passiveSweep(
     (t) => holding + (after(t, step.from_s) >= 0 && after(t, step.to_s) < 0 ? step.pa : 0),
   );
   return { voltage, current };
+}
+
+/** A voltage-clamp step through an access resistance into a cell, exactly (linear circuit theory). */
+export function clampedSweep(
+  cell: {
+    access_mohm: number;
+    membrane_mohm: number;
+    pf: number;
+    reversal_mv?: number;
+    noise_pa?: number;
+    seed?: number;
+  },
+  steps: { from_s: number; to_s: number; mv: number }[],
+  options: { holding_mv?: number; seconds?: number; rateHz?: number } = {},
+): { voltage: Signal; current: Signal } {
+  const { holding_mv = -70, seconds = 0.2, rateHz = 50000 } = options;
+  const noise = normalNoise(cell.seed ?? 1);
+  const parallel = (cell.access_mohm * cell.membrane_mohm) / (cell.access_mohm + cell.membrane_mohm);
+  const tau_ms = (parallel * cell.pf) / 1000;
+  const total = cell.access_mohm + cell.membrane_mohm;
+  const after = (t: number, edge: number): number => (t - edge + 1e-9) * 1000;
+  // mV/MΩ is nA.
+  const answer = (ms: number, mv: number): number =>
+    ms < 0 ? 0 : 1000 * (mv / total + (mv / cell.access_mohm - mv / total) * Math.exp(-ms / tau_ms));
+  const current = signalOf(seconds, rateHz, (t) =>
+    steps.reduce(
+      (sum, step) => sum + answer(after(t, step.from_s), step.mv) - answer(after(t, step.to_s), step.mv),
+      (1000 * (holding_mv - (cell.reversal_mv ?? -70))) / total + (cell.noise_pa ?? 0) * noise(),
+    ),
+  );
+  const voltage = signalOf(seconds, rateHz, (t) =>
+    steps.reduce(
+      (sum, step) => sum + (after(t, step.from_s) >= 0 && after(t, step.to_s) < 0 ? step.mv : 0),
+      holding_mv,
+    ),
+  );
+  return { voltage, current };
+}
+
+/** A spike made of a formula: baseline, a triangular upstroke and fall, an exponential afterhyperpolarization. */
+export function addSpike(mv: Float64Array, rateHz: number, at_s: number, height = 100, ahp = 8): void {
+  const start = Math.round(at_s * rateHz);
+  const ms = 1000 / rateHz;
+  for (let i = start; i < mv.length; i++) {
+    const t = (i - start) * ms;
+    let shape: number;
+    if (t < 0.5) shape = height * Math.sin((Math.PI / 2) * (t / 0.5)) ** 2;
+    else if (t < 1.5) shape = (height + ahp) * Math.cos((Math.PI / 2) * (t - 0.5)) ** 2 - ahp;
+    else shape = -ahp * Math.exp(-(t - 1.5) / 8);
+    mv[i]! += shape;
+    if (t > 80) break;
+  }
+}
+
+export const input = (
+  made: { voltage: Signal | null; current: Signal | null },
+  more: Partial<SweepInput> = {},
+): SweepInput => ({ clamp: 'current', stated_stimulus: null, bridge_mohm: null, ...made, ...more });
+
+export const numbered = (sweep: SweepMeasure, number: number, more: Partial<NumberedSweep> = {}): NumberedSweep => ({
+  ...sweep,
+  sweep: number,
+  condition: 'baseline',
+  since_start_s: number * 10,
+  ...more,
+});
+
+export const cellContext = (more: Partial<CellContext> = {}): CellContext => ({
+  ...neuron,
+  e_na_mv: null,
+  e_k_mv: null,
+  bias_pa: null,
+  stated_capacitance_pf: null,
+  stated_access_mohm: null,
+  break_in_to_start_s: null,
+  missing_for_e_na: ['pipette'],
+  missing_for_e_k: ['bath'],
+  ...more,
+});
+
+/** The value of a reading; fails with the reason where there is none. */
+export function numberIn(readings: Readings, id: string): number {
+  const reading = readings[id];
+  if (!reading) throw new Error(`no reading ${id}`);
+  if (reading.value === null) throw new Error(`${id} has no value: ${reading.why} ${reading.note ?? ''}`);
+  return reading.value;
 }
