@@ -25,7 +25,7 @@ import type {
 import { type ArchiveProblem, lineAt, nodeAt, readYaml, remark, type Tree } from './yaml-file.ts';
 
 const quantityIds = quantities.map((entry) => entry.id);
-const emptyMap = (line = 1): Tree => ({ kind: 'map', line, entries: new Map() });
+const emptyMap = (line = 1): Tree => ({ kind: 'map', id: 0, line, entries: new Map() });
 
 export const bareSettings = (title: string): Settings => ({
   title,
@@ -116,8 +116,12 @@ export function readRecipe(
     return { recipe: null, problems };
   }
   const held = hold(path, tree, recipeSchema);
-  problems.push(...held.problems);
-  if (!held.value) return { recipe: null, problems };
+  if (held.problems.length > 0 || !held.value) {
+    // A recipe without one of its salts gives potentials that are wrong by tens of mV: all of it or none.
+    const remedy = 'The recipe was not used, since a part of it would mislead. Correct it and build again.';
+    problems.push(...held.problems.map((one) => ({ ...one, weight: 'blocks' as const, remedy })));
+    return { recipe: null, problems };
+  }
   const { name, alias, role, ph, titrant, gas, osmolality_mosm, millimolar } = held.value;
   return {
     recipe: {
@@ -159,7 +163,7 @@ export function readDecisions(path: string, bytes: Uint8Array): { decisions: Dec
           path,
           line,
           'VALUE_IMPOSSIBLE',
-          `${index}.cell`,
+          `entry ${index + 1}: cell`,
           `${id.message}.`,
           'The decision was not used. Correct the id of the cell.',
         ),
@@ -217,6 +221,8 @@ export function readCriteria(
   };
 }
 
+const ruleLost = 'The rule was not used, so the set lets through more than it says. Correct it.';
+
 function readRule(
   path: string,
   part: string,
@@ -227,16 +233,7 @@ function readRule(
   const { line, node } = entry;
   const place = `${part}.${key}`;
   const say = (code: string, message: string): null => {
-    problems.push(
-      remark(
-        path,
-        line,
-        code,
-        place,
-        message,
-        'The rule was not used, so the set lets through more than it says. Correct it.',
-      ),
-    );
+    problems.push(remark(path, line, code, place, message, ruleLost));
     return null;
   };
   if (!factKey(key) && !isQuantity(key) && !otherKeys.includes(key)) {
@@ -247,11 +244,16 @@ function readRule(
   const long: Tree =
     node.kind === 'map' ? node : ({ ...emptyMap(line), entries: new Map([['any', { line, node }]]) } as Tree);
   const held = hold(path, long, ruleSchema, [part, key]);
-  problems.push(...held.problems);
-  if (!held.value) return null;
-  const { missing = 'list', ...rule } = held.value;
-  if (Object.keys(rule).length === 0)
-    return say('VALUE_IMPOSSIBLE', `${place} must say above, below, between, any or not, got ${shownValue(node)}.`);
+  const { missing = 'list', ...rule } = held.value ?? {};
+  const lost = Object.keys(rule).length === 0;
+  problems.push(
+    ...held.problems.map((one) => ({ ...one, remedy: lost ? ruleLost : `${one.remedy} The rest of the rule holds.` })),
+  );
+  if (lost) {
+    if (held.problems.length === 0)
+      say('VALUE_IMPOSSIBLE', `${place} must say above, below, between, any or not, got ${shownValue(node)}.`);
+    return null;
+  }
   const named = [...(rule.any ?? []), ...(rule.not ?? [])];
   if (key === 'standing') {
     const wrong = named.find((word) => !standings.some((standing) => standing === word));

@@ -380,7 +380,9 @@ const disagreement = (fact: Fact, other: Fact['disagrees'][number]): PlacedProbl
   );
 
 function cellOf(archive: Archive, group: Group): CellRecord {
-  const sheet = Object.hasOwn(archive.cell_statements, group.id) ? archive.cell_statements[group.id]! : [];
+  // The row's own id found it; it is no second word on what the cell is called.
+  const row = Object.hasOwn(archive.cell_statements, group.id) ? archive.cell_statements[group.id]! : [];
+  const sheet = row.filter((one) => one.key !== 'cell');
   const { parts, sweeps } = orderSweeps(group.parts, sheet, archive.settings.timezone);
   const { facts, file_facts } = factsOfCell(group, parts, sheet);
   const stated = new Map<string, FoundFile['conditions'][number]>();

@@ -150,7 +150,7 @@ const plainWord = (word: string): string =>
     .replace(/[\s-]+/g, '_');
 
 /**
- * The known word most like a given one: a word that begins or ends with the other first, then the fewest changed
+ * The known word most like a given one: one that begins with the other or holds all of it first, then the fewest changed
  * letters, then the earlier in the list. Undefined only when `known` is empty.
  */
 export function nearestOf(word: string, known: Iterable<string>): string | undefined {
@@ -159,7 +159,8 @@ export function nearestOf(word: string, known: Iterable<string>): string | undef
   let bestScore = Number.POSITIVE_INFINITY;
   for (const candidate of known) {
     const plain = plainWord(candidate);
-    const shares = wanted.length >= 3 && plain.length >= 3 && (plain.startsWith(wanted) || wanted.startsWith(plain));
+    const begins = wanted.length >= 3 && plain.length >= 3 && (plain.startsWith(wanted) || wanted.startsWith(plain));
+    const shares = begins || (wanted.length >= 5 && plain.includes(wanted));
     const score = distance(wanted, plain) + (shares ? -1000 : 0);
     if (score < bestScore) {
       best = candidate;

@@ -110,7 +110,8 @@ export function readArchive(root: string, disk: Disk = nodeDisk): Archive {
   const sheet = withFile('facts.csv', (bytes) => readFactsTable('facts.csv', bytes));
 
   const parts = new Map<string, Parts>();
-  for (const below of [...sorted.folders, ...sorted.sidecars]) {
+  const paths = new Set(sorted.data.map((one) => one.path));
+  for (const below of [...sorted.folders, ...sorted.sidecars.filter((one) => paths.has(dataOf(one)))]) {
     const one = withFile(below, (bytes) => readParts(below, bytes));
     if (one) parts.set(below, one.parts);
   }
@@ -120,7 +121,7 @@ export function readArchive(root: string, disk: Disk = nodeDisk): Archive {
 
   const cell_statements: Archive['cell_statements'] = Object.create(null);
   for (const [cell, statements] of Object.entries(sheet?.byCell ?? {})) cell_statements[cell] = statements;
-  const settle = settler(settings, recipes);
+  const settle = settler(settings, recipes, new Set(sorted.recipes.map(stemOf)));
   for (const file of files) {
     file.statements = settle.all(file.statements);
     for (const [name, statements] of Object.entries(file.electrode_statements))
@@ -470,10 +471,13 @@ function mergeTables(tables: readonly TableMapping[]): TableMapping | null {
   return merged;
 }
 
+/** The data file that a sidecar speaks for. */
+const dataOf = (sidecar: string): string => sidecar.slice(0, -'.yaml'.length);
+
 function loneSidecars(sidecars: readonly string[], data: readonly Met[]): ArchiveProblem[] {
   const paths = new Set(data.map((one) => one.path));
   return sidecars
-    .filter((sidecar) => !paths.has(sidecar.slice(0, -'.yaml'.length)))
+    .filter((sidecar) => !paths.has(dataOf(sidecar)))
     .map((sidecar) => {
       const name = nameOf(sidecar);
       if (!sidecar.includes('/')) {
@@ -488,7 +492,7 @@ function loneSidecars(sidecars: readonly string[], data: readonly Met[]): Archiv
         );
       }
       const beside = data.filter((one) => folderOf(one.path) === folderOf(sidecar)).map((one) => nameOf(one.path));
-      const nearest = nearestOf(name.slice(0, -'.yaml'.length), beside);
+      const nearest = nearestOf(dataOf(name), beside);
       const hint =
         nearest === undefined ? 'No data file lies beside it.' : `The nearest name beside it is "${nearest}".`;
       return remark(
@@ -496,7 +500,7 @@ function loneSidecars(sidecars: readonly string[], data: readonly Met[]): Archiv
         null,
         'SIDECAR_ALONE',
         '',
-        `It speaks for "${name.slice(0, -'.yaml'.length)}", which is not there. ${hint}`,
+        `It speaks for "${dataOf(name)}", which is not there. ${hint}`,
         'It was not used. Give it the full name of its data file, ending included, followed by .yaml.',
       );
     });
@@ -549,7 +553,7 @@ interface Place {
  * Holds stated codes against the archive's own lists: classes, rigs, people, recipes. One problem for each file and
  * value, however many recordings it speaks for.
  */
-function settler(settings: Settings, recipes: readonly Recipe[]) {
+function settler(settings: Settings, recipes: readonly Recipe[], recipeFiles: ReadonlySet<string>) {
   const classes = [...Object.keys(settings.classes), ...shippedClasses];
   const said = new Map<string, ArchiveProblem & { lines: Set<number | null> }>();
   const say = (at: Place, code: string, key: string, message: string, remedy: string): void => {
@@ -571,7 +575,7 @@ function settler(settings: Settings, recipes: readonly Recipe[]) {
       at,
       'CODE_UNKNOWN',
       key,
-      `"${value}" is not among the ${where} of almanac.yaml${nearestTo(value, Object.keys(list))}.`,
+      `"${value}" is not among the ${where} of almanac.yaml (${Object.keys(list).slice(0, 12).join(', ')})${nearestTo(value, Object.keys(list))}.`,
       `It was used as it stands. Correct it, or add it to ${where}.`,
     );
   };
@@ -594,7 +598,8 @@ function settler(settings: Settings, recipes: readonly Recipe[]) {
     }
     if (key === 'bath' || key === 'pipette') {
       const recipe = recipeFor(recipes, stated);
-      if (!recipe)
+      // A recipe that could not be used has its own complaint already.
+      if (!recipe && !recipeFiles.has(stated))
         say(
           at,
           'RECIPE_UNKNOWN',
@@ -605,7 +610,7 @@ function settler(settings: Settings, recipes: readonly Recipe[]) {
           )}.`,
           `Nothing that depends on the ${key} solution can be worked out. Add solutions/${stated.replace(/[^\p{L}\p{N}._-]+/gu, '-')}.yaml or correct the name.`,
         );
-      else if (recipe.role !== key)
+      if (recipe && recipe.role !== key)
         say(
           at,
           'RECIPE_ROLE',

@@ -7,10 +7,12 @@ import { isCalendarDate, nearestOf, shippedClasses, wordList } from './fact-keys
 import type { ArchiveProblem, Step, Tree } from './yaml-file.ts';
 import { lineAt, nodeAt, plain, remark, without } from './yaml-file.ts';
 
-const text = z
-  .union([z.string(), z.number(), z.boolean()], { error: 'text' })
-  .transform((value) => String(value).trim())
-  .refine((value) => value !== '', { error: 'text that is not empty' });
+const textAs = (what: string) =>
+  z
+    .union([z.string(), z.number(), z.boolean()], { error: what })
+    .transform((value) => String(value).trim())
+    .refine((value) => value !== '', { error: what });
+const text = textAs('a text');
 
 const oneOf = <const Words extends readonly [string, ...string[]]>(words: Words) =>
   z.enum(words, { error: `one of ${words.join(' | ')}` });
@@ -33,7 +35,8 @@ const named = <Value extends z.core.SomeType>(value: Value) =>
 const listOf = <Item extends z.core.SomeType>(item: Item, what: string) =>
   z.array(item, { error: `a list of ${what}` });
 
-const date = text.refine(isCalendarDate, { error: 'a day of the calendar written YYYY-MM-DD' });
+const day = 'a day of the calendar written YYYY-MM-DD';
+const date = textAs(day).refine(isCalendarDate, { error: day });
 
 const isTimezone = (name: string): boolean => {
   try {
@@ -70,7 +73,10 @@ export const almanacSchema = block({
   rigs: named(text).optional(),
   people: named(text).optional(),
   classes: named(
-    block({ label: text, like: oneOf(shippedClasses as unknown as readonly [string, ...string[]]) }),
+    block({
+      label: text,
+      like: z.enum(shippedClasses as unknown as [string, ...string[]], { error: 'a class that comes with the tool' }),
+    }),
   ).optional(),
   limits: named(limit).optional(),
   audiences: named(z.unknown()).optional(),
@@ -106,10 +112,15 @@ export const criteriaSchema = block({
   require: named(z.unknown()).optional(),
 });
 
+/** One thing or a list of at least one of them, always given as a list. */
+const someOf = <Item extends z.ZodType>(item: Item, error: string) =>
+  z
+    .union([item, z.array(item, { error })], { error })
+    .transform((value): z.output<Item>[] => (Array.isArray(value) ? value : [value as z.output<Item>]))
+    .refine((list) => list.length > 0, { error });
+
 const scalarOf = z.union([z.string(), z.number()], { error: 'a word or a number' });
-const words = z.union([scalarOf.transform((one) => [one]), listOf(scalarOf, 'words')], {
-  error: 'a word or a list of words',
-});
+const words = someOf(scalarOf, 'a word or a list of words');
 
 /** The long form of one rule of a criteria set. */
 export const ruleSchema = block({
@@ -121,12 +132,14 @@ export const ruleSchema = block({
   missing: oneOf(['keep', 'drop', 'list']).optional(),
 });
 
-const column = z.union([z.number().int().min(1), z.string().min(1)], {
-  error: 'a column: its number from 1 or its heading',
-});
-const columns = z.union([column.transform((one) => [one]), z.array(column).min(1)], {
-  error: 'a list of columns, each by its number from 1 or its heading',
-});
+const oneColumn = 'a column: its number from 1 or its heading';
+const column = z
+  .union([z.number(), z.string()], { error: oneColumn })
+  .refine((value) => (typeof value === 'number' ? Number.isInteger(value) && value >= 1 : value.trim() !== ''), {
+    error: oneColumn,
+  });
+
+const columns = someOf(column, 'a list of columns, each by its number from 1 or its heading');
 
 export const tableSchema = block({
   skip_lines: z
@@ -152,11 +165,7 @@ export const tableSchema = block({
           end_s: numberIn(0, 1e6, 's'),
           from_pa: anyNumber.optional(),
           by_pa: anyNumber.optional(),
-          pa: z
-            .union([anyNumber.transform((one) => [one]), z.array(anyNumber).min(1)], {
-              error: 'a list of numbers, one a sweep',
-            })
-            .optional(),
+          pa: someOf(anyNumber, 'a list of numbers, one a sweep').optional(),
         }),
         block({ kind: z.literal('none') }),
       ],
@@ -169,7 +178,7 @@ export const tableSchema = block({
       if (stimulus.pa === undefined ? !stairs : part)
         context.addIssue({
           code: 'custom',
-          message: 'a step with its height: from_pa and by_pa, or pa: [one number a sweep]',
+          message: 'State the height of the step: from_pa and by_pa, or pa: [one number a sweep]',
         });
       if (!(stimulus.end_s > stimulus.start_s))
         context.addIssue({ code: 'custom', path: ['end_s'], message: `later than start_s (${stimulus.start_s} s)` });
@@ -179,11 +188,11 @@ export const tableSchema = block({
   capacitance_pf: numberIn(0.05, 10_000_000, 'pF').optional(),
 })
   .refine((table) => table.time === undefined || table.rate_hz === undefined, {
-    error: 'read by time or by rate_hz, never both',
+    error: 'State time or rate_hz, never both',
     path: ['rate_hz'],
   })
   .refine((table) => table.current === undefined || table.stimulus === undefined, {
-    error: 'stated by current or by stimulus, never both',
+    error: 'State current or stimulus, never both',
     path: ['stimulus'],
   });
 
@@ -195,8 +204,12 @@ export const partsSchema = block({
   other: text.optional(),
 });
 
-/** `audience.name` for people. */
-export const placeOf = (path: readonly Step[]): string => path.join('.');
+/** A place inside a file for people: `limits.peak_mv.below`, `entry 3: date`. */
+export function placeOf(path: readonly Step[]): string {
+  const [first, ...rest] = path;
+  if (typeof first !== 'number') return path.join('.');
+  return rest.length === 0 ? `entry ${first + 1}` : `entry ${first + 1}: ${rest.join('.')}`;
+}
 
 export const shownValue = (node: Tree | undefined): string => {
   if (!node) return 'nothing';
@@ -207,23 +220,46 @@ export const shownValue = (node: Tree | undefined): string => {
   return written.length > 60 ? `${written.slice(0, 59)}…` : written;
 };
 
-const sentence = (tree: Tree, issue: z.core.$ZodIssue, path: Step[]): string => {
+const knownTo = (message: string): readonly string[] => {
+  if (message.startsWith('a time zone')) return timezones();
+  if (message.startsWith('a class that')) return shippedClasses;
+  return /^one of (.+)$/.exec(message)?.[1]?.split(' | ') ?? [];
+};
+
+function sentence(tree: Tree, issue: z.core.$ZodIssue, path: readonly Step[], prefix: readonly Step[]): string {
   const node = nodeAt(tree, path);
-  const place = placeOf(path) || 'The file';
-  if (node === undefined) return `${place} is missing; it must be ${issue.message}.`;
+  const where = placeOf([...prefix, ...path]);
+  const place = where === '' ? 'The file' : where;
+  // A message that begins with a capital is about several keys at once and a sentence of its own.
+  if (/^[A-Z]/.test(issue.message)) return `${place}: ${issue.message}.`;
+  const known = knownTo(issue.message);
+  const expected = issue.message.startsWith('one of ') ? wordList(known) : issue.message;
+  if (node === undefined) return `${place} is missing; it must be ${expected}.`;
   const got = issue.code === 'custom' && node.kind !== 'scalar' ? '' : `, got ${shownValue(node)}`;
-  const choices = /^one of (.+)$/.exec(issue.message)?.[1]?.split(' | ');
   const written = node.kind === 'scalar' ? String(node.value ?? '') : '';
-  const known = choices ?? (/^a time zone/.test(issue.message) ? timezones() : []);
   const nearest = known.length > 0 && written !== '' ? `; the nearest is "${nearestOf(written, known)}"` : '';
-  const expected = choices ? wordList(choices) : issue.message;
   return `${place} must be ${expected}${got}${nearest}.`;
+}
+
+/** What a complaint costs, in words. */
+const costs = {
+  key: 'The key was not used. Correct its spelling or remove it.',
+  value: 'The value was not used. Correct it and build again.',
+  entry: 'The entry was not used. Correct it and build again.',
+  file: 'Nothing in this file was used. Correct it and build again.',
+} as const;
+
+/** Block and key that a complaint was about, so that what follows from taking it out is not told a second time. */
+const owner = (tree: Tree, path: readonly Step[]): string => {
+  const parent = nodeAt(tree, path.slice(0, -1));
+  return parent && parent.kind !== 'scalar' ? `${parent.id}/${path.at(-1)}` : '';
 };
 
 /**
  * Holds a tree against a schema. Whatever fails is reported with its line and taken out, and the rest is held again:
  * an unknown key costs that key, a bad entry of a list that entry, a missing key the block that needs it.
  *
+ * @param prefix where the tree stands in its file
  * @returns the value, null when nothing of it stands; the tree without what was taken out, in step with the value
  */
 export function hold<Schema extends z.ZodType>(
@@ -233,6 +269,7 @@ export function hold<Schema extends z.ZodType>(
   prefix: readonly Step[] = [],
 ): { value: z.output<Schema> | null; tree: Tree; problems: ArchiveProblem[] } {
   const problems: ArchiveProblem[] = [];
+  const told = new Map<string, ArchiveProblem[]>();
   let tree = whole;
   for (;;) {
     const result = schema.safeParse(plain(tree));
@@ -240,49 +277,77 @@ export function hold<Schema extends z.ZodType>(
     const removals: Step[][] = [];
     for (const issue of result.error.issues) {
       const path = issue.path.map((step) => (typeof step === 'number' ? step : String(step)));
-      const at = (below: readonly Step[]): [number, string] => [lineAt(tree, below), placeOf([...prefix, ...below])];
       if (issue.code === 'unrecognized_keys') {
         for (const key of issue.keys) {
-          const [line, place] = at([...path, key]);
-          const nearest = nearestOf(key, issue.message.split('|'));
-          const message = `"${key}" is not a key that belongs here; the nearest is "${nearest}".`;
-          problems.push(
-            remark(
-              file,
-              line,
-              'KEY_UNKNOWN',
-              place,
-              message,
-              'The key was not used. Correct its spelling or remove it.',
-            ),
+          const place = [...path, key];
+          const message = `"${key}" is not a key that belongs here; the nearest is "${nearestOf(key, issue.message.split('|'))}".`;
+          tell(
+            remark(file, lineAt(tree, place), 'KEY_UNKNOWN', placeOf([...prefix, ...place]), message, costs.key),
+            place,
           );
-          removals.push([...path, key]);
+          removals.push(place);
         }
         continue;
       }
-      const [line, place] = at(path);
-      const missing = nodeAt(tree, path) === undefined;
-      const removal = missing ? path.slice(0, -1) : path;
-      const remedy =
-        removal.length === 0 && prefix.length === 0
-          ? 'Nothing in this file was used. Correct it and build again.'
-          : `${removal.length === path.length ? 'The value was' : 'The entry was'} not used. Correct it and build again.`;
-      const message = sentence(tree, issue, path);
-      problems.push(
-        removal.length === 0
-          ? { ...remark(file, line, 'VALUE_IMPOSSIBLE', place, message, remedy), weight: 'blocks' }
-          : remark(file, line, 'VALUE_IMPOSSIBLE', place, message, remedy),
-      );
+      const node = nodeAt(tree, path);
+      if (typeof path.at(-1) === 'string' && node?.kind === 'scalar' && node.value === null) {
+        // A key with nothing behind it says nothing; where something is needed, the next round says it is missing.
+        removals.push(path);
+        continue;
+      }
+      const removal = node === undefined ? path.slice(0, -1) : path;
+      const cost =
+        removal.length === 0 ? (prefix.length === 0 ? 'file' : 'entry') : node === undefined ? 'entry' : 'value';
+      const causes =
+        node === undefined ? told.get(owner(tree, path)) : node.kind !== 'scalar' ? told.get(`${node.id}`) : undefined;
+      if (causes) {
+        for (const cause of causes) raise(cause, cost === 'value' ? 'entry' : cost);
+        note(causes, path);
+      } else {
+        const place = placeOf([...prefix, ...path]);
+        const problem = remark(
+          file,
+          lineAt(tree, path),
+          'VALUE_IMPOSSIBLE',
+          place,
+          sentence(tree, issue, path, prefix),
+          '',
+        );
+        raise(problem, cost);
+        tell(problem, path);
+      }
       removals.push(removal);
     }
     if (removals.some((removal) => removal.length === 0)) return { value: null, tree, problems };
-    // Later list entries first, so that the places of the earlier ones still hold.
-    const unique = new Map(removals.map((removal) => [JSON.stringify(removal), removal]));
-    const ordered = [...unique.values()].sort((a, b) => {
-      const [last, other] = [a.at(-1)!, b.at(-1)!];
-      if (a.length !== b.length) return b.length - a.length;
-      return typeof last === 'number' && typeof other === 'number' ? other - last : 0;
-    });
-    for (const removal of ordered) tree = without(tree, removal);
+    const before = tree;
+    for (const removal of inSafeOrder(removals)) tree = without(tree, removal);
+    // Nothing could be taken out, so another round would say the same again.
+    if (tree === before) return { value: null, tree, problems };
   }
+
+  function tell(problem: ArchiveProblem, path: readonly Step[]): void {
+    problems.push(problem);
+    note([problem], path);
+  }
+
+  function note(causes: readonly ArchiveProblem[], path: readonly Step[]): void {
+    const parent = nodeAt(tree, path.slice(0, -1));
+    const block = parent && parent.kind !== 'scalar' ? `${parent.id}` : '';
+    for (const key of [owner(tree, path), block]) told.set(key, [...(told.get(key) ?? []), ...causes]);
+  }
+}
+
+function raise(problem: ArchiveProblem, cost: keyof typeof costs): void {
+  problem.remedy = costs[cost];
+  if (cost === 'file') problem.weight = 'blocks';
+}
+
+/** Each once, deeper ones first and later entries of a list first, so that the places of the others still hold. */
+function inSafeOrder(removals: readonly Step[][]): Step[][] {
+  const unique = [...new Map(removals.map((removal) => [JSON.stringify(removal), removal])).values()];
+  return unique.sort((a, b) => {
+    const [last, other] = [a.at(-1)!, b.at(-1)!];
+    if (a.length !== b.length) return b.length - a.length;
+    return typeof last === 'number' && typeof other === 'number' ? other - last : 0;
+  });
 }

@@ -45,6 +45,8 @@ export function readFacts(
     return { statements, problems };
   }
   for (const [key, { line, node }] of block.entries) {
+    // A key with nothing behind it is a form not filled in yet.
+    if (node.kind === 'scalar' && node.value === null) continue;
     const where = placeOf([...place, key]);
     const ban = Object.hasOwn(banned, key) ? banned[key] : undefined;
     if (ban) {

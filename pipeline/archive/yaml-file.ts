@@ -15,9 +15,10 @@ import {
 } from 'yaml';
 import type { Problem } from '../formats/types.ts';
 
+/** `id` stays with a block while parts of it are taken out. */
 export type Tree =
-  | { kind: 'map'; line: number; entries: Map<string, { line: number; node: Tree }> }
-  | { kind: 'list'; line: number; items: Tree[] }
+  | { kind: 'map'; id: number; line: number; entries: Map<string, { line: number; node: Tree }> }
+  | { kind: 'list'; id: number; line: number; items: Tree[] }
   | { kind: 'scalar'; line: number; value: unknown; source: string };
 
 /** Something wrong with one of the archive's own files. */
@@ -45,10 +46,17 @@ export const loss = (
 /** Larger files are not YAML a person wrote. */
 const largestBytes = 8 * 1024 * 1024;
 /** Aliases may unfold into at most this many nodes: a few lines can otherwise stand for billions. */
-const mostNodes = 200_000;
+const mostBorrowed = 20_000;
 const deepest = 64;
 
 class TooMuch extends Error {}
+class Nameless extends Error {
+  readonly line: number;
+  constructor(message: string, line: number) {
+    super(message);
+    this.line = line;
+  }
+}
 
 /**
  * Reads the text of one YAML file.
@@ -92,7 +100,8 @@ export function readYaml(path: string, bytes: Uint8Array): { tree: Tree | null; 
       strict: true,
       version: '1.2',
       schema: 'core',
-      logLevel: 'silent',
+      // With 'silent' a second document would go unnoticed.
+      logLevel: 'error',
     });
     const [first] = document.errors;
     if (first) {
@@ -119,37 +128,49 @@ export function readYaml(path: string, bytes: Uint8Array): { tree: Tree | null; 
     );
     if (document.contents === null) return { tree: null, problems };
     let nodes = 0;
+    let unfolded = 0;
     const targets = new Map<Node, Node | undefined>();
     const lineOf = (node: Node): number => (node.range ? lines.linePos(node.range[0]).line || 1 : 1);
-    const grow = (node: Node | null | undefined, depth: number, fallback: number): Tree => {
+    const grow = (node: Node | null | undefined, depth: number, fallback: number, borrowed: boolean): Tree => {
       nodes++;
-      if (nodes > mostNodes || depth > deepest) throw new TooMuch('nodes');
+      if (borrowed) unfolded++;
+      if (unfolded > mostBorrowed || depth > deepest) throw new TooMuch('nodes');
       if (!node) return { kind: 'scalar', line: fallback, value: null, source: '' };
       if (isAlias(node)) {
         if (!targets.has(node)) targets.set(node, (node as Alias).resolve(document) as Node | undefined);
-        return grow(targets.get(node), depth + 1, lineOf(node));
+        const target = targets.get(node);
+        if (!target) throw new Nameless(`"*${node.source}" refers to an anchor that is not there`, lineOf(node));
+        return grow(target, depth + 1, lineOf(node), true);
       }
       const line = lineOf(node);
+      const id = nodes;
       if (isMap(node)) {
         const entries = new Map<string, { line: number; node: Tree }>();
         for (const pair of node.items) {
           const key = pair.key as Node | null;
           const name = key && isScalar(key) ? (key.source ?? String(key.value)) : '(a key that is not one word)';
           const at = key ? lineOf(key) : line;
-          entries.set(name, { line: at, node: grow(pair.value as Node | null, depth + 1, at) });
+          entries.set(name, { line: at, node: grow(pair.value as Node | null, depth + 1, at, borrowed) });
         }
-        return { kind: 'map', line, entries };
+        return { kind: 'map', id, line, entries };
       }
       if (isSeq(node))
-        return { kind: 'list', line, items: node.items.map((item) => grow(item as Node, depth + 1, line)) };
+        return {
+          kind: 'list',
+          id,
+          line,
+          items: node.items.map((item) => grow(item as Node, depth + 1, line, borrowed)),
+        };
       if (isScalar(node))
         return { kind: 'scalar', line, value: node.value, source: node.source ?? String(node.value ?? '') };
       return { kind: 'scalar', line, value: null, source: '' };
     };
-    const tree = grow(document.contents as Node, 0, 1);
+    const tree = grow(document.contents as Node, 0, 1, false);
     if (tree.kind === 'scalar' && tree.value === null) return { tree: null, problems };
     return { tree, problems };
   } catch (error) {
+    if (error instanceof Nameless)
+      return failed(loss(path, error.line, 'YAML_UNREADABLE', `${error.message}.`, repair));
     // Whatever else the parser throws on (its own recursion included) is about this text and nothing else.
     const what =
       error instanceof TooMuch || error instanceof RangeError
@@ -190,22 +211,21 @@ function inWords(error: YAMLError, text: string): string {
     .split('\n')[0]!
     .trimEnd();
   const seen = line.trim() === '' ? '' : `: ${line.length > 80 ? `${line.slice(0, 79)}…` : line.trim()}`;
-  switch (error.code) {
-    case 'DUPLICATE_KEY':
-      return `The same key stands twice in one block${seen}`;
-    case 'TAB_AS_INDENT':
-      return `The line is indented with a tab; YAML wants spaces${seen.replaceAll('\t', '→')}`;
-    case 'BAD_INDENT':
-      return `The line is indented differently from its block${seen}`;
-    case 'MISSING_CHAR':
-      return /quote/.test(error.message)
-        ? `A quotation mark is opened and not closed${seen}`
-        : `${firstSentence(error.message)}${seen}`;
-    case 'MULTIPLE_DOCS':
-      return `A second document begins with "---"; only one is expected${seen}`;
-    default:
-      return `${firstSentence(error.message)}${seen}`;
-  }
+  const { code, message } = error;
+  const said = ((): string => {
+    if (code === 'DUPLICATE_KEY') return 'The same key stands twice in one block';
+    if (code === 'TAB_AS_INDENT') return 'The line is indented with a tab; YAML wants spaces';
+    if (code === 'MULTIPLE_DOCS') return 'A second document begins with "---"; only one is expected';
+    if (code === 'BLOCK_AS_IMPLICIT_KEY') return 'A text that holds ": " needs quotation marks around it';
+    if (code === 'MULTILINE_IMPLICIT_KEY') return 'A line is neither "key: value" nor an entry that begins with "-"';
+    const open = /end with a? ?([}\]])/.exec(message)?.[1];
+    if (open) return `A "${open === '}' ? '{' : '['}" is opened here or above and not closed`;
+    if (code === 'MISSING_CHAR' && /quote/.test(message))
+      return 'A quotation mark is opened here or above and not closed';
+    if (code === 'BAD_INDENT') return 'The line is indented differently from its block';
+    return firstSentence(message);
+  })();
+  return seen === '' ? `${said}.` : `${said}${seen}`;
 }
 
 /** The tree as plain data for a schema: scalars as YAML 1.2 reads them, blocks as objects without a prototype. */
