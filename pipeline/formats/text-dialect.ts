@@ -235,7 +235,7 @@ export function findDialect(head: Head, mapping: TableMapping): Dialect {
       ? { headings: trial.cells[block]!, problems: [] }
       : found;
   const firstRow = mapping.header === true && headings === trial.cells[block] ? block + 1 : block;
-  if (trial.wordy.size > 0 && !headings)
+  if (trial.wordy.size > 0 && !headings && !mapping.voltage && !mapping.current)
     throw stop(
       `This is no table of samples: ${count(trial.wordy.size, 'column')} hold words, and no header that fits the rows names the others.`,
     );

@@ -110,7 +110,7 @@ export interface Head {
  *
  * @throws FormatError where it is empty or no text
  */
-export function readHead(path: string, most = 2000, mostCharacters = 1 << 20): Head {
+export function readHead(path: string, most = 800, mostCharacters = 1 << 20): Head {
   const { size } = statSync(path);
   if (size === 0)
     throw new FormatError({

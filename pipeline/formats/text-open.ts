@@ -66,13 +66,15 @@ const scaled = ({ values, factor }: Signal, sweep: Sweep): Float64Array => {
   return spread(samples, sweep.places, sweep.gridLength);
 };
 
+const floatNoise = (time: number): number => Math.abs(time) * 2 ** -49;
+
 /** By how much a printed time may be off: half a unit of its last digit, whether digits or decimals were limited. */
-const printedResolution =
+const printRounding =
   ({ significant, decimals }: Precision) =>
   (time: number): number => {
     const digits = Math.min(17, Math.max(1, significant));
     const bySize = time === 0 ? 0 : 10 ** (Math.floor(Math.log10(Math.abs(time))) + 1 - digits);
-    return Math.max(bySize, decimals > 0 ? 10 ** -decimals : 0.5, Math.abs(time) * 2 ** -50);
+    return Math.max(0.5 * bySize, 0.5 * 10 ** -Math.max(0, decimals), floatNoise(time));
   };
 
 function tallyProblems(tally: Tally): Problem[] {
@@ -174,7 +176,7 @@ interface Part {
 
 /** One stretch of the table for each sweep in it, on a regular time base. */
 function partsOf(times: Float64Array, plan: TablePlan, precision: Precision, problems: Problem[]): Part[] {
-  const resolution = printedResolution(precision);
+  const rounding = printRounding(precision);
   const starts = restarts(times);
   // Times that fall for a sample or two are no sweeps.
   const short = starts.findIndex((from, part) => (starts[part + 1] ?? times.length) - from < fewestRows);
@@ -201,7 +203,7 @@ function partsOf(times: Float64Array, plan: TablePlan, precision: Precision, pro
   }
   const parts = starts.map((from, part): Part => {
     const to = starts[part + 1] ?? times.length;
-    const base = timeBase(times.subarray(from, to), resolution);
+    const base = timeBase(times.subarray(from, to), floatNoise, rounding);
     if (!base.ok) throw irregular(from + base.at, base.why);
     return { from, to, base };
   });
@@ -457,7 +459,7 @@ function readRowTable(path: string, dialect: Dialect, hints: ReadingHints): Tabl
   if (mapping.time) {
     const times = rows[timeRow];
     const base = times
-      ? timeBase(range(hasVoltage ? 'voltage' : 'current', times), printedResolution(precision))
+      ? timeBase(range(hasVoltage ? 'voltage' : 'current', times), floatNoise, printRounding(precision))
       : ({ ok: false, at: 0, why: `there is no row ${mapping.time.column}` } as const);
     if (!base.ok || base.places)
       throw new FormatError({

@@ -14,39 +14,46 @@ export type TimeBase =
     }
   | { ok: false; at: number; why: string };
 
+/** By how much a time of this size may be off, either way. */
+export type Uncertainty = (time: number) => number;
+
+type Regular = Extract<TimeBase, { ok: true }>;
+
+/** The stretch of times that can be read. */
+interface Stretch {
+  times: Float64Array;
+  first: number;
+  last: number;
+}
+
 const rounded = (value: number): string => String(Number(value.toPrecision(6)));
 
-/** A rate that is a whole number within the precision of the times is that whole number. */
-function wholeRate(step: number, relativeError: number): number {
-  const rate = 1 / step;
-  const whole = Math.round(rate);
-  return whole >= 1 && Math.abs(rate - whole) <= rate * Math.max(relativeError, 1e-9) ? whole : rate;
-}
+/** Where missing samples are more than one in ten, rounding explains uneven times better; above one in two, nothing. */
+const fewMissing = 0.1;
+const mostMissing = 0.5;
 
 /**
  * @param times in any unit; a time that could not be read is NaN and is taken to be in its place
- * @param resolution by how much a time of this size may be off because of how it was stored or printed
+ * @param noise error of a time as it is stored: floating point
+ * @param rounding error of a time as it was printed, where it was; larger than the noise
  */
-export function timeBase(times: Float64Array, resolution: (time: number) => number): TimeBase {
+export function timeBase(times: Float64Array, noise: Uncertainty, rounding: Uncertainty = noise): TimeBase {
   let first = 0;
   while (first < times.length && Number.isNaN(times[first]!)) first++;
   let last = times.length - 1;
   while (last > first && Number.isNaN(times[last]!)) last--;
-  if (last <= first) return { ok: false, at: first, why: 'fewer than two times can be read' };
-  const span = times[last]! - times[first]!;
-  if (!(span > 0)) return { ok: false, at: last, why: 'the times do not increase' };
-  const step = span / (last - first);
-  const coarsest = Math.max(resolution(times[first]!), resolution(times[last]!));
-  const misplaced = firstMisplaced(times, first, last, step, resolution);
-  if (misplaced < 0)
-    return {
-      ok: true,
-      rate: wholeRate(step, (2 * coarsest) / span),
-      start: times[first]! - first * step,
-      samples: times.length,
-      places: null,
-    };
-  return withGaps(times, first, last, resolution) ?? { ok: false, at: misplaced, why: misfit(times, misplaced) };
+  if (last <= first) return { ok: false, at: Math.min(first, times.length), why: 'fewer than two times can be read' };
+  const stretch: Stretch = { times, first, last };
+  if (!(times[last]! > times[first]!)) return { ok: false, at: last, why: 'the times do not increase' };
+  const even = evenly(stretch, noise);
+  if (typeof even !== 'number') return even;
+  const gaps = withGaps(stretch, noise);
+  const missing = gaps === null ? 1 : (gaps.samples - times.length) / times.length;
+  if (gaps && missing <= fewMissing) return gaps;
+  const roundedEven = rounding === noise ? even : evenly(stretch, rounding);
+  if (typeof roundedEven !== 'number') return roundedEven;
+  if (gaps && missing <= mostMissing) return gaps;
+  return { ok: false, at: roundedEven, why: misfit(times, roundedEven) };
 }
 
 function misfit(times: Float64Array, at: number): string {
@@ -60,86 +67,126 @@ function misfit(times: Float64Array, at: number): string {
   return `the step to it is ${rounded(here)} where ${rounded(usual)} is usual`;
 }
 
-/** Index of the first time that is off a straight line by more than its precision and a quarter of a step; or -1. */
-function firstMisplaced(
-  times: Float64Array,
-  first: number,
-  last: number,
-  step: number,
-  resolution: (time: number) => number,
-): number {
+interface Line {
+  start: number;
+  step: number;
+}
+
+/** Least-squares line of the times on their places. */
+function fitLine({ times, first, last }: Stretch, placeOf: (index: number) => number): Line {
   const origin = times[first]!;
-  const endError = Math.max(resolution(origin), resolution(times[last]!));
-  let before = origin;
-  let beforeAt = first;
-  let worst = -1;
-  for (let index = first + 1; index <= last; index++) {
+  let n = 0;
+  let meanPlace = 0;
+  let meanTime = 0;
+  for (let index = first; index <= last; index++) {
     const time = times[index]!;
     if (Number.isNaN(time)) continue;
-    const precision = resolution(time);
+    n++;
+    meanPlace += (placeOf(index) - meanPlace) / n;
+    meanTime += (time - origin - meanTime) / n;
+  }
+  let together = 0;
+  let alone = 0;
+  for (let index = first; index <= last; index++) {
+    const time = times[index]!;
+    if (Number.isNaN(time)) continue;
+    const place = placeOf(index) - meanPlace;
+    together += place * (time - origin - meanTime);
+    alone += place * place;
+  }
+  const step = together / alone;
+  return { start: origin + meanTime - step * meanPlace, step };
+}
+
+/** Half the spread of the times about a line of this step: the least error that every time would have to have. */
+function misplacement({ times, first, last }: Stretch, step: number, placeOf: (index: number) => number): number {
+  let low = Number.POSITIVE_INFINITY;
+  let high = Number.NEGATIVE_INFINITY;
+  for (let index = first; index <= last; index++) {
+    const off = times[index]! - times[first]! - placeOf(index) * step;
+    if (off < low) low = off;
+    if (off > high) high = off;
+  }
+  return (high - low) / 2;
+}
+
+/**
+ * Rates are round numbers. Of the rates that explain the times as well as the fitted one, or as well as their
+ * precision allows, the roundest is taken.
+ */
+function roundest(stretch: Stretch, step: number, error: number, placeOf: (index: number) => number): number {
+  const rate = 1 / step;
+  const allowed = Math.max(error, misplacement(stretch, step, placeOf)) * (1 + 1e-9);
+  const span = stretch.times[stretch.last]! - stretch.times[stretch.first]!;
+  const reach = (2 * allowed) / span + 1e-12;
+  for (let digits = 1; digits <= 9; digits++) {
+    const candidate = Number(rate.toPrecision(digits));
+    if (Math.abs(candidate - rate) > reach * rate) continue;
+    if (misplacement(stretch, 1 / candidate, placeOf) <= allowed) return candidate;
+  }
+  return rate;
+}
+
+/** A fixed step without a sample missing; else the index of the first time that is off. */
+function evenly(stretch: Stretch, uncertainty: Uncertainty): Regular | number {
+  const { times, first, last } = stretch;
+  const placeOf = (index: number): number => index - first;
+  const { start, step } = fitLine(stretch, placeOf);
+  const error = Math.max(uncertainty(times[first]!), uncertainty(times[last]!));
+  let worst = -1;
+  let before = Number.NaN;
+  let beforeAt = -1;
+  for (let index = first; index <= last; index++) {
+    const time = times[index]!;
+    if (Number.isNaN(time)) continue;
+    const own = uncertainty(time);
     const jump = time - before - step * (index - beforeAt);
-    if (Math.abs(jump) > Math.max(0.5 * step, 2.01 * precision)) return index;
-    if (worst < 0 && Math.abs(time - (origin + (index - first) * step)) > Math.max(0.25 * step, endError + precision))
-      worst = index;
+    if (Math.abs(jump) > Math.max(0.5 * step, 2.01 * own)) return index;
+    const off = Math.abs(time - start - (index - first) * step);
+    if (worst < 0 && off > Math.max(0.25 * step, error + own)) worst = index;
     before = time;
     beforeAt = index;
   }
-  return worst;
+  if (worst >= 0 || !(step > 0)) return Math.max(worst, first + 1);
+  const rate = roundest(stretch, step, error, placeOf);
+  return { ok: true, rate, start: times[first]! - first / rate, samples: times.length, places: null };
 }
 
 /** Times that all lie on one grid with some places left out. */
-function withGaps(
-  times: Float64Array,
-  first: number,
-  last: number,
-  resolution: (time: number) => number,
-): TimeBase | null {
+function withGaps(stretch: Stretch, noise: Uncertainty): Regular | null {
+  const { times, first, last } = stretch;
   const steps: number[] = [];
   for (let index = first + 1; index <= last && steps.length < 10_000; index++) {
     const step = times[index]! - times[index - 1]!;
     if (step > 0) steps.push(step);
   }
   if (steps.length < 2) return null;
-  let step = steps.sort((a, b) => a - b)[steps.length >> 1]!;
   const origin = times[first]!;
+  let step = steps.sort((a, b) => a - b)[steps.length >> 1]!;
   // The step is refined over ever longer stretches: an error of it grows with the distance.
   for (let reach = 16; ; reach *= 4) {
-    let sumPlaceTime = 0;
-    let sumPlaceSquared = 0;
     const end = Math.min(last, first + reach);
-    for (let index = first + 1; index <= end; index++) {
-      const elapsed = times[index]! - origin;
-      if (Number.isNaN(elapsed)) continue;
-      const place = Math.round(elapsed / step);
-      sumPlaceTime += place * elapsed;
-      sumPlaceSquared += place * place;
-    }
-    if (!(sumPlaceSquared > 0)) return null;
-    step = sumPlaceTime / sumPlaceSquared;
-    if (end === last) break;
+    const usual = step;
+    step = fitLine({ times, first, last: end }, (index) => Math.round((times[index]! - origin) / usual)).step;
+    if (!(step > 0) || end === last) break;
   }
-  const coarsest = Math.max(resolution(origin), resolution(times[last]!));
-  if (!(step > 0) || coarsest > 0.5 * step) return null;
+  const error = Math.max(noise(origin), noise(times[last]!));
+  if (!(step > 0) || error > 0.1 * step) return null;
   const samples = Math.round((times[last]! - origin) / step) + 1 + first + (times.length - 1 - last);
-  if (samples > 1.5 * times.length + 16) return null;
+  if (samples > (1 + mostMissing) * times.length) return null;
   const places = new Uint32Array(times.length);
   let before = -1;
   for (let index = 0; index < times.length; index++) {
-    const time = times[index]!;
-    const exact = (time - origin) / step + first;
-    const place = Number.isNaN(time) ? before + 1 : Math.round(exact);
+    const exact = (times[index]! - origin) / step + first;
+    const unread = Number.isNaN(exact);
+    const place = unread ? before + 1 : Math.round(exact);
     if (place <= before || place >= samples) return null;
-    if (!Number.isNaN(time) && Math.abs(exact - place) > 0.25 + (2 * coarsest) / step) return null;
+    if (!unread && Math.abs(exact - place) > 0.25) return null;
     places[index] = place;
     before = place;
   }
-  return {
-    ok: true,
-    rate: wholeRate(step, (2 * coarsest) / (times[last]! - origin)),
-    start: origin - first * step,
-    samples,
-    places,
-  };
+  const rate = roundest(stretch, step, error, (index) => places[index]! - first);
+  return { ok: true, rate, start: origin - first / rate, samples, places };
 }
 
 /** Spreads samples over their places on the grid; what is missing is NaN. */
