@@ -1,3 +1,4 @@
+import { withCapacitance } from './phases.ts';
 import type { AbsenceCode, Spike } from './types.ts';
 
 /** Elementary charge, C. Exact in the 2019 SI. */
@@ -17,7 +18,7 @@ export interface KnownForSpikes {
  * Adds to each spike what needs a fact from outside the trace: how far the peak stays below E_Na
  * (`sodium_headroom_mv`), how far the minimum after the spike stays above E_K (`potassium_margin_mv`), and the least
  * charge and number of ions that the membrane capacitance needs for the spike's height (`minimum_charge_pc`,
- * `minimum_ions_millions`). The potentials must already stand in the reading they are held against (see
+ * `minimum_ions_millions`), and reads the sign of each phase's net ionic current with that capacitance. The potentials must already stand in the reading they are held against (see
  * `junction.ts`). Where a fact is missing the reason is `fact-missing`; where the spike lacks the number it starts
  * from, that number's own reason is handed on.
  *
@@ -50,6 +51,7 @@ export function withDerived(spikes: readonly Spike[], known: KnownForSpikes): Sp
       known.capacitance_pf,
       (pf, heightMv) => (pf * heightMv * 1e-15) / elementaryChargeC / 1e6,
     );
-    return { ...spike, values, why };
+    const phases = spike.phases.map((phase) => withCapacitance(phase, known.capacitance_pf));
+    return { ...spike, values, why, phases };
   });
 }

@@ -113,14 +113,24 @@ export function phasesOf(
     if (from === null || to === null || !(to > from)) return [];
     const before = potentialAt(from);
     const after = potentialAt(to);
-    const sign =
-      before === null || after === null
-        ? 0
-        : netIonicSign(
-            { mv: after - before, ms: (to - from) * 1000, noise_mv },
-            injected.mean(from, to),
-            capacitance_pf,
-          );
-    return [{ name, from_s: from, to_s: to, net_ionic_sign: sign }];
+    const current = injected.mean(from, to);
+    if (before === null || after === null || current === null)
+      return [{ name, from_s: from, to_s: to, net_ionic_sign: 0 }];
+    const phase: Phase = {
+      name,
+      from_s: from,
+      to_s: to,
+      net_ionic_sign: 0,
+      basis: { mv: after - before, noise_mv, pa: current.pa, se: current.se },
+    };
+    return [withCapacitance(phase, capacitance_pf)];
   });
+}
+
+/** The phase with the sign of its net ionic current as this capacitance, pF, gives it; null where none is known. */
+export function withCapacitance(phase: Phase, capacitance_pf: number | null): Phase {
+  const { basis } = phase;
+  if (!basis) return phase;
+  const change = { mv: basis.mv, ms: (phase.to_s - phase.from_s) * 1000, noise_mv: basis.noise_mv };
+  return { ...phase, net_ionic_sign: netIonicSign(change, basis, capacitance_pf) };
 }

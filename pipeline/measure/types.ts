@@ -126,6 +126,11 @@ export interface Phase {
   to_s: number;
   /** Sign of the mean net ionic current I − C·dV/dt over the phase: +1 outward, −1 inward, 0 not resolved. */
   net_ionic_sign: -1 | 0 | 1;
+  /**
+   * What the sign was read from, so that it can be read again once the cell's capacitance is known: change of
+   * potential over the phase, SD of one reading of it, mean injected current and its standard error.
+   */
+  basis?: { mv: number; noise_mv: number; pa: number; se: number };
 }
 
 export interface Spike {
