@@ -46,8 +46,15 @@ export function element(name: string, attributes: Attributes, content = ''): str
   return content === '' ? `<${name}${list}/>` : `<${name}${list}>${content}</${name}>`;
 }
 
+/** 'E_Na' with its index lowered; everything else escaped as it stands. */
+const lowered = (text: string): string =>
+  escapeText(text).replace(
+    /\b([EV])_([A-Za-z]+)/g,
+    '$1<tspan class="index" dy="3">$2</tspan><tspan dy="-3">&#8203;</tspan>',
+  );
+
 export const label = (x: number, y: number, text: string, className: string, anchor?: 'middle' | 'end'): string =>
-  element('text', { x, y, class: className, 'text-anchor': anchor }, escapeText(text));
+  element('text', { x, y, class: className, 'text-anchor': anchor }, lowered(text));
 
 export const line = (x1: number, y1: number, x2: number, y2: number, className: string): string =>
   element('line', { x1, y1, x2, y2, class: className });

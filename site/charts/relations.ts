@@ -3,7 +3,7 @@ import type { ConditionMeasure } from '../../pipeline/measure/types.ts';
 import { counted, number } from '../format.ts';
 import { type Chart, domainOf, element, type Frame, line, picture, xAxis, xScale, yAxis, yScale } from './frame.ts';
 
-const frame: Frame = { width: 360, height: 280, margins: { top: 26, right: 14, bottom: 40, left: 50 } };
+const frame: Frame = { width: 460, height: 320, margins: { top: 26, right: 14, bottom: 40, left: 50 } };
 const right = frame.width - frame.margins.right;
 const bottom = frame.height - frame.margins.bottom;
 

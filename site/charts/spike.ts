@@ -82,7 +82,7 @@ export function spikeChart(input: SpikeChartInput): Chart | null {
   const points = excerpt.mv
     .map((mv, i) => [(excerpt.start_s + i / excerpt.rate_hz - zeroS) * 1000, mv ?? Number.NaN] as [number, number])
     .filter(([t]) => t >= fromMs && t <= toMs);
-  const frame: Frame = { width: 460, height: 380, margins: { top: 26, right: 16, bottom: 56, left: 54 } };
+  const frame: Frame = { width: 540, height: 400, margins: { top: 26, right: 16, bottom: 56, left: 54 } };
   const equilibria = [input.e_na_mv, input.e_k_mv].filter((one): one is number => one !== null);
   const domain = domainOf(
     points.map(([, mv]) => mv),
@@ -188,7 +188,7 @@ export function phasePlane(excerpt: Excerpt, spike: Spike): Chart | null {
     const after = mv[i + 1] ?? Number.NaN;
     points.push([mv[i] ?? Number.NaN, ((after - before) * rate_hz) / 2000]);
   }
-  const frame: Frame = { width: 460, height: 380, margins: { top: 26, right: 16, bottom: 56, left: 54 } };
+  const frame: Frame = { width: 540, height: 400, margins: { top: 26, right: 16, bottom: 56, left: 54 } };
   const xDomain = domainOf(points.map(([v]) => v));
   const yDomain = domainOf(
     points.map(([, rate]) => rate),

@@ -31,7 +31,7 @@ export interface SweepsChartOptions {
   to_s?: number | null;
 }
 
-const columns = 360;
+const columns = 440;
 
 function windowed(envelope: Envelope, from: number, to: number): Envelope {
   const n = envelope.low.length;
@@ -94,7 +94,8 @@ export function sweepGroups(sweeps: readonly SweepRow[]): SweepRow[][] {
     const key = `${sweep.clamp} ${Math.round(Math.log(Math.max(sweep.duration_s, 1e-3)) / Math.log(1.35))}`;
     groups.set(key, [...(groups.get(key) ?? []), sweep]);
   }
-  return [...groups.values()];
+  // What the archive is about comes first.
+  return [...groups.values()].sort((a, b) => Number(a[0]!.clamp === 'voltage') - Number(b[0]!.clamp === 'voltage'));
 }
 
 /**
@@ -112,8 +113,8 @@ export function sweepsChart(sweeps: readonly SweepRow[], options: SweepsChartOpt
   if (!(to > from)) return null;
   const hasBelow = drawn.some((sweep) => (below(sweep)?.low.length ?? 0) > 1);
   const frame: Frame = {
-    width: options.width ?? 760,
-    height: options.height ?? 400,
+    width: options.width ?? 1120,
+    height: options.height ?? 430,
     margins: { top: 26, right: 14, bottom: 38, left: 54 },
   };
   const bottom = frame.height - frame.margins.bottom;
