@@ -4,7 +4,7 @@
  */
 import { spawnSync } from 'node:child_process';
 import { fileURLToPath } from 'node:url';
-import { describe, expect, test } from 'vitest';
+import { beforeAll, describe, expect, test } from 'vitest';
 import { spikeCriteria } from '../../pipeline/measure/spike-criteria.ts';
 import { measureSpikes } from '../../pipeline/measure/spikes.ts';
 import {
@@ -29,19 +29,29 @@ const python = findPython();
 const script = fileURLToPath(new URL('scipy_reference.py', import.meta.url));
 if (!python) console.warn('No Python with SciPy found: the checks against SciPy are skipped (Debian: python3-scipy).');
 
-/** What SciPy answers to one task. */
-function scipy<T>(task: string, request: Record<string, unknown>): T {
-  const plain = Object.fromEntries(
-    Object.entries(request).map(([key, value]) => [key, value instanceof Float64Array ? Array.from(value) : value]),
-  );
-  const { status, stdout, stderr } = spawnSync(python!, [script], {
-    input: JSON.stringify({ task, ...plain }),
+const requests: Record<string, unknown>[] = [];
+let answers: unknown[] = [];
+
+/** Puts a question to SciPy while tests are collected; the answer is there once they run, all from one process. */
+function scipy<T>(task: string, request: Record<string, unknown>): () => T {
+  const plain = Object.entries(request).map(([key, value]) => [
+    key,
+    value instanceof Float64Array ? Array.from(value) : value,
+  ]);
+  const index = requests.push({ task, ...Object.fromEntries(plain) }) - 1;
+  return () => answers[index] as T;
+}
+
+beforeAll(() => {
+  if (!python) return;
+  const { status, stdout, stderr } = spawnSync(python, [script], {
+    input: JSON.stringify(requests),
     encoding: 'utf8',
     maxBuffer: 1 << 28,
   });
-  if (status !== 0) throw new Error(`SciPy could not answer "${task}": ${stderr}`);
-  return JSON.parse(stdout) as T;
-}
+  if (status !== 0) throw new Error(`SciPy could not answer: ${stderr}`);
+  answers = JSON.parse(stdout) as unknown[];
+});
 
 function expectAlike(ours: ArrayLike<number>, theirs: number[], tolerance: number): void {
   expect(ours.length).toBe(theirs.length);
@@ -59,31 +69,34 @@ const train = simulate(cell, 20_000, [
 const noisy = withNoise(train.mv, 0.3, 17);
 
 describe.skipIf(!python)('kernels', () => {
-  test('dV/dt is NumPy’s gradient', () =>
-    expectAlike(derivativeVPerS(noisy, 20_000), scipy('gradient', { mv: noisy, rate_hz: 20_000 }), 1e-9));
+  const gradient = scipy<number[]>('gradient', { mv: noisy, rate_hz: 20_000 });
+  test('dV/dt is NumPy’s gradient', () => expectAlike(derivativeVPerS(noisy, 20_000), gradient(), 1e-9));
 
-  test('the least-squares slope is a Savitzky–Golay filter of first order away from the ends', () => {
-    for (const m of [2, 5, 20]) {
-      const theirs = scipy<number[]>('savgol', { mv: noisy, rate_hz: 20_000, half_width: m });
-      expectAlike(slopeVPerS(noisy, 20_000, m).slice(m, -m), theirs.slice(m, -m), 1e-8);
-    }
-  });
+  for (const m of [2, 5, 20]) {
+    const savgol = scipy<number[]>('savgol', { mv: noisy, rate_hz: 20_000, half_width: m });
+    test(`the slope over ${2 * m + 1} samples is a Savitzky–Golay filter of first order, ends aside`, () =>
+      expectAlike(slopeVPerS(noisy, 20_000, m).slice(m, -m), savgol().slice(m, -m), 1e-8));
+  }
 
-  test('local maxima and prominences, on noise and on a coarse digitizer', () => {
-    for (const mv of [noisy, quantized(noisy, 0.5)]) {
-      expect(localMaxima(mv)).toEqual(scipy('maxima', { mv }));
-      const theirs = scipy<{ index: number[]; prominence: number[] }>('peaks', { mv, prominence: 0.4 });
+  for (const [name, mv] of [
+    ['noise', noisy],
+    ['a coarse digitizer', quantized(noisy, 0.5)],
+  ] as const) {
+    const maxima = scipy<number[]>('maxima', { mv });
+    const peaks = scipy<{ index: number[]; prominence: number[] }>('peaks', { mv, prominence: 0.4 });
+    test(`local maxima and prominences on ${name}`, () => {
+      expect(localMaxima(mv)).toEqual(maxima());
       const ours = localMaxima(mv)
         .map((index) => ({ index, prominence: prominence(mv, index) }))
         .filter((peak) => peak.prominence >= 0.4);
-      expect(ours.map((peak) => peak.index)).toEqual(theirs.index);
+      expect(ours.map((peak) => peak.index)).toEqual(peaks().index);
       expectAlike(
         ours.map((peak) => peak.prominence),
-        theirs.prominence,
+        peaks().prominence,
         1e-12,
       );
-    }
-  });
+    });
+  }
 
   for (const [low_hz, high_hz] of [
     [null, 2000],
@@ -91,59 +104,59 @@ describe.skipIf(!python)('kernels', () => {
     [1000, 5000],
     [1, 100],
   ] as const)
-    for (const order of [1, 2, 3, 4])
+    for (const order of [1, 2, 3, 4]) {
+      const filtered = scipy<number[]>('butter', { mv: noisy, rate_hz: 20_000, order, low_hz, high_hz });
       test(`Butterworth of order ${order} from ${low_hz ?? 0} to ${high_hz ?? '∞'} Hz, both ways, is sosfiltfilt`, () =>
         expectAlike(
           zeroPhase(noisy, butterworth(order, { low_hz, high_hz }, 20_000)),
-          scipy('butter', { mv: noisy, rate_hz: 20_000, order, low_hz, high_hz }),
+          filtered(),
           // A corner of a few 10⁻⁵ of the rate costs digits in either program.
           low_hz === 1 ? 1e-4 : 1e-8,
         ));
-
-  test('single exponential: parameters and standard errors of curve_fit', () => {
-    const next = normalNoise(23);
-    for (const tau of [2, 12, 45]) {
-      const x = Array.from({ length: 500 }, (_, i) => 3 + i * 0.2);
-      const y = x.map((v) => -70 - 6 * Math.exp(-(v - 3) / tau) + 0.2 * next());
-      const ours = exponentialFit(x, y)!;
-      const theirs = scipy<{ best: number[]; se: number[] }>('exponential', { x, y });
-      for (const [mine, other] of [
-        [ours.offset, theirs.best[0]],
-        [ours.amplitude, theirs.best[1]],
-        [ours.tau, theirs.best[2]],
-        [ours.se_offset, theirs.se[0]],
-        [ours.se_amplitude, theirs.se[1]],
-        [ours.se_tau, theirs.se[2]],
-      ] as const)
-        expect(mine / other!).toBeCloseTo(1, 4);
     }
-  });
 
-  test('lines, robust spread, quantiles, sine', () => {
-    const next = normalNoise(29);
-    const x = Array.from({ length: 80 }, (_, i) => i * 0.7);
-    const y = x.map((v) => 4 - 0.3 * v + next());
-    const fit = scipy<Record<string, number>>('line', { x, y });
+  for (const tau of [2, 12, 45]) {
+    const next = normalNoise(23 + tau);
+    const x = Array.from({ length: 500 }, (_, i) => 3 + i * 0.2);
+    const y = x.map((v) => -70 - 6 * Math.exp(-(v - 3) / tau) + 0.2 * next());
+    const fitted = scipy<{ best: number[]; se: number[] }>('exponential', { x, y });
+    test(`exponential of ${tau} ms in noise: parameters and standard errors of curve_fit`, () => {
+      const ours = exponentialFit(x, y)!;
+      const mine = [ours.offset, ours.amplitude, ours.tau, ours.se_offset, ours.se_amplitude, ours.se_tau];
+      const theirs = [...fitted().best, ...fitted().se];
+      theirs.forEach((value, k) => {
+        expect(mine[k]! / value).toBeCloseTo(1, 4);
+      });
+    });
+  }
+
+  const next = normalNoise(29);
+  const x = Array.from({ length: 80 }, (_, i) => i * 0.7);
+  const y = x.map((v) => 4 - 0.3 * v + next());
+  const line = scipy<Record<string, number>>('line', { x, y });
+  test('least-squares line with standard errors', () => {
     const ours = linearFit(x, y)!;
     for (const key of ['slope', 'intercept', 'se_slope', 'se_intercept', 'r_squared'] as const)
-      expect(ours[key]!).toBeCloseTo(fit[key]!, 10);
-    const robust = scipy<Record<string, number>>('theil_sen', { x, y });
-    expect(theilSen(x, y)!.slope).toBeCloseTo(robust['slope']!, 10);
-    expect(theilSen(x, y)!.intercept).toBeCloseTo(robust['intercept']!, 10);
-    const spread = scipy<{ mad: number; quantiles: number[]; sd: number }>('spread', { values: y });
-    expect(robustSpread(y)!).toBeCloseTo(spread.mad, 10);
-    expect(standardDeviation(y)!).toBeCloseTo(spread.sd, 10);
+      expect(ours[key]!).toBeCloseTo(line()[key]!, 10);
+  });
+  const robust = scipy<Record<string, number>>('theil_sen', { x, y });
+  test('Theil–Sen line', () => {
+    expect(theilSen(x, y)!.slope).toBeCloseTo(robust()['slope']!, 10);
+    expect(theilSen(x, y)!.intercept).toBeCloseTo(robust()['intercept']!, 10);
+  });
+  const spread = scipy<{ mad: number; quantiles: number[]; sd: number }>('spread', { values: y });
+  test('robust spread, standard deviation, quantiles', () => {
+    expect(robustSpread(y)!).toBeCloseTo(spread().mad, 10);
+    expect(standardDeviation(y)!).toBeCloseTo(spread().sd, 10);
     expectAlike(
       [0, 0.05, 0.25, 0.5, 0.9, 1].map((p) => quantile(y, p)!),
-      spread.quantiles,
+      spread().quantiles,
       1e-12,
     );
-    const hum = noisy.subarray(0, 2000).map((v, i) => v + 0.2 * Math.sin((2 * Math.PI * 50 * i) / 20_000));
-    expect(sineFit(hum, 20_000, 50)!.amplitude).toBeCloseTo(
-      scipy<number>('sine', { mv: hum, rate_hz: 20_000, frequency_hz: 50 }),
-      8,
-    );
   });
+  const hum = noisy.slice(0, 2000).map((v, i) => v + 0.2 * Math.sin((2 * Math.PI * 50 * i) / 20_000));
+  const amplitude = scipy<number>('sine', { mv: hum, rate_hz: 20_000, frequency_hz: 50 });
+  test('sine beside a straight line', () => expect(sineFit(hum, 20_000, 50)!.amplitude).toBeCloseTo(amplitude(), 8));
 });
 
 describe.skipIf(!python)('spikes', () => {
@@ -173,13 +186,12 @@ describe.skipIf(!python)('spikes', () => {
     ['a cortical train', train.mv, 20_000],
     ['the same with noise', noisy, 20_000],
     ['a squid axon train', axon.mv, 50_000],
-  ] as const)
+  ] as const) {
+    const peaks = scipy<{ index: number[]; half_width_samples: number[] }>('peaks', { mv, prominence: 20 });
+    const gradient = scipy<number[]>('gradient', { mv, rate_hz: rateHz });
     test(`${name}: as many spikes as find_peaks with a prominence of 20 mV, at the same samples, as steep`, () => {
-      const theirs = scipy<{ index: number[]; prominence: number[]; half_width_samples: number[] }>('peaks', {
-        mv,
-        prominence: 20,
-      });
-      const slope = scipy<number[]>('gradient', { mv, rate_hz: rateHz });
+      const theirs = peaks();
+      const slope = gradient();
       const ours = measured(mv, rateHz);
       expect(ours).toHaveLength(theirs.index.length);
       ours.forEach((spike, k) => {
@@ -196,4 +208,5 @@ describe.skipIf(!python)('spikes', () => {
         expect(spike.values['half_width_ms']!).toBeGreaterThan(0.6 * wider);
       });
     });
+  }
 });

@@ -1,6 +1,6 @@
-"""Answers one request with SciPy and NumPy: JSON on standard input, JSON on standard output.
+"""Answers requests with SciPy and NumPy: a JSON list on standard input, the list of answers on standard output.
 
-The request is {"task": name, ...}; see the functions below, one a task. Used by scipy.test.ts and by nothing else.
+A request is {"task": name, ...}; see the functions below, one a task. Used by scipy.test.ts and by nothing else.
 """
 
 import json
@@ -10,7 +10,7 @@ import numpy as np
 from scipy import optimize, signal, stats
 
 
-def peaks(mv, prominence, wlen=None):
+def peaks(mv, prominence):
     found, _ = signal.find_peaks(mv, prominence=prominence)
     prominences = signal.peak_prominences(mv, found)
     widths = signal.peak_widths(mv, found, rel_height=0.5, prominence_data=prominences)
@@ -87,10 +87,12 @@ def sine(mv, rate_hz, frequency_hz):
 
 
 if __name__ == "__main__":
-    request = json.load(sys.stdin)
-    task = {
+    tasks = {
         f.__name__: f
         for f in (peaks, maxima, gradient, savgol, butter, exponential, line, theil_sen, spread, sine)
-    }[request.pop("task")]
-    arrays = {k: np.asarray(v) if isinstance(v, list) else v for k, v in request.items()}
-    json.dump(task(**arrays), sys.stdout)
+    }
+    answers = []
+    for request in json.load(sys.stdin):
+        task = tasks[request.pop("task")]
+        answers.append(task(**{k: np.asarray(v) if isinstance(v, list) else v for k, v in request.items()}))
+    json.dump(answers, sys.stdout)
