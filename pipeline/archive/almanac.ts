@@ -146,6 +146,10 @@ const spelled = (tree: Tree, path: (string | number)[]): string => {
   return node?.kind === 'scalar' ? (typeof node.value === 'string' ? node.value : node.source).trim() : '';
 };
 
+/** The same for an entry of a list, or for the one word that stands in its place. */
+const spelledIn = (tree: Tree, key: string, index: number): string =>
+  nodeAt(tree, [key])?.kind === 'list' ? spelled(tree, [key, index]) : spelled(tree, [key]);
+
 /** decisions.yaml. Ids of cells that were kept apart (`id~2`) are allowed. */
 export function readDecisions(path: string, bytes: Uint8Array): { decisions: Decision[]; problems: ArchiveProblem[] } {
   const { tree, problems } = readYaml(path, bytes);
@@ -245,6 +249,10 @@ function readRule(
     node.kind === 'map' ? node : ({ ...emptyMap(line), entries: new Map([['any', { line, node }]]) } as Tree);
   const held = hold(path, long, ruleSchema, [part, key]);
   const { missing = 'list', ...rule } = held.value ?? {};
+  // Facts that are text are compared as they are spelled: 007 is no number.
+  if (factKey(key)?.kind === 'text')
+    for (const part of ['any', 'not'] as const)
+      if (rule[part]) rule[part] = rule[part].map((_, index) => spelledIn(held.tree, part, index));
   const lost = Object.keys(rule).length === 0;
   problems.push(
     ...held.problems.map((one) => ({ ...one, remedy: lost ? ruleLost : `${one.remedy} The rest of the rule holds.` })),

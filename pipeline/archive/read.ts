@@ -390,6 +390,7 @@ function foundFile(
     conditions: said.flatMap((one) => one.conditions).map((one) => ({ ...one, facts: { ...one.facts } })),
   };
   const claim = claimOf(root, met, said, sidecar);
+  if (met.barred) file.blocked = shut(met.barred);
   if ('reason' in claim) return { ...file, reason: claim.reason };
   file.kind = 'recording';
   file.format = claim.format;
@@ -401,6 +402,15 @@ function foundFile(
   }
   return file;
 }
+
+/** Opening a link would lead out of the archive, and opening a pipe would wait for ever. */
+const shut = (barred: { reason: string; remedy: string }): Problem => ({
+  code: 'FILE_BARRED',
+  weight: 'blocks',
+  place: '',
+  message: `It is ${barred.reason}.`,
+  remedy: barred.remedy || 'Nothing needs to be done.',
+});
 
 const blockedBy = (lost: ArchiveProblem): Problem => ({
   code: 'SIDECAR_UNUSABLE',

@@ -117,12 +117,15 @@ export interface FoundFile {
   reason: string;
   format: FormatId | null;
   hints: ReadingHints;
-  /** Statements of almanac.yaml defaults, folder.yaml files (outer to inner) and the sidecar, in that order. */
+  /** Statements of almanac.yaml defaults, folder.yaml (outer to inner), the `file` column of facts.csv, the sidecar. */
   statements: Statement[];
   /** Statements for single electrodes from `cells:` in the sidecar. */
   electrode_statements: Record<string, Statement[]>;
   conditions: ConditionStatement[];
-  /** Set when the file must not be opened: how to read it was stated, and the statement cannot be used. */
+  /**
+   * Set when the file must not be opened, not even to hash it: a link or pipe (`other`), or a recording whose sidecar
+   * states how to read it in a way that cannot be used.
+   */
   blocked?: Problem;
 }
 

@@ -201,6 +201,7 @@ describe('links and folders that cannot be read', () => {
       'r/secret.nwb: a link that leads out of the archive, which is not followed',
     ]);
     expect(JSON.stringify(archive)).not.toContain('stolen');
+    expect(archive.files.map((file) => file.blocked?.code)).toEqual([undefined, 'FILE_BARRED', 'FILE_BARRED']);
     expect(archive.problems.map((one) => `${one.path} ${one.code}`)).toEqual([
       'almanac.yaml FILE_BARRED',
       'r/deep LINK_NOT_FOLLOWED',
@@ -313,7 +314,8 @@ audiences: { collaborators: { hide: [person] } }
       'decisions.yaml':
         '- { cell: 007, decision: exclude, by: k, date: 2026-03-20, why: "pale" }\n- { cell: c1~2, decision: include, by: k, date: 2026-03-20, why: checked }\n',
       'events.yaml': '- { date: 2026-02-02, text: New pump, rig: 1, kind: pump }\n',
-      'criteria/x.yaml': 'require:\n  peak_mv: { above: 10, below: 60, missing: keep }\n  class: deep\n',
+      'criteria/x.yaml':
+        'require:\n  peak_mv: { above: 10, below: 60, missing: keep }\n  class: deep\n  group: [007, 2b]\n',
     });
     expect(archive.problems).toEqual([]);
     expect(archive.settings).toMatchObject({
@@ -350,6 +352,7 @@ audiences: { collaborators: { hide: [person] } }
         require: [
           { key: 'peak_mv', rule: { above: 10, below: 60 }, missing: 'keep', line: 2 },
           { key: 'class', rule: { any: ['deep'] }, missing: 'list', line: 3 },
+          { key: 'group', rule: { any: ['007', '2b'] }, missing: 'list', line: 4 },
         ],
       },
     ]);
@@ -421,6 +424,19 @@ describe('facts.csv as labs save it', () => {
     ]));
   test('ids keep their zeros and lose their spaces', () =>
     expect(table('cell\n007\ns2 c1\n')).toEqual(['007: cell=007@2', 's2-c1: cell=s2-c1@3']));
+});
+
+test('a pipe is never opened', () => {
+  const folder = folderWith({ 'r/a.nwb': '' });
+  const archive = readArchive(folder, {
+    names: nodeDisk.names,
+    stat: (file) => (file.endsWith('a.nwb') ? { kind: 'other', bytes: 0, mtime_ms: 0 } : nodeDisk.stat(file)),
+  });
+  expect(archive.files[0]).toMatchObject({
+    kind: 'other',
+    reason: 'not an ordinary file',
+    blocked: { code: 'FILE_BARRED' },
+  });
 });
 
 test('a name that no text can hold does not stop the rest', () => {
