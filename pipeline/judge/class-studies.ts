@@ -1026,6 +1026,8 @@ export const practiceRanges: Partial<Record<ShippedClass, Record<string, readonl
     membrane_time_constant_ms: [5, 40],
     sag_fraction: [0, 0.35],
     max_rate_hz: [5, 120],
+    // Published slopes span the whole f–I curve; ours is the steep first half, from rheobase.
+    rate_gain_hz_per_na: [20, 600],
   },
   'hippocampal-pyramidal': {
     resting_potential_mv: [-80, -55],
@@ -1038,6 +1040,7 @@ export const practiceRanges: Partial<Record<ShippedClass, Record<string, readonl
   'fast-spiking-interneuron': {
     resting_potential_mv: [-85, -55],
     threshold_mv: [-55, -30],
+    spike_height_mv: [40, 100],
     half_width_ms: [0.18, 0.8],
     ahp_below_threshold_mv: [8, 30],
     input_resistance_mohm: [40, 300],

@@ -29,13 +29,14 @@ export const conditionLimits = {
   bridgeShareOfAccess: 0.1,
   humMv: 0.5,
   /** Hum weaker than this has no frequency worth reading. */
-  humReadableMv: 0.05,
-  mainsToleranceShare: 0.01,
+  humReadableMv: 0.01,
+  mainsToleranceShare: 0.02,
   noiseMv: 0.5,
   quantumMv: 0.5,
   quantumRiseVPerS: 10,
   missingFraction: 0.05,
   driftMv: 5,
+  rundownPercent: 10,
   baselineDriftMv: 2,
   emptyPipetteMv: -15,
 } as const;
@@ -209,7 +210,8 @@ const accessTimesCurrent: CellQuestion = (setting) => {
   const inClamp = cellReading(setting, 'holding_current_pa');
   const compensated =
     setting.circumstances.bridge_mohm !== null || isPresent(setting.measure.readings['bridge_error_mohm']);
-  const step = hasVoltage(setting) && !compensated ? largestStimulusPa(setting) : null;
+  // A pulse of a few milliseconds is over before the spike that it starts.
+  const step = hasVoltage(setting) && !compensated ? largestStimulusPa(setting, 0.02) : null;
   const current = Math.max(isPresent(inClamp) ? Math.abs(inClamp.value) : 0, step ?? 0);
   // Nothing flows, or the bridge is accounted for by its own check.
   if (current === 0) return null;
@@ -295,7 +297,7 @@ const humFrequency: CellQuestion = (setting) => {
     subject,
     low: nearest * (1 - limits.mainsToleranceShare),
     high: nearest * (1 + limits.mainsToleranceShare),
-    name: `the mains’ own ${nearest} Hz (±1 %)`,
+    name: `the mains’ own ${nearest} Hz (±2 %)`,
     meaning: 'no mains runs at that frequency, so that the stated sampling rate is likely wrong',
     uncertainty: measuredUncertainty(reading) > 0 ? 0 : 0.25 / seconds,
   });
@@ -335,6 +337,24 @@ const drift: CellQuestion = (setting) => {
     high,
     name: `${limits.driftMv} mV over ${minutes.toFixed(minutes < 10 ? 1 : 0)} min (±${amount('drift_mv_per_min', high)})`,
     meaning: 'early and late sweeps do not show the cell in the same state',
+  });
+};
+
+const heightRundown: CellQuestion = (setting) => {
+  if (!hasVoltage(setting)) return null;
+  const subject = 'the rundown of the spike height';
+  const reading = setting.measure.readings['height_rundown_percent_per_100_spikes'];
+  const fired = spikesFired(setting);
+  if (!isPresent(reading)) return unheldReading(subject, reading);
+  if (fired === 0) return unheld(subject, 'no spike was fired');
+  const high = (limits.rundownPercent * 100) / fired;
+  return hold(reading, {
+    quantity: 'height_rundown_percent_per_100_spikes',
+    subject: `${subject} per 100 spikes`,
+    low: -high,
+    high,
+    name: `${limits.rundownPercent} % over the ${fired} spikes fired (±${amount('height_rundown_percent_per_100_spikes', high)})`,
+    meaning: 'early and late spikes do not show the cell in the same state',
   });
 };
 
@@ -384,6 +404,7 @@ export const conditionQuestions: Record<string, CellQuestion> = {
   noise: (setting) => (hasVoltage(setting) ? noise(cellReading(setting, 'noise_rms_mv'), 'the noise') : null),
   quantization,
   drift,
+  'height-rundown': heightRundown,
   'baseline-drift': baselineDrift,
 };
 

@@ -100,11 +100,16 @@ export function cellReading(setting: Setting, quantity: string): Reading | undef
   return isPresent(own) ? own : (medianReading(setting.sweeps, quantity) ?? own);
 }
 
-/** Largest injected step, ramp or pulse of the condition against holding, pA without sign; null where none is known. */
-export function largestStimulusPa(setting: Setting): number | null {
+/**
+ * Largest injected stimulus of the condition against holding, pA without sign; null where none is known.
+ * @param least_s leaves out stimuli shorter than this, s
+ */
+export function largestStimulusPa(setting: Setting, least_s = 0): number | null {
   const sizes = setting.sweeps.flatMap((sweep) => {
     const reading = sweep.readings['stimulus_pa'];
-    return sweep.clamp === 'current' && isPresent(reading) ? [Math.abs(reading.value)] : [];
+    const { kind, onset_s, end_s } = sweep.stimulus;
+    const brief = least_s > 0 && (kind === 'pulse train' || (end_s ?? 0) - (onset_s ?? 0) < least_s);
+    return sweep.clamp === 'current' && isPresent(reading) && !brief ? [Math.abs(reading.value)] : [];
   });
   return sizes.length === 0 ? null : Math.max(...sizes);
 }

@@ -105,15 +105,15 @@ const ladders: [string, string, [number, string][], Made?][] = [
       [0.51, 'outside'],
     ],
   ],
-  // Sweeps of 1 s: ± 0.25 Hz of resolution about 49.5 to 50.5 Hz.
+  // Sweeps of 1 s: ± 0.25 Hz of resolution about 49 to 51 Hz.
   [
     'hum-frequency',
     'mains_hum_hz',
     [
       [50, 'within'],
-      [50.4, 'near limit'],
-      [50.7, 'near limit'],
-      [50.8, 'outside'],
+      [50.8, 'near limit'],
+      [51.2, 'near limit'],
+      [51.3, 'outside'],
       [40, 'outside'],
     ],
   ],
@@ -221,7 +221,7 @@ describe('facts a check needs', () => {
     expect([hum(50), hum(60.1), hum(62.5)]).toEqual(['within', 'within', 'outside']);
   });
   test('a hum too weak to have a frequency', () =>
-    expect(outcome('hum-frequency', { readings: { mains_hum_mv: read(0.01), mains_hum_hz: read(41) } })).toBe(
+    expect(outcome('hum-frequency', { readings: { mains_hum_mv: read(0.008), mains_hum_hz: read(41) } })).toBe(
       'not measured',
     ));
   test('drift without clock times', () =>
@@ -259,6 +259,21 @@ describe('where current flows', () => {
     const sweeps = six(() => ({ clamp: 'voltage', spikes: [], readings: { holding_current_pa: read(-900) } }));
     expect(outcome('access-times-current', { sweeps, readings: { access_resistance_mohm: read(14) } })).toBe('outside');
   });
+});
+
+test('a brief pulse is over before its spike and does not count', () => {
+  const pulse = { ...sweep(0).stimulus, end_s: 0.202 };
+  const sweeps = six(() => ({ stimulus: pulse, readings: { stimulus_pa: read(3000) } }));
+  expect(
+    outcome('access-times-current', { sweeps, without: ['bridge_error_mohm'], circumstances: { bridge_mohm: null } }),
+  ).toBe('silent');
+});
+
+test('rundown: 10 % over the 600 spikes fired is 1.67 % per 100', () => {
+  const sweeps = six(() => ({ spikes: Array.from({ length: 100 }, (_, index) => spike(index)) }));
+  const rundown = (value: number) =>
+    outcome('height-rundown', { sweeps, readings: { height_rundown_percent_per_100_spikes: read(value) } });
+  expect([rundown(-1.6), rundown(-1.7), rundown(2)]).toEqual(['within', 'outside', 'outside']);
 });
 
 describe('no cell', () => {

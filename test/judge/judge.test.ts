@@ -57,6 +57,7 @@ const failing: Record<string, Made> = {
   noise: { readings: { noise_rms_mv: read(1) } },
   quantization: { readings: { quantum_mv: read(1) } },
   drift: { readings: { drift_mv_per_min: read(9) } },
+  'height-rundown': { readings: { height_rundown_percent_per_100_spikes: read(-400) } },
   'baseline-drift': { readings: { baseline_drift_mv_per_s: read(30) } },
   'facts-agree': { input: { contradictions: [contradiction('facts-disagree')] } },
   'label-agrees-with-data': { input: { contradictions: [contradiction('label-contradicts-data')] } },
