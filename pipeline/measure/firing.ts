@@ -76,9 +76,13 @@ export function measureIntervals(times_s: readonly number[]): Readings {
   };
 }
 
+/** Height of the last spike against the first, below which firing died away and did not merely pause. */
+const diedAway = 0.6;
+
 /**
- * Whether firing stopped inside a step that went on while the membrane stayed depolarized beyond threshold: not the
- * silence of a cell that adapts, whose potential falls back below it.
+ * Whether firing stopped inside a step that went on: the membrane stays depolarized beyond the first spike's
+ * threshold, or the spikes shrank below 60 % and it stays within 15 mV of it (under a strong step the threshold itself
+ * is read too high). Not the silence of a cell that adapts: its spikes keep their height and its potential falls back.
  */
 export function isBlocked(spikes: readonly Spike[], stimulus: Stimulus, voltage: Signal, slow: boolean): boolean {
   if (slow || stimulus.kind !== 'step' || stimulus.onset_s === null || stimulus.end_s === null) return false;
@@ -94,7 +98,10 @@ export function isBlocked(spikes: readonly Spike[], stimulus: Stimulus, voltage:
   const plateau = mean(
     voltage.samples.subarray(indexAt(voltage, stimulus.end_s - 0.5 * silence), indexAt(voltage, stimulus.end_s)),
   );
-  return plateau !== null && plateau > threshold;
+  if (plateau === null) return false;
+  const heights = during.map((spike) => spike.values['spike_height_mv'] ?? 0);
+  const shrank = during.length > 1 && heights.at(-1)! < diedAway * heights[0]!;
+  return plateau > threshold || (shrank && plateau > threshold - 15);
 }
 
 /** After a stimulus the cell is left to settle this long before its firing counts as its own, s. */

@@ -2,7 +2,7 @@ import { exponentialFit } from '../signal/exponential.ts';
 import { mean, median, standardDeviation } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
-import { gathered, indexAt, timeAt } from './stretches.ts';
+import { gathered, indexAt, type Stretch, timeAt } from './stretches.ts';
 import type { Reading, Readings, Signal, Stimulus } from './types.ts';
 
 /** Command steps up to this size, mV, count as test pulses: larger ones open channels. */
@@ -17,7 +17,6 @@ interface Answer {
   access_mohm: number | null;
   total_mohm: number;
   capacitance_pf: number | null;
-  /** Steps of more than a sample's noise? Else the resistance is only a lower bound. */
   from_s: number;
   to_s: number;
 }
@@ -82,19 +81,24 @@ function holdingCurrent(current: Signal, command: Signal | null, levels: readonl
 interface Edge {
   at_s: number;
   step_mv: number;
+  /** Step that led to the level before, 0 where the sweep began with it. */
+  previous_mv: number;
   /** The level before began, the level after ends. */
   before_s: number;
   after_s: number;
 }
 
-/** Small first steps and their ends, smallest reach first where there are many sizes. */
+/** Steps of the command that are small and long enough, in order of time. */
 function testPulseEdges(levels: readonly Level[]): Edge[] {
   return levels.slice(1).flatMap((level, k) => {
     const previous = levels[k]!;
     const step_mv = level.level - previous.level;
+    const previous_mv = k === 0 ? 0 : previous.level - levels[k - 1]!.level;
     const long = Math.min(previous.to_s - previous.from_s, level.to_s - level.from_s) >= shortestTestPulse_s;
     const small = Math.abs(step_mv) <= largestTestPulse_mv * 1.001 && Math.abs(step_mv) >= 0.2;
-    return long && small ? [{ at_s: level.from_s, step_mv, before_s: previous.from_s, after_s: level.to_s }] : [];
+    return long && small
+      ? [{ at_s: level.from_s, step_mv, previous_mv, before_s: previous.from_s, after_s: level.to_s }]
+      : [];
   });
 }
 
@@ -103,31 +107,51 @@ function answerAt(current: Signal, edge: Edge): Answer | null {
   const rate = current.rate_hz;
   const from = indexAt(current, edge.at_s);
   const to = Math.min(indexAt(current, edge.after_s), from + Math.round(0.2 * rate));
-  const start = Math.max(indexAt(current, edge.before_s), from - Math.round(0.05 * rate));
+  const start = indexAt(current, edge.before_s);
   if (to - from < 8 || from - start < 4) return null;
-  // The later half of the level before has settled.
-  const before = current.samples.subarray(start + Math.floor((from - start) / 2), from);
-  const late = current.samples.subarray(to - Math.max(4, Math.floor((to - from) / 5)), to);
+  // The last fifth of each level, at most 20 ms, has come nearest to rest.
+  const share = (length: number): number => Math.max(4, Math.min(Math.floor(length / 5), Math.round(0.02 * rate)));
+  const earlier = { from: from - share(from - start), to: from };
+  const later = { from: to - share(to - from), to };
+  const before = current.samples.subarray(earlier.from, earlier.to);
+  const late = current.samples.subarray(later.from, later.to);
   const calm = mean(before);
   const steady = mean(late);
   const noise = standardDeviation(before);
   if (calm === null || steady === null || noise === null) return null;
   const where = { from_s: edge.at_s, to_s: timeAt(current, to) };
-  const change = steady - calm;
-  const steadyError = noise * Math.sqrt(1 / before.length + 1 / late.length);
-  // mV/pA is GΩ. A change that is lost in noise, or against the step, is no resistance.
-  const answersInSense = change * edge.step_mv > 0 && Math.abs(change) > 2 * steadyError;
-  const transient = transientOf(current.samples.subarray(from, to), steady, edge.step_mv, noise, rate);
-  if (!answersInSense) return null;
+  const part = current.samples.subarray(from, to);
+  let change = steady - calm;
+  let transient = transientOf(part, steady, edge.step_mv, noise, rate);
+  if (transient) {
+    // What the transient still is in the last fifth, and what the one before was when this one began, is known: out.
+    const { tau_ms } = transient;
+    const left = (stretch: Stretch, edgeIndex: number): number =>
+      meanDecay(((stretch.from - edgeIndex) * 1000) / rate, ((stretch.to - edgeIndex) * 1000) / rate, tau_ms);
+    const height = transient.height_pa;
+    const settled = steady - height * left(later, from);
+    const rested = calm - height * (edge.previous_mv / edge.step_mv) * left(earlier, start);
+    change = settled - rested;
+    transient = transientOf(part, settled, edge.step_mv, noise, rate) ?? transient;
+  }
+  // A change that is lost in noise, or against the step, is no resistance.
+  const error = noise * Math.sqrt(1 / before.length + 1 / late.length);
+  if (!(change * edge.step_mv > 0 && Math.abs(change) > 2 * error)) return null;
+  // mV/pA is GΩ.
   const total_mohm = (edge.step_mv / change) * 1000;
-  if (!transient) return { access_mohm: null, total_mohm, capacitance_pf: null, ...where };
-  const access_mohm = (edge.step_mv / (transient.peak_pa + change)) * 1000;
+  const unresolved = { access_mohm: null, total_mohm, capacitance_pf: null, ...where };
+  if (!transient) return unresolved;
+  const access_mohm = (edge.step_mv / (transient.height_pa + change)) * 1000;
   const membrane_mohm = total_mohm - access_mohm;
-  if (!(access_mohm > 0 && membrane_mohm > 0)) return { access_mohm: null, total_mohm, capacitance_pf: null, ...where };
+  if (!(access_mohm > 0 && membrane_mohm > 0)) return unresolved;
   // pA·ms is fC; fC/mV is pF.
   const capacitance_pf = (transient.charge_fc / edge.step_mv) * (total_mohm / membrane_mohm) ** 2;
   return { access_mohm, total_mohm, capacitance_pf, ...where };
 }
+
+/** Mean of exp(−t/tau) between two times. */
+const meanDecay = (from_ms: number, to_ms: number, tau_ms: number): number =>
+  (tau_ms * (Math.exp(-from_ms / tau_ms) - Math.exp(-to_ms / tau_ms))) / (to_ms - from_ms);
 
 /**
  * The transient above the steady current: its height extrapolated to the edge and its charge. The first samples belong
@@ -139,7 +163,7 @@ function transientOf(
   step_mv: number,
   noise: number,
   rate: number,
-): { peak_pa: number; charge_fc: number } | null {
+): { height_pa: number; charge_fc: number; tau_ms: number } | null {
   const sign = Math.sign(step_mv);
   const above = part.map((value) => (value - steady) * sign);
   const search = Math.min(above.length, Math.max(4, Math.round(0.003 * rate)));
@@ -162,7 +186,7 @@ function transientOf(
   const until = Math.min(above.length, first + Math.round((8 * fit.tau * rate) / 1000));
   for (let i = first; i < until; i++) charge += (above[i]! * 1000) / rate;
   charge -= (0.5 * above[first]! * 1000) / rate;
-  return { peak_pa: peak * sign, charge_fc: charge * sign };
+  return { height_pa: peak * sign, charge_fc: charge * sign, tau_ms: fit.tau };
 }
 
 function summary(answers: Answer[]): Readings {

@@ -1,0 +1,106 @@
+import fc from 'fast-check';
+import { describe, expect, it } from 'vitest';
+import { correctPotentials } from '../../pipeline/measure/junction.ts';
+import { measureSweep } from '../../pipeline/measure/sweep.ts';
+import { clampedSweep, input, neuron, normalNoise, numberIn, signalOf } from './made.ts';
+
+// Exact solution of an access resistance in series with a cell (linear circuit theory): 10 MΩ, 200 MΩ, 100 pF and a
+// step of 5 mV give a peak of 500 pA, 23.81 pA in the end, and a charge of 0.4535 pC.
+const cell = { access_mohm: 10, membrane_mohm: 200, pf: 100 };
+const pulse = [{ from_s: 0.05, to_s: 0.1, mv: 5 }];
+const measure = (made: ReturnType<typeof clampedSweep>) => measureSweep(input(made, { clamp: 'voltage' }), neuron);
+
+describe('a test pulse in voltage clamp', () => {
+  it('gives back the circuit', () => {
+    const sweep = measure(clampedSweep(cell, pulse));
+    expect(numberIn(sweep.readings, 'access_resistance_mohm')).toBeCloseTo(10, 2);
+    expect(numberIn(sweep.readings, 'membrane_resistance_mohm')).toBeCloseTo(200, 1);
+    expect(Math.abs(numberIn(sweep.readings, 'cell_capacitance_pf') - 100)).toBeLessThan(0.1);
+    expect(numberIn(sweep.readings, 'holding_current_pa')).toBeCloseTo(0, 9);
+    expect(numberIn(sweep.readings, 'command_mv')).toBeCloseTo(-65, 9);
+    expect(sweep.readings['access_resistance_mohm']!.n).toBe(2);
+    expect(sweep.spikes).toHaveLength(0);
+    expect(sweep.stimulus).toMatchObject({ kind: 'step', holding: -70, amplitude: 5 });
+  });
+
+  it('does so through noise, at lower rates, upside down, and for other cells', () => {
+    const cells = fc.record({
+      access_mohm: fc.double({ min: 6, max: 40, noNaN: true }),
+      membrane_mohm: fc.double({ min: 100, max: 1500, noNaN: true }),
+      pf: fc.double({ min: 30, max: 150, noNaN: true }),
+      mv: fc.constantFrom(5, -5, 10, -10),
+      seed: fc.integer({ min: 1, max: 1000 }),
+    });
+    fc.assert(
+      fc.property(cells, ({ mv, ...circuit }) => {
+        const steps = [0, 1, 2].map((k) => ({ from_s: 0.02 + 0.06 * k, to_s: 0.05 + 0.06 * k, mv }));
+        const { readings } = measure(clampedSweep({ ...circuit, noise_pa: 2 }, steps, { rateHz: 50000 }));
+        expect(Math.abs(numberIn(readings, 'access_resistance_mohm') / circuit.access_mohm - 1)).toBeLessThan(0.08);
+        expect(Math.abs(numberIn(readings, 'membrane_resistance_mohm') / circuit.membrane_mohm - 1)).toBeLessThan(0.25);
+        expect(Math.abs(numberIn(readings, 'cell_capacitance_pf') / circuit.pf - 1)).toBeLessThan(0.1);
+      }),
+      { seed: 31, numRuns: 12, endOnFailure: true },
+    );
+  });
+
+  it('is looked for among larger steps and not in them', () => {
+    const made = clampedSweep(cell, [
+      { from_s: 0.02, to_s: 0.05, mv: -5 },
+      { from_s: 0.1, to_s: 0.15, mv: 80 },
+    ]);
+    // A conductance that opens above −40 mV would spoil what a large step says.
+    made.current.samples.forEach((value, i) => {
+      if (made.voltage.samples[i]! > -40) made.current.samples[i] = value + 3000;
+    });
+    const { readings } = measure(made);
+    expect(readings['access_resistance_mohm']!.n).toBe(2);
+    expect(numberIn(readings, 'access_resistance_mohm')).toBeCloseTo(10, 1);
+    expect(numberIn(readings, 'command_mv')).toBeCloseTo(10, 9);
+  });
+
+  it('says why there is none', () => {
+    const why = (readings: ReturnType<typeof measure>['readings']) =>
+      ['access_resistance_mohm', 'membrane_resistance_mohm', 'cell_capacitance_pf'].map((id) => readings[id]!.why);
+    expect(why(measure(clampedSweep(cell, [])).readings)).toEqual(Array(3).fill('no-test-pulse'));
+    expect(why(measure(clampedSweep(cell, [{ from_s: 0.05, to_s: 0.1, mv: 60 }])).readings)).toEqual(
+      Array(3).fill('no-test-pulse'),
+    );
+    const { voltage, current } = clampedSweep(cell, pulse);
+    const noCommand = measureSweep(input({ voltage: null, current }, { clamp: 'voltage' }), neuron).readings;
+    expect(why(noCommand)).toEqual(Array(3).fill('no-voltage'));
+    const noCurrent = measureSweep(input({ voltage, current: null }, { clamp: 'voltage' }), neuron).readings;
+    expect(why(noCurrent)).toEqual(Array(3).fill('no-current'));
+    expect(numberIn(noCurrent, 'command_mv')).toBeCloseTo(-65, 9);
+  });
+
+  it('shows a leak without a cell as a resistance without a transient', () => {
+    const noise = normalNoise(5);
+    const { voltage } = clampedSweep(cell, pulse);
+    const current = signalOf(0.2, 50000, (t) => (t >= 0.05 && t < 0.1 ? 1000 : 0) - 14000 + 20 * noise());
+    const { readings } = measureSweep(input({ voltage, current }, { clamp: 'voltage' }), neuron);
+    expect(readings['access_resistance_mohm']!.why).toBe('unresolved');
+    expect(readings['cell_capacitance_pf']!.why).toBe('unresolved');
+    expect(numberIn(readings, 'membrane_resistance_mohm')).toBeCloseTo(5, 1);
+    expect(readings['membrane_resistance_mohm']!.note).toContain('total');
+    expect(numberIn(readings, 'holding_current_pa')).toBeCloseTo(-14000, -1);
+  });
+
+  it('finds the steps in a command with an offset and noise of its own', () => {
+    const noise = normalNoise(15);
+    const made = clampedSweep({ ...cell, noise_pa: 3 }, [{ from_s: 0.05, to_s: 0.15, mv: -10 }]);
+    made.voltage.samples.forEach((value, i) => {
+      made.voltage.samples[i] = value + 0.7 + 0.2 * noise();
+    });
+    const { readings } = measure(made);
+    expect(Math.abs(numberIn(readings, 'access_resistance_mohm') - 10)).toBeLessThan(0.6);
+    expect(Math.abs(numberIn(readings, 'command_mv') + 79.3)).toBeLessThan(0.1);
+  });
+});
+
+it('the junction moves the command of a voltage-clamp sweep and no resistance', () => {
+  const sweep = measure(clampedSweep(cell, pulse));
+  const corrected = correctPotentials(sweep, 14);
+  expect(numberIn(corrected.readings, 'command_mv')).toBeCloseTo(-79, 9);
+  expect(corrected.stimulus).toMatchObject({ holding: -84, amplitude: 5 });
+  expect(corrected.readings['access_resistance_mohm']).toEqual(sweep.readings['access_resistance_mohm']);
+});
