@@ -8,7 +8,7 @@ export type Standing = 'sound' | 'caution' | 'unsound' | 'unread';
 /** One entry of the registry `checks.ts`. */
 export interface CheckEntry {
   id: string;
-  /** Quantity id the number comes from. */
+  /** Quantity id the number comes from; '' for a check of statements, which has no number. */
   quantity: string;
   ground: Ground;
   /** The question it asks, as a sentence: 'Does the peak stay below E_Na?' */

@@ -14,12 +14,40 @@ export const leastHeightShare = 0.8;
 
 const first = (sweep: NumberedSweep): number | null => sweep.spikes[0]?.values['spike_height_mv'] ?? null;
 
-/** Sweeps held alike: within 10 pA or a tenth of each other, or both with unknown holding. */
-function heldAlike(one: NumberedSweep, other: NumberedSweep): boolean {
-  const a = one.readings['holding_pa'];
-  const b = other.readings['holding_pa'];
-  if (!isPresent(a) || !isPresent(b)) return !isPresent(a) && !isPresent(b);
-  return Math.abs(a.value - b.value) <= Math.max(10, 0.1 * Math.max(Math.abs(a.value), Math.abs(b.value)));
+/** Holding current to the nearest pA; null where it is not known. */
+const holdingOf = (sweep: NumberedSweep): number | null => {
+  const reading = sweep.readings['holding_pa'];
+  return isPresent(reading) ? Math.round(reading.value) : null;
+};
+
+/** Held alike: within 10 pA or a tenth of each other, or both with unknown holding. */
+function heldAlike(a: number | null, b: number | null): boolean {
+  if (a === null || b === null) return a === b;
+  return Math.abs(a - b) <= Math.max(10, 0.1 * Math.max(Math.abs(a), Math.abs(b)));
+}
+
+/** What is usual in one condition, worked out once for all its sweeps. */
+export interface Usual {
+  setting: Setting;
+  /** Median baseline of the sweeps held alike, by holding current. */
+  baselines: ReadonlyMap<number | null, number>;
+  /** Median height of the sweeps' first spikes; null where none fires. */
+  height: number | null;
+}
+
+export function usualOf(setting: Setting): Usual {
+  const held = setting.sweeps.flatMap((sweep) => {
+    const baseline = sweep.readings['baseline_mv'];
+    return sweep.clamp === 'current' && isPresent(baseline) ? [{ pa: holdingOf(sweep), mv: baseline.value }] : [];
+  });
+  const baselines = new Map(
+    [...new Set(held.map((one) => one.pa))].map((pa) => [
+      pa,
+      medianOf(held.filter((one) => heldAlike(one.pa, pa)).map((one) => one.mv)),
+    ]),
+  );
+  const heights = setting.sweeps.flatMap((sweep) => first(sweep) ?? []);
+  return { setting, baselines, height: heights.length === 0 ? null : medianOf(heights) };
 }
 
 function beyond(answer: Answer | null): string | null {
@@ -30,28 +58,23 @@ function beyond(answer: Answer | null): string | null {
 }
 
 /** Why a sweep is not usable, as half a sentence; null when it is. */
-export function complaintOf(setting: Setting, sweep: NumberedSweep, policy: readonly PolicyRule[]): string | null {
+export function complaintOf(usual: Usual, sweep: NumberedSweep, policy: readonly PolicyRule[]): string | null {
   const asked = [
-    ...Object.values(sweepQuestions).map((question) => beyond(question(setting, sweep))),
+    ...Object.values(sweepQuestions).map((question) => beyond(question(usual.setting, sweep))),
     ...policy.map((rule) => beyond(askPolicySweep(rule, sweep))),
   ].find((complaint) => complaint !== null);
   if (asked) return asked;
   if (sweep.clamp !== 'current') return null;
   const baseline = sweep.readings['baseline_mv'];
   if (isPresent(baseline)) {
-    const alike = setting.sweeps.flatMap((other) => {
-      const reading = other.readings['baseline_mv'];
-      return other.clamp === 'current' && heldAlike(sweep, other) && isPresent(reading) ? [reading.value] : [];
-    });
-    const middle = medianOf(alike);
+    const middle = usual.baselines.get(holdingOf(sweep))!;
     const away = baseline.value - middle;
     if (Math.abs(away) > baselineToleranceMv + measuredUncertainty(baseline))
       return `its baseline, ${amount('baseline_mv', baseline.value)}, lies ${difference('baseline_mv', away)} from the ${amount('baseline_mv', middle)} held otherwise`;
   } else if (baseline?.why === 'unreadable') return 'its samples could not be read';
   const height = first(sweep);
-  if (height !== null) {
-    const heights = setting.sweeps.flatMap((other) => first(other) ?? []);
-    const middle = medianOf(heights);
+  if (height !== null && usual.height !== null) {
+    const middle = usual.height;
     if (height < leastHeightShare * middle)
       return `its first spike, ${amount('spike_height_mv', height)} high, reaches less than ${leastHeightShare * 100} % of the usual ${amount('spike_height_mv', middle)}`;
   }
@@ -67,7 +90,8 @@ export function complaintOf(setting: Setting, sweep: NumberedSweep, policy: read
  */
 export function usableStretch(settings: readonly Setting[], policy: readonly PolicyRule[]): UsableStretch | null {
   const judged = settings
-    .flatMap((setting) => setting.sweeps.map((sweep) => ({ sweep, complaint: complaintOf(setting, sweep, policy) })))
+    .map(usualOf)
+    .flatMap((usual) => usual.setting.sweeps.map((sweep) => ({ sweep, complaint: complaintOf(usual, sweep, policy) })))
     .sort((a, b) => a.sweep.sweep - b.sweep.sweep);
   let best: { from: number; length: number } | null = null;
   let from = 0;
