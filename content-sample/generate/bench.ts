@@ -65,8 +65,8 @@ export function membraneOf(day: DaySpec, cell: CellSpec): Membrane {
       ...regularSpiking2008,
       g_na: (cell.g_na ?? 17) * spread(0.06),
       g_k: 3.6 * spread(0.12),
-      g_m: 0.055 * spread(0.25),
-      g_leak: 0.05 * spread(0.15) * (cell.leak_factor ?? 1),
+      g_m: 0.11 * spread(0.2),
+      g_leak: 0.055 * spread(0.15) * (cell.leak_factor ?? 1),
       e_na_mv,
       e_k_mv,
       e_leak_mv: -71 + 1.6 * random.normal() + (cell.leak_shift_mv ?? 0),
@@ -74,7 +74,7 @@ export function membraneOf(day: DaySpec, cell: CellSpec): Membrane {
       phi: (cell.phi ?? 1) * 2.3 ** ((celsius - 36) / 10),
       temperature_c: celsius,
     };
-    const area = cylinderCm2(58) * size * spread(0.12);
+    const area = cylinderCm2(74) * size * spread(0.12);
     return {
       build: () => corticalCell(p),
       area_cm2: area,
@@ -86,8 +86,8 @@ export function membraneOf(day: DaySpec, cell: CellSpec): Membrane {
   if (cell.kind === 'interneuron') {
     const p = {
       ...interneuron1996,
-      g_na: 28 * spread(0.06),
-      g_k: 5.5 * spread(0.1),
+      g_na: (cell.g_na ?? 28) * spread(0.06),
+      g_k: (cell.g_k ?? 5.5) * spread(0.1),
       g_leak: 0.15 * spread(0.12),
       e_na_mv,
       e_k_mv,
@@ -153,14 +153,14 @@ export function round125(x: number): number {
   return power * (mantissa < 1.5 ? 1 : mantissa < 2.25 ? 2 : mantissa < 3.5 ? 2.5 : mantissa < 7.5 ? 5 : 10);
 }
 
-/** Smallest step of half a second (heart: 2 ms) that fires the cell, pA, within 2 %. */
+/** Smallest step of half a second (heart: 5 ms) that fires the cell, pA, within 2 %. */
 export function rheobaseOf(membrane: Membrane): number {
   const model = membrane.build();
   const dt = membrane.slow ? 0.01 : 0.02;
   const rest = settle(model, membrane.start_mv, 400, dt);
   const fires = (density: number): boolean => {
     const run = integrator(model, rest);
-    const width = membrane.slow ? 2 : 500;
+    const width = membrane.slow ? 5 : 500;
     for (let k = 0; k * dt < width + 20; k++) {
       run.step(dt, k * dt < width ? density : 0, 0, 0);
       if (run.state[0]! > -5) return true;
@@ -207,7 +207,7 @@ export function protocolOf(cell: CellSpec, rheobase_pa: number): PlannedSweep[] 
     return out;
   }
   if (cell.kind === 'heart') {
-    const beat = (): SweepPlan => pulseTrain(roundTo(rheobase_pa * 1.3, 100), 0.002, 1, 1, 0.1, 1);
+    const beat = (): SweepPlan => pulseTrain(roundTo(rheobase_pa * 1.3, 50), 0.005, 1, 1, 0.1, 1);
     if (!plainFamily) {
       add(testPulse(-80, -5), 3);
       add(quiet(0.6), 3);
@@ -254,7 +254,8 @@ export function protocolOf(cell: CellSpec, rheobase_pa: number): PlannedSweep[] 
     if (cell.fine_rheobase)
       for (const share of [0.9, 0.96, 1.02, 1.08])
         add(step(Math.round(rheobase_pa * share), 0.1, 0.6, 0.8, 'rheobase', hold), 5);
-    if (cell.kind === 'pyramidal') add(ramp(round125(rheobase_pa * 2.2), 0.1, 0.9, 1.1), 5);
+    if (cell.kind === 'pyramidal')
+      add(ramp(cell.unit_pa ? 8 * cell.unit_pa : round125(rheobase_pa * 2.2), 0.1, 0.9, 1.1), 5);
     const brief = cell.unit_pa ? 8 * cell.unit_pa : round125(rheobase_pa * (cell.kind === 'pyramidal' ? 16 : 9));
     add(pulseTrain(brief, 0.002, 0.05, 8, 0.1, 0.7), 5);
   }
@@ -265,7 +266,7 @@ export function protocolOf(cell: CellSpec, rheobase_pa: number): PlannedSweep[] 
 /** Electrode and recorder of one cell, before what changes from sweep to sweep. */
 export function benchOf(day: DaySpec, cell: CellSpec, membrane: Membrane, random: Random): Bench {
   const { ljp_mv } = conditionsOf(day, cell);
-  const usual = cell.kind === 'squid' ? 0.02 : cell.kind === 'heart' ? 4.5 : 13;
+  const usual = cell.kind === 'squid' ? 0.02 : cell.kind === 'heart' ? 4 : 13;
   const access = cell.access_mohm ?? usual * (1 + 0.22 * Math.max(-1.5, Math.min(1.8, random.normal())));
   const small = cell.kind === 'squid' ? 0.0015 : 0.6;
   const left = cell.junction_left ?? (day.junction === 'corrected' ? 0 : 1);
@@ -274,7 +275,7 @@ export function benchOf(day: DaySpec, cell: CellSpec, membrane: Membrane, random
       ? 0
       : Math.max(0, roundTo(access + small * random.normal(), cell.kind === 'squid' ? 0.001 : 0.1));
   const fast = cell.kind === 'squid' || cell.kind === 'interneuron';
-  const filter = cell.filter_khz ?? (fast ? 10 : day.rig === 'loft' ? 8 : 6);
+  const filter = cell.filter_khz ?? (fast && !cell.text ? 10 : day.rig === 'loft' && !cell.text ? 8 : 6);
   const rate = cell.rate_hz ?? (fast ? 50_000 : cell.kind === 'heart' ? 20_000 : day.rig === 'loft' ? 25_000 : 20_000);
   return {
     area_cm2: membrane.area_cm2,

@@ -95,6 +95,7 @@ export interface CellSpec {
   leak_shift_mv?: number;
   leak_factor?: number;
   g_na?: number;
+  g_k?: number;
   phi?: number;
   g_na_end?: number;
   strong?: boolean;
