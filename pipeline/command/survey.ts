@@ -77,6 +77,11 @@ export async function surveyFiles(
   const waiting: { at: number; key: string }[] = [];
   for (const found of archive.files) {
     const at = files.push({ found, sha256: '', description: null, failure: null }) - 1;
+    if (found.blocked) {
+      // Not even hashed: it may be a link out of the archive, or a pipe that never ends.
+      if (found.kind === 'recording') files[at]!.failure = found.blocked;
+      continue;
+    }
     try {
       files[at]!.sha256 = await knownHash(archive, found, ledger);
     } catch (error) {
