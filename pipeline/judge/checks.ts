@@ -302,7 +302,7 @@ const conditions: CheckEntry[] = [
     ground: 'conditions',
     asks: 'Does the hum lie at the frequency of the mains?',
     limit:
-      'stated mains (else the nearer of 50 and 60 Hz) ± 2 % and the resolution of the sweep; not read below 0.01 mV',
+      'stated mains (else the nearer of 50 and 60 Hz) ± 2 % and the resolution of the sweep; not read where the hum of the sweeps that show it is below 0.05 mV',
     causes: ['sampling rate stated wrongly', 'traces resampled on export', 'mains_hz stated wrongly'],
     bench: 'Compare a calibration pulse of known length with what the file says.',
     source: 'EN 50160 (50 Hz ± 1 % for 99.5 % of a year, ± 2 % where the supply stands alone; from memory)',

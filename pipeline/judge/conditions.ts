@@ -10,6 +10,7 @@ import {
   type Held,
   isPresent,
   largestStimulusPa,
+  medianReading,
   type Setting,
   type SweepQuestion,
   unheld,
@@ -29,7 +30,7 @@ export const conditionLimits = {
   bridgeShareOfAccess: 0.1,
   humMv: 0.5,
   /** Hum weaker than this has no frequency worth reading. */
-  humReadableMv: 0.01,
+  humReadableMv: 0.05,
   mainsToleranceShare: 0.02,
   noiseMv: 0.5,
   quantumMv: 0.5,
@@ -284,7 +285,9 @@ const noise = (reading: Reading | undefined, subject: string): Answer =>
 const humFrequency: CellQuestion = (setting) => {
   const subject = 'the frequency of the hum';
   const reading = cellReading(setting, 'mains_hum_hz');
-  const size = cellReading(setting, 'mains_hum_mv');
+  // Of the sweeps whose hum stands out enough to have a frequency; the rest says nothing of it.
+  const carriers = setting.sweeps.filter((sweep) => isPresent(sweep.readings['mains_hum_hz']));
+  const size = medianReading(carriers, 'mains_hum_mv') ?? cellReading(setting, 'mains_hum_mv');
   if (!isPresent(reading)) return unheldReading(subject, reading);
   if (isPresent(size) && size.value < limits.humReadableMv)
     return unheld(subject, `the hum of ${amount('mains_hum_mv', size.value)} is too weak to have a frequency`);

@@ -221,9 +221,23 @@ describe('facts a check needs', () => {
     expect([hum(50), hum(60.1), hum(62.5)]).toEqual(['within', 'within', 'outside']);
   });
   test('a hum too weak to have a frequency', () =>
-    expect(outcome('hum-frequency', { readings: { mains_hum_mv: read(0.008), mains_hum_hz: read(41) } })).toBe(
+    expect(outcome('hum-frequency', { readings: { mains_hum_mv: read(0.01), mains_hum_hz: read(41) } })).toBe(
       'not measured',
     ));
+  test('the hum of the sweeps that show it counts, not that of the others', () => {
+    const shown = (mv: number) =>
+      six((number) =>
+        number === 2
+          ? { readings: { mains_hum_hz: read(40), mains_hum_mv: read(mv) } }
+          : { readings: { mains_hum_mv: read(0.03) } },
+      );
+    const hum = (mv: number) =>
+      outcome('hum-frequency', {
+        sweeps: shown(mv),
+        readings: { mains_hum_hz: read(40), mains_hum_mv: read(0.03, { n: 6 }) },
+      });
+    expect([hum(0.35), hum(0.04)]).toEqual(['outside', 'not measured']);
+  });
   test('drift without clock times', () =>
     expect(outcome('drift', { sweeps: six(() => ({ since_start_s: null })) })).toBe('not measured'));
   test('a longer recording must drift less: 5 mV over 10 min', () => {
