@@ -226,11 +226,9 @@ describe('facts a check needs', () => {
     ));
   test('the hum of the sweeps that show it counts, not that of the others', () => {
     const shown = (mv: number) =>
-      six((number) =>
-        number === 2
-          ? { readings: { mains_hum_hz: read(40), mains_hum_mv: read(mv) } }
-          : { readings: { mains_hum_mv: read(0.03) } },
-      );
+      six((number) => ({
+        readings: { mains_hum_mv: read(number === 2 ? mv : 0.03), ...(number === 2 && { mains_hum_hz: read(40) }) },
+      }));
     const hum = (mv: number) =>
       outcome('hum-frequency', {
         sweeps: shown(mv),
