@@ -15,6 +15,9 @@ export function missingFraction(signal: Signal): Reading {
   return n === 0 ? absent('sweep-too-short') : measured(1 - countFinite(signal.samples) / n, { n });
 }
 
+/** So many equal samples in a row away from the limits mean a trace without noise. */
+const restsFrom = 50;
+
 /**
  * Stretches stuck at the recorder's upper or lower limit. Equal samples at an extreme are no proof of it: noise on a
  * coarse digitizer repeats a value now and then, and a quiet trace rests on one. They count where the trace jumps to
@@ -28,7 +31,9 @@ export function stuckStretches(samples: Float64Array): Stretch[] {
   return (['top', 'bottom'] as const).flatMap((at) => {
     const here = runs.filter((run) => run.at === at);
     if (here.length === 0) return [];
-    const ordinary = longestRepeat(samples, samples[here[0]!.from]!);
+    const repeat = longestRepeat(samples, samples[here[0]!.from]!);
+    // A trace that rests on one value elsewhere too has no noise, and its plateaus prove nothing.
+    const ordinary = repeat < restsFrom ? repeat : Number.POSITIVE_INFINITY;
     const own = here
       .filter((run) => smallerJump(samples, run) > 5 * least || run.to - run.from > 2 * ordinary)
       .map(({ from, to }) => ({ from, to }));
@@ -45,12 +50,16 @@ function smallerJump(samples: Float64Array, run: Stretch): number {
   return jumps.length === 0 ? 0 : Math.min(...jumps);
 }
 
-/** Longest run of equal samples at any level but one. */
+/** Longest run of samples at any level but one that are equal within rounding. */
 function longestRepeat(samples: Float64Array, except: number): number {
+  let reach = 0;
+  for (const value of samples) reach = Math.max(reach, Number.isFinite(value) ? Math.abs(value - except) : 0);
+  const rounding = 1e-9 * reach;
   let longest = 1;
   let length = 1;
   for (let i = 1; i < samples.length; i++) {
-    length = samples[i] === samples[i - 1] && samples[i] !== except ? length + 1 : 1;
+    const same = Math.abs(samples[i]! - samples[i - 1]!) <= rounding;
+    length = same && samples[i] !== except ? length + 1 : 1;
     if (length > longest) longest = length;
   }
   return longest;

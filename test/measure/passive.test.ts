@@ -191,7 +191,7 @@ describe('baseline', () => {
 
   it('finds the level between the beats of a heart cell', () => {
     const voltage = signalOf(5, 10000, (t) => {
-      const ms = (t % 1) * 1000 - 100;
+      const ms = (t % 1) * 1000 - 106;
       if (ms < 0 || ms > 320) return -80;
       if (ms < 2) return -80 + 60 * ms;
       return ms < 220 ? 40 - 0.18 * (ms - 2) : 0.76 - 0.808 * (ms - 220);
