@@ -25,6 +25,13 @@ function hasSignature(descriptor: number, bytes: number): boolean {
   return false;
 }
 
+/** Printable throughout, in UTF-8; a character that the end cuts in two is forgiven. */
+function isText(bytes: Uint8Array): boolean {
+  if (!bytes.every((byte) => byte >= 0x20 || (byte >= 0x09 && byte <= 0x0d))) return false;
+  const text = new TextDecoder().decode(bytes);
+  return !text.slice(0, Math.max(1, text.length - 3)).includes('\ufffd');
+}
+
 function refuseOtherContent(path: string): void {
   const bytes = statSync(path).size;
   const notHdf5 = (found: string, remedy: string): FormatError =>
@@ -42,7 +49,7 @@ function refuseOtherContent(path: string): void {
       );
     if (head.subarray(0, 40).toString('latin1').startsWith('version https://git-lfs'))
       throw notHdf5('it is the pointer that stands for a large file in Git', 'Fetch the file itself (git lfs pull).');
-    if (head.every((byte) => byte >= 0x20 || (byte >= 0x09 && byte <= 0x0d)))
+    if (isText(head))
       throw notHdf5(
         `it is text, beginning "${head.toString('utf8').trim().split(/\s+/).join(' ').slice(0, 40)}"`,
         'Give it the ending it should have (.csv, .txt), or replace it by the recording.',
@@ -185,13 +192,17 @@ function scalarOf(value: unknown): Scalar {
   return typeof value === 'number' ? value : null;
 }
 
-/** A single string or number stored as an attribute; null where there is none or it is something else. */
+/**
+ * A single string or number stored as an attribute; null where there is none or it is something else.
+ *
+ * @throws FormatError where it is there and cannot be read: a damaged conversion factor must not turn into 1
+ */
 export function attribute(holder: Group | Dataset, name: string, module: Module): Scalar {
   try {
     if (!module.get_attribute_names(holder.file_id, holder.path).includes(name)) return null;
     return scalarOf(holder.get_attribute(name, false));
-  } catch {
-    return null;
+  } catch (error) {
+    throw damaged(`${holder.path} (attribute "${name}")`, error);
   }
 }
 
@@ -211,21 +222,27 @@ export function textsAttribute(holder: Group | Dataset, name: string, module: Mo
     if (!module.get_attribute_names(holder.file_id, holder.path).includes(name)) return [];
     const value = holder.get_attribute(name, false) as unknown;
     return (Array.isArray(value) ? value : [value]).map(String);
-  } catch {
-    return [];
+  } catch (error) {
+    throw damaged(`${holder.path} (attribute "${name}")`, error);
   }
 }
 
-/** A dataset that holds one value. Longer ones are not touched. */
+/**
+ * A dataset that holds one value. Longer ones are not touched.
+ *
+ * @throws FormatError where it is there and cannot be read
+ */
 export function scalarDataset(parent: Group, name: string): Scalar {
-  const dataset = datasetAt(parent, name);
-  if (!dataset) return null;
-  const shape = dataset.shape;
-  if (shape === null || shape.reduce((product, length) => product * length, 1) !== 1) return null;
+  const found = look(parent, name);
+  if (found.kind === 'damaged') throw damaged(`${parent.path}/${name}`, found.reason);
+  if (found.kind !== 'dataset') return null;
   try {
+    const { dataset } = found;
+    const shape = dataset.shape;
+    if (shape === null || shape.reduce((product, length) => product * length, 1) !== 1) return null;
     return scalarOf(dataset.value);
-  } catch {
-    return null;
+  } catch (error) {
+    throw damaged(`${parent.path}/${name}`, error);
   }
 }
 

@@ -1,6 +1,6 @@
 /** Facts that stand in an NWB file itself: session, subject, electrodes. Names of people are left where they are. */
 import type { Group } from 'h5wasm/node';
-import { datasetAt, groupAt, type Hdf5, look, textAttribute, textColumn, textDataset } from './hdf5.ts';
+import { damaged, datasetAt, groupAt, type Hdf5, look, textAttribute, textColumn, textDataset } from './hdf5.ts';
 import { warning } from './problems.ts';
 import type { FileFact, Problem } from './types.ts';
 
@@ -175,14 +175,40 @@ function publicationFacts({ file }: Hdf5): FileFact[] {
  * @param electrodes names of the electrodes that sweeps were recorded with
  */
 export function readFacts(hdf5: Hdf5, electrodes: readonly string[]): FileFacts {
-  const session = sessionFacts(hdf5);
-  const problems = [...session.problems];
+  const problems: Problem[] = [];
+  // A damaged fact costs that fact.
+  const guarded = <Value>(place: string, read: () => Value, otherwise: Value): Value => {
+    try {
+      return read();
+    } catch (error) {
+      problems.push({ ...damaged(place, error).problem, weight: 'warns' });
+      return otherwise;
+    }
+  };
+  const session = guarded('/session_start_time', () => sessionFacts(hdf5), {
+    session_start: null,
+    facts: [],
+    problems: [],
+  });
+  problems.push(...session.problems);
   const filter_khz = new Map<string, number>();
-  const facts = [...session.facts, ...subjectFacts(hdf5), ...publicationFacts(hdf5)];
+  const facts = [
+    ...session.facts,
+    ...guarded('/general/subject', () => subjectFacts(hdf5), []),
+    ...publicationFacts(hdf5),
+  ];
+  const home = '/general/intracellular_ephys';
   for (const name of electrodes)
-    if (name !== '') facts.push(...electrodeFacts(name, hdf5, electrodes.length > 1, filter_khz, problems));
-  const general = groupAt(hdf5.file, '/general/intracellular_ephys');
-  const shared = general ? filterKhz(textDataset(general, 'filtering')) : null;
+    if (name !== '')
+      facts.push(
+        ...guarded(
+          `${home}/${name}`,
+          () => electrodeFacts(name, hdf5, electrodes.length > 1, filter_khz, problems),
+          [],
+        ),
+      );
+  const general = groupAt(hdf5.file, home);
+  const shared = guarded(`${home}/filtering`, () => general && filterKhz(textDataset(general, 'filtering')), null);
   if (shared !== null && filter_khz.size === 0) {
     facts.push({ key: 'filter_khz', value: shared, place: '/general/intracellular_ephys/filtering' });
     for (const name of electrodes) filter_khz.set(name, shared);

@@ -2,12 +2,13 @@
 import type { Dataset, Group } from 'h5wasm/node';
 import {
   attribute,
+  damaged,
   datasetAt,
-  groupAt,
   type Hdf5,
   identity,
   look,
   missingFilter,
+  names,
   numberAttribute,
   scalarDataset,
   textAttribute,
@@ -153,6 +154,15 @@ const refusal = (group: Group, code: string, message: string, remedy: string): P
  * @returns the series, or null where a problem says why it cannot be read; problems are added to `problems`
  */
 export function describeSeries(group: Group, hdf5: Hdf5, problems: Problem[]): Series | null {
+  try {
+    return seriesOf(group, hdf5, problems);
+  } catch (error) {
+    problems.push({ ...damaged(group.path, error).problem, sweep_key: group.path });
+    return null;
+  }
+}
+
+function seriesOf(group: Group, hdf5: Hdf5, problems: Problem[]): Series | null {
   const { module } = hdf5;
   const type = seriesType(group, hdf5);
   const refuse = (code: string, message: string, remedy: string): null => {
@@ -245,59 +255,63 @@ export interface Walk {
 export function walkSeries(hdf5: Hdf5): Walk {
   const walk: Walk = { series: [], problems: [], others: [], met: new Map() };
   for (const place of ['/acquisition', '/stimulus/presentation']) {
-    const top = groupAt(hdf5.file, place);
-    if (!top) continue;
+    const top = look(hdf5.file, place);
+    if (top.kind === 'damaged') walk.problems.push(damaged(place, top.reason).problem);
+    if (top.kind !== 'group') continue;
     walk.met.set(identity(place, hdf5), place);
-    walkGroup(top, hdf5, walk, 0);
+    try {
+      walkGroup(top.group, hdf5, walk, 0);
+    } catch (error) {
+      walk.problems.push(damaged(place, error).problem);
+    }
   }
   return walk;
 }
 
 function walkGroup(group: Group, hdf5: Hdf5, walk: Walk, depth: number): void {
-  for (const name of [...group.keys()].sort((a, b) => (a < b ? -1 : a > b ? 1 : 0))) {
-    const found = look(group, name);
+  for (const name of names(group)) {
     const path = `${group.path === '/' ? '' : group.path}/${name}`;
-    if (found.kind === 'damaged')
-      walk.problems.push(
-        blocker({
-          code: 'HDF5_DAMAGED',
-          place: path,
-          message: `This part of the file cannot be read: ${found.reason}.`,
-          remedy: 'Copy the file again from where it was recorded, or restore it from a backup.',
-          sweep_key: path,
-        }),
-      );
-    if (found.kind === 'broken link')
-      walk.problems.push(
-        blocker({
-          code: 'LINK_BROKEN',
-          place: path,
-          message: `This is a link to ${found.target}, and nothing is there.`,
-          remedy: 'Put what it points to where the link expects it, or write a copy that holds its own data.',
-          sweep_key: path,
-        }),
-      );
-    if (found.kind !== 'group') continue;
-    const self = identity(path, hdf5);
-    const before = walk.met.get(self);
-    if (self !== '' && before !== undefined) {
-      if (isIntracellular(seriesType(found.group, hdf5)))
-        walk.problems.push(
-          warning({
-            code: 'LINK_REPEATED',
-            place: path,
-            message: `This is a link to ${before}, which is read once, under that name.`,
-            remedy: 'Nothing to do.',
-          }),
-        );
-      continue;
+    try {
+      visit(group, name, path, hdf5, walk, depth);
+    } catch (error) {
+      walk.problems.push({ ...damaged(path, error).problem, sweep_key: path });
     }
-    walk.met.set(self, path);
-    const type = seriesType(found.group, hdf5);
-    if (isIntracellular(type)) {
-      const series = describeSeries(found.group, hdf5, walk.problems);
-      if (series) walk.series.push(series);
-    } else if (look(found.group, 'data').kind === 'dataset') walk.others.push(path);
-    else if (depth < 8) walkGroup(found.group, hdf5, walk, depth + 1);
   }
+}
+
+function visit(parent: Group, name: string, path: string, hdf5: Hdf5, walk: Walk, depth: number): void {
+  const found = look(parent, name);
+  if (found.kind === 'damaged') throw damaged(path, found.reason);
+  if (found.kind === 'broken link')
+    walk.problems.push(
+      blocker({
+        code: 'LINK_BROKEN',
+        place: path,
+        message: `This is a link to ${found.target}, and nothing is there.`,
+        remedy: 'Put what it points to where the link expects it, or write a copy that holds its own data.',
+        sweep_key: path,
+      }),
+    );
+  if (found.kind !== 'group') return;
+  const type = seriesType(found.group, hdf5);
+  const self = identity(path, hdf5);
+  const before = walk.met.get(self);
+  if (self !== '' && before !== undefined) {
+    if (isIntracellular(type))
+      walk.problems.push(
+        warning({
+          code: 'LINK_REPEATED',
+          place: path,
+          message: `This is a link to ${before}, which is read once, under that name.`,
+          remedy: 'Nothing to do.',
+        }),
+      );
+    return;
+  }
+  walk.met.set(self, path);
+  if (isIntracellular(type)) {
+    const series = describeSeries(found.group, hdf5, walk.problems);
+    if (series) walk.series.push(series);
+  } else if (look(found.group, 'data').kind === 'dataset') walk.others.push(path);
+  else if (depth < 8) walkGroup(found.group, hdf5, walk, depth + 1);
 }
