@@ -156,7 +156,7 @@ export const quantities: readonly Quantity[] = list([
     ...rise,
     decimals: 0,
     definition: 'Steepest fall after the peak, as a negative rate.',
-    formula: 'min dV/dt from the peak to the return to threshold or the end of the afterhyperpolarization window',
+    formula: 'min dV/dt from the peak to the afterhyperpolarization minimum, without one to the return to threshold',
     source: practice,
   },
   {

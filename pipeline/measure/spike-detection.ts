@@ -50,6 +50,13 @@ interface Candidate extends Excursion {
   segment: number;
 }
 
+/**
+ * Spikes of a prepared trace: excursions of at least the class's prominence whose main rise reaches the class's dV/dt
+ * criterion by the cell's own doing. dV/dt is taken over two sample intervals, or over as many more (up to 0.5 ms; for
+ * slow spikes a quarter of the upstroke on each side) as bring its noise below a fifth of the criterion; where that is
+ * not enough the criterion is raised to five standard deviations of the noise, and a remark says so.
+ * @returns spikes in order of time and remarks for people
+ */
 export function detectSpikes(trace: SpikeTrace, stimulus: Stimulus, context: MeasureContext): Detection {
   const slopes = slopesOf(trace);
   const remarks: string[] = [];
@@ -266,8 +273,9 @@ function thresholdBefore(
         i = before;
         continue;
       }
-      // An edge that takes current away cannot have driven the rise: the crossing is the cell's, hidden under the edge.
-      if (before > floor && !drivesUp(trace, before, i)) {
+      // An edge that takes current away from a rise already under way did not drive it: the crossing is the cell's own,
+      // hidden under the edge. (From rest it did, whatever the sign of the current channel: some are recorded inverted.)
+      if (before > floor && values[before]! > 0.25 * criterion && !drivesUp(trace, before, i)) {
         const share = (criterion - values[before]!) / (values[i]! - values[before]!);
         return { threshold: before + share * (i - before), why_no_threshold: null };
       }

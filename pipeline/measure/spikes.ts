@@ -278,11 +278,10 @@ function lowestAfter(peakAt: number, back: Found, limit: AfterSpike, around: Sur
   let lowest = from;
   for (let i = from; i <= to; i++) if (smooth[i]! < smooth[lowest]!) lowest = i;
   const returned = isFound(back) && back.at <= limit.end;
-  if (lowest >= to - 1 && limit.endedBy !== 'threshold' && !(returned && limit.endedBy === 'window')) {
-    // Still falling where the stretch ends: the minimum lies beyond it.
-    if (limit.endedBy === 'samples') return missing(endReason(around));
-    if (limit.endedBy === 'edge' && !returned) return missing('unresolved');
-  }
+  // Still falling where the samples end, or towards threshold where the next edge comes: the minimum lies beyond.
+  const lastTwentieth = to - Math.max(1, (to - from) / 20);
+  if (lowest >= lastTwentieth && limit.endedBy === 'samples') return missing(endReason(around));
+  if (lowest >= lastTwentieth && limit.endedBy === 'edge' && !returned) return missing('unresolved');
   if (to <= from) return missing(limit.endedBy === 'samples' ? endReason(around) : 'unresolved');
   if (unreadable(trace, lowest - 1, lowest + 1)) return missing('unreadable');
   if (clipped.some((run) => run.at === 'bottom' && lowest >= run.from && lowest < run.to)) return missing('clipped');

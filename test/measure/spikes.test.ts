@@ -1,3 +1,4 @@
+import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
 import { spikeCriteria } from '../../pipeline/measure/spike-criteria.ts';
 import { measureSpikes } from '../../pipeline/measure/spikes.ts';
@@ -188,6 +189,32 @@ describe('Hodgkin–Huxley membrane at 6.3 °C', () => {
     );
     const cycles = spikes.slice(3, -1).map((spike) => value(spike, 'cycle_length_ms'));
     expect(1000 / (cycles.reduce((sum, cycle) => sum + cycle, 0) / cycles.length)).toBeCloseTo(68.31, 1);
+  });
+
+  // Peaks in a 1 s step (same reference): 69 at 10, 109 at 40 and 137 at 80 µA/cm²; 2 before the block at 120.
+  for (const [current, count] of [
+    [10, 69],
+    [40, 109],
+    [80, 137],
+    [120, 2],
+  ] as const)
+    test(`${current} µA/cm² for 1 s gives ${count} spikes`, () => {
+      const trace = simulate(hodgkinHuxley(), 20_000, [
+        [20, 0],
+        [1000, current],
+        [1, 0],
+      ]);
+      expect(measure(trace).spikes).toHaveLength(count);
+    });
+
+  test('a current channel recorded upside down does not put the threshold on the edge', () => {
+    const trace = simulate(hodgkinHuxley(), 20_000, [
+      [5, 0],
+      [40, 40],
+      [20, 0],
+    ]);
+    const { spikes } = measure({ ...trace, drive: trace.drive.map((current) => -current) });
+    expect(value(spikes[0], 'threshold_mv')).toBeGreaterThan(-62);
   });
 
   test('depolarization block: a few spikes, then oscillations that are none', () => {
@@ -467,5 +494,21 @@ describe('ends and gaps', () => {
       expect(value(spike, 'peak_at_s')).toBeCloseTo(value(whole[k], 'peak_at_s') + 2, 9);
       expect(value(spike, 'half_width_ms')).toBeCloseTo(value(whole[k], 'half_width_ms'), 6);
     });
+  });
+
+  test('a constant offset shifts the potentials and nothing else', () => {
+    const absolute = ['threshold_mv', 'peak_mv', 'overshoot_mv', 'ahp_minimum_mv', 'height_from_rest_mv'];
+    fc.assert(
+      fc.property(fc.double({ min: -150, max: 150, noNaN: true }), (offset) => {
+        const { spikes } = measure({ ...trace, mv: trace.mv.map((mv) => mv + offset) });
+        expect(spikes).toHaveLength(whole.length);
+        spikes.forEach((spike, k) => {
+          for (const [id, found] of Object.entries(whole[k]!.values))
+            if (found === null) expect(spike.why[id]).toBe(whole[k]!.why[id]);
+            else expect(value(spike, id)).toBeCloseTo(found + (absolute.includes(id) ? offset : 0), 5);
+        });
+      }),
+      { seed: 41, numRuns: 20 },
+    );
   });
 });
