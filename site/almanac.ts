@@ -6,6 +6,7 @@ import type { Readings } from '../pipeline/measure/types.ts';
 import { checksInForce } from './checks.ts';
 import { mondayOf } from './format.ts';
 import { pageNames } from './names.ts';
+import type { Sizes } from './sizes.ts';
 import { type Thumbnail, thumbnailOf } from './thumbnail.ts';
 
 /** Worst last, as every list of standings is ordered. */
@@ -64,6 +65,8 @@ export interface NotePage extends NoteRow {
   /** From the site's root. */
   page: string;
 }
+
+export type { Sizes };
 
 export interface Almanac {
   archive: ArchiveRow;
@@ -176,14 +179,7 @@ function summaryOf(
   };
 }
 
-/** How many cells, and how many subjects they come from: never one without the other. */
-export interface Sizes {
-  cells: number;
-  subjects: number;
-  /** Cells whose subject is not stated. */
-  withoutSubject: number;
-}
-
+/** How many cells, and how many subjects they come from. */
 export function sizesOf(cells: readonly CellSummary[]): Sizes {
   const subjects = new Set(cells.flatMap((cell) => (cell.subject === null ? [] : [cell.subject])));
   return {

@@ -93,7 +93,6 @@ export const factColumns: readonly CellColumn[] = [
 ];
 
 export const numberColumns: readonly CellColumn[] = [
-  countColumn('sweeps', 'Sweeps', (cell) => cell.sweeps),
   countColumn('spikes', quantity('spikes').label, (cell) => cell.spikes),
   ...shownQuantities.map(quantityColumn),
 ];
@@ -156,7 +155,7 @@ export function facetsOf(
     named('person'),
     {
       id: 'week',
-      label: 'Week of',
+      label: 'Week',
       valuesOf: (cell) => one(cell.week),
       labelOf: (value) => value,
       order: 'newest',

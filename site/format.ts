@@ -2,8 +2,10 @@
 import { quantity } from '../pipeline/measure/quantities.ts';
 import type { Reading } from '../pipeline/measure/types.ts';
 
-const minus = '−';
-const thinSpace = ' ';
+export { counted } from './sizes.ts';
+
+const minus = '\u2212';
+const thinSpace = '\u202f';
 
 /** A number with fixed decimals, a true minus sign, and thousands set apart by a narrow space from 10,000 on. */
 export function number(value: number, decimals = 0): string {
@@ -20,7 +22,7 @@ export const printed = (id: string, value: number): string => number(value, quan
 /** Number and unit: '−68.2 mV'. The space does not break. */
 export function withUnit(id: string, value: number): string {
   const { unit } = quantity(id);
-  return unit === '' ? printed(id, value) : `${printed(id, value)} ${unit}`;
+  return unit === '' ? printed(id, value) : `${printed(id, value)}\u00a0${unit}`;
 }
 
 /** '±0.4 (n = 12)' for a reading that has a spread, else ''. */
@@ -32,15 +34,12 @@ export function spreadOf(id: string, reading: Reading): string {
   return spread !== '' ? spread : n;
 }
 
-/** '1 cell', '12 cells'. */
-export const counted = (n: number, one: string, many = `${one}s`): string => `${number(n)} ${n === 1 ? one : many}`;
-
 /** Kilobytes and megabytes as powers of 1000. */
 export function bytes(n: number): string {
-  if (n < 1000) return `${n} B`;
-  if (n < 1e6) return `${number(n / 1e3, n < 1e4 ? 1 : 0)} kB`;
-  if (n < 1e9) return `${number(n / 1e6, n < 1e7 ? 1 : 0)} MB`;
-  return `${number(n / 1e9, 1)} GB`;
+  if (n < 1000) return `${n}\u00a0B`;
+  if (n < 1e6) return `${number(n / 1e3, n < 1e4 ? 1 : 0)}\u00a0kB`;
+  if (n < 1e9) return `${number(n / 1e6, n < 1e7 ? 1 : 0)}\u00a0MB`;
+  return `${number(n / 1e9, 1)}\u00a0GB`;
 }
 
 const months = [

@@ -18,6 +18,7 @@ export interface PreparedTable {
 
 export interface Prepared {
   tables: PreparedTable[];
+  icon: string;
   style: string;
   scripts: Record<string, string>;
   /** By path inside the archive. A picture that could not be read has the reason instead. */

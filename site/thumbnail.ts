@@ -1,5 +1,6 @@
 /** A cell's small trace: its first spike at rheobase, or its largest response where it has no spike. */
 import type { SweepRow } from '../pipeline/ledger/types.ts';
+import { simplified } from './charts/reduce.ts';
 
 export interface Thumbnail {
   kind: 'spike' | 'trace';
@@ -27,7 +28,7 @@ export function thumbnailOf(
   sweeps: readonly SweepRow[],
 ): Thumbnail | null {
   const excerpt = sweeps.find((sweep) => sweep.sweep === reference?.sweep)?.first_spike;
-  if (excerpt && excerpt.mv.length > 1) return { kind: 'spike', path: pathOf(excerpt.mv, excerpt.mv) };
+  if (excerpt && excerpt.mv.length > 1) return { kind: 'spike', path: spikePath(excerpt.mv) };
   const withVoltage = sweeps.filter((sweep) => sweep.clamp === 'current' && sweep.voltage_envelope !== null);
   const largest = withVoltage.reduce<SweepRow | null>(
     (best, sweep) => (best === null || spanOf(sweep) > spanOf(best) ? sweep : best),
@@ -42,9 +43,20 @@ function spanOf(sweep: SweepRow): number {
   return Math.max(...high) - Math.min(...low);
 }
 
+/** Every sample of the excerpt, less those that a tenth of a pixel would not show. */
+function spikePath(mv: readonly number[]): string {
+  const points = mv.flatMap((value, i): [number, number][] =>
+    Number.isFinite(value) ? [[(i / (mv.length - 1)) * thumbnailBox.width, yOf(value)]] : [],
+  );
+  return lineOf(simplified(points, 0.15));
+}
+
+const lineOf = (points: readonly (readonly [number, number])[]): string =>
+  points.length > 1 ? `M${points.map(([x, y]) => `${short(x)},${short(y)}`).join('L')}` : '';
+
 /** Lowest and highest in each column, one after the other, so that a narrow spike keeps its height. */
 function pathOf(low: readonly number[], high: readonly number[]): string {
-  const points: string[] = [];
+  const points: [number, number][] = [];
   const n = Math.min(columns, low.length);
   for (let column = 0; column < n; column++) {
     const from = Math.floor((column * low.length) / n);
@@ -55,9 +67,9 @@ function pathOf(low: readonly number[], high: readonly number[]): string {
     const x = ((column + 0.5) / n) * thumbnailBox.width;
     const rising = low[from]! <= low[to - 1]!;
     const pair = Math.abs(yOf(top) - yOf(bottom)) < 0.6 ? [(top + bottom) / 2] : rising ? [bottom, top] : [top, bottom];
-    for (const mv of pair) points.push(`${short(x)},${short(yOf(mv))}`);
+    for (const mv of pair) points.push([x, yOf(mv)]);
   }
-  return points.length > 1 ? `M${points.join('L')}` : '';
+  return lineOf(points);
 }
 
 function extreme(list: readonly number[], from: number, to: number, better: (a: number, b: number) => number) {

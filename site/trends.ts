@@ -1,7 +1,12 @@
 /** Numbers over time, by rig: what the page of trends draws and tabulates. */
 import { quantile } from 'd3';
+import type { ArchiveEvent } from '../pipeline/archive/types.ts';
 import { type Quantity, quantity } from '../pipeline/measure/quantities.ts';
 import { type CellSummary, groupBy, type Sizes, sizesOf } from './almanac.ts';
+import { controlChart, type DrawnControl } from './charts/control-chart.ts';
+import { fewestForLimits, individualsLimits } from './charts/control-limits.ts';
+import { domainOf } from './charts/frame.ts';
+import type { Link } from './links.ts';
 
 /** What drifts when a rig, a solution or a hand does. */
 export const trendQuantities = [
@@ -39,9 +44,10 @@ export interface TrendSeries {
 export interface Trend {
   quantity: Quantity;
   series: TrendSeries[];
-  /** Over all rigs, so that small multiples share one axis. */
-  low: number;
-  high: number;
+  /** First and last date over all rigs, so that small multiples share one axis. */
+  span: [string, string];
+  /** Values that every picture of the quantity spans, control limits included. */
+  domain: [number, number];
 }
 
 /** Trends with at least one dated number; the condition that stands for the cell is taken. */
@@ -49,10 +55,16 @@ export function trendsOf(cells: readonly CellSummary[]): Trend[] {
   return trendQuantities.flatMap((id) => {
     const measured = cells.filter((cell) => cell.date !== null && (cell.readings[id]?.value ?? null) !== null);
     if (measured.length === 0) return [];
-    const series = groupBy(measured, (cell) => cell.rig?.id ?? '').map(([rig, members]) => seriesOf(id, rig, members));
-    const values = series.flatMap((one) => one.points.map((point) => point.value));
-    return [{ quantity: quantity(id), series, low: Math.min(...values), high: Math.max(...values) }];
+    const series = rigsOf(measured).map(([rig, members]) => seriesOf(id, rig, members));
+    const dates = measured.map((cell) => cell.date!).sort();
+    return [{ quantity: quantity(id), series, span: [dates[0]!, dates.at(-1)!], domain: sharedDomain(series) }];
   });
+}
+
+/** Cells by rig; those whose rig is not stated come last. */
+function rigsOf(cells: readonly CellSummary[]): [string, CellSummary[]][] {
+  const groups = groupBy(cells, (cell) => cell.rig?.id ?? '');
+  return [...groups.filter(([rig]) => rig !== ''), ...groups.filter(([rig]) => rig === '')];
 }
 
 function seriesOf(id: string, rig: string, members: CellSummary[]): TrendSeries {
@@ -74,4 +86,41 @@ function seriesOf(id: string, rig: string, members: CellSummary[]): TrendSeries 
     median: quantile(values, 0.5)!,
     quartiles: [quantile(values, 0.25)!, quantile(values, 0.75)!],
   };
+}
+
+function sharedDomain(series: readonly TrendSeries[]): [number, number] {
+  const values = series.map((one) => one.points.map((point) => point.value));
+  const limits = values.flatMap((one) => {
+    const limit = one.length >= fewestForLimits ? individualsLimits(one) : null;
+    return limit ? [limit.low, limit.high] : [];
+  });
+  return domainOf(values.flat(), limits, 0.08)!;
+}
+
+/** The picture of one rig, and the events it marks in the order of their letters. */
+export interface TrendPicture {
+  chart: DrawnControl;
+  events: ArchiveEvent[];
+}
+
+/** @param link of the page that holds the picture */
+export function trendPicture(
+  trend: Trend,
+  series: TrendSeries,
+  events: readonly ArchiveEvent[],
+  link: Link,
+): TrendPicture {
+  const [from, to] = trend.span;
+  const own = events.filter(
+    (event) => (event.rig === null || event.rig === series.rig) && event.date >= from && event.date <= to,
+  );
+  const chart = controlChart({
+    quantity: trend.quantity.id,
+    title: series.label,
+    points: series.points.map((point) => ({ ...point, href: link(point.page) })),
+    events: own,
+    span: trend.span,
+    values: trend.domain,
+  });
+  return { chart: chart!, events: own };
 }

@@ -50,7 +50,7 @@ export function pieces(text: string): Piece[] {
   const found: Piece[] = [];
   let from = 0;
   for (const match of text.matchAll(
-    /(?<![\p{L}\p{N}_])((?:d|Δ)?\p{L})_(\p{L}+[+−-]?|\{[^}]+\}|\d+)(?![\p{L}\p{N}_])/gu,
+    /((?<![\p{L}\p{N}_])(?:d|Δ)?\p{L}|\])_(\p{L}+[+−-]?|\{[^}]+\}|\d+)(?![\p{L}\p{N}_])/gu,
   )) {
     const [, letter = '', index = ''] = match;
     const end = match.index + letter.length;

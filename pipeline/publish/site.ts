@@ -90,8 +90,14 @@ async function withEnvironment<T>(values: Record<string, string>, work: () => Pr
   }
 }
 
+interface Assets {
+  icon: string;
+  style: string;
+  scripts: Record<string, string>;
+}
+
 /** Style sheet with its fonts, and scripts; named by content, so that a new build is never read from an old cache. */
-async function writeAssets(folder: string): Promise<{ style: string; scripts: Record<string, string> }> {
+async function writeAssets(folder: string): Promise<Assets> {
   mkdirSync(folder, { recursive: true });
   const result = await bundle({
     absWorkingDir: toolRoot,
@@ -119,7 +125,11 @@ async function writeAssets(folder: string): Promise<{ style: string; scripts: Re
     if (!file) throw new Error(`the bundle holds no ${source}`);
     return file;
   };
+  const icon = readFileSync(path.join(siteRoot, 'styles/icon.svg'));
+  const iconName = `icon-${createHash('sha256').update(icon).digest('hex').slice(0, 8)}.svg`;
+  writeFileSync(path.join(folder, iconName), icon);
   return {
+    icon: `assets/${iconName}`,
     style: named('almanac.css'),
     scripts: Object.fromEntries(scripts.map((name) => [name, named(`${name}.ts`)])),
   };

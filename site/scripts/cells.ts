@@ -1,6 +1,7 @@
 /** Finding, choosing and sorting on the page of cells. State lives in the address; without this script all rows show. */
 import MiniSearch from 'minisearch';
 import type { CellsData } from '../cells-data.ts';
+import { sizesText, whole } from '../sizes.ts';
 import { readState, type TableState, writeState } from '../table-state.ts';
 
 declare global {
@@ -36,6 +37,7 @@ function start(data: CellsData, table: HTMLTableElement, finder: HTMLElement): v
   const words = document.getElementById('words') as HTMLInputElement;
   const status = document.getElementById('shown')!;
   const clear = document.getElementById('clear') as HTMLButtonElement;
+  const order = document.getElementById('order') as HTMLSelectElement;
   const nothing = document.getElementById('nothing-found')!;
   const foldedIds = data.ids.map(folded);
   const facetIds = Object.keys(data.facets);
@@ -46,12 +48,12 @@ function start(data: CellsData, table: HTMLTableElement, finder: HTMLElement): v
   let index: MiniSearch | null = null;
   const search = (word: string): Set<number> => {
     index ??= indexOf(data);
-    const found = new Set(index.search(word, { prefix: true, combineWith: 'AND' }).map((hit) => hit.id as number));
     const part = folded(word);
-    foldedIds.forEach((id, row) => {
-      if (id.includes(part)) found.add(row);
-    });
-    return found;
+    const byId = new Set(foldedIds.flatMap((id, row) => (id.includes(part) ? [row] : [])));
+    // '2026-01-1' is a piece of an id and not three words in any order.
+    if (byId.size > 0 && /[^\p{L}\p{N}]/u.test(part)) return byId;
+    const byText = index.search(word, { prefix: true, combineWith: 'AND' }).map((hit) => hit.id as number);
+    return new Set([...byId, ...byText]);
   };
 
   const matchesWords = (): ((row: number) => boolean) => {
@@ -87,10 +89,10 @@ function start(data: CellsData, table: HTMLTableElement, finder: HTMLElement): v
         button.classList.toggle('none', count === 0 && !pressed);
         if (pressed) button.closest('li')!.hidden = false;
         const place = button.querySelector('.count');
-        if (place) place.textContent = grouped(count);
+        if (place) place.textContent = whole(count);
       }
     }
-    status.textContent = sizesText(data, shown);
+    status.textContent = shownText(data, shown);
     const narrowed = state.words !== '' || facetIds.some((facet) => (state.chosen[facet] ?? []).length > 0);
     clear.hidden = !narrowed;
     nothing.hidden = shown.some((one) => one);
@@ -99,13 +101,14 @@ function start(data: CellsData, table: HTMLTableElement, finder: HTMLElement): v
   const sort = (): void => {
     const { column, descending } = state.sort;
     const values = data.columns[column]!;
-    const order = rows.map((_, row) => row);
-    order.sort((a, b) => compare(values[a]!, values[b]!, descending) || a - b);
-    table.tBodies[0]!.append(...order.map((row) => rows[row]!));
+    const sequence = rows.map((_, row) => row);
+    sequence.sort((a, b) => compare(values[a]!, values[b]!, descending) || a - b);
+    table.tBodies[0]!.append(...sequence.map((row) => rows[row]!));
     for (const head of table.tHead!.querySelectorAll<HTMLElement>('th[data-sort]')) {
       if (head.dataset['sort'] === column) head.setAttribute('aria-sort', descending ? 'descending' : 'ascending');
       else head.removeAttribute('aria-sort');
     }
+    order.value = descending ? `${column}.desc` : column;
   };
 
   const choicesOf = (facet: string): HTMLButtonElement[] => [
@@ -132,6 +135,10 @@ function start(data: CellsData, table: HTMLTableElement, finder: HTMLElement): v
       change({ ...state, sort: { column, descending } });
     });
   }
+  order.addEventListener('change', () => {
+    const [column = '', way] = order.value.split('.');
+    change({ ...state, sort: { column, descending: way === 'desc' } });
+  });
   words.value = state.words;
   words.addEventListener('input', () => change({ ...state, words: words.value.trim() }));
   for (const facet of facetIds)
@@ -181,20 +188,11 @@ function compare(a: string | number | null, b: string | number | null, descendin
   return descending ? -way : way;
 }
 
-const grouped = (n: number): string => (n < 10_000 ? String(n) : String(n).replace(/\B(?=(\d{3})+$)/g, ' '));
-
-function sizesText(data: CellsData, shown: boolean[]): string {
+function shownText(data: CellsData, shown: boolean[]): string {
   const cells = shown.filter((one) => one).length;
-  const subjects = new Set(data.subjects.filter((subject, row) => shown[row] && subject !== ''));
-  const without = data.subjects.filter((subject, row) => shown[row] && subject === '').length;
-  if (cells === 0) return 'No cell';
-  const from =
-    subjects.size === 0
-      ? ' (no subject stated)'
-      : ` from ${grouped(subjects.size)} ${subjects.size === 1 ? 'subject' : 'subjects'}` +
-        (without > 0 ? ` (${grouped(without)} ${without === 1 ? 'cell' : 'cells'} without a stated subject)` : '');
-  const of = cells === shown.length ? '' : `, of ${grouped(shown.length)} in the archive`;
-  return `${grouped(cells)} ${cells === 1 ? 'cell' : 'cells'}${from}${of}`;
+  const stated = data.subjects.filter((subject, row) => shown[row] && subject !== '');
+  const text = sizesText({ cells, subjects: new Set(stated).size, withoutSubject: cells - stated.length });
+  return cells === shown.length ? text : `${text}, of ${whole(shown.length)} in the archive`;
 }
 
 if (data && table && finder) start(data, table, finder);
