@@ -1,12 +1,11 @@
-import { existsSync, rmSync, statSync } from 'node:fs';
-import os from 'node:os';
+import { rmSync } from 'node:fs';
 import path from 'node:path';
 import { pathToFileURL } from 'node:url';
 import { openLedgerReader } from '../ledger/read.ts';
 import { ledgerFile, openLedger } from '../ledger/write.ts';
 import { buildSite } from '../publish/site.ts';
 import { writeTables } from '../publish/tables.ts';
-import { UserError } from './errors.ts';
+import { defaultJobs, requireArchive } from './arguments.ts';
 import { type Gathered, gather } from './gather.ts';
 import { checkOutput, finishOutput, startOutput } from './output.ts';
 import type { Progress } from './progress.ts';
@@ -33,20 +32,6 @@ export interface BuildSummary {
   problems: number;
   seconds: number;
   peak_memory_mb: number;
-}
-
-export const defaultJobs = (): number => Math.max(1, os.availableParallelism());
-
-/** @throws UserError when `root` is no folder */
-export function requireArchive(root: string): string {
-  const absolute = path.resolve(root);
-  if (!existsSync(absolute))
-    throw new UserError(
-      `There is no folder ${absolute}. Give the path of the archive; "sweep-almanac new DIR" starts one.`,
-    );
-  if (!statSync(absolute).isDirectory())
-    throw new UserError(`${absolute} is a file. Give the folder that holds the recordings.`);
-  return absolute;
 }
 
 /** Builds the almanac of an archive. The previous output stays as it is until the new one is complete. */

@@ -3,7 +3,7 @@ import { readArchive } from '../archive/read.ts';
 import type { Archive, CellRecord } from '../archive/types.ts';
 import type { Problem } from '../formats/types.ts';
 import type { SurveyedFile } from '../ledger/types.ts';
-import { defaultJobs, requireArchive } from './build.ts';
+import { defaultJobs, requireArchive } from './arguments.ts';
 import type { Progress } from './progress.ts';
 import { codeVersion, surveyFiles } from './survey.ts';
 

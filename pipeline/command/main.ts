@@ -1,9 +1,6 @@
 import { Command, CommanderError, InvalidArgumentError } from 'commander';
-import { writeSkeleton } from '../archive/skeleton.ts';
-import { type BuildOptions, build, summaryLines } from './build.ts';
+import type { BuildOptions } from './build.ts';
 import { UserError } from './errors.ts';
-import { list, listingJson, listingLines } from './list.ts';
-import { preview } from './preview.ts';
 import { progressFor } from './progress.ts';
 import { toolVersion } from './version.ts';
 
@@ -43,6 +40,8 @@ async function runBuild(
   archive: string,
   options: CommonOptions & { out: string; work: string; strict?: boolean },
 ): Promise<void> {
+  // Each command loads what it needs when it runs, so that help and errors come at once.
+  const { build, summaryLines } = await import('./build.ts');
   const request: BuildOptions = {
     out: options.out,
     work: options.work,
@@ -64,11 +63,13 @@ async function runBuild(
 }
 
 async function runList(archive: string, options: CommonOptions): Promise<void> {
+  const { list, listingJson, listingLines } = await import('./list.ts');
   const listing = await list(archive, { jobs: options.jobs, progress: progressOf(options) });
   print(options.json ? JSON.stringify(listingJson(listing), null, 2) : listingLines(listing).join('\n'));
 }
 
-function runNew(folder: string): void {
+async function runNew(folder: string): Promise<void> {
+  const { writeSkeleton } = await import('../archive/skeleton.ts');
   const written = writeSkeleton(folder);
   print(
     [
@@ -82,6 +83,7 @@ function runNew(folder: string): void {
 }
 
 async function runPreview(folder: string, options: { port: number }): Promise<void> {
+  const { preview } = await import('./preview.ts');
   const { url } = await preview(folder, options.port);
   print(`${url}\nOnly this machine can read it. Stop with Ctrl+C.`);
 }
