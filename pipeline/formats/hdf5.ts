@@ -126,22 +126,41 @@ export type Found =
   | { kind: 'nothing' }
   | { kind: 'damaged'; reason: string };
 
+/** Names of a group's members and of an object's attributes, asked for once per handle. */
+const membersOf = new WeakMap<Group, ReadonlySet<string>>();
+const attributesOf = new WeakMap<Group | Dataset, ReadonlySet<string>>();
+
+function members(group: Group): ReadonlySet<string> {
+  const known = membersOf.get(group);
+  if (known) return known;
+  const listed = new Set(group.keys());
+  membersOf.set(group, listed);
+  return listed;
+}
+
+function hasAttribute(holder: Group | Dataset, name: string, module: Module): boolean {
+  let known = attributesOf.get(holder);
+  if (!known) {
+    known = new Set(module.get_attribute_names(holder.file_id, holder.path));
+    attributesOf.set(holder, known);
+  }
+  return known.has(name);
+}
+
+/** @param name of a member, or a path from the root */
 export function look(parent: Group, name: string): Found {
   let entity: Entity | null;
   try {
+    if (!name.includes('/') && !members(parent).has(name)) return { kind: 'nothing' };
     entity = parent.get(name);
   } catch (error) {
     return { kind: 'damaged', reason: libraryMessage(error) };
   }
-  if (entity === null) {
-    let listed = true;
-    try {
-      listed = name.startsWith('/') ? false : parent.keys().includes(name);
-    } catch {
-      // A group whose names cannot be listed is damaged itself.
-    }
-    return listed ? { kind: 'damaged', reason: 'the object cannot be found in the file' } : { kind: 'nothing' };
-  }
+  // The library answers null both for what is not there and for what is there and cannot be read.
+  if (entity === null)
+    return name.includes('/')
+      ? { kind: 'nothing' }
+      : { kind: 'damaged', reason: 'the object cannot be found in the file' };
   switch ((entity as unknown as { type: string }).type) {
     case 'Group':
       return { kind: 'group', group: entity as Group };
@@ -199,7 +218,7 @@ function scalarOf(value: unknown): Scalar {
  */
 export function attribute(holder: Group | Dataset, name: string, module: Module): Scalar {
   try {
-    if (!module.get_attribute_names(holder.file_id, holder.path).includes(name)) return null;
+    if (!hasAttribute(holder, name, module)) return null;
     return scalarOf(holder.get_attribute(name, false));
   } catch (error) {
     throw damaged(`${holder.path} (attribute "${name}")`, error);
@@ -219,7 +238,7 @@ export function numberAttribute(holder: Group | Dataset, name: string, module: M
 /** A list of texts stored as an attribute. */
 export function textsAttribute(holder: Group | Dataset, name: string, module: Module): string[] {
   try {
-    if (!module.get_attribute_names(holder.file_id, holder.path).includes(name)) return [];
+    if (!hasAttribute(holder, name, module)) return [];
     const value = holder.get_attribute(name, false) as unknown;
     return (Array.isArray(value) ? value : [value]).map(String);
   } catch (error) {
@@ -337,7 +356,7 @@ function readInteger(view: DataView, offset: number, type: Metadata): number {
 
 /** Names in a group, in an order that does not depend on how they are stored. */
 export function names(group: Group): string[] {
-  return [...group.keys()].sort((a, b) => (a < b ? -1 : a > b ? 1 : 0));
+  return [...members(group)].sort((a, b) => (a < b ? -1 : a > b ? 1 : 0));
 }
 
 /** What a file holds, one line for each dataset: '/a/b float64 [100 × 3]'. At most `limit` lines. */

@@ -14,7 +14,7 @@ import {
 } from './hdf5.ts';
 import { labelledAmplitude } from './labels.ts';
 import { type FileFacts, readFacts } from './nwb-facts.ts';
-import { matchStimulus } from './nwb-match.ts';
+import { indexStimuli, matchStimulus } from './nwb-match.ts';
 import { type Piece, type Placed, placePiece, readPiece, type SeriesClock, statedClock } from './nwb-samples.ts';
 import { describeSeries, type Series, walkSeries } from './nwb-series.ts';
 import { readTables, type Tables } from './nwb-tables.ts';
@@ -144,10 +144,11 @@ function looseCandidates(
   const responses = all.filter((series) => !series.stimulus);
   const numberOf = (series: Series): number | null =>
     series.sweep_number ?? tables.sweepNumbers.get(series.path) ?? null;
+  const index = indexStimuli(stimuli, numberOf);
   return responses
     .filter((series) => !covered.has(series.path))
     .flatMap((series) => {
-      const match = matchStimulus(series, stimuli, responses, numberOf);
+      const match = matchStimulus(series, index, responses.length === 1);
       if (match && 'candidates' in match)
         problems.push(
           warning({
