@@ -19,6 +19,8 @@ export interface CellParts {
   /** The measured sweep and what reading it had to say; null measure: it could not be read. */
   measured: (ref: CellSweepRef) => { measure: SweepMeasure | null; problems: Problem[] };
   entry: (ref: CellSweepRef) => SweepEntry | undefined;
+  /** What describing a file had to say about all of it or about single sweeps. */
+  fileProblems: (path: string) => Problem[];
   /** Start of the file's session in ms since 1970, null where unknown. */
   sessionStartMs: (path: string) => number | null;
   /** Why files of this cell could not be read. */
@@ -125,11 +127,17 @@ function factContradictions(record: CellRecord): Contradiction[] {
     });
 }
 
+const contradictionKinds: Record<string, Contradiction['kind']> = {
+  CELL_ID_TWICE: 'same-id',
+  UNIT_GUESSED: 'unit-guessed',
+  COLUMN_GUESSED: 'unit-guessed',
+};
+
 const problemContradictions = (problems: (Problem & { path: string })[]): Contradiction[] =>
   problems
-    .filter((problem) => problem.code === 'CELL_ID_TWICE' || problem.code === 'UNIT_GUESSED')
+    .filter((problem) => contradictionKinds[problem.code] !== undefined)
     .map((problem) => ({
-      kind: problem.code === 'UNIT_GUESSED' ? 'unit-guessed' : 'same-id',
+      kind: contradictionKinds[problem.code]!,
       sentence: problem.message,
       place: problem.path,
       remedy: problem.remedy,
@@ -190,6 +198,17 @@ function deriveSpikes(sweeps: SweepRow[], contextOf: (condition: string) => Cell
   });
 }
 
+/** Remarks on the cell's files, those on sweeps of other cells left out. */
+function problemsOfFiles({ record, fileProblems }: CellParts): (Problem & { path: string })[] {
+  const keys = new Map<string, Set<string>>();
+  for (const ref of record.sweeps) keys.set(ref.path, (keys.get(ref.path) ?? new Set()).add(ref.key));
+  return [...keys].flatMap(([path, own]) =>
+    fileProblems(path)
+      .filter((problem) => problem.sweep_key === undefined || own.has(problem.sweep_key))
+      .map((problem) => ({ ...problem, path })),
+  );
+}
+
 export function composeCell(parts: CellParts): ComposedCell {
   const { record, archive } = parts;
   const stretches = stretchesOf(record);
@@ -210,7 +229,7 @@ export function composeCell(parts: CellParts): ComposedCell {
     [...factsOf].map(([label, facts]) => [label, cellContext(circumstances.get(label)!, facts, archive.settings)]),
   );
   const contextOf = (condition: string): CellContext => contexts.get(condition)!;
-  const problems = [...record.problems];
+  const problems = [...record.problems, ...problemsOfFiles(parts)];
   const sweeps = deriveSpikes(numberSweeps(parts, stretches, circumstances, problems), contextOf);
   const measure = measureCell(sweeps, contextOf);
   const ordered = measure.conditions.map((one) => circumstances.get(one.condition)!);

@@ -269,6 +269,7 @@ function* composeAll(
   const recipes = new Map(archive.recipes.map((recipe) => [recipe.id, recipe]));
   const entries = entriesByFile(surveyed);
   const duplicates = sameBytes(surveyed, cellsOf);
+  const descriptions = new Map(surveyed.map((file) => [file.found.path, file.description]));
   const byPath = new Map(files.map((file) => [file.path, file]));
   const sessions = new Map(
     surveyed.map((file) => {
@@ -286,6 +287,7 @@ function* composeAll(
         return sweeps[ref.key] ?? { measure: null, problems: failure ? [failure] : [] };
       },
       entry: (ref) => entries.get(ref.path)?.get(ref.key),
+      fileProblems: (path) => descriptions.get(path)?.problems ?? [],
       sessionStartMs: (path) => sessions.get(path) ?? null,
       unread: unreadReasons(record, byPath),
       contradictions: duplicates.get(record.id) ?? [],

@@ -91,7 +91,7 @@ export interface JunctionReadings {
 export function junctionReadings(
   circumstances: Pick<Circumstances, 'reading' | 'ljp_mv' | 'ljp_from'>,
 ): JunctionReadings {
-  const uncertainty_mv = circumstances.ljp_from === 'stated' ? 1 : 3.5;
+  const uncertainty_mv = circumstances.ljp_uncertainty_mv ?? (circumstances.ljp_from === 'stated' ? 1 : 3.5);
   if (circumstances.reading === 'corrected') return { shifts: [0], uncertainty_mv };
   return { shifts: [0, -(circumstances.ljp_mv ?? largestJunctionMv)], uncertainty_mv };
 }
