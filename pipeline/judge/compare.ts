@@ -89,7 +89,7 @@ export interface JunctionReadings {
  * an amount nobody stated and no recipe gives) both the recorded and the corrected one are possible.
  */
 export function junctionReadings(
-  circumstances: Pick<Circumstances, 'reading' | 'ljp_mv' | 'ljp_from'>,
+  circumstances: Pick<Circumstances, 'reading' | 'ljp_mv' | 'ljp_from' | 'ljp_uncertainty_mv'>,
 ): JunctionReadings {
   const uncertainty_mv = circumstances.ljp_uncertainty_mv ?? (circumstances.ljp_from === 'stated' ? 1 : 3.5);
   if (circumstances.reading === 'corrected') return { shifts: [0], uncertainty_mv };
