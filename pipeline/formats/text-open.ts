@@ -7,12 +7,24 @@
  */
 import { labelledAmplitude } from './labels.ts';
 import { count, FormatError, firstFew, plain, warning } from './problems.ts';
-import { readColumns, readRows, type Tally } from './text-columns.ts';
+import { readColumns } from './text-columns.ts';
 import { type Dialect, findDialect } from './text-dialect.ts';
 import { type Head, readHead } from './text-lines.ts';
 import type { Precision } from './text-numbers.ts';
 import { type ColumnRole, planTable, sampleRows, sidecarFor, type TablePlan } from './text-plan.ts';
+import { readRowTable } from './text-rows.ts';
 import { currentFactor, potentialUnit, type Size, sizeOf } from './text-scale.ts';
+import {
+  clampOf,
+  floatNoise,
+  printRounding,
+  rateMissing,
+  type Signal,
+  type Sweep,
+  separatorNames,
+  type Table,
+  tallyProblems,
+} from './text-table.ts';
 import { spread, type TimeBase, timeBase } from './time-base.ts';
 import type {
   FileDescription,
@@ -20,37 +32,12 @@ import type {
   Problem,
   ReadingHints,
   Samples,
-  SweepEntry,
   SweepSamples,
   TableMapping,
 } from './types.ts';
-import { parseUnit } from './units.ts';
 
 /** Fewer rows than this are a list of results and no recording, unless a sidecar says otherwise. */
 const fewestRows = 20;
-
-/** A signal as the file holds it, and how it becomes mV or pA. */
-interface Signal {
-  values: Float64Array;
-  factor: number;
-}
-
-interface Sweep {
-  entry: SweepEntry;
-  voltage: Signal | null;
-  current: Signal | null;
-  start_s: number;
-  places: Uint32Array | null;
-  gridLength: number;
-}
-
-interface Table {
-  label: string;
-  sweeps: Sweep[];
-  problems: Problem[];
-}
-
-const separatorNames = { ',': 'comma', ';': 'semicolon', tab: 'tab', space: 'blank' };
 
 const labelOf = ({ columns, separator, decimal }: Dialect): string =>
   [
@@ -65,67 +52,6 @@ const scaled = ({ values, factor }: Signal, sweep: Sweep): Float64Array => {
   for (let index = 0; index < values.length; index++) samples[index] = values[index]! * factor;
   return spread(samples, sweep.places, sweep.gridLength);
 };
-
-const floatNoise = (time: number): number => Math.abs(time) * 2 ** -49;
-
-/** By how much a printed time may be off: half a unit of its last digit, whether digits or decimals were limited. */
-const printRounding =
-  ({ significant, decimals }: Precision) =>
-  (time: number): number => {
-    const digits = Math.min(17, Math.max(1, significant));
-    const bySize = time === 0 ? 0 : 10 ** (Math.floor(Math.log10(Math.abs(time))) + 1 - digits);
-    return Math.max(0.5 * bySize, 0.5 * 10 ** -Math.max(0, decimals), floatNoise(time));
-  };
-
-function tallyProblems(tally: Tally): Problem[] {
-  const problems: Problem[] = [];
-  const lines = (of: number[], n: number): string =>
-    `line${n === 1 ? '' : 's'} ${firstFew([...of, ...Array<string>(Math.max(0, n - of.length)).fill('…')], of.length)}`;
-  if (tally.unreadable > 0)
-    problems.push(
-      warning({
-        code: 'CELLS_UNREADABLE',
-        place: lines(tally.unreadableLines, tally.unreadableLines.length),
-        message: `${tally.unreadable} of ${count(tally.cells, 'cell')} hold no number${tally.unreadable > tally.unreadableLines.length ? '; the place names the first of them' : ''}. They count as unreadable samples.`,
-        remedy: 'Look at these lines in the file; a wrong separator or decimal sign can be stated in the sidecar.',
-      }),
-    );
-  if (tally.ragged > 0)
-    problems.push(
-      warning({
-        code: 'RAGGED_ROWS',
-        place: lines(tally.raggedLines, tally.raggedLines.length),
-        message: `${count(tally.ragged, 'row')} ${tally.ragged === 1 ? 'has' : 'have'} more or fewer cells than the others.`,
-        remedy: 'Look at these lines in the file: cells may be missing, or the export was interrupted.',
-      }),
-    );
-  if (tally.words > 0)
-    problems.push(
-      warning({
-        code: 'LINES_LEFT_OUT',
-        place: lines(tally.wordLines, tally.wordLines.length),
-        message: `${count(tally.words, 'line')} among the numbers ${tally.words === 1 ? 'holds' : 'hold'} none and ${tally.words === 1 ? 'is' : 'are'} left out; the times show whether samples are missing there.`,
-        remedy: 'Look at these lines in the file.',
-      }),
-    );
-  return problems;
-}
-
-const rateMissing = (dialect: Dialect, voltage: string | null, current: string | null): FormatError =>
-  new FormatError({
-    code: 'RATE_MISSING',
-    place: '',
-    message: [
-      `The table has ${count(dialect.columns, 'column')} and none of times, so its sampling rate is not known.`,
-      ...dialect.problems.map(({ message }) => message),
-    ].join(' '),
-    remedy: 'State the sampling rate in the sidecar, and the unit of each column.',
-    sidecar: sidecarFor({
-      rate: '20000   # samples per second: put the true rate here',
-      ...(voltage ? { voltage } : {}),
-      ...(current ? { current } : {}),
-    }),
-  });
 
 /** Behind a unit that is only an example. */
 const orElse = (roles: readonly ColumnRole[], others: string): string =>
@@ -227,41 +153,6 @@ function partsOf(times: Float64Array, plan: TablePlan, precision: Precision, pro
       }),
     );
   return parts;
-}
-
-/** Share of samples that repeat the one before: a command holds its level, a measured signal does not. */
-function repeating(values: Float64Array): number {
-  let same = 0;
-  for (let index = 1; index < values.length; index++) if (values[index] === values[index - 1]) same++;
-  return values.length > 1 ? same / (values.length - 1) : 1;
-}
-
-function clampOf(
-  hints: ReadingHints,
-  voltage: Float64Array | null,
-  current: Float64Array | null,
-  problems: Problem[],
-): 'current' | 'voltage' {
-  const stated = hints.table?.clamp ?? hints.clamp;
-  if (stated) return stated;
-  if (!current) return 'current';
-  const voltageHeld = !voltage || repeating(voltage) > 0.5;
-  const currentHeld = repeating(current) > 0.5;
-  const clamp = voltageHeld && !currentHeld ? 'voltage' : 'current';
-  problems.push(
-    warning({
-      code: 'CLAMP_GUESSED',
-      place: '',
-      message: `Nothing says whether current or voltage was clamped. ${
-        voltage
-          ? `The ${clamp === 'voltage' ? 'potential holds its levels and the current does not' : 'potential moves freely'}, so ${clamp} clamp is taken.`
-          : `Only a current was recorded, so ${clamp} clamp is taken.`
-      }`,
-      remedy: 'State the clamp in the sidecar.',
-      sidecar: `table:\n  clamp: ${clamp}`,
-    }),
-  );
-  return clamp;
 }
 
 function statedStimulus(mapping: TableMapping | undefined, sweep: number): SweepSamples['stated_stimulus'] {
@@ -429,116 +320,6 @@ function readTable(path: string, head: Head, dialect: Dialect, hints: ReadingHin
       });
     }
   return { label: labelOf(dialect), sweeps, problems: merged(problems) };
-}
-
-/** Beginning and end of the samples in each row, from the sidecar's column list. */
-function rowRange(columns: (number | string)[] | undefined, length: number): [number, number] {
-  const [first, last] = (columns ?? []).map(Number);
-  return [Math.max(0, (first || 1) - 1), Math.min(length, last || length)];
-}
-
-function readRowTable(path: string, dialect: Dialect, hints: ReadingHints): Table {
-  const mapping = hints.table!;
-  const { rows, lines, precision, tally } = readRows(path, dialect);
-  const problems = [...dialect.problems.filter(({ code }) => code !== 'HEADER_MISMATCH'), ...tallyProblems(tally)];
-  const timeRow = mapping.time ? Number(mapping.time.column) - 1 : -1;
-  const data = rows.filter((_, row) => row !== timeRow);
-  const dataLines = lines.filter((_, row) => row !== timeRow);
-  const seconds = mapping.time ? parseUnit(mapping.time.unit)!.factor : 1;
-  const role = (kind: 'voltage' | 'current'): ColumnRole => ({
-    column: 0,
-    name: 'the rows',
-    unit: mapping[kind] ? parseUnit(mapping[kind].unit) : null,
-    guessed: false,
-  });
-  const hasVoltage = mapping.voltage !== undefined || mapping.current === undefined;
-  const range = (kind: 'voltage' | 'current', row: Float64Array): Float64Array =>
-    row.subarray(...rowRange(mapping[kind]?.columns, row.length));
-  let rate = mapping.rate_hz ?? hints.rate_hz ?? null;
-  let start = 0;
-  if (mapping.time) {
-    const times = rows[timeRow];
-    const base = times
-      ? timeBase(range(hasVoltage ? 'voltage' : 'current', times), floatNoise, printRounding(precision))
-      : ({ ok: false, at: 0, why: `there is no row ${mapping.time.column}` } as const);
-    if (!base.ok || base.places)
-      throw new FormatError({
-        code: 'TIMES_IRREGULAR',
-        place: `row ${mapping.time.column}`,
-        message: `The row of times is no fixed step${base.ok ? '' : `: ${base.why}`}.`,
-        remedy: 'With "sweeps: rows", time.column is the number of the row that holds the times; or state rate_hz.',
-      });
-    rate = base.rate / seconds;
-    start = (base.start + (mapping.time.offset ?? 0)) * seconds;
-  }
-  if (rate === null)
-    throw rateMissing(dialect, hasVoltage ? '{ columns: [1], unit: mV }\n  sweeps:  rows' : null, null);
-  let largest = new Float64Array(0);
-  for (const row of data) if (row.length > largest.length) largest = row as Float64Array<ArrayBuffer>;
-  const longest = largest.length;
-  const uneven = data.filter((row) => row.length !== longest).length;
-  if (uneven > 0)
-    problems.push(
-      warning({
-        code: 'RAGGED_ROWS',
-        place: '',
-        message: `${count(uneven, 'row')} of ${data.length} ${uneven === 1 ? 'is' : 'are'} shorter than the longest (${longest} cells); each sweep is as long as its row.`,
-        remedy: 'Check that no row was cut short.',
-      }),
-    );
-  const scales: Problem[] = [];
-  const all = (kind: 'voltage' | 'current'): Float64Array =>
-    Float64Array.from(data.slice(0, 50).flatMap((row) => [...range(kind, row)]));
-  const voltageFactor = hasVoltage ? potentialUnit(role('voltage'), sizeOf(all('voltage')), scales).factor : null;
-  const currentFactorOf = mapping.current
-    ? currentFactor(role('current'), sizeOf(all('current')), mapping.capacitance_pf ?? hints.capacitance_pf, scales)
-    : null;
-  problems.push(...scales);
-  const first = data[0];
-  const clamp = clampOf(
-    hints,
-    hasVoltage && first ? range('voltage', first) : null,
-    mapping.current && first ? range('current', first) : null,
-    problems,
-  );
-  const sweeps = data.map((row, index): Sweep => {
-    const voltage = voltageFactor === null ? null : { values: range('voltage', row), factor: voltageFactor };
-    const current = currentFactorOf === null ? null : { values: range('current', row), factor: currentFactorOf };
-    const samples = (clamp === 'current' ? voltage : current)?.values.length ?? 0;
-    return {
-      voltage,
-      current,
-      start_s: start,
-      places: null,
-      gridLength: samples,
-      entry: {
-        key: `line ${dataLines[index]}`,
-        series: `line ${dataLines[index]}`,
-        electrode: '',
-        clamp,
-        source_sweep: null,
-        start_s: null,
-        samples,
-        rate_hz: rate,
-        protocol: '',
-        has_voltage: voltage !== null,
-        has_current: current !== null,
-        bridge_mohm: null,
-        bias_pa: null,
-        filter_khz: null,
-        scaling:
-          mapping.voltage || mapping.current
-            ? `${mapping.voltage?.unit ?? mapping.current?.unit} (sidecar)`
-            : 'guessed',
-        labelled_amplitude: null,
-      },
-    };
-  });
-  return {
-    label: `text, ${count(sweeps.length, 'row')} of up to ${longest} cells, ${separatorNames[dialect.separator]}`,
-    sweeps,
-    problems,
-  };
 }
 
 /** More columns than rows and no heading: one sweep per row, in all likelihood, which a person must say. */
