@@ -31,11 +31,11 @@ const chelator = ion(-2, 0.24);
 
 /**
  * Ions in mM. Potassium holds what the KOH of the titration brings: about 0.4 a HEPES and 2 an EGTA at pH 7.3, and
- * about 1.5 a Mg-ATP, which is sold as the acid.
+ * about 2.2 a Mg-ATP, which is sold as the acid.
  */
 export const solutions: Record<string, Record<string, Ion>> = {
   'k-gluconate': {
-    K: K(125 + 5 + 4 + 1 + 6),
+    K: K(125 + 5 + 4 + 1 + 8.8),
     Na: Na(6 + 8 + 0.9),
     Cl: Cl(5 + 6),
     gluconate: gluconate(125),
@@ -44,7 +44,7 @@ export const solutions: Record<string, Record<string, Ion>> = {
     Mg: Mg(0.6),
   },
   'k-methanesulfonate': {
-    K: K(120 + 10 + 4 + 0.4 + 6),
+    K: K(120 + 10 + 4 + 0.4 + 8.8),
     Na: Na(10 + 0.9),
     Cl: Cl(10),
     methanesulfonate: methanesulfonate(120),
