@@ -70,5 +70,3 @@ export function mondayOf(iso: string): string {
   day.setUTCDate(day.getUTCDate() - ((day.getUTCDay() + 6) % 7));
   return day.toISOString().slice(0, 10);
 }
-
-export { printed as valueOf };

@@ -108,7 +108,8 @@ export function figureHtml(figure: NoteFigure, almanac: Almanac, link: Link): st
   const chart = sweepFigure(figure, almanac.sweeps(figure.cell), { e_na_mv, e_k_mv });
   const sweep = figure.sweep === null ? 'all sweeps of its first protocol' : `sweep ${figure.sweep}`;
   const from = `<a href="${escaped(link(cell.page))}">${escaped(cell.id)}</a>, ${sweep}`;
-  const words = figure.caption === '' ? from : `${escaped(figure.caption)} ${from}.`;
+  const words =
+    figure.caption === '' ? from : `${escaped(figure.caption)}${/[.!?…]$/.test(figure.caption) ? '' : '.'} ${from}.`;
   const drawing =
     chart === null
       ? '<p class="soft">Nothing of this stretch can be drawn.</p>'

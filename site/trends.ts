@@ -3,7 +3,7 @@ import { quantile } from 'd3';
 import type { ArchiveEvent } from '../pipeline/archive/types.ts';
 import { type Quantity, quantity } from '../pipeline/measure/quantities.ts';
 import { type CellSummary, groupBy, type Sizes, sizesOf } from './almanac.ts';
-import { controlChart, type DrawnControl } from './charts/control-chart.ts';
+import { controlChart, type DrawnControl, eventLetter } from './charts/control-chart.ts';
 import { fewestForLimits, individualsLimits } from './charts/control-limits.ts';
 import { domainOf } from './charts/frame.ts';
 import type { Link } from './links.ts';
@@ -97,30 +97,31 @@ function sharedDomain(series: readonly TrendSeries[]): [number, number] {
   return domainOf(values.flat(), limits, 0.08)!;
 }
 
-/** The picture of one rig, and the events it marks in the order of their letters. */
-export interface TrendPicture {
-  chart: DrawnControl;
-  events: ArchiveEvent[];
+/** An event with the letter it has on every picture of the page. */
+export interface LetteredEvent extends ArchiveEvent {
+  letter: string;
 }
 
-/** @param link of the page that holds the picture */
+export const lettered = (events: readonly ArchiveEvent[]): LetteredEvent[] =>
+  events.map((event, index) => ({ ...event, letter: eventLetter(index) }));
+
+/**
+ * The picture of one rig with the events that concern it.
+ *
+ * @param link of the page that holds the picture
+ */
 export function trendPicture(
   trend: Trend,
   series: TrendSeries,
-  events: readonly ArchiveEvent[],
+  events: readonly LetteredEvent[],
   link: Link,
-): TrendPicture {
-  const [from, to] = trend.span;
-  const own = events.filter(
-    (event) => (event.rig === null || event.rig === series.rig) && event.date >= from && event.date <= to,
-  );
-  const chart = controlChart({
+): DrawnControl {
+  return controlChart({
     quantity: trend.quantity.id,
     title: series.label,
     points: series.points.map((point) => ({ ...point, href: link(point.page) })),
-    events: own,
+    events: events.filter((event) => event.rig === null || event.rig === series.rig),
     span: trend.span,
     values: trend.domain,
-  });
-  return { chart: chart!, events: own };
+  })!;
 }

@@ -1,5 +1,5 @@
 import { createHash } from 'node:crypto';
-import { mkdirSync, mkdtempSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
+import { mkdirSync, mkdtempSync, readFileSync, rmSync, symlinkSync, writeFileSync } from 'node:fs';
 import os from 'node:os';
 import path from 'node:path';
 import { fileURLToPath } from 'node:url';
@@ -29,7 +29,7 @@ const widestPicture = 1440;
  * Writes the whole site. Links between its files are relative and name their file, so it opens from a folder, from
  * any server and under any path; nothing it loads lies elsewhere. The same ledger gives the same bytes.
  *
- * One call at a time in a process: the pages learn of their ledger through the environment.
+ * One call at a time in a process: the pages learn of their ledger through the environment, and it works from `outDir`.
  *
  * @throws Error when a page cannot be drawn; `outDir` is then incomplete
  */
@@ -42,7 +42,13 @@ export async function buildSite(input: SiteInput): Promise<void> {
     const images = await writeImages(imagesOf(input.ledgerFile), input.archiveRoot, path.join(publicDir, 'assets'));
     const described = tables.map(({ name, title, columns }) => ({ name, title, columns }));
     writeFileSync(manifest, JSON.stringify({ ...assets, images, tables: described }));
-    await withEnvironment(
+    // The page builder looks for its own parts from its root, and writes there: the root is the scratch folder.
+    const modules = path.dirname(path.dirname(fileURLToPath(import.meta.resolve('astro/package.json'))));
+    symlinkSync(modules, path.join(scratch, 'node_modules'), 'junction');
+    const outDir = path.resolve(input.outDir);
+    mkdirSync(outDir, { recursive: true });
+    await inPlace(
+      outDir,
       {
         SWEEP_ALMANAC_LEDGER: path.resolve(input.ledgerFile),
         SWEEP_ALMANAC_ARCHIVE: path.resolve(input.archiveRoot),
@@ -51,11 +57,11 @@ export async function buildSite(input: SiteInput): Promise<void> {
       },
       () =>
         buildPages({
-          root: toolRoot,
+          root: scratch,
           configFile: false,
           srcDir: siteRoot,
           publicDir,
-          outDir: path.resolve(input.outDir),
+          outDir,
           cacheDir: path.join(scratch, 'cache'),
           build: { format: 'directory' },
           compressHTML: true,
@@ -77,12 +83,19 @@ export async function buildSite(input: SiteInput): Promise<void> {
   }
 }
 
-async function withEnvironment<T>(values: Record<string, string>, work: () => Promise<T>): Promise<T> {
+/**
+ * Runs with these variables and from this folder: from another one the page builder would keep its own working files
+ * in whatever folder the command was started in, which may be the archive.
+ */
+async function inPlace<T>(folder: string, values: Record<string, string>, work: () => Promise<T>): Promise<T> {
+  const started = process.cwd();
   const before = Object.keys(values).map((name) => [name, process.env[name]] as const);
   Object.assign(process.env, values);
+  process.chdir(folder);
   try {
     return await work();
   } finally {
+    process.chdir(started);
     for (const [name, value] of before) {
       if (value === undefined) delete process.env[name];
       else process.env[name] = value;

@@ -5,7 +5,7 @@ import type { CellRow, SweepRow } from '../../pipeline/ledger/types.ts';
 import { absenceSentences } from '../../pipeline/measure/absence.ts';
 import { quantitiesOf, quantity } from '../../pipeline/measure/quantities.ts';
 import type { ConditionMeasure, Reading } from '../../pipeline/measure/types.ts';
-import { number, valueOf as printed } from '../format.ts';
+import { number, printed } from '../format.ts';
 import { factLabel } from '../words.ts';
 
 const outcomeRank: Record<Outcome, number> = { outside: 0, 'near limit': 1, 'not measured': 2, within: 3 };

@@ -35,7 +35,8 @@ export interface ControlChartInput {
   /** What the chart is about: 'Rig A'. */
   title: string;
   points: readonly ControlPoint[];
-  events: readonly { date: string; text: string }[];
+  /** Without a letter they are lettered in their order. */
+  events: readonly { date: string; text: string; letter?: string }[];
   /** Dates that the axis spans, so that neighbours share it. */
   span: readonly [string, string];
   /** Values that the axis spans, so that neighbours share it; found from the points where absent. */
@@ -169,7 +170,12 @@ function events(list: ControlChartInput['events'], x: Scale, frame: Frame): stri
             frame.height - frame.margins.bottom,
             'mark',
           ) +
-          label(x(days(event.date)) + 3, frame.height - frame.margins.bottom - 4, eventLetter(index), 'mark-name'),
+          label(
+            x(days(event.date)) + 3,
+            frame.height - frame.margins.bottom - 4,
+            event.letter ?? eventLetter(index),
+            'mark-name',
+          ),
       ),
     );
 }

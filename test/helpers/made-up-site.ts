@@ -15,7 +15,10 @@ import { type MadeUpKind, makeUpLedger } from './made-up-ledger.ts';
 export function buildMadeUpSite(kind: MadeUpKind, folder: string): string {
   const env = { ...process.env };
   for (const name of ['NODE_ENV', 'VITEST', 'TEST', 'DEV', 'PROD', 'MODE']) delete env[name];
-  const run = spawnSync(process.execPath, [fileURLToPath(import.meta.url), kind, folder], { encoding: 'utf8', env });
+  const cwd = path.join(folder, 'started-here');
+  mkdirSync(cwd, { recursive: true });
+  const script = fileURLToPath(import.meta.url);
+  const run = spawnSync(process.execPath, [script, kind, folder], { encoding: 'utf8', env, cwd });
   if (run.status !== 0) throw new Error(`the site of the invented archive "${kind}" was not built:\n${run.stderr}`);
   if (run.stdout !== '') throw new Error(`building the site printed:\n${run.stdout}`);
   return path.join(folder, 'site');

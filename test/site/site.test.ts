@@ -109,6 +109,9 @@ describe('files of the site', () => {
     }
   });
 
+  test('nothing is left in the folder that the build was started in', () =>
+    expect(readdirSync(path.join(folder, 'many/started-here'))).toEqual([]));
+
   test('a cell has its page, whatever its id', () => expect(cellPages(sites.many)).toHaveLength(60));
 
   test('scripts together weigh at most 80 kB compressed', () => {
