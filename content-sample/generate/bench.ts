@@ -207,7 +207,7 @@ export function protocolOf(cell: CellSpec, rheobase_pa: number): PlannedSweep[] 
     return out;
   }
   if (cell.kind === 'heart') {
-    const beat = (): SweepPlan => pulseTrain(roundTo(rheobase_pa * 1.3, 50), 0.005, 1, 1, 0.1, 1);
+    const beat = (): SweepPlan => pulseTrain(roundTo(rheobase_pa * 1.3, 50), 0.005, 1, 1, 0.1, cell.period_s ?? 1);
     if (!plainFamily) {
       add(testPulse(-80, -5), 3);
       add(quiet(0.6), 3);
@@ -250,7 +250,8 @@ export function protocolOf(cell: CellSpec, rheobase_pa: number): PlannedSweep[] 
     for (const pa of short) add(s(pa), pause);
     for (const pa of short.filter((_, k) => k % 2 === 1 || k > 5)) add(s(pa), pause);
   } else {
-    for (const pa of family) add(s(pa), pause);
+    const steps = cell.repeat ? [-unit, 0, ...Array.from({ length: 12 }, () => 5 * unit)] : family;
+    for (const pa of steps) add(s(pa), pause);
     if (cell.fine_rheobase)
       for (const share of [0.9, 0.96, 1.02, 1.08])
         add(step(Math.round(rheobase_pa * share), 0.1, 0.6, 0.8, 'rheobase', hold), 5);

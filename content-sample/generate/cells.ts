@@ -102,6 +102,10 @@ export interface CellSpec {
   /** Size of one step of the family where it does not follow from the rheobase, pA. */
   unit_pa?: number;
   spontaneous?: boolean;
+  /** Seconds from beat to beat, heart; 1 where it is left out. */
+  period_s?: number;
+  /** One step over and over in place of a family. */
+  repeat?: boolean;
   holding_pa?: number;
   pairing?: 'numbers' | 'tables' | 'sweep-table';
   timestamps?: boolean;

@@ -240,7 +240,11 @@ export const days: readonly DaySpec[] = [
     subject: mouse('m07', 'P28D', 'F'),
     batch_pipette: 'kg-12',
     batch_bath: 'b-0408',
-    cells: [c('2026-04-09', 's1c1', 'pyramidal', 0), c('2026-04-09', 's1c2', 'interneuron', 36)],
+    cells: [
+      c('2026-04-09', 's1c1', 'pyramidal', 0),
+      c('2026-04-09', 's1c2', 'interneuron', 36),
+      c('2026-04-09', 's2c1', 'pyramidal', 72, 'rundown', ['height'], { repeat: true, g_na_end: 0.35 }),
+    ],
   },
   {
     ...slices,
@@ -351,7 +355,10 @@ export const days: readonly DaySpec[] = [
       }),
       c('2026-05-14', 'd1c2', 'heart', 36),
       c('2026-05-14', 'd2c1', 'heart', 75, 'none', [], { text: 'semicolon', file: 'd2c1.csv' }),
-      c('2026-05-14', 'd2c2', 'heart', 102, 'temperature-misstated', ['APD90'], { true_temperature_c: 25 }),
+      c('2026-05-14', 'd2c2', 'heart', 102, 'temperature-misstated', ['APD90'], {
+        true_temperature_c: 23,
+        period_s: 2,
+      }),
     ],
   },
   {
@@ -497,7 +504,7 @@ export const days: readonly DaySpec[] = [
     batch_bath: 't-0615',
     cells: [
       c('2026-06-16', 'd1c1', 'heart', 0, 'none', [], { size: 1.15 }),
-      c('2026-06-16', 'd1c2', 'heart', 35, 'rundown', ['height'], { g_na_end: 0.3 }),
+      c('2026-06-16', 'd1c2', 'heart', 35),
       c('2026-06-16', 'd2c1', 'heart', 68, 'wrong-class', ['pyramidal'], { class: 'layer5' }),
     ],
   },
