@@ -104,8 +104,9 @@ function membraneTimeConstant(sweeps: readonly NumberedSweep[], down: readonly P
     );
   const responses = chosen.flatMap((point) => responseOf(point) ?? []);
   if (responses.length === 0) return absent('unresolved');
-  // Sag is judged over all of them: noise makes a little in each.
-  const share = median(responses.map((one) => one.sag))!;
+  // Sag is judged over all steps of 3 mV or more: slow noise makes or hides some of it in a single one.
+  const large = usable.filter(({ sweep }) => (sweep.readings['largest_deflection_mv']?.value ?? 0) <= -3);
+  const share = median((large.length > 0 ? large : chosen).map((point) => responseOf(point)?.sag ?? 0))!;
   if (share > largestSag)
     return absent('sag-or-resonance', { note: `${Math.round(share * 100)} % of the deflection is gone by the end` });
   const together = fitOnset(averaged(responses));
@@ -255,9 +256,14 @@ function sag(sweeps: readonly NumberedSweep[], down: readonly Point[]): Reading 
   });
 }
 
-/** Slope through the origin of the instantaneous step on the stimulus: without current there is no jump. */
+/**
+ * Slope through the origin of the instantaneous step on the stimulus: without current there is no jump. A membrane on
+ * its way to a spike does not rise along an exponential: sweeps without spikes speak first, where there are two.
+ */
 function bridgeError(sweeps: readonly NumberedSweep[]): Reading {
-  const points = pointsOf(sweeps, 'bridge_step_mv').filter(({ sweep }) => Math.abs(stepPa(sweep) ?? 0) > 0);
+  const all = pointsOf(sweeps, 'bridge_step_mv').filter(({ sweep }) => Math.abs(stepPa(sweep) ?? 0) > 0);
+  const quiet = all.filter(({ sweep }) => sweep.spikes.length === 0);
+  const points = quiet.length >= 2 ? quiet : all;
   if (points.length === 0) return commonReason(sweeps, 'bridge_step_mv', 'no-stimulus');
   const squares = points.reduce((sum, { sweep }) => sum + stepPa(sweep)! ** 2, 0);
   const slope = points.reduce((sum, { sweep, value }) => sum + value * stepPa(sweep)!, 0) / squares;
@@ -289,10 +295,15 @@ export function accessReadings(sweeps: readonly NumberedSweep[], bridgeLeft: Rea
       clamped.length === 0 ? absent('not-this-clamp') : commonReason(clamped, id, 'no-test-pulse'),
     );
   const pulses = pointsOf(clamped, 'access_resistance_mohm');
-  const series = pulses.length > 0 ? pulses : pointsOf(sweeps, 'access_resistance_mohm');
+  // Two test pulses far apart tell more than many bridges.
+  const apart = pulses.length >= 2 && pulses.at(-1)!.sweep.sweep - pulses[0]!.sweep.sweep >= 0.5 * (sweeps.length - 1);
+  const bridged = pointsOf(
+    sweeps.filter((sweep) => sweep.clamp === 'current'),
+    'access_resistance_mohm',
+  );
   return {
     access_resistance_mohm: access(sweeps, pulses, bridgeLeft, context),
-    access_change_percent: accessChange(series),
+    access_change_percent: accessChange(apart ? pulses : bridged, apart ? 2 : 4),
     membrane_resistance_mohm: over('membrane_resistance_mohm'),
     cell_capacitance_pf: over('cell_capacitance_pf'),
     holding_current_pa: over('holding_current_pa'),
@@ -320,8 +331,8 @@ function access(
 }
 
 /** From the median of the first tenth of the sweeps to that of the last. */
-function accessChange(points: readonly Point[]): Reading {
-  if (points.length < 4) return absent('too-few-sweeps');
+function accessChange(points: readonly Point[], least: number): Reading {
+  if (points.length < least) return absent('too-few-sweeps');
   const tenth = Math.max(1, Math.floor(points.length / 10));
   const [first, last] = [points.slice(0, tenth), points.slice(-tenth)].map((part) => part.map((point) => point.value));
   const before = median(first!)!;

@@ -1,4 +1,4 @@
-import { exponentialFit } from '../signal/exponential.ts';
+import { type ExponentialFit, exponentialFit } from '../signal/exponential.ts';
 import { linearFit } from '../signal/line.ts';
 import { movingAverage } from '../signal/smoothing.ts';
 import { countFinite, mean, median, standardDeviation } from '../signal/statistics.ts';
@@ -6,6 +6,7 @@ import { stuckStretches } from './quality.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
 import {
+  filterDelayMs,
   gathered,
   indexAt,
   readable,
@@ -27,6 +28,7 @@ export interface PassiveInput {
   spikes: readonly Spike[];
   slow: boolean;
   mains_hz: number | null;
+  filter_khz: number | null;
 }
 
 const baselineSpan_s = 0.5;
@@ -228,10 +230,15 @@ const electrodeTransient_s = 0.001;
 export function measureBridgeStep(input: PassiveInput): Reading {
   const step = stepOf(input.stimulus);
   if (!step) return withoutStep(input.stimulus);
-  const jumps = [jumpAt(input, step.from_s, step.to_s), jumpAt(input, step.to_s, Number.POSITIVE_INFINITY)];
+  const jumps = [
+    jumpAt(input, step.from_s, step.to_s, Math.sign(step.pa)),
+    jumpAt(input, step.to_s, Number.POSITIVE_INFINITY, -Math.sign(step.pa)),
+  ];
   const found = jumps.flatMap((jump, k) => (jump === null ? [] : [{ mv: k === 0 ? jump.mv : -jump.mv, se: jump.se }]));
   if (found.length === 0)
-    return absent('no-electrode-transient', { note: 'no quiet stretch on both sides of an edge' });
+    return absent('no-electrode-transient', {
+      note: 'no quiet stretch around an edge, or a response too fast to tell from a jump',
+    });
   return measured(mean(found.map((jump) => jump.mv))!, {
     n: found.length,
     se: Math.sqrt(found.reduce((sum, jump) => sum + jump.se ** 2, 0)) / found.length,
@@ -240,7 +247,12 @@ export function measureBridgeStep(input: PassiveInput): Reading {
   });
 }
 
-function jumpAt(input: PassiveInput, edge_s: number, next_s: number): { mv: number; se: number } | null {
+function jumpAt(
+  input: PassiveInput,
+  edge_s: number,
+  next_s: number,
+  direction: number,
+): { mv: number; se: number } | null {
   const { voltage, stimulus, spikes, slow } = input;
   const rate = voltage.rate_hz;
   const edges = stimulus.edges_s;
@@ -258,31 +270,100 @@ function jumpAt(input: PassiveInput, edge_s: number, next_s: number): { mv: numb
   const earlier = { from: indexAt(voltage, before_s), to: Math.round(edge) };
   const later = { from: indexAt(voltage, from_s), to: indexAt(voltage, to_s) };
   if (earlier.to - earlier.from < 4 || later.to - later.from < 8 || later.to >= voltage.samples.length) return null;
+  // What the filter shows came a little earlier: time runs from when it shows the edge.
+  const delay_ms = filterDelayMs(input.filter_khz);
   const take = (part: Stretch): { ms: Float64Array; mv: Float64Array } => ({
-    ms: Float64Array.from({ length: part.to - part.from }, (_, i) => ((part.from + i - edge) * 1000) / rate),
+    ms: Float64Array.from({ length: part.to - part.from }, (_, i) => ((part.from + i - edge) * 1000) / rate - delay_ms),
     mv: voltage.samples.subarray(part.from, part.to),
   });
   const first = take(earlier);
   const line = linearFit(first.ms, first.mv);
   const second = take(later);
   if (!line || countFinite(second.mv) < 8) return null;
-  const after = backToEdge(second.ms, second.mv);
-  return after && { mv: after.mv - line.intercept, se: Math.hypot(after.se, line.se_intercept ?? 0) };
+  const after = backToEdge(second.ms, second.mv, line.residual_sd ?? 0);
+  if (!after) return null;
+  const jump = { mv: after.mv - line.intercept, se: Math.hypot(after.se, line.se_intercept ?? 0) };
+  // A jump without a response in the current's direction after it: the membrane has answered within the electrode's
+  // time, or there is none.
+  return Math.abs(jump.mv) > 3 * jump.se && after.rise_mv * direction < 0.2 * Math.abs(jump.mv) ? null : jump;
 }
 
-/** Value at 0 ms of the response after it. */
-function backToEdge(ms: Float64Array, mv: Float64Array): { mv: number; se: number } | null {
-  const fit = exponentialFit(ms, mv);
-  // A membrane is slower than 2 ms; a faster constant is the electrode or noise, and must not be carried back.
-  if (fit?.converged && fit.tau > 2) {
-    const back = Math.exp(fit.x0 / fit.tau);
-    // The three parameters are strongly tied to each other; near the edge about nine values' worth of noise remains.
-    return { mv: fit.offset + fit.amplitude * back, se: (fit.residual_sd * 3 * back) / Math.sqrt(fit.n) };
+/** Windows after the edge, ms, the longest first: a response of more than one exponential fits only a shorter one. */
+const windows_ms = [16, 9, 5];
+
+/**
+ * Value at 0 ms of the response after it, and how far the response goes on from there. Null where the response is too fast, or too far from an exponential, to be
+ * told from a jump: a squid axon answers within the millisecond that the electrode needs.
+ */
+function backToEdge(
+  ms: Float64Array,
+  mv: Float64Array,
+  noise: number,
+): { mv: number; se: number; rise_mv: number } | null {
+  for (const window of windows_ms) {
+    const beyond = ms.findIndex((value) => value > window);
+    const n = beyond < 0 ? ms.length : beyond;
+    if (n < 8) continue;
+    const [x, y] = [ms.subarray(0, n), mv.subarray(0, n)];
+    const span = Math.abs(y[n - 1]! - y[0]!);
+    const fits = (residual: number): boolean => residual <= 1.5 * noise + 0.005 * span + 1e-9;
+    const line = linearFit(x, y);
+    const fit = exponentialFit(x, y);
+    // A straight line where it does as well: then the exponential's three parameters are not determined.
+    const curved = fit?.converged && line && fit.residual_sd < 0.95 * (line.residual_sd ?? 0);
+    if (!curved && line && fits(line.residual_sd ?? 0))
+      return { mv: line.intercept, se: line.se_intercept ?? 0, rise_mv: line.slope * (x[n - 1]! - x[0]!) };
+    if (!fit?.converged || !fits(fit.residual_sd)) continue;
+    // A membrane this fast has answered before the electrode is done.
+    if (fit.tau < 2) return null;
+    const value = fit.offset + fit.amplitude * Math.exp(fit.x0 / fit.tau);
+    return { mv: value, se: errorAtEdge(x, y, fit), rise_mv: -fit.amplitude };
   }
-  const early = ms.findIndex((value) => value > 5);
-  const n = early < 0 ? ms.length : Math.max(8, early);
-  const line = linearFit(ms.subarray(0, n), mv.subarray(0, n));
-  return line && { mv: line.intercept, se: line.se_intercept ?? 0 };
+  return null;
+}
+
+/**
+ * Standard error of an exponential carried back to 0: from the Jacobian at the fit, made larger by what neighbouring
+ * residuals have in common (slow noise counts as fewer values).
+ */
+function errorAtEdge(ms: Float64Array, mv: Float64Array, fit: ExponentialFit): number {
+  const { offset, amplitude, tau, x0 } = fit;
+  const gradient = (time: number): [number, number, number] => {
+    const decay = Math.exp(-(time - x0) / tau);
+    return [1, decay, (amplitude * (time - x0) * decay) / tau ** 2];
+  };
+  const m = [0, 0, 0, 0, 0, 0];
+  const residuals: number[] = [];
+  ms.forEach((time, i) => {
+    if (!Number.isFinite(mv[i]!)) return;
+    const [a, b, c] = gradient(time);
+    [a * a, a * b, a * c, b * b, b * c, c * c].forEach((value, k) => {
+      m[k]! += value;
+    });
+    residuals.push(mv[i]! - offset - amplitude * b);
+  });
+  const [aa, ab, ac, bb, bc, cc] = m as [number, number, number, number, number, number];
+  const [ia, ib, ic] = [bb * cc - bc * bc, ac * bc - ab * cc, ab * bc - ac * bb];
+  const [jb, jc, kc] = [aa * cc - ac * ac, ab * ac - aa * bc, aa * bb - ab * ab];
+  const determinant = aa * ia + ab * ib + ac * ic;
+  const [g, h, k] = gradient(0);
+  const form = g * (g * ia + h * ib + k * ic) + h * (g * ib + h * jb + k * jc) + k * (g * ic + h * jc + k * kc);
+  if (!(determinant > 0 && form >= 0)) return fit.residual_sd;
+  return fit.residual_sd * Math.sqrt((form / determinant) * correlationFactor(residuals));
+}
+
+/** 1 + 2·Σ of the autocorrelations up to the first that is not positive. */
+function correlationFactor(values: readonly number[]): number {
+  const power = values.reduce((sum, value) => sum + value * value, 0);
+  if (!(power > 0)) return 1;
+  let factor = 1;
+  for (let lag = 1; lag < values.length / 3; lag++) {
+    let product = 0;
+    for (let i = lag; i < values.length; i++) product += values[i]! * values[i - lag]!;
+    if (product <= 0) break;
+    factor += (2 * product) / power;
+  }
+  return factor;
 }
 
 /** Length kept of the response to a step and the finest bin, s; together at most about 1600 numbers. */

@@ -103,3 +103,9 @@ export function stimulusHoles(
     if (Math.abs(one.level - stimulus.holding) > 0.02 * reach) holes.push(hole(one.from_s, one.to_s));
   return holes;
 }
+
+/**
+ * Delay of a slow signal through the recorder's filter, ms: 0.336 over the corner for a four-pole Bessel filter (its
+ * phase at low frequencies, 2.114/(2π·corner)); other common filters of that order delay by 0.3 to 0.42 over it.
+ */
+export const filterDelayMs = (filterKhz: number | null): number => (filterKhz === null ? 0 : 0.336 / filterKhz);

@@ -147,8 +147,16 @@ function spikesAndBaseline(
   levels: readonly Level[],
   context: MeasureContext,
 ): { spikes: Spike[]; passive: PassiveInput; baseline: Readings; remarks: string[] } {
-  const { slow, mains_hz } = context;
-  const input = (spikes: readonly Spike[]): PassiveInput => ({ voltage, stimulus, levels, spikes, slow, mains_hz });
+  const { slow, mains_hz, filter_khz } = context;
+  const input = (spikes: readonly Spike[]): PassiveInput => ({
+    voltage,
+    stimulus,
+    levels,
+    spikes,
+    slow,
+    mains_hz,
+    filter_khz,
+  });
   const first = measureBaseline(input([]))['baseline_mv']!.value;
   const found = measureSpikes({ voltage, current, stimulus, baseline_mv: first, context });
   const passive = input(found.spikes);
@@ -280,7 +288,12 @@ function alignedTo(
 
 const seconds = (value: number): string => `${Number(value.toPrecision(6))} s`;
 
-function voltageClampSweep(input: SweepInput, voltage: Signal | null, current: Signal | null): SweepMeasure {
+function voltageClampSweep(
+  input: SweepInput,
+  voltage: Signal | null,
+  current: Signal | null,
+  context: MeasureContext,
+): SweepMeasure {
   const command = readCommand(voltage, null, 'voltage');
   const { stimulus, levels } = command;
   const recorded: Readings = current
@@ -296,7 +309,7 @@ function voltageClampSweep(input: SweepInput, voltage: Signal | null, current: S
     clamp: 'voltage',
     duration_s: durationOf(current, voltage),
     stimulus,
-    readings: { ...recorded, ...measureVoltageClamp(current, voltage, stimulus, levels) },
+    readings: { ...recorded, ...measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz) },
     spikes: [],
     depolarization_block: false,
     remarks: command.remarks,

@@ -2,7 +2,7 @@ import { exponentialFit } from '../signal/exponential.ts';
 import { mean, median, standardDeviation } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
-import { gathered, indexAt, type Stretch, timeAt } from './stretches.ts';
+import { filterDelayMs, gathered, indexAt, type Stretch, timeAt } from './stretches.ts';
 import type { Reading, Readings, Signal, Stimulus } from './types.ts';
 
 /** Command steps up to this size, mV, count as test pulses: larger ones open channels. */
@@ -29,12 +29,14 @@ interface Answer {
  *
  * @param current recorded current, pA
  * @param levels the command's levels, mV, in the time of the sweep
+ * @param filterKhz corner of the recorder's low-pass; it delays the current, and with it the edge it is carried back to
  */
 export function measureVoltageClamp(
   current: Signal | null,
   command: Signal | null,
   stimulus: Stimulus,
   levels: readonly Level[],
+  filterKhz: number | null,
 ): Readings {
   const ids = ['access_resistance_mohm', 'membrane_resistance_mohm', 'cell_capacitance_pf'];
   const all = (reading: Reading): Readings => Object.fromEntries(ids.map((id) => [id, reading]));
@@ -47,7 +49,7 @@ export function measureVoltageClamp(
   if (!command) return { ...readings, ...all(absent('no-voltage')) };
   const answers = testPulseEdges(levels)
     .slice(0, mostEdges)
-    .map((edge) => answerAt(current, edge))
+    .map((edge) => answerAt(current, edge, filterDelayMs(filterKhz)))
     .filter((answer) => answer !== null);
   if (answers.length === 0) return { ...readings, ...all(absent('no-test-pulse')) };
   return { ...readings, ...summary(answers) };
@@ -103,7 +105,7 @@ function testPulseEdges(levels: readonly Level[]): Edge[] {
 }
 
 /** What the current says at one edge. Null where it cannot be read or does not answer at all. */
-function answerAt(current: Signal, edge: Edge): Answer | null {
+function answerAt(current: Signal, edge: Edge, delay_ms: number): Answer | null {
   const rate = current.rate_hz;
   const from = indexAt(current, edge.at_s);
   const to = Math.min(indexAt(current, edge.after_s), from + Math.round(0.2 * rate));
@@ -122,7 +124,7 @@ function answerAt(current: Signal, edge: Edge): Answer | null {
   const where = { from_s: edge.at_s, to_s: timeAt(current, to) };
   const part = current.samples.subarray(from, to);
   let change = steady - calm;
-  let transient = transientOf(part, steady, edge.step_mv, noise, rate);
+  let transient = transientOf(part, steady, edge.step_mv, noise, rate, delay_ms);
   if (transient) {
     // What the transient still is in the last fifth, and what the one before was when this one began, is known: out.
     const { tau_ms } = transient;
@@ -132,7 +134,7 @@ function answerAt(current: Signal, edge: Edge): Answer | null {
     const settled = steady - height * left(later, from);
     const rested = calm - height * (edge.previous_mv / edge.step_mv) * left(earlier, start);
     change = settled - rested;
-    transient = transientOf(part, settled, edge.step_mv, noise, rate) ?? transient;
+    transient = transientOf(part, settled, edge.step_mv, noise, rate, delay_ms) ?? transient;
   }
   // A change that is lost in noise, or against the step, is no resistance.
   const error = noise * Math.sqrt(1 / before.length + 1 / late.length);
@@ -163,6 +165,7 @@ function transientOf(
   step_mv: number,
   noise: number,
   rate: number,
+  delay_ms: number,
 ): { height_pa: number; charge_fc: number; tau_ms: number } | null {
   const sign = Math.sign(step_mv);
   const above = part.map((value) => (value - steady) * sign);
@@ -179,7 +182,7 @@ function transientOf(
   const ms = Float64Array.from({ length: last - first }, (_, i) => ((first + i) * 1000) / rate);
   const fit = exponentialFit(ms, above.subarray(first, last));
   if (!fit?.converged || fit.amplitude <= 0 || fit.tau < 1000 / rate) return null;
-  const peak = fit.amplitude * Math.exp(fit.x0 / fit.tau);
+  const peak = fit.amplitude * Math.exp((fit.x0 - delay_ms) / fit.tau);
   // The charge of the samples, not of the fit: it does not depend on the shape. A trapezium from the extrapolated
   // top to the first sample beyond the pipette's, then the samples themselves.
   let charge = fit.tau * (peak - fit.amplitude);

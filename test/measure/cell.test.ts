@@ -426,7 +426,8 @@ describe('access resistance', () => {
     const sweeps = [10, 11, 12, 13, 14, 15].map((mohm, k) => clamped(mohm, k));
     const readings = measure(sweeps);
     expect(Math.abs(numberIn(readings, 'access_change_percent') - 50)).toBeLessThan(0.5);
-    expect(measure(sweeps.slice(0, 3))['access_change_percent']!.why).toBe('too-few-sweeps');
+    expect(Math.abs(numberIn(measure(sweeps.slice(0, 2)), 'access_change_percent') - 10)).toBeLessThan(0.5);
+    expect(measure(sweeps.slice(0, 1))['access_change_percent']!.why).toBe('too-few-sweeps');
     expectComplete(readings);
     // A cell only in voltage clamp is measured on what it has.
     expect(Math.abs(numberIn(readings, 'membrane_resistance_mohm') - 300)).toBeLessThan(1);

@@ -106,6 +106,27 @@ describe('bridge step', () => {
     expect(Math.abs(numberIn(fast, 'bridge_step_mv') + 0.5)).toBeLessThan(0.12);
   });
 
+  it('takes the filter’s delay for what it is', () => {
+    // A four-pole Bessel filter of 2 kHz delays by 0.168 ms: on a slope of 1 pA/100 pF that looks like −1.7 MΩ.
+    const delay_s = 0.000168;
+    const late = passiveSweep(
+      { rest_mv: -70, resistance_mohm: 70, tau_ms: 7, noise_mv: 0.01 },
+      { pa: -100, from_s: 0.2 + delay_s, to_s: 0.7 + delay_s },
+    );
+    const { current } = passiveSweep(cell, { ...step, pa: -100 });
+    const jump = (filter_khz: number | null) =>
+      numberIn(measureSweep(input({ ...late, current }), { ...neuron, filter_khz }).readings, 'bridge_step_mv');
+    expect(Math.abs(jump(2))).toBeLessThan(0.03);
+    expect(jump(null)).toBeGreaterThan(0.1);
+  });
+
+  it('is not told from a membrane that answers within a millisecond, nor from a bare resistor', () => {
+    const fast = measure({ rest_mv: -65, resistance_mohm: 10, tau_ms: 0.4, noise_mv: 0.02 }, { ...step, pa: -400 });
+    expect(fast['bridge_step_mv']!.why).toBe('no-electrode-transient');
+    const bare = measure({ rest_mv: 0, resistance_mohm: 0, tau_ms: 10, bridge_left_mohm: 8, noise_mv: 0.02 });
+    expect(bare['bridge_step_mv']!.why).toBe('no-electrode-transient');
+  });
+
   it('adds to a known bridge as access resistance', () => {
     const made = passiveSweep({ ...cell, bridge_left_mohm: 4 }, step);
     const { readings } = measureSweep(input(made, { bridge_mohm: 14 }), neuron);
