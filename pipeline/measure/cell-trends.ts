@@ -92,14 +92,14 @@ export function restingReadings(sweeps: readonly NumberedSweep[], context: CellC
       : known.length === 0
         ? absent('holding-unknown')
         : absent('holding-not-zero');
-  const stated = free.length > 0 && free.every(({ sweep }) => sweep.stimulus.from === 'stated');
-  return {
-    resting_potential_mv: medianOver(
-      free,
-      none,
-      stated ? 'the stated stimulus is taken to say all current' : undefined,
-    ),
-  };
+  const notes = [
+    ...(free.length > 0 && free.every(({ sweep }) => sweep.stimulus.from === 'stated')
+      ? ['the stated stimulus is taken to say all current']
+      : []),
+    // A cell that fires by itself never rests: beside this stands its maximum diastolic potential.
+    ...(free.some(({ reading }) => reading.note?.includes('between spikes')) ? ['read between spikes'] : []),
+  ];
+  return { resting_potential_mv: medianOver(free, none, notes.join('; ') || undefined) };
 }
 
 /** Slope of the baseline on time, among the sweeps held at the same current as most. */

@@ -348,6 +348,7 @@ describe('firing of a cell', () => {
     expect(readings['peak_mv']!.n!).toBeGreaterThan(9);
     expect(readings['peak_mv']!.note).toContain('no step');
     expect(Math.abs(numberIn(readings, 'cycle_length_ms') - 500)).toBeLessThan(1);
+    expect(readings['resting_potential_mv']!.note).toContain('between spikes');
     expect(reference_spike).not.toBeNull();
     expect(readings['rheobase_pa']!.why).toBe('no-stimulus');
     expectComplete(readings);
