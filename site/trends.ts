@@ -3,7 +3,7 @@ import { quantile } from 'd3';
 import type { ArchiveEvent } from '../pipeline/archive/types.ts';
 import { type Quantity, quantity } from '../pipeline/measure/quantities.ts';
 import { type CellSummary, groupBy, type Sizes, sizesOf } from './almanac.ts';
-import { controlChart, type DrawnControl, eventLetter } from './charts/control-chart.ts';
+import { controlChart, type DrawnControl, eventLetter, speaksForRig } from './charts/control-chart.ts';
 import { fewestForLimits, individualsLimits } from './charts/control-limits.ts';
 import { domainOf } from './charts/frame.ts';
 import type { Link } from './links.ts';
@@ -89,7 +89,11 @@ function seriesOf(id: string, rig: string, members: CellSummary[]): TrendSeries 
 }
 
 function sharedDomain(series: readonly TrendSeries[]): [number, number] {
-  const values = series.map((one) => one.points.map((point) => point.value));
+  // Cells that do not speak for their rig may lie beyond the axis: the picture says so at its edge.
+  const values = series.map((one) => {
+    const telling = one.points.filter(speaksForRig);
+    return (telling.length > 0 ? telling : one.points).map((point) => point.value);
+  });
   const limits = values.flatMap((one) => {
     const limit = one.length >= fewestForLimits ? individualsLimits(one) : null;
     return limit ? [limit.low, limit.high] : [];

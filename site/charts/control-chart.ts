@@ -14,6 +14,7 @@ import {
   line,
   path,
   picture,
+  px,
   type Scale,
   xScale,
   yAxis,
@@ -51,13 +52,21 @@ export interface DrawnControl extends Chart {
   beyond: ControlPoint[];
 }
 
+/**
+ * Whether a cell's number speaks for its rig: one that physics or the lab's rules reject, and one that could not be
+ * read, would only stretch the limits.
+ */
+export const speaksForRig = (point: { standing: Standing }): boolean =>
+  point.standing !== 'unsound' && point.standing !== 'unread';
+
 /** @returns null without points */
 export function controlChart(input: ControlChartInput): DrawnControl | null {
   const points = [...input.points].sort((a, b) => days(a.date) - days(b.date) || (a.cell < b.cell ? -1 : 1));
   if (points.length === 0) return null;
   const entry = quantity(input.quantity);
   const values = points.map((point) => point.value);
-  const limits = points.length >= fewestForLimits ? individualsLimits(values) : null;
+  const telling = points.filter(speaksForRig);
+  const limits = telling.length >= fewestForLimits ? individualsLimits(telling.map((point) => point.value)) : null;
   const frame: Frame = {
     width: input.width ?? 520,
     height: 210,
@@ -74,30 +83,47 @@ export function controlChart(input: ControlChartInput): DrawnControl | null {
   const parts = [
     yAxis(y, frame.margins.left, `${input.title}: ${entry.label}`, entry.unit, right, 4),
     ...events(input.events, x, frame),
-    ...(limits ? limitLines(limits, input.quantity, y, frame) : [medianLine(values, input.quantity, y, frame)]),
+    ...(limits
+      ? limitLines(limits, input.quantity, y, frame)
+      : [
+          medianLine(
+            (telling.length > 0 ? telling : points).map((point) => point.value),
+            input.quantity,
+            y,
+            frame,
+          ),
+        ]),
     element('path', {
       d: path(
-        points.map((point) => [days(point.date), point.value] as const),
+        telling.map((point) => [days(point.date), clamped(point.value, domain)] as const),
         x,
         y,
       ),
       class: 'thread',
     }),
-    ...points.map((point) => dot(point, input.quantity, x, y, beyond.includes(point))),
+    ...points.map((point) => dot(point, input.quantity, x, y, beyond.includes(point), domain)),
     monthAxis(x, span, frame),
   ];
   const alt = [
     `${entry.label} on ${input.title}, ${counted(points.length, 'cell')} from ${longDate(points[0]!.date)} to ${longDate(points.at(-1)!.date)}.`,
     limits
       ? `Mean ${withUnit(input.quantity, limits.centre)}, limits ${withUnit(input.quantity, limits.low)} and ${withUnit(input.quantity, limits.high)}; ${beyond.length === 0 ? 'no cell lies' : `${counted(beyond.length, 'cell')} ${beyond.length === 1 ? 'lies' : 'lie'}`} beyond them.`
-      : `Limits need ${fewestForLimits} cells. Lowest ${withUnit(input.quantity, Math.min(...values))}, highest ${withUnit(input.quantity, Math.max(...values))}.`,
+      : `Limits need ${fewestForLimits} cells that are not unsound. Lowest ${withUnit(input.quantity, Math.min(...values))}, highest ${withUnit(input.quantity, Math.max(...values))}.`,
   ].join(' ');
   return { ...picture(frame, alt, parts.join(''), 'group'), limits, beyond };
 }
 
 /** The standing's own marks, small: filled disc, half disc, open ring, dash. Points beyond the limits get a ring around. */
-function dot(point: ControlPoint, id: string, x: Scale, y: Scale, beyond: boolean): string {
-  const at = { x: x(days(point.date)), y: y(point.value) };
+function dot(
+  point: ControlPoint,
+  id: string,
+  x: Scale,
+  y: Scale,
+  beyond: boolean,
+  domain: readonly [number, number],
+): string {
+  const shown = clamped(point.value, domain);
+  const at = { x: x(days(point.date)), y: y(shown) };
   const name = `${point.cell}, ${point.standing}, ${longDate(point.date)}: ${withUnit(id, point.value)}${beyond ? ', beyond the limits' : ''}`;
   return element(
     'a',
@@ -105,8 +131,22 @@ function dot(point: ControlPoint, id: string, x: Scale, y: Scale, beyond: boolea
     element('title', {}, escapeText(name)) +
       element('circle', { cx: at.x, cy: at.y, r: 8, class: 'reach' }) +
       (beyond ? element('circle', { cx: at.x, cy: at.y, r: 6.5, class: 'beyond' }) : '') +
-      shape(point.standing, at.x, at.y),
+      shape(point.standing, at.x, at.y) +
+      (shown === point.value ? '' : offScale(at, shown < point.value, withUnit(id, point.value))),
   );
+}
+
+const clamped = (value: number, [low, high]: readonly [number, number]): number => Math.min(high, Math.max(low, value));
+
+/** A number beyond the axis stands at its edge with an arrow and its value, so that it does not flatten the others. */
+function offScale(at: { x: number; y: number }, above: boolean, text: string): string {
+  const tip = above ? at.y - 9 : at.y + 9;
+  const foot = above ? at.y - 5 : at.y + 5;
+  const arrow = element('path', {
+    d: `M${px(at.x - 3.5)},${px(foot)}L${px(at.x + 3.5)},${px(foot)}L${px(at.x)},${px(tip)}Z`,
+    class: 'filled',
+  });
+  return arrow + label(at.x - 9, above ? at.y + 4 : at.y, text, 'level-name', 'end');
 }
 
 function shape(standing: Standing, x: number, y: number): string {
@@ -232,5 +272,5 @@ function dayTicks(from: number, to: number): { at: number; name: string }[] {
 /** For captions: 'limits from 24 cells' or what is missing. */
 export const limitsNote = (n: number): string =>
   n >= fewestForLimits
-    ? `limits from ${number(n)} cells`
-    : `${number(n)} of the ${fewestForLimits} cells that limits need`;
+    ? `limits from ${number(n)} cells that are not unsound`
+    : `${number(n)} of the ${fewestForLimits} cells not unsound that limits need`;
