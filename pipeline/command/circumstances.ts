@@ -161,6 +161,7 @@ export function cellContext(circumstances: Circumstances, facts: FactValues, set
     e_k_mv: circumstances.e_k?.mv ?? null,
     bias_pa: circumstances.bias_pa,
     stated_capacitance_pf: numberFact(facts, 'capacitance_pf'),
+    stated_bridge_mohm: circumstances.bridge_mohm,
     stated_access_mohm: numberFact(facts, 'access_mohm'),
     break_in_to_start_s: start !== null && breakIn !== null && start >= breakIn ? start - breakIn : null,
     missing_for_e_na: circumstances.missing_e_na,

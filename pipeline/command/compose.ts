@@ -183,7 +183,10 @@ function numberSweeps(
 function deriveSpikes(sweeps: SweepRow[], contextOf: (condition: string) => CellContext): SweepRow[] {
   const measured = measureCell(sweeps, contextOf);
   const capacitance = new Map(
-    measured.conditions.map((one) => [one.condition, one.readings['membrane_capacitance_pf']?.value ?? null]),
+    measured.conditions.map(({ condition, readings }) => [
+      condition,
+      readings['membrane_capacitance_pf']?.value ?? readings['cell_capacitance_pf']?.value ?? null,
+    ]),
   );
   return sweeps.map((sweep) => {
     const context = contextOf(sweep.condition);

@@ -44,6 +44,7 @@ function planFiles(archive: Archive, surveyed: SurveyedFile[], cells: CellRecord
         key: ref.key,
         context: measureContext(facts, archive.settings, entry?.filter_khz ?? null),
         bridge_mohm: entry?.bridge_mohm ?? numberFact(facts, 'bridge_mohm'),
+        bias_pa: entry?.bias_pa ?? null,
       });
       sweepsOf.set(ref.path, list);
     });

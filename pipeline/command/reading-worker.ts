@@ -21,7 +21,7 @@ export interface MeasureTask {
   file: string;
   format: FormatId;
   hints: ReadingHints;
-  sweeps: { key: string; context: MeasureContext; bridge_mohm: number | null }[];
+  sweeps: { key: string; context: MeasureContext; bridge_mohm: number | null; bias_pa: number | null }[];
 }
 
 export type Task = SurveyTask | MeasureTask;
@@ -46,12 +46,13 @@ const problemOf = (error: unknown): Problem => {
   };
 };
 
-const inputOf = (samples: SweepSamples, bridge: number | null): SweepInput => ({
+const inputOf = (samples: SweepSamples, bridge: number | null, bias: number | null): SweepInput => ({
   clamp: samples.clamp,
   voltage: samples.voltage,
   current: samples.current,
   stated_stimulus: samples.stated_stimulus,
   bridge_mohm: samples.bridge_mohm ?? bridge,
+  bias_pa: bias,
 });
 
 async function run(task: Task, report: (answer: Answer) => void): Promise<Answer> {
@@ -59,10 +60,13 @@ async function run(task: Task, report: (answer: Answer) => void): Promise<Answer
   try {
     if (task.kind === 'survey') return { kind: 'surveyed', description: recording.describe() };
     const sweeps: MeasuredSweeps = {};
-    for (const [index, { key, context, bridge_mohm }] of task.sweeps.entries()) {
+    for (const [index, { key, context, bridge_mohm, bias_pa }] of task.sweeps.entries()) {
       try {
         const samples = recording.read(key);
-        sweeps[key] = { measure: measureSweep(inputOf(samples, bridge_mohm), context), problems: samples.problems };
+        sweeps[key] = {
+          measure: measureSweep(inputOf(samples, bridge_mohm, bias_pa), context),
+          problems: samples.problems,
+        };
       } catch (error) {
         sweeps[key] = { measure: null, problems: [{ ...problemOf(error), sweep_key: key }] };
       }
