@@ -263,8 +263,10 @@ function sag(sweeps: readonly NumberedSweep[], down: readonly Point[]): Reading 
 function bridgeError(sweeps: readonly NumberedSweep[]): Reading {
   const all = pointsOf(sweeps, 'bridge_step_mv').filter(({ sweep }) => Math.abs(stepPa(sweep) ?? 0) > 0);
   const quiet = all.filter(({ sweep }) => sweep.spikes.length === 0);
-  const points = quiet.length >= 2 ? quiet : all;
-  if (points.length === 0) return commonReason(sweeps, 'bridge_step_mv', 'no-stimulus');
+  // A step that makes the cell fire curves before it fires: one such edge alone cannot be told from a jump.
+  const points = quiet.length >= 2 || all.length < 2 ? quiet : all;
+  if (points.length === 0)
+    return all.length > 0 ? absent('too-few-sweeps') : commonReason(sweeps, 'bridge_step_mv', 'no-stimulus');
   const squares = points.reduce((sum, { sweep }) => sum + stepPa(sweep)! ** 2, 0);
   const slope = points.reduce((sum, { sweep, value }) => sum + value * stepPa(sweep)!, 0) / squares;
   const residual = Math.sqrt(

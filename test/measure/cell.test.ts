@@ -455,3 +455,13 @@ it('sums up what the recorder did over all sweeps', () => {
   expect(readings['sample_interval_us']).toMatchObject({ value: 100, at: { sweep: 2 } });
   expect(readings['sample_interval_us']!.note).toContain('2 different');
 });
+
+describe('a bridge judged from one edge only', () => {
+  const edge = (spikes: number): NumberedSweep => ({
+    ...firingSweep(0, 500, new Array<number>(spikes).fill(80)),
+    readings: { ...firingSweep(0, 500, []).readings, bridge_step_mv: { value: 2, se: 0.1, n: 1 } },
+  });
+  it('is not read where that step makes the cell fire', () =>
+    expect(measure([edge(1)])['bridge_error_mohm']).toMatchObject({ value: null, why: 'too-few-sweeps' }));
+  it('is read where it does not', () => expect(numberIn(measure([edge(0)]), 'bridge_error_mohm')).toBeCloseTo(4, 6));
+});
