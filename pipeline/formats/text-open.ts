@@ -231,9 +231,10 @@ function merged(problems: readonly Problem[]): Problem[] {
 function readTable(path: string, head: Head, dialect: Dialect, hints: ReadingHints): Table {
   const mapping = hints.table;
   const firstRows = sampleRows(head.lines, dialect);
+  // Before asking what its columns mean: a short list of results is no recording whatever they are called.
+  if (head.whole && !mapping && firstRows.length < fewestRows) throw tooFewRows(firstRows.length);
   const plan = planTable(dialect, firstRows, hints);
   const problems = [...plan.problems];
-  if (head.whole && !mapping && firstRows.length < fewestRows) throw tooFewRows(firstRows.length);
   if (!plan.time && plan.rate_hz === null) throw ratePlease(dialect, plan);
   const { voltage, current } = plan;
   if (voltage.length > 0 && current.length > 1 && voltage.length !== current.length)

@@ -259,6 +259,7 @@ describe('what is no recording', () => {
       `cell,rheobase,Ra\n${Array.from({ length: 60 }, (_, i) => `${(i * 7) % 60},${50 + ((i * 3) % 11)},${10 + (i % 4)}`).join('\n')}`,
     ],
     ['a short table', 'Time (s),Voltage (mV)\n0,-70\n0.1,-71\n0.2,-70\n'],
+    ['a bench sheet with clock times', 'dish;cell;time;pipette MOhm\nd1;1;13:40;2,4\nd1;2;14:16;2,6\nd2;1;14:55;2,5\n'],
     ['times alone', `"time"\n${range.map((row) => (row * 2e-4).toExponential(18)).join('\n')}\n`],
     ['only comments', '# nothing\n# here\n'],
     ['only empty lines', '\n\n\r\n'],
