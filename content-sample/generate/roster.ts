@@ -583,7 +583,7 @@ export const days: readonly DaySpec[] = [
         file: 's1c2.dat',
         spontaneous: true,
       }),
-      c('2026-06-26', 's2c1', 'pyramidal', 83, 'cut-short', ['truncated'], { cut_to: 0.6 }),
+      c('2026-06-26', 's2c1', 'pyramidal', 83, 'cut-short', ['cut short'], { cut_to: 0.6 }),
       c('2026-06-26', 's2c2', 'pyramidal', 110, 'none', [], { text: 'spaces', file: 's2c2.txt' }),
     ],
   },
