@@ -138,10 +138,17 @@ export function yAxis(scale: Scale, x: number, title: string, unit: string, acro
   ].join('');
 }
 
-/** A level across the chart with its name and value at the right end. */
-export function level(scale: Scale, value: number, from: number, to: number, name: string, className: string): string {
+/** A level across the chart with its name and value at the right end, on the side away from the data. */
+export function level(
+  scale: Scale,
+  value: number,
+  from: number,
+  to: number,
+  name: string,
+  side: 'above' | 'below',
+): string {
   const y = scale(value);
-  return line(from, y, to, y, className) + label(to, y - 4, name, 'level-name', 'end');
+  return line(from, y, to, y, 'level') + label(to, side === 'above' ? y - 4 : y + 12, name, 'level-name', 'end');
 }
 
 /** Path data through points; gaps where a value is not finite. */

@@ -1,6 +1,19 @@
 /** Fewer points for the same picture: nothing narrow is lost, nothing flat is drawn twice. */
 import type { Envelope } from '../../pipeline/measure/types.ts';
 
+/** The envelope with its unreadable columns left open: NaN, so that no line is drawn across them. */
+export function withGaps(envelope: Envelope): Envelope {
+  if (!envelope.gaps || envelope.gaps.length === 0) return envelope;
+  const low = [...envelope.low];
+  const high = [...envelope.high];
+  for (const [first, end] of envelope.gaps)
+    for (let column = first; column < end; column++) {
+      low[column] = Number.NaN;
+      high[column] = Number.NaN;
+    }
+  return { ...envelope, low, high };
+}
+
 /** Joins neighbouring columns until there are at most `columns`; each keeps the lowest and highest of its part. */
 export function coarser(envelope: Envelope, columns: number): Envelope {
   const n = envelope.low.length;
@@ -40,9 +53,10 @@ export function* envelopeLine(envelope: Envelope, narrow: number): Generator<[nu
       continue;
     }
     const upward = !(Math.abs(last - low) > Math.abs(last - high));
-    yield [t, upward ? low : high];
+    // A quarter of a column apart from its middle, so that a steady slope is drawn as one and not as a stair.
+    yield [t - width / 4, upward ? low : high];
     last = upward ? high : low;
-    yield [t, last];
+    yield [t + width / 4, last];
   }
 }
 

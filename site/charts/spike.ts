@@ -99,10 +99,10 @@ export function spikeChart(input: SpikeChartInput): Chart | null {
     yAxis(y, left, 'Membrane potential', 'mV', right),
     ...(input.e_na_mv === null
       ? []
-      : [level(y, input.e_na_mv, left, right, `E_Na ${number(input.e_na_mv, 0)} mV`, 'level')]),
+      : [level(y, input.e_na_mv, left, right, `E_Na ${number(input.e_na_mv, 0)} mV`, 'above')]),
     ...(input.e_k_mv === null
       ? []
-      : [level(y, input.e_k_mv, left, right, `E_K ${number(input.e_k_mv, 0)} mV`, 'level')]),
+      : [level(y, input.e_k_mv, left, right, `E_K ${number(input.e_k_mv, 0)} mV`, 'below')]),
     element('path', { d: thinned(points, x, y), class: 'trace' }),
     ...landmarks(spike, zeroS, x, y),
     xAxis(x, bottom + 18, 'Time from threshold', 'ms', 6),

@@ -17,7 +17,7 @@ import {
   yAxis,
   yScale,
 } from './frame.ts';
-import { coarser, envelopeLine, simplified } from './reduce.ts';
+import { coarser, envelopeLine, simplified, withGaps } from './reduce.ts';
 
 export interface SweepsChartOptions {
   width?: number;
@@ -32,6 +32,8 @@ export interface SweepsChartOptions {
 }
 
 const columns = 440;
+
+const open = (envelope: Envelope | null): Envelope | null => envelope && withGaps(envelope);
 
 function windowed(envelope: Envelope, from: number, to: number): Envelope {
   const n = envelope.low.length;
@@ -104,8 +106,8 @@ export function sweepGroups(sweeps: readonly SweepRow[]): SweepRow[][] {
  */
 export function sweepsChart(sweeps: readonly SweepRow[], options: SweepsChartOptions = {}): Chart | null {
   const clamp = sweeps[0]?.clamp ?? 'current';
-  const main = (sweep: SweepRow) => (clamp === 'current' ? sweep.voltage_envelope : sweep.current_envelope);
-  const below = (sweep: SweepRow) => (clamp === 'current' ? sweep.current_envelope : sweep.voltage_envelope);
+  const main = (sweep: SweepRow) => open(clamp === 'current' ? sweep.voltage_envelope : sweep.current_envelope);
+  const below = (sweep: SweepRow) => open(clamp === 'current' ? sweep.current_envelope : sweep.voltage_envelope);
   const drawn = sweeps.filter((sweep) => (main(sweep)?.low.length ?? 0) > 1);
   if (drawn.length === 0) return null;
   const from = options.from_s ?? Math.min(...drawn.map((sweep) => main(sweep)!.start_s));
@@ -165,11 +167,11 @@ export function sweepsChart(sweeps: readonly SweepRow[], options: SweepsChartOpt
 
 function equilibriumLevels(y: Scale, frame: Frame, options: SweepsChartOptions): string[] {
   const right = frame.width - frame.margins.right;
-  const one = (value: number | null | undefined, name: string): string =>
+  const one = (value: number | null | undefined, name: string, side: 'above' | 'below'): string =>
     value === null || value === undefined
       ? ''
-      : level(y, value, frame.margins.left, right, `${name} ${number(value, 0)} mV`, 'level');
-  return [one(options.e_na_mv, 'E_Na'), one(options.e_k_mv, 'E_K')];
+      : level(y, value, frame.margins.left, right, `${name} ${number(value, 0)} mV`, side);
+  return [one(options.e_na_mv, 'E_Na', 'above'), one(options.e_k_mv, 'E_K', 'below')];
 }
 
 function altOf(

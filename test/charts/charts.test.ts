@@ -5,7 +5,7 @@ import type { ConditionMeasure, Envelope, Excerpt, Spike } from '../../pipeline/
 import { controlChart, eventLetter } from '../../site/charts/control-chart.ts';
 import { fewestForLimits, individualsLimits } from '../../site/charts/control-limits.ts';
 import { domainOf } from '../../site/charts/frame.ts';
-import { coarser, envelopeLine, simplified } from '../../site/charts/reduce.ts';
+import { coarser, envelopeLine, simplified, withGaps } from '../../site/charts/reduce.ts';
 import { fiChart, viChart } from '../../site/charts/relations.ts';
 import { sessionStrip } from '../../site/charts/session.ts';
 import { phasePlane, spikeChart } from '../../site/charts/spike.ts';
@@ -53,6 +53,11 @@ describe('fewer points for the same picture', () => {
     expect(reduced.high).toHaveLength(90);
     expect(Math.max(...reduced.high)).toBe(42);
     expect(Math.max(...[...envelopeLine(reduced, 1)].map(([, value]) => value))).toBe(42);
+  });
+  test('columns listed as unreadable are left open', () => {
+    const open = withGaps({ ...envelope([1, 2, 3, 4], [2, 3, 4, 5]), gaps: [[1, 3]] });
+    expect(open.low).toEqual([1, Number.NaN, Number.NaN, 4]);
+    expect(open.high).toEqual([2, Number.NaN, Number.NaN, 5]);
   });
   test('gaps stay gaps', () => {
     const reduced = coarser(envelope([1, Number.NaN, Number.NaN, 1], [2, Number.NaN, Number.NaN, 2]), 4);
