@@ -1,5 +1,5 @@
 /** The output folder: never half written, never somebody else's. */
-import { existsSync, mkdirSync, mkdtempSync, readdirSync, renameSync, rmSync, writeFileSync } from 'node:fs';
+import { chmodSync, existsSync, mkdirSync, mkdtempSync, readdirSync, renameSync, rmSync, writeFileSync } from 'node:fs';
 import path from 'node:path';
 import { UserError } from './errors.ts';
 
@@ -59,6 +59,8 @@ function removeLeftovers(out: string): void {
 /** Moves a finished folder into the place of the previous output. */
 export function finishOutput(fresh: string, out: string, mark: object): void {
   writeFileSync(path.join(fresh, markName), `${JSON.stringify(mark, null, 2)}\n`);
+  // A temporary folder is closed to others; an almanac on a shared drive is for them.
+  chmodSync(fresh, 0o777 & ~process.umask());
   const previous = path.join(path.dirname(out), `.${path.basename(out)}-previous-${process.pid}`);
   if (existsSync(out)) renameSync(out, previous);
   renameSync(fresh, out);

@@ -1,4 +1,4 @@
-import { existsSync, mkdirSync, mkdtempSync, readdirSync, readFileSync, writeFileSync } from 'node:fs';
+import { existsSync, mkdirSync, mkdtempSync, readdirSync, readFileSync, statSync, writeFileSync } from 'node:fs';
 import os from 'node:os';
 import path from 'node:path';
 import { beforeEach, describe, expect, test } from 'vitest';
@@ -52,6 +52,10 @@ describe('finishing', () => {
     }
     expect(readdirSync(folder).sort()).toEqual(['archive', 'site']);
     expect(existsSync(at('site', markName))).toBe(true);
+  });
+  test('others may read it as they may read any new folder', () => {
+    finishOutput(startOutput(at('site')), at('site'), {});
+    expect(statSync(at('site')).mode & 0o777).toBe(0o777 & ~process.umask());
   });
   test('what a killed build left is cleared by the next one, which leaves the finished one alone', () => {
     finishOutput(startOutput(at('site')), at('site'), {});
