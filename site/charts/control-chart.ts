@@ -127,7 +127,7 @@ function dot(
   const name = `${point.cell}, ${point.standing}, ${longDate(point.date)}: ${withUnit(id, point.value)}${beyond ? ', beyond the limits' : ''}`;
   return element(
     'a',
-    { href: point.href, class: `dot ${point.standing}`, 'aria-label': name },
+    { href: point.href, class: `dot ${point.standing}` },
     element('title', {}, escapeText(name)) +
       element('circle', { cx: at.x, cy: at.y, r: 8, class: 'reach' }) +
       (beyond ? element('circle', { cx: at.x, cy: at.y, r: 6.5, class: 'beyond' }) : '') +

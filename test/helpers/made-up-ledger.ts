@@ -14,7 +14,8 @@ import { ledgerFile, openLedger } from '../../pipeline/ledger/write.ts';
 import { isQuantity, quantitiesOf, quantity } from '../../pipeline/measure/quantities.ts';
 import type { ConditionMeasure, Envelope, Reading, Readings, Spike } from '../../pipeline/measure/types.ts';
 
-export type MadeUpKind = 'many' | 'one' | 'empty';
+/** `some` is `many` with fewer cells, for what takes long on each page. */
+export type MadeUpKind = 'many' | 'some' | 'one' | 'empty';
 
 /** The same numbers on every machine. */
 function seeded(seed: number) {
@@ -661,11 +662,14 @@ export async function makeUpLedger(
   kind: MadeUpKind,
 ): Promise<{ ledgerFile: string; archiveRoot: string; cells: CellRow[] }> {
   const random = seeded(20260112);
-  const wanted = kind === 'empty' ? [] : drafts(random).slice(0, kind === 'one' ? 1 : undefined);
+  const every = drafts(random);
+  const chosen = { many: every, some: [...every.slice(0, 8), ...every.slice(-6)], one: every.slice(0, 1), empty: [] };
+  const wanted = chosen[kind];
+  const full = kind === 'many' || kind === 'some';
   const cells = wanted.map((draft, index) => cellFrom(draft, 1000 + index));
   cells.sort((a, b) => (a.row.cell < b.row.cell ? -1 : 1));
   const rows = cells.map((cell) => cell.row);
-  if (kind === 'many') {
+  if (full) {
     rows[2]!.decisions = [
       {
         cell: rows[2]!.cell,
@@ -677,42 +681,39 @@ export async function makeUpLedger(
       },
     ];
   }
-  const notes = kind === 'many' ? notesFor(rows) : [];
+  const notes = full ? notesFor(rows) : [];
   const dates = rows.flatMap((row) => (row.date === null ? [] : [row.date])).sort();
   const archive: ArchiveRow = {
-    settings:
-      kind === 'many'
-        ? settings
-        : {
-            ...settings,
-            rigs: {},
-            people: {},
-            title: kind === 'one' ? 'One cell' : 'Nothing yet',
-            lab: '',
-          },
-    recipes: kind === 'many' ? recipes : [],
-    events:
-      kind === 'many'
-        ? [
-            { date: '2026-01-26', text: 'New perfusion pump', rig: 'b', kind: 'pump', line: 1 },
-            { date: '2026-02-16', text: 'New batch of pipette solution', rig: null, kind: 'batch', line: 2 },
-          ]
-        : [],
+    settings: full
+      ? settings
+      : {
+          ...settings,
+          rigs: {},
+          people: {},
+          title: kind === 'one' ? 'One cell' : 'Nothing yet',
+          lab: '',
+        },
+    recipes: full ? recipes : [],
+    events: full
+      ? [
+          { date: '2026-01-26', text: 'New perfusion pump', rig: 'b', kind: 'pump', line: 1 },
+          { date: '2026-02-16', text: 'New batch of pipette solution', rig: null, kind: 'batch', line: 2 },
+        ]
+      : [],
     criteria: [],
-    problems:
-      kind === 'many'
-        ? [
-            {
-              path: 'recordings/2026-02-10/folder.yaml',
-              line: 3,
-              code: 'FACT_UNKNOWN',
-              weight: 'warns',
-              place: 'facts.temprature',
-              message: 'No fact is called "temprature".',
-              remedy: 'Did you mean "temperature_c"?',
-            },
-          ]
-        : [],
+    problems: full
+      ? [
+          {
+            path: 'recordings/2026-02-10/folder.yaml',
+            line: 3,
+            code: 'FACT_UNKNOWN',
+            weight: 'warns',
+            place: 'facts.temprature',
+            message: 'No fact is called "temprature".',
+            remedy: 'Did you mean "temperature_c"?',
+          },
+        ]
+      : [],
     version: '0.1.0',
     latest_date: dates.at(-1) ?? null,
   };

@@ -12,13 +12,14 @@ import { findChromium } from '../tooling/prepare.ts';
 import { serve } from './serve.ts';
 
 let folder: string;
-let sites: { many: string; one: string; empty: string };
+let sites: { many: string; some: string; one: string; empty: string };
 let browser: Browser;
 
 beforeAll(async () => {
   folder = mkdtempSync(path.join(os.tmpdir(), 'almanac-site-test-'));
   sites = {
     many: buildMadeUpSite('many', path.join(folder, 'many')),
+    some: buildMadeUpSite('some', path.join(folder, 'some')),
     one: buildMadeUpSite('one', path.join(folder, 'one')),
     empty: buildMadeUpSite('empty', path.join(folder, 'empty')),
   };
@@ -153,23 +154,45 @@ async function troublesOf(page: Page, address: string): Promise<string[]> {
 }
 
 describe('in the browser', () => {
-  test('nothing is amiss from a folder, and fonts and scripts are in force', async () => {
-    for (const site of Object.values(sites))
-      for (const name of oneOfEach(site)) {
-        const page = await browser.newPage();
-        expect(await troublesOf(page, at(site, name)), name).toEqual([]);
-        expect(await page.evaluate(() => document.documentElement.classList.contains('scripted'))).toBe(true);
-        expect(
-          await page.evaluate(() => [...document.fonts].filter((font) => font.status === 'loaded').length),
-        ).toBeGreaterThan(2);
-        await page.close();
-      }
+  const visit = async (site: string, name: string): Promise<void> => {
+    const page = await browser.newPage({ viewport: { width: 390, height: 844 } });
+    expect(await troublesOf(page, at(site, name)), name).toEqual([]);
+    const inForce = await page.evaluate(() => ({
+      scripts: document.documentElement.classList.contains('scripted'),
+      fonts: [...document.fonts].filter((font) => font.status === 'loaded').length,
+      ranks: [...document.querySelectorAll('h1,h2,h3,h4,h5,h6')].map((head) => Number(head.tagName[1])),
+    }));
+    expect(inForce.scripts).toBe(true);
+    expect(inForce.fonts).toBeGreaterThan(2);
+    expect(
+      inForce.ranks.filter((rank) => rank === 1),
+      `${name}: one first heading`,
+    ).toHaveLength(1);
+    inForce.ranks.forEach((rank, i) => {
+      if (i > 0) expect(rank - inForce.ranks[i - 1]!, `${name}, heading ${i}`).toBeLessThanOrEqual(1);
+    });
+    // A phone, and a window of 1280 pixels at 200 % zoom.
+    for (const width of [390, 640]) {
+      await page.setViewportSize({ width, height: 844 });
+      const needed = await page.evaluate(() => document.documentElement.scrollWidth);
+      expect(needed, `${name} at ${width}`).toBeLessThanOrEqual(width);
+    }
+    await page.close();
+  };
+
+  test('every kind of page opens from a folder without trouble, headings in order, nothing wider than a phone', async () => {
+    for (const name of oneOfEach(sites.some)) await visit(sites.some, name);
+    await visit(sites.many, 'cells/index.html');
+  });
+
+  test('an archive of one cell and an empty one open as well', async () => {
+    for (const site of [sites.one, sites.empty]) for (const name of kinds.slice(0, 4)) await visit(site, name);
   });
 
   test('nothing is amiss from a server under a path of its own', async () => {
-    const server = await serve(sites.many, '/lab/cells/');
+    const server = await serve(sites.some, '/lab/cells/');
     try {
-      for (const name of oneOfEach(sites.many)) {
+      for (const name of oneOfEach(sites.some)) {
         const page = await browser.newPage();
         expect(await troublesOf(page, server.address + name), name).toEqual([]);
         await page.close();
@@ -195,9 +218,9 @@ describe('in the browser', () => {
 
   const axe = async (colorScheme: 'light' | 'dark', rules?: string[]): Promise<void> => {
     const context = await browser.newContext({ colorScheme });
-    for (const name of oneOfEach(sites.many)) {
+    for (const name of oneOfEach(sites.some)) {
       const page = await context.newPage();
-      await page.goto(at(sites.many, name));
+      await page.goto(at(sites.some, name));
       const builder = new AxeBuilder({ page });
       const { violations } = await (rules ? builder.withRules(rules) : builder).analyze();
       const found = violations.map(
@@ -215,41 +238,6 @@ describe('in the browser', () => {
   test('axe finds nothing on any kind of page', () => axe('light'), 300_000);
   // Only colours differ in the dark.
   test('axe finds no weak contrast in the dark', () => axe('dark', ['color-contrast']), 300_000);
-
-  test('no page scrolls sideways on a phone, nor at 200 % zoom', async () => {
-    for (const width of [390, 640]) {
-      const context = await browser.newContext({ viewport: { width, height: 844 } });
-      for (const site of Object.values(sites))
-        for (const name of oneOfEach(site)) {
-          const page = await context.newPage();
-          await page.goto(at(site, name));
-          expect(
-            await page.evaluate(() => document.documentElement.scrollWidth),
-            `${name} at ${width}`,
-          ).toBeLessThanOrEqual(width);
-          await page.close();
-        }
-      await context.close();
-    }
-  });
-
-  test('headings come in order, one of the first rank', async () => {
-    const page = await browser.newPage();
-    for (const name of oneOfEach(sites.many)) {
-      await page.goto(at(sites.many, name));
-      const ranks = await page.evaluate(() =>
-        [...document.querySelectorAll('h1,h2,h3,h4,h5,h6')].map((head) => Number(head.tagName[1])),
-      );
-      expect(
-        ranks.filter((rank) => rank === 1),
-        name,
-      ).toHaveLength(1);
-      ranks.forEach((rank, i) => {
-        if (i > 0) expect(rank - ranks[i - 1]!, `${name}, heading ${i}`).toBeLessThanOrEqual(1);
-      });
-    }
-    await page.close();
-  });
 
   test('without scripts the table of cells stands whole, and no dead control shows', async () => {
     const context = await browser.newContext({ javaScriptEnabled: false });
