@@ -11,8 +11,7 @@ Exit status
   2  wrong usage
   3  done, but --strict was given and something was unread or unsound`;
 
-const describe = `Reads a folder of intracellular recordings, measures every sweep, says which can be trusted and why,
-and writes a static site. The archive is never written to. For research quality control; not a medical device.`;
+const describe = `Reads a folder of intracellular recordings, measures every sweep, says which can be trusted and why, and writes a static site. The archive is never written to. For research quality control; not a medical device.`;
 
 const wholeNumber =
   (least: number) =>
@@ -26,6 +25,10 @@ const wholeNumber =
 const print = (text: string): void => {
   process.stdout.write(`${text}\n`);
 };
+
+/** A path as it must be typed in a shell. */
+const asTyped = (file: string): string =>
+  /^[\w./~+@%:,=-]+$/.test(file) ? file : `'${file.replaceAll("'", "'\\''")}'`;
 
 interface CommonOptions {
   quiet?: boolean;
@@ -70,14 +73,20 @@ async function runList(archive: string, options: CommonOptions): Promise<void> {
 
 async function runNew(folder: string): Promise<void> {
   const { writeSkeleton } = await import('../archive/skeleton.ts');
-  const written = writeSkeleton(folder);
+  let written: string[];
+  try {
+    written = writeSkeleton(folder);
+  } catch (error) {
+    // Its errors are sentences for people.
+    throw new UserError((error as Error).message);
+  }
   print(
     [
       `A new archive stands in ${folder}:`,
       ...written.map((file) => `  ${file}`),
       '',
       'Next: copy recordings into it, say in folder.yaml what holds for them, and look at how they are understood:',
-      `  sweep-almanac list ${folder}`,
+      `  sweep-almanac list ${asTyped(folder)}`,
     ].join('\n'),
   );
 }
