@@ -170,4 +170,10 @@ async function main(): Promise<void> {
   }
 }
 
+// Whoever reads the output may stop early, as "| head" does: that is no error.
+process.stdout.on('error', (error: NodeJS.ErrnoException) => {
+  if (error.code !== 'EPIPE') throw error;
+  process.exit();
+});
+
 await main();
