@@ -13,7 +13,7 @@ import { type Head, readHead } from './text-lines.ts';
 import type { Precision } from './text-numbers.ts';
 import { type ColumnRole, planTable, sampleRows, sidecarFor, type TablePlan } from './text-plan.ts';
 import { readRowTable } from './text-rows.ts';
-import { currentFactor, potentialUnit, type Size, sizeOf } from './text-scale.ts';
+import { currentFactor, potentialUnit, restingUnit, type Size, sizeOf } from './text-scale.ts';
 import {
   clampOf,
   floatNoise,
@@ -208,6 +208,37 @@ function settleScales(
   });
 }
 
+/**
+ * Where one unnamed column is no potential, the lines to paste must name the others too: naming one column alone would
+ * have the rest left out.
+ */
+function askingForAll<Result>(
+  roles: readonly ColumnRole[],
+  values: readonly Float64Array[],
+  settle: () => Result,
+): Result {
+  try {
+    return settle();
+  } catch (error) {
+    if (!(error instanceof FormatError) || error.problem.code !== 'COLUMN_MEANING_UNKNOWN') throw error;
+    const units = values.map((column) => restingUnit(sizeOf(column)));
+    const stated = units.filter((unit) => unit !== null);
+    const [unit] = stated;
+    if (unit === undefined || stated.some((one) => one !== unit)) throw error;
+    const { weight: _, ...problem } = error.problem;
+    const potentials = roles.filter((_role, index) => units[index] !== null);
+    const others = roles.filter((_role, index) => units[index] === null);
+    throw new FormatError({
+      ...problem,
+      remedy: 'Say in the sidecar which columns are what: this is what their numbers suggest, to be checked.',
+      sidecar: sidecarFor({
+        voltage: `{ columns: ${columnList(potentials)}, unit: ${unit} }`,
+        current: `{ columns: ${columnList(others)}, unit: pA }   # or nA; or leave the line out`,
+      }),
+    });
+  }
+}
+
 /** Problems that differ only in the column they speak of, said once. */
 function merged(problems: readonly Problem[]): Problem[] {
   const byCode = new Map<string, Problem[]>();
@@ -250,7 +281,7 @@ function readTable(path: string, head: Head, dialect: Dialect, hints: ReadingHin
   const currents = series.slice(voltage.length);
   const scales: Problem[] = [];
   const voltageScales = settleScales(voltage, voltages, (role, size) => {
-    const unit = potentialUnit(role, size, scales);
+    const unit = askingForAll(voltage, voltages, () => potentialUnit(role, size, scales));
     return { factor: unit.factor, unit: unit.name };
   });
   const capacitance = mapping?.capacitance_pf ?? hints.capacitance_pf;

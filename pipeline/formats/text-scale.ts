@@ -26,14 +26,19 @@ export function sizeOf(values: Float64Array): Size {
 const ask = (role: ColumnRole, kind: 'voltage' | 'current', unit: string): string =>
   sidecarFor({ [kind]: `{ columns: [${role.column + 1}], unit: ${unit} }` });
 
+/** The unit in which the numbers of an unnamed column stand where cells rest; null where there is none. */
+export function restingUnit(size: Size): string | null {
+  const guess = potentialUnitBySize(size.largest);
+  const mv = guess === null ? 0 : size.median * parseUnit(guess)!.factor;
+  return mv >= -130 && mv <= -15 ? guess : null;
+}
+
 /** Unit of a column of potentials. */
 export function potentialUnit(role: ColumnRole, size: Size, problems: Problem[]): Unit {
   if (role.unit) return role.unit;
   const guess = potentialUnitBySize(size.largest);
-  const mv = guess === null ? 0 : size.median * parseUnit(guess)!.factor;
   // A column nobody named is taken for a potential only where it mostly stands where cells rest.
-  const restful = mv >= -130 && mv <= -15;
-  if (guess === null || (role.guessed && !restful))
+  if (guess === null || (role.guessed && restingUnit(size) === null))
     throw new FormatError({
       code: role.guessed ? 'COLUMN_MEANING_UNKNOWN' : 'UNIT_UNKNOWN',
       place: role.name,

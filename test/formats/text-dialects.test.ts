@@ -192,6 +192,19 @@ describe('what must be asked', () => {
     expect(problem.sidecar).toContain('current: { columns: [2], unit: pA }');
   });
 
+  test('a column that could be anything beside potentials: the lines name them all, and work when pasted', async () => {
+    const text = column((row) => `${time(row)},${volt(row)},${volt(row)},${row % 5},${row % 7}`);
+    const problem = await ask(text);
+    expect(problem.code).toBe('COLUMN_MEANING_UNKNOWN');
+    expect(problem.sidecar).toMatch(
+      /^table:\n {2}voltage: \{ columns: \[2, 3\], unit: mV \}\n {2}current: \{ columns: \[4, 5\], unit: pA \}/,
+    );
+    const file = await open(textFile(folder, text), {
+      table: { voltage: { columns: [2, 3], unit: 'mV' }, current: { columns: [4, 5], unit: 'pA' } },
+    });
+    expect(file.read('column 3').current!.samples[6]).toBe(6);
+  });
+
   test('commas that may part columns or decimals', async () => {
     expect((await ask(column((row) => `${(row * 7) % 11},${10 + (row % 80)}`))).code).toBe('TABLE_AMBIGUOUS');
   });
