@@ -75,6 +75,9 @@ export async function openHdf5(path: string): Promise<Hdf5> {
   }
 }
 
+/** Where in its own source the library gave up: of use to nobody who has a file to mend. */
+const inTheLibrary = /^#\d+: \S+ line \d+ in \w+\(\): /;
+
 /** The library's long message, cut to what says something. */
 export function libraryMessage(error: unknown): string {
   const text = error instanceof Error ? error.message : String(error);
@@ -85,7 +88,11 @@ export function libraryMessage(error: unknown): string {
   const telling = lines.find((line) =>
     /truncated|required filter|unable to|can't|bad |wrong|corrupt|abort/i.test(line),
   );
-  return (telling ?? lines[0] ?? 'no reason given').replace(/\s+/g, ' ').slice(0, 200);
+  return (telling ?? lines[0] ?? 'no reason given')
+    .replace(/\s+/g, ' ')
+    .replace(inTheLibrary, '')
+    .replace(/[.\s]+$/, '')
+    .slice(0, 200);
 }
 
 /** What a failure of the library means for a person. */

@@ -126,6 +126,12 @@ test('the signature alone', async () => {
   expect((await refusal(() => open(copy(whole.subarray(0, 8))))).code).toBe('HDF5_DAMAGED');
 });
 
+test('a failure is told without the place in the library’s own source', async () => {
+  const { message } = await refusal(() => open(copy(whole.subarray(0, 8))));
+  expect(message).toMatch(/^HDF5 cannot read this: \w/);
+  expect(message).not.toMatch(/\.c line|#\d|build\//);
+});
+
 test('a compressed piece of one sweep overwritten: that sweep is refused, the others are read', async () => {
   // The first chunk of deflated samples begins with the mark of its compressor, 78 5e.
   const at = whole.indexOf(Uint8Array.of(0x78, 0x5e));
