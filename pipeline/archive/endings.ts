@@ -12,6 +12,9 @@ export const recordingEndings: Readonly<Record<string, FormatId>> = {
   '.tab': 'text',
 };
 
+/** Said of HDF5 under a name that is not NWB's. */
+export const strayHdf5 = 'HDF5 that does not call itself NWB; if it is an NWB file, let its name end in .nwb';
+
 const groups: readonly [string, readonly string[]][] = [
   ['a picture', ['.png', '.jpg', '.jpeg', '.gif', '.svg', '.tif', '.tiff', '.bmp', '.webp', '.eps', '.heic', '.ico']],
   ['a film or sound', ['.mp4', '.avi', '.mov', '.mkv', '.mp3']],
@@ -28,7 +31,7 @@ const groups: readonly [string, readonly string[]][] = [
   ],
   ['program text', ['.py', '.m', '.r', '.jl', '.ipynb', '.js', '.ts', '.c', '.cpp', '.h', '.sh', '.bat', '.pro']],
   ['settings or metadata', ['.json', '.xml', '.ini', '.toml', '.cfg', '.yaml', '.yml', '.properties']],
-  ['HDF5 that does not call itself NWB; if it is an NWB file, let its name end in .nwb', ['.h5', '.hdf5', '.hdf']],
+  [strayHdf5, ['.h5', '.hdf5', '.hdf']],
   [
     'an open format that this version does not read; it reads NWB (.nwb) and delimited text (.csv, .tsv, .txt, .dat, .asc, .tab)',
     ['.npy', '.npz', '.edf', '.bdf', '.wav', '.mat', '.parquet'],
@@ -54,12 +57,15 @@ export function reasonByName(name: string): string | null {
 /** Said of binary files that nothing claims. */
 export const notOpen = 'not one of the open formats this tool reads';
 
+const hdf5Signature = [0x89, 0x48, 0x44, 0x46, 0x0d, 0x0a, 0x1a, 0x0a];
+
 /**
- * What the first bytes of a file are: text, text without a single digit, binary, or nothing at all.
+ * What the first bytes of a file are: text, text without a single digit, HDF5, other binary, or nothing at all.
  * UTF-16 counts as text where it says so with its byte order mark.
  */
-export function natureOf(head: Uint8Array): 'empty' | 'text' | 'prose' | 'binary' {
+export function natureOf(head: Uint8Array): 'empty' | 'text' | 'prose' | 'hdf5' | 'binary' {
   if (head.length === 0) return 'empty';
+  if (hdf5Signature.every((byte, index) => head[index] === byte)) return 'hdf5';
   const utf16 = (head[0] === 0xff && head[1] === 0xfe) || (head[0] === 0xfe && head[1] === 0xff);
   if (!utf16 && head.some((byte) => byte < 7 || (byte > 13 && byte < 27))) return 'binary';
   return head.some((byte) => byte >= 0x30 && byte <= 0x39) ? 'text' : 'prose';

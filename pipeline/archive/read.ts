@@ -3,7 +3,7 @@ import { closeSync, openSync, readFileSync, readSync, realpathSync, statSync } f
 import path from 'node:path';
 import type { FormatId, Problem, ReadingHints, TableMapping } from '../formats/types.ts';
 import { bareSettings, readAlmanac, readCriteria, readDecisions, readEvents, readRecipe } from './almanac.ts';
-import { endingOf, natureOf, notOpen, reasonByName, recordingEndings } from './endings.ts';
+import { endingOf, natureOf, notOpen, reasonByName, recordingEndings, strayHdf5 } from './endings.ts';
 import { factKey, nearestOf, shippedClasses } from './fact-keys.ts';
 import { type FactsTable, readFactsTable } from './facts-table.ts';
 import { derivedIds, stemOf } from './ids.ts';
@@ -439,6 +439,7 @@ function claimOf(
   if (format === 'nwb') return { format };
   const nature = headOf(path.join(root, met.path));
   if (nature === null) return format ? { format } : { reason: 'a file that could not be opened' };
+  if (nature === 'hdf5') return { reason: strayHdf5 };
   if (nature === 'binary') return { reason: notOpen };
   if (format !== undefined)
     return nature === 'prose' ? { reason: 'text without a number in its first lines' } : { format };

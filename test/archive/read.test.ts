@@ -439,6 +439,15 @@ test('a pipe is never opened', () => {
   });
 });
 
+test('HDF5 under the name of a table is told as what it is', () => {
+  const archive = archiveWith({ 'r/a.csv': '' });
+  writeFileSync(path.join(archive.root, 'r/a.csv'), Buffer.from([0x89, 0x48, 0x44, 0x46, 0x0d, 0x0a, 0x1a, 0x0a, 0]));
+  expect(readArchive(archive.root).files[0]).toMatchObject({
+    kind: 'other',
+    reason: 'HDF5 that does not call itself NWB; if it is an NWB file, let its name end in .nwb',
+  });
+});
+
 test('a name that no text can hold does not stop the rest', () => {
   const folder = folderWith({ 'r/a.nwb': '' });
   mkdirSync(path.join(folder, 'q'));
