@@ -1,6 +1,7 @@
 import { rmSync } from 'node:fs';
 import path from 'node:path';
 import { pathToFileURL } from 'node:url';
+import { count } from '../formats/problems.ts';
 import { openLedgerReader } from '../ledger/read.ts';
 import { ledgerFile, openLedger } from '../ledger/write.ts';
 import { buildSite } from '../publish/site.ts';
@@ -64,12 +65,12 @@ export async function build(archiveFolder: string, options: BuildOptions): Promi
 }
 
 function summarize(gathered: Gathered, out: string, seconds: number): BuildSummary {
-  const count = (state: string): number => gathered.files.filter((file) => file.state === state).length;
+  const inState = (state: string): number => gathered.files.filter((file) => file.state === state).length;
   const standings: Record<string, number> = { sound: 0, caution: 0, unsound: 0, unread: 0 };
   for (const cell of gathered.cells) standings[cell.standing] = (standings[cell.standing] ?? 0) + 1;
   return {
     out,
-    files: { read: count('read'), unread: count('unread'), other: count('other') },
+    files: { read: inState('read'), unread: inState('unread'), other: inState('other') },
     cells: gathered.cells.length,
     subjects: new Set(gathered.cells.map((cell) => cell.subject).filter((subject) => subject !== null)).size,
     standings,
@@ -87,11 +88,13 @@ export function summaryLines(summary: BuildSummary): string[] {
   const { files, standings } = summary;
   const page = path.join(summary.out, 'index.html');
   return [
-    `${files.read} recordings read, ${files.unread} unread, ${files.other} other files`,
-    `${summary.cells} cells from ${summary.subjects} subjects, ${summary.sweeps} sweeps, ${summary.spikes} spikes`,
+    `${count(files.read, 'recording')} read, ${files.unread} unread, ${count(files.other, 'other file')}`,
+    `${count(summary.cells, 'cell')} from ${count(summary.subjects, 'subject')}, ${count(summary.sweeps, 'sweep')}, ${count(summary.spikes, 'spike')}`,
     `standing: ${standings['sound']} sound, ${standings['caution']} caution, ${standings['unsound']} unsound, ${standings['unread']} unread`,
     ...(summary.problems > 0
-      ? [`${summary.problems} remarks on the archive's own files: see its data page, or run "sweep-almanac list"`]
+      ? [
+          `${count(summary.problems, 'remark')} on the archive's own files: see its files page, or run "sweep-almanac list"`,
+        ]
       : []),
     `${summary.seconds} s, at most ${summary.peak_memory_mb} MB of memory, ${summary.opened === 0 ? 'no file had to be opened' : `${summary.opened} openings of files`}`,
     `Open ${pathToFileURL(page).href}`,

@@ -1,6 +1,7 @@
 import { workOutCells } from '../archive/cells.ts';
 import { readArchive } from '../archive/read.ts';
 import type { Archive, CellRecord } from '../archive/types.ts';
+import { count } from '../formats/problems.ts';
 import type { Problem } from '../formats/types.ts';
 import type { SurveyedFile } from '../ledger/types.ts';
 import { defaultJobs, requireArchive } from './arguments.ts';
@@ -58,6 +59,10 @@ const stateOf = (file: SurveyedFile): 'read' | 'unread' | 'other' => {
   return 'read';
 };
 
+/** What the archive says may hold line ends and signals to the terminal; they are shown, not obeyed. */
+const shown = (text: string): string =>
+  text.replace(/\p{Cc}/gu, (one) => `\\x${one.charCodeAt(0).toString(16).padStart(2, '0')}`);
+
 const indent = (text: string, by: string): string =>
   text
     .trimEnd()
@@ -68,8 +73,8 @@ const indent = (text: string, by: string): string =>
 function problemLines(problem: Problem & { line?: number | null }): string[] {
   const place = [problem.line ? `line ${problem.line}` : '', problem.place].filter((one) => one !== '').join(', ');
   return [
-    `      ${problem.code}${place ? ` (${place})` : ''}: ${problem.message}`,
-    `      ${problem.remedy}`,
+    `      ${problem.code}${place ? ` (${shown(place)})` : ''}: ${shown(problem.message)}`,
+    `      ${shown(problem.remedy)}`,
     ...(problem.sidecar ? [indent(problem.sidecar, '        | ')] : []),
   ];
 }
@@ -83,20 +88,23 @@ function fileLines(file: SurveyedFile): string[] {
         ? file.found.reason
         : (file.failure?.message ?? '')
       : description
-        ? `${description.format_label}, ${description.sweeps.length} sweeps`
+        ? `${description.format_label}, ${count(description.sweeps.length, 'sweep')}`
         : (file.found.format ?? '');
   const problems = [...(file.failure && state !== 'other' ? [file.failure] : []), ...(description?.problems ?? [])];
-  return [`  ${state.padEnd(6)}  ${file.found.path}  ${what}`.trimEnd(), ...problems.flatMap(problemLines)];
+  return [
+    `  ${state.padEnd(6)}  ${shown(file.found.path)}  ${shown(what)}`.trimEnd(),
+    ...problems.flatMap(problemLines),
+  ];
 }
 
 function cellLines(cell: CellRecord): string[] {
-  const rates = [...new Set(cell.sweeps.map((sweep) => sweep.path))];
+  const paths = [...new Set(cell.sweeps.map((sweep) => sweep.path))];
   const missing = wantedFacts.filter((key) => cell.facts[key] === undefined);
   const known = ['class', 'date', 'rig', 'person', 'subject']
     .map((key) => cell.facts[key]?.value)
     .filter((value) => value !== undefined);
   return [
-    `  ${cell.id}  ${cell.sweeps.length} sweeps in ${rates.length} ${rates.length === 1 ? 'file' : 'files'}${known.length > 0 ? `  (${known.join(', ')})` : ''}`,
+    `  ${cell.id}  ${count(cell.sweeps.length, 'sweep')} in ${count(paths.length, 'file')}${known.length > 0 ? `  (${shown(known.join(', '))})` : ''}`,
     ...(missing.length > 0 ? [`      not stated: ${missing.join(', ')}`] : []),
   ];
 }
@@ -104,11 +112,11 @@ function cellLines(cell: CellRecord): string[] {
 /** The listing as text for a person. */
 export function listingLines(listing: Listing): string[] {
   const states = listing.files.map(stateOf);
-  const count = (state: string): number => states.filter((one) => one === state).length;
+  const inState = (state: string): number => states.filter((one) => one === state).length;
   return [
-    `${listing.archive.settings.title || listing.archive.root}`,
+    shown(listing.archive.settings.title || listing.archive.root),
     '',
-    `Files: ${listing.files.length} (${count('read')} can be read, ${count('unread')} cannot, ${count('other')} are no recordings)`,
+    `Files: ${listing.files.length} (${inState('read')} can be read, ${inState('unread')} cannot, ${inState('other')} are no recordings)`,
     ...listing.files.flatMap(fileLines),
     '',
     `Cells: ${listing.cells.length}`,
@@ -117,7 +125,7 @@ export function listingLines(listing: Listing): string[] {
     ...(listing.problems.length > 0
       ? [
           `Remarks on the archive's own files: ${listing.problems.length}`,
-          ...listing.problems.flatMap((problem) => [`  ${problem.path}`, ...problemLines(problem)]),
+          ...listing.problems.flatMap((problem) => [`  ${shown(problem.path)}`, ...problemLines(problem)]),
         ]
       : ['No remarks on the archive’s own files.']),
   ];
