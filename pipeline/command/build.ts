@@ -3,10 +3,11 @@ import path from 'node:path';
 import { pathToFileURL } from 'node:url';
 import { count } from '../formats/problems.ts';
 import { openLedgerReader } from '../ledger/read.ts';
-import { ledgerFile, openLedger } from '../ledger/write.ts';
+import { type Ledger, ledgerFile, openLedger } from '../ledger/write.ts';
 import { buildSite } from '../publish/site.ts';
 import { writeTables } from '../publish/tables.ts';
 import { defaultJobs, requireArchive } from './arguments.ts';
+import { UserError } from './errors.ts';
 import { type Gathered, gather } from './gather.ts';
 import { checkOutput, finishOutput, startOutput } from './output.ts';
 import type { Progress } from './progress.ts';
@@ -35,6 +36,21 @@ export interface BuildSummary {
   peak_memory_mb: number;
 }
 
+/** @throws UserError when the working folder cannot be made, or the ledger in it cannot be used */
+function ledgerIn(work: string): Ledger {
+  try {
+    return openLedger(work);
+  } catch (error) {
+    // What the ledger says is meant for people; what the system says when it makes the folder is not.
+    const { code, message } = error as NodeJS.ErrnoException;
+    throw new UserError(
+      code === undefined
+        ? message
+        : `The working folder ${work} cannot be made (${message}). Name another with --work, or check its permissions.`,
+    );
+  }
+}
+
 /** Builds the almanac of an archive. The previous output stays as it is until the new one is complete. */
 export async function build(archiveFolder: string, options: BuildOptions): Promise<BuildSummary> {
   const started = performance.now();
@@ -42,7 +58,7 @@ export async function build(archiveFolder: string, options: BuildOptions): Promi
   const out = path.resolve(options.out);
   const work = path.resolve(options.work);
   checkOutput(out, root, work);
-  const ledger = openLedger(work);
+  const ledger = ledgerIn(work);
   let gathered: Gathered;
   try {
     gathered = await gather(root, ledger, { jobs: options.jobs ?? defaultJobs(), progress: options.progress });

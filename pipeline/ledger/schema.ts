@@ -23,17 +23,25 @@ const tables = `
 
 const allTables = ['meta', 'hashes', 'surveys', 'measures', 'files', 'cells', 'sweeps', 'readings', 'notes'];
 
+/** SQLite's own code, SQLITE_BUSY. */
+const lockedByAnother = 5;
+
 /**
  * Opens the ledger's database, making it where there is none. One that another version of the contract wrote is
  * emptied: everything in it can be measured again.
  *
- * @throws Error when the file is no database or cannot be written; the message names the file.
+ * One writer at a time: two builds that shared a ledger would each replace what the other is about to print.
+ *
+ * @throws Error when the file is no database, cannot be written or is in use; the message names the file.
  */
 export function openDatabase(file: string, mode: 'write' | 'read'): DatabaseSync {
   try {
     const database = new DatabaseSync(file, { readOnly: mode === 'read' });
     if (mode === 'read') return database;
-    database.exec('PRAGMA journal_mode = WAL; PRAGMA synchronous = NORMAL; PRAGMA temp_store = MEMORY;');
+    // The first writing takes the lock, and the system gives it back even where the build is killed.
+    database.exec(
+      'PRAGMA locking_mode = EXCLUSIVE; PRAGMA journal_mode = WAL; PRAGMA synchronous = NORMAL; PRAGMA temp_store = MEMORY;',
+    );
     const version = database.prepare('PRAGMA user_version').get() as { user_version: number };
     if (version.user_version !== ledgerContract)
       for (const table of allTables) database.exec(`DROP TABLE IF EXISTS ${table}`);
@@ -41,6 +49,10 @@ export function openDatabase(file: string, mode: 'write' | 'read'): DatabaseSync
     database.exec(`PRAGMA user_version = ${ledgerContract}`);
     return database;
   } catch (error) {
+    if ((error as { errcode?: number }).errcode === lockedByAnother)
+      throw new Error(
+        `The ledger ${file} is in use by another build. Wait until that one has ended, or name another working folder with --work.`,
+      );
     throw new Error(
       `The ledger ${file} cannot be opened (${(error as Error).message}). Delete it, or name another working folder with --work; the build then measures everything anew.`,
     );

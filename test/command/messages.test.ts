@@ -41,3 +41,17 @@ test('one sweep is one sweep, and a line end in a name does not end the line', (
   expect(out).toMatch(/^ {2}read {4}r\/two\\x0alines\.csv {2}text, 2 columns, comma, 1 sweep$/m);
   expect(out).toMatch(/^ {2}two-lines {2}1 sweep in 1 file/m);
 });
+
+test('a ledger or a working folder that cannot be used is a sentence, without a stack', () => {
+  mkdirSync(path.join(folder, 'archive'));
+  mkdirSync(path.join(folder, 'work'));
+  writeFileSync(path.join(folder, 'work/ledger.sqlite'), 'no database at all');
+  const build = (work: string) =>
+    said('build', path.join(folder, 'archive'), '--out', path.join(folder, 'out'), '--work', path.join(folder, work));
+  const spoiled = build('work');
+  expect(spoiled.status).toBe(1);
+  expect(spoiled.err).toMatch(/^The ledger .* cannot be opened \(.*\)\. Delete it, or .*\n$/);
+  const barred = build('work/ledger.sqlite/below');
+  expect(barred.status).toBe(1);
+  expect(barred.err).toMatch(/^The working folder .* cannot be made \(.*\)\. Name another with --work.*\n$/);
+});

@@ -102,6 +102,12 @@ describe('the ledger', () => {
     ledger.close();
   });
 
+  test('one build at a time: a second is told to wait, not to delete', () => {
+    const first = openLedger(work);
+    expect(() => openLedger(work)).toThrow(/is in use by another build\. Wait until/);
+    first.close();
+    openLedger(work).close();
+  });
   test('a file that is no ledger is said, with what to do', () => {
     writeFileSync(ledgerFile(work), 'this is no database, it is a text that somebody saved here'.repeat(40));
     expect(() => openLedger(work)).toThrow(/cannot be opened .*Delete it, or name another working folder with --work/s);
