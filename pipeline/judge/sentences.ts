@@ -92,14 +92,22 @@ export function tell(telling: Telling): string {
   const beyond = comparison.margin < 0;
   const direction = (comparison.side === 'low') === beyond ? 'below' : 'above';
   const away = difference(id, comparison.margin);
-  const lies = comparison.margin === 0 ? `lies exactly at ${name}` : `lies ${away} ${direction} ${name}`;
+  const range = low !== null && high !== null && telling.lowName === telling.highName;
+  const lies =
+    comparison.margin === 0
+      ? `lies exactly at ${range ? 'an end of ' : ''}${name}`
+      : `lies ${away} ${direction} ${name}`;
   const sentence = (() => {
     if (comparison.outcome === 'outside') return `${head} ${lies}; ${telling.meaning}.`;
-    if (comparison.outcome === 'near limit')
-      return comparison.disagree
-        ? `${head} comes out differently against ${name} with and without the junction potential; state “junction” to settle it.`
-        : `${head} ${lies}, inside the uncertainty of ±${difference(id, uncertainty)}: too close to call.`;
-    if (low !== null && high !== null && telling.lowName === telling.highName) return `${head} lies within ${name}.`;
+    if (comparison.outcome === 'near limit') {
+      if (comparison.disagree)
+        return `${head} comes out differently against ${name} with and without the junction potential; state “junction” to settle it.`;
+      const give = `the uncertainty of ±${difference(id, uncertainty)}: too close to call`;
+      // Both ends have one name: what is above the lower end is inside, and "above the range" would say the reverse.
+      if (range && comparison.margin > 0) return `${head} lies ${away} inside ${name}, less than ${give}.`;
+      return `${head} ${lies}, inside ${give}.`;
+    }
+    if (range) return `${head} lies within ${name}.`;
     if (comparison.margin === 0) return `${head} meets ${name}.`;
     return `${head} stays ${away} ${direction} ${name}.`;
   })();

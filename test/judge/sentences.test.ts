@@ -1,5 +1,6 @@
 import { describe, expect, test } from 'vitest';
-import { amount, celsius, count, difference, listed, span, tellMissing } from '../../pipeline/judge/sentences.ts';
+import { compare } from '../../pipeline/judge/compare.ts';
+import { amount, celsius, count, difference, listed, span, tell, tellMissing } from '../../pipeline/judge/sentences.ts';
 import { finding, read } from './made.ts';
 
 describe('numbers in words', () => {
@@ -36,6 +37,20 @@ describe('sentences', () => {
     expect(peak(61.5)).toBe(
       'The peak of the first spike (sweep 0), +61.5 mV, lies 1.0 mV above E_Na (+60.5 mV at 33 °C), inside the uncertainty of ±3.0 mV: too close to call.',
     ));
+  test.each([
+    [120, 'lies 39 pF inside the range (81 to 500 pF), less than the uncertainty of ±50 pF: too close to call.'],
+    [480, 'lies 20 pF inside the range (81 to 500 pF), less than the uncertainty of ±50 pF: too close to call.'],
+    [70, 'lies 11 pF below the range (81 to 500 pF), inside the uncertainty of ±50 pF: too close to call.'],
+    [510, 'lies 10 pF above the range (81 to 500 pF), inside the uncertainty of ±50 pF: too close to call.'],
+    [81, 'lies exactly at an end of the range (81 to 500 pF), inside the uncertainty of ±50 pF: too close to call.'],
+    [200, 'lies within the range (81 to 500 pF).'],
+  ])('near either end of a range, %d pF is told on the side where it is', (value, expected) => {
+    const name = 'the range (81 to 500 pF)';
+    const telling = { quantity: 'membrane_capacitance_pf', subject: 'the membrane capacitance', value, n: 1 };
+    const limits = { low: 81, high: 500, lowName: name, highName: name, uncertainty: 50 };
+    const rest = { comparison: compare(value, 81, 500, 50), meaning: '', condition: null, remark: '' };
+    expect(tell({ ...telling, ...limits, ...rest })).toBe(`The membrane capacitance, ${value} pF, ${expected}`);
+  });
   test('within', () =>
     expect(peak(40)).toBe(
       'The peak of the first spike (sweep 0), +40.0 mV, stays 20.5 mV below E_Na (+60.5 mV at 33 °C).',
