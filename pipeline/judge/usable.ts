@@ -107,15 +107,15 @@ export function usableStretch(settings: readonly Setting[], policy: readonly Pol
   const after = judged[found.from + found.length];
   const run =
     found.length === 1
-      ? `Sweep ${start.sweep.sweep} (1 of ${judged.length}) meets the limits`
-      : `Sweeps ${start.sweep.sweep} to ${end.sweep.sweep} (${found.length} of ${judged.length}) meet the limits`;
+      ? `Sweep ${start.sweep.sweep} (1 of ${judged.length}) meets the limits for single sweeps`
+      : `Sweeps ${start.sweep.sweep} to ${end.sweep.sweep} (${found.length} of ${judged.length}) meet the limits for single sweeps`;
   const why = (one: (typeof judged)[number]): string => `sweep ${one.sweep.sweep}: ${one.complaint}`;
   const edges = [before ? `It starts after ${why(before)}.` : '', after ? `It ends before ${why(after)}.` : ''].filter(
     Boolean,
   );
   const sentence =
     found.length === judged.length
-      ? `${judged.length === 1 ? 'The only sweep meets' : `All ${count(judged.length, 'sweep')} meet`} the limits.`
+      ? `${judged.length === 1 ? 'The only sweep meets' : `All ${count(judged.length, 'sweep')} meet`} the limits for single sweeps.`
       : `${run}. ${edges.join(' ')}`;
   return {
     from_sweep: start.sweep.sweep,

@@ -8,13 +8,13 @@ const run = (length: number, change: (number: number) => Parameters<typeof sweep
   return judged({ ...cell, sweeps }).usable;
 };
 
-test('all sweeps', () => expect(run(4, () => ({}))?.sentence).toBe('All 4 sweeps meet the limits.'));
+test('all sweeps', () => expect(run(4, () => ({}))?.sentence).toBe('All 4 sweeps meet the limits for single sweeps.'));
 test('a single sweep', () =>
   expect(run(1, () => ({}))).toMatchObject({
     from_sweep: 0,
     to_sweep: 0,
     sweeps: 1,
-    sentence: 'The only sweep meets the limits.',
+    sentence: 'The only sweep meets the limits for single sweeps.',
   }));
 test('no usable sweep', () => expect(run(3, () => ({ readings: { noise_rms_mv: read(4) } }))).toBeNull());
 test('the longest run, with why it ends', () =>
@@ -23,11 +23,11 @@ test('the longest run, with why it ends', () =>
     to_sweep: 6,
     sweeps: 7,
     sentence:
-      'Sweeps 0 to 6 (7 of 10) meet the limits. It ends before sweep 7: its baseline, −58.0 mV, lies 12.0 mV from the −70.0 mV held otherwise.',
+      'Sweeps 0 to 6 (7 of 10) meet the limits for single sweeps. It ends before sweep 7: its baseline, −58.0 mV, lies 12.0 mV from the −70.0 mV held otherwise.',
   }));
 test('the longest run, with why it starts late', () =>
   expect(run(6, (number) => ({ readings: { clipped_fraction: read(number === 1 ? 0.2 : 0) } }))?.sentence).toBe(
-    'Sweeps 2 to 5 (4 of 6) meet the limits. It starts after sweep 1: the share of clipped samples in sweep 1 is outside its limit.',
+    'Sweeps 2 to 5 (4 of 6) meet the limits for single sweeps. It starts after sweep 1: the share of clipped samples in sweep 1 is outside its limit.',
   ));
 test('of equally long runs the earlier', () =>
   expect(run(5, (number) => ({ readings: { noise_rms_mv: read(number === 2 ? 4 : 0.1) } }))).toMatchObject({
