@@ -6,6 +6,7 @@ import type { Problem } from '../formats/types.ts';
 import type { SurveyedFile } from '../ledger/types.ts';
 import { defaultJobs, requireArchive } from './arguments.ts';
 import type { Progress } from './progress.ts';
+import { oneTable } from './sidecar-lines.ts';
 import { codeVersion, surveyFiles } from './survey.ts';
 
 export interface Listing {
@@ -91,9 +92,14 @@ function fileLines(file: SurveyedFile): string[] {
         ? `${description.format_label}, ${count(description.sweeps.length, 'sweep')}`
         : (file.found.format ?? '');
   const problems = [...(file.failure && state !== 'other' ? [file.failure] : []), ...(description?.problems ?? [])];
+  const offered = problems.flatMap((problem) => (problem.sidecar ? [problem.sidecar] : []));
+  const together = offered.length > 1 ? oneTable(offered) : null;
   return [
     `  ${state.padEnd(6)}  ${shown(file.found.path)}  ${shown(what)}`.trimEnd(),
-    ...problems.flatMap(problemLines),
+    ...problems.flatMap((problem) => problemLines(together === null ? problem : { ...problem, sidecar: undefined })),
+    ...(together === null
+      ? []
+      : [`      Lines for all of it, in ${shown(file.found.path)}.yaml:`, indent(together, '        | ')]),
   ];
 }
 
