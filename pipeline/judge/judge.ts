@@ -284,11 +284,7 @@ export function judgeCell(input: JudgeInput): Judgement {
     nothing || unreadable ? 'unread' : counted.some(grave) ? 'unsound' : counted.length > 0 ? 'caution' : 'sound';
   const reasons = (() => {
     const sentences = counted.map((finding) => finding.sentence);
-    if (nothing)
-      return [
-        ...(unreadReasons.length > 0 ? unreadReasons : ['Nothing could be measured in this recording.']),
-        ...sentences,
-      ];
+    if (nothing) return [...(unreadReasons.length > 0 ? unreadReasons : [nothingSentence(input)]), ...sentences];
     if (unreadable)
       return [unreadable.sentence, ...unreadReasons, ...sentences.filter((text) => text !== unreadable.sentence)];
     if (standing === 'sound') return [];
@@ -305,3 +301,12 @@ export function judgeCell(input: JudgeInput): Judgement {
 
 /** The share of unreadable values above which a recording is unread. */
 export const unreadAbove = conditionLimits.missingFraction;
+
+/** Why a cell whose files could be read still gave no number. */
+function nothingSentence({ sweeps }: JudgeInput): string {
+  const withoutCommand =
+    sweeps.length > 0 && sweeps.every((sweep) => sweep.clamp === 'voltage' && sweep.voltage_envelope === null);
+  return withoutCommand
+    ? 'Recorded in voltage clamp without its command: nothing fires there, and no resistance or capacitance can be read. State or record the command potential.'
+    : 'Nothing could be measured in this recording.';
+}

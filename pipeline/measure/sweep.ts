@@ -27,7 +27,7 @@ import type {
   SweepInput,
   SweepMeasure,
 } from './types.ts';
-import { measureVoltageClamp } from './voltage-clamp.ts';
+import { measureVoltageClamp, setAsideCompensated } from './voltage-clamp.ts';
 
 /** Columns of the drawn outline. */
 const outlineColumns = 600;
@@ -309,7 +309,13 @@ function voltageClampSweep(
     clamp: 'voltage',
     duration_s: durationOf(current, voltage),
     stimulus,
-    readings: { ...recorded, ...measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz) },
+    readings: {
+      ...recorded,
+      ...setAsideCompensated(
+        measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz),
+        context.capacitance_pf,
+      ),
+    },
     spikes: [],
     depolarization_block: false,
     remarks: command.remarks,

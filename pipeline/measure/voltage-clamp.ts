@@ -55,6 +55,38 @@ export function measureVoltageClamp(
   return { ...readings, ...summary(answers) };
 }
 
+/** A transient with less than this share of the stated capacitance is what compensation left over. Ours. */
+const leastShareOfStated = 0.5;
+
+/**
+ * Sets aside an access resistance and a capacitance read off a transient that holds too little of the stated
+ * capacitance: the amplifier has taken the rest away, and what is left over says nothing of the electrode. The
+ * membrane resistance is then the total again.
+ *
+ * @param stated_pf capacitance stated for the cell, pF; null where none is
+ */
+export function setAsideCompensated(readings: Readings, stated_pf: number | null): Readings {
+  const found = readings['cell_capacitance_pf']?.value ?? null;
+  if (stated_pf === null || found === null || found >= leastShareOfStated * stated_pf) return readings;
+  const note = `the transient holds ${found.toFixed(1)} of the ${stated_pf.toFixed(1)} pF stated: the rest is compensated, or the statement is wrong`;
+  const access = readings['access_resistance_mohm']?.value ?? 0;
+  const membrane = readings['membrane_resistance_mohm'];
+  return {
+    ...readings,
+    access_resistance_mohm: absent('unresolved', { note }),
+    cell_capacitance_pf: absent('unresolved', { note }),
+    ...(membrane?.value == null
+      ? {}
+      : {
+          membrane_resistance_mohm: {
+            ...membrane,
+            value: membrane.value + access,
+            note: 'total resistance: the access could not be told apart',
+          },
+        }),
+  };
+}
+
 function commandReading(command: Signal | null, stimulus: Stimulus): Reading {
   if (!command) return absent('no-voltage');
   if (stimulus.holding === null) return absent('unreadable');

@@ -304,6 +304,14 @@ describe('a cell is judged on what it has', () => {
       usable: null,
     });
   });
+  test('voltage clamp without its command is unread, and the reason says what is missing', () => {
+    const bare = six(() => ({ spikes: [], clamp: 'voltage' as const, readings: {} }));
+    const input = made({ sweeps: bare });
+    input.measure.conditions[0]!.readings = { sample_interval_us: read(200) };
+    const { standing, reasons } = judgeCell(input);
+    expect(standing).toBe('unread');
+    expect(reasons[0]).toMatch(/voltage clamp without its command/);
+  });
   test('a cell without spikes is sound if nothing speaks against it', () => {
     const spikeless = Object.fromEntries(
       [

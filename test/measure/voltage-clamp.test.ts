@@ -23,6 +23,16 @@ describe('a test pulse in voltage clamp', () => {
     expect(sweep.stimulus).toMatchObject({ kind: 'step', holding: -70, amplitude: 5 });
   });
 
+  it('says nothing of the electrode where most of the stated capacitance is compensated', () => {
+    const sweep = (capacitance_pf: number | null) =>
+      measureSweep(input(clampedSweep(cell, pulse), { clamp: 'voltage' }), { ...neuron, capacitance_pf }).readings;
+    for (const id of ['access_resistance_mohm', 'cell_capacitance_pf']) {
+      expect(sweep(250)[id]).toMatchObject({ value: null, why: 'unresolved' });
+      for (const stated of [null, 110, 190]) expect(sweep(stated)[id]!.value).not.toBeNull();
+    }
+    expect(numberIn(sweep(250), 'membrane_resistance_mohm')).toBeCloseTo(210, 1);
+  });
+
   it('does so through noise, at lower rates, upside down, and for other cells', () => {
     const cells = fc.record({
       access_mohm: fc.double({ min: 6, max: 40, noNaN: true }),
