@@ -305,7 +305,7 @@ describe('a cell is judged on what it has', () => {
     });
   });
   test('voltage clamp without its command is unread, and the reason says what is missing', () => {
-    const bare = six(() => ({ spikes: [], clamp: 'voltage' as const, readings: {} }));
+    const bare = six(() => ({ spikes: [], clamp: 'voltage' as const })).map((one) => ({ ...one, readings: {} }));
     const input = made({ sweeps: bare });
     input.measure.conditions[0]!.readings = { sample_interval_us: read(200) };
     const { standing, reasons } = judgeCell(input);
