@@ -119,7 +119,12 @@ export function shownSpike(condition: ConditionMeasure | undefined, sweeps: read
     withExcerpt.find((one) => one.condition === condition?.condition);
   if (!sweep?.first_spike) return null;
   const spike = sweep.spikes.find((one) => one.spike === sweep.first_spike!.spike) ?? sweep.spikes[0]!;
-  return { sweep, spike, excerpt: sweep.first_spike, atRheobase: sweep.sweep === wanted?.sweep };
+  return {
+    sweep,
+    spike,
+    excerpt: sweep.first_spike,
+    atRheobase: sweep.sweep === wanted?.sweep && condition?.readings['rheobase_pa']?.value != null,
+  };
 }
 
 /** Strips of the session, in this order, where at least two sweeps have the quantity. */

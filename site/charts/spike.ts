@@ -142,7 +142,10 @@ function landmarks(spike: Spike, zeroS: number, x: Scale, y: Scale): string[] {
   const [low, high] = x.domain() as [number, number];
   if (threshold !== null && low <= 0 && high >= 0) {
     parts.push(element('circle', { cx: x(0), cy: y(threshold), r: 3.5, class: 'landmark' }));
-    parts.push(label(x(0) - 8, y(threshold) - 6, `threshold ${number(threshold, 1)}`, 'landmark-name', 'end'));
+    const text = `threshold ${number(threshold, 1)}`;
+    // Beside the rise where the rise stands too near the axis for a name on its left.
+    if (x(0) - x(low) > 100) parts.push(label(x(0) - 8, y(threshold) - 6, text, 'landmark-name', 'end'));
+    else parts.push(label(x(0) + 12, y(threshold) + 4, text, 'landmark-name'));
   }
   if (peak !== null && peakAt !== null) {
     const at = x((peakAt - zeroS) * 1000);
@@ -178,16 +181,30 @@ function spikeAlt(spike: Spike, input: SpikeChartInput): string {
   return `${parts.join(', ')}.${phases === '' ? '' : ` Phases: ${phases}.`}`;
 }
 
-/** dV/dt against V: central differences over the excerpt, as the maximum rise is measured. */
+/** Samples to each side over which a slope is taken: one, or an eightieth of a broad spike's width. */
+function reachOf(excerpt: Excerpt, spike: Spike): number {
+  const width = value(spike, 'half_width_ms') ?? value(spike, 'apd50_ms') ?? 0;
+  return Math.max(1, Math.round((width * excerpt.rate_hz) / 1000 / 80));
+}
+
+/**
+ * dV/dt against V: central differences over the excerpt. From sample to sample a slow spike's slope is all noise, so
+ * there it is taken over a longer stretch, which the axis names.
+ */
 export function phasePlane(excerpt: Excerpt, spike: Spike): Chart | null {
   const { mv, rate_hz } = excerpt;
-  if (mv.length < 5) return null;
+  const reach = reachOf(excerpt, spike);
+  if (mv.length < 2 * reach + 3) return null;
   const points: [number, number][] = [];
-  for (let i = 1; i < mv.length - 1; i++) {
-    const before = mv[i - 1] ?? Number.NaN;
-    const after = mv[i + 1] ?? Number.NaN;
-    points.push([mv[i] ?? Number.NaN, ((after - before) * rate_hz) / 2000]);
+  for (let i = reach; i < mv.length - reach; i++) {
+    const before = mv[i - reach] ?? Number.NaN;
+    const after = mv[i + reach] ?? Number.NaN;
+    points.push([
+      reach === 1 ? (mv[i] ?? Number.NaN) : (before + after) / 2,
+      ((after - before) * rate_hz) / (2000 * reach),
+    ]);
   }
+  const over = reach === 1 ? '' : ` over ${number((2000 * reach) / rate_hz, 1)} ms`;
   const frame: Frame = { width: 540, height: 400, margins: { top: 26, right: 16, bottom: 56, left: 54 } };
   const xDomain = domainOf(points.map(([v]) => v));
   const yDomain = domainOf(
@@ -200,7 +217,7 @@ export function phasePlane(excerpt: Excerpt, spike: Spike): Chart | null {
   const bottom = frame.height - frame.margins.bottom;
   const threshold = value(spike, 'threshold_mv');
   const parts = [
-    yAxis(y, frame.margins.left, 'Rate of change', 'V/s', frame.width - frame.margins.right),
+    yAxis(y, frame.margins.left, `Rate of change${over}`, 'V/s', frame.width - frame.margins.right),
     threshold === null
       ? ''
       : line(x(threshold), frame.margins.top, x(threshold), bottom, 'level') +

@@ -189,6 +189,11 @@ describe('charts', () => {
     }
     expect(drawn()).toEqual(first);
   });
+  test('a broad spike’s slope is taken over a stretch that the axis names', () => {
+    const broad = { ...spike, values: { ...spike.values, half_width_ms: 16 } };
+    expect(phasePlane(excerpt, broad)!.svg).toContain('Rate of change over 0.4 ms');
+    expect(phasePlane(excerpt, spike)!.svg).toContain('Rate of change (V/s)');
+  });
   test('nothing to draw gives no chart rather than an empty one', () => {
     expect(sweepsChart([])).toBeNull();
     expect(sweepsChart([sweepRow({ voltage_envelope: null })])).toBeNull();
