@@ -50,22 +50,8 @@ export function compareReadings(
   return { ...kindest, outcome: 'near limit', disagree: true };
 }
 
-/** Two-sided 95 % points of Student's t for 1 to 30 degrees of freedom (standard table; from memory). */
-const studentT = [
-  12.706, 4.303, 3.182, 2.776, 2.571, 2.447, 2.365, 2.306, 2.262, 2.228, 2.201, 2.179, 2.16, 2.145, 2.131, 2.12, 2.11,
-  2.101, 2.093, 2.086, 2.08, 2.074, 2.069, 2.064, 2.06, 2.056, 2.052, 2.048, 2.045, 2.042,
-];
-
-/**
- * 95 % half-width of a measured number, in its unit: Student's t times the standard error, which is taken from the
- * spread where it is not given. 0 where the reading carries neither.
- */
-export function measuredUncertainty(reading: Reading): number {
-  const n = reading.n ?? 0;
-  const se = reading.se ?? (reading.sd !== undefined && n > 1 ? reading.sd / Math.sqrt(n) : undefined);
-  if (se === undefined) return 0;
-  return (n > 1 ? (studentT[n - 2] ?? 1.96) : 1.96) * se;
-}
+/** 95 % half-width of a measured number, in its unit, as measuring gave it; 0 where the reading carries none. */
+export const measuredUncertainty = (reading: Reading): number => reading.u95 ?? 0;
 
 /** Root of the sum of squares: independent half-widths combined. */
 export const combined = (...halfWidths: number[]): number => Math.hypot(...halfWidths);

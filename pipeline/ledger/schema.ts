@@ -15,7 +15,7 @@ const tables = `
   CREATE TABLE IF NOT EXISTS cells (cell TEXT PRIMARY KEY, body BLOB NOT NULL) STRICT;
   CREATE TABLE IF NOT EXISTS sweeps (cell TEXT NOT NULL, sweep INTEGER NOT NULL, body BLOB NOT NULL, PRIMARY KEY (cell, sweep)) STRICT, WITHOUT ROWID;
   CREATE TABLE IF NOT EXISTS readings (
-    cell TEXT NOT NULL, condition TEXT NOT NULL, sweep INTEGER, quantity TEXT NOT NULL, value REAL, why TEXT, n INTEGER, sd REAL, se REAL
+    cell TEXT NOT NULL, condition TEXT NOT NULL, sweep INTEGER, quantity TEXT NOT NULL, value REAL, why TEXT, n INTEGER, sd REAL, se REAL, u95 REAL
   ) STRICT;
   CREATE INDEX IF NOT EXISTS readings_by_quantity ON readings (quantity, cell);
   CREATE TABLE IF NOT EXISTS notes (id TEXT PRIMARY KEY, body TEXT NOT NULL) STRICT;

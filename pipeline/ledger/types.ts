@@ -5,7 +5,7 @@ import type { Circumstances, Judgement } from '../judge/types.ts';
 import type { CellMeasure, NumberedSweep } from '../measure/types.ts';
 
 /** Raise on any change that an old reader could misread. */
-export const ledgerContract = 1;
+export const ledgerContract = 2;
 
 export interface FileRow {
   path: string;

@@ -111,7 +111,7 @@ function writeContents(database: DatabaseSync, contents: Contents): void {
 
 function readingWriter(database: DatabaseSync) {
   const statement = database.prepare(
-    'INSERT INTO readings (cell, condition, sweep, quantity, value, why, n, sd, se) VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?)',
+    'INSERT INTO readings (cell, condition, sweep, quantity, value, why, n, sd, se, u95) VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)',
   );
   return (cell: string, condition: string, sweep: number | null, readings: Readings): void => {
     for (const [id, one] of Object.entries(readings))
@@ -125,6 +125,7 @@ function readingWriter(database: DatabaseSync) {
         one.n ?? null,
         one.sd ?? null,
         one.se ?? null,
+        one.u95 ?? null,
       );
   };
 }

@@ -19,6 +19,11 @@ export interface Quantity {
   /** Where the definition is published, or 'common practice, no source'. */
   source: string;
   decimals: number;
+  /**
+   * How its 95 % half-width is had, in words that let a person repeat it. Left out where there is none to give (counts,
+   * settings, what was stated): such a quantity has no `_u95` column.
+   */
+  uncertainty?: string;
   /** True for a potential against the bath: the junction correction shifts it. Differences are not shifted. */
   absolute_potential: boolean;
   /** Which clamp mode it belongs to. */

@@ -1,8 +1,9 @@
+import { coverage95 } from '../signal/coverage.ts';
 import type { AbsenceCode, Reading } from './types.ts';
 
 /**
  * A reading with a value, or `unresolved` where arithmetic did not give a finite one: NaN and infinity never leave
- * measuring.
+ * measuring. Where `se` is given and `u95` is not, u95 = t(0.975, freedom)·se.
  */
 export function measured(value: number, extra: Omit<Reading, 'value' | 'why'> = {}): Reading {
   if (!Number.isFinite(value)) return absent('unresolved');
@@ -10,6 +11,9 @@ export function measured(value: number, extra: Omit<Reading, 'value' | 'why'> = 
   if (extra.n !== undefined && Number.isFinite(extra.n)) reading.n = extra.n;
   if (extra.sd !== undefined && Number.isFinite(extra.sd)) reading.sd = extra.sd;
   if (extra.se !== undefined && Number.isFinite(extra.se)) reading.se = extra.se;
+  if (extra.freedom !== undefined && Number.isFinite(extra.freedom)) reading.freedom = extra.freedom;
+  const u95 = extra.u95 ?? (reading.se === undefined ? undefined : coverage95(reading.freedom) * reading.se);
+  if (u95 !== undefined && Number.isFinite(u95)) reading.u95 = u95;
   if (extra.at) reading.at = extra.at;
   if (extra.note) reading.note = extra.note;
   return reading;

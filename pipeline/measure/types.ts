@@ -47,8 +47,15 @@ export interface Reading {
   n?: number;
   /** Standard deviation of those observations, in the quantity's unit. */
   sd?: number;
-  /** Standard error of `value`, in the quantity's unit. */
+  /** Standard uncertainty of `value` (GUM, JCGM 100:2008), in the quantity's unit. */
   se?: number;
+  /** Degrees of freedom behind `se`; left out where it is known well enough to be taken as normal. */
+  freedom?: number;
+  /**
+   * 95 % half-width: the truth lies within value ± u95 in 95 of 100 recordings like this one. Student's t times `se`
+   * (`measured` in `reading.ts` does it), unless the quantity has a better way. The truth bench holds it to 92–98 %.
+   */
+  u95?: number;
   /** Where in the data this was read. `sweep` is the cell's own sweep number, filled in once sweeps are numbered. */
   at?: { sweep?: number; spike?: number; from_s?: number; to_s?: number };
   /** A remark that belongs beside the number, e.g. the band a noise figure was taken over. */
@@ -139,6 +146,8 @@ export interface Spike {
   /** Per-spike quantities; null values have their reason in `why`. */
   values: Record<string, number | null>;
   why: Record<string, AbsenceCode>;
+  /** 95 % half-widths of `values`, by the same ids, where they are known. */
+  u95?: Record<string, number>;
   phases: Phase[];
 }
 

@@ -5,7 +5,7 @@ import { stringify } from 'csv-stringify/sync';
 import { factKeys } from '../archive/fact-keys.ts';
 import type { Finding } from '../judge/types.ts';
 import type { CellRow, FileRow, LedgerReader, SweepRow } from '../ledger/types.ts';
-import { quantitiesOf } from '../measure/quantities.ts';
+import { type Level, type Quantity, quantitiesOf } from '../measure/quantities.ts';
 import type { ConditionMeasure, PhaseName, Readings, Spike } from '../measure/types.ts';
 
 export type Value = string | number | boolean | null | undefined;
@@ -36,14 +36,28 @@ const number = (name: string, description: string, unit?: string, ucum?: string)
   ...(unit === undefined ? {} : { unit, ucum: ucum ?? unit }),
 });
 
-const quantityColumns = (level: 'spike' | 'sweep' | 'cell'): Column[] =>
-  quantitiesOf(level).map(({ id, definition, unit, ucum, decimals }) => ({
-    name: id,
-    description: definition,
-    type: decimals === 0 && unit === '' ? 'integer' : 'number',
-    unit,
-    ucum,
-  }));
+/** Quantities of a level that carry a 95 % half-width; each has a column `ID_u95` after all values. */
+const uncertain = (level: Level): Quantity[] => quantitiesOf(level).filter((one) => one.uncertainty !== undefined);
+
+const quantityColumns = (level: Level): Column[] => [
+  ...quantitiesOf(level).map(
+    ({ id, definition, unit, ucum, decimals }): Column => ({
+      name: id,
+      description: definition,
+      type: decimals === 0 && unit === '' ? 'integer' : 'number',
+      unit,
+      ucum,
+    }),
+  ),
+  ...uncertain(level).map(({ id, label, unit, ucum }) =>
+    number(
+      `${id}_u95`,
+      `95 % half-width of ${id} (${label.toLowerCase()}): the truth lies within value ± this.`,
+      unit,
+      ucum,
+    ),
+  ),
+];
 
 const factColumns: Column[] = factKeys
   .filter((fact) => fact.key !== 'cell')
@@ -53,8 +67,10 @@ const factColumns: Column[] = factKeys
     type: fact.kind === 'number' ? 'number' : 'string',
   }));
 
-const readingValues = (readings: Readings, level: 'sweep' | 'cell'): Value[] =>
-  quantitiesOf(level).map(({ id }) => readings[id]?.value);
+const readingValues = (readings: Readings, level: 'sweep' | 'cell'): Value[] => [
+  ...quantitiesOf(level).map(({ id }) => readings[id]?.value),
+  ...uncertain(level).map(({ id }) => (readings[id]?.value == null ? null : readings[id].u95)),
+];
 
 export const filesTable: Table<FileRow> = {
   name: 'files',
@@ -175,6 +191,7 @@ export const spikesTable: Table<{ sweep: SweepRow; spike: Spike }> = {
     spike.spike,
     sweep.condition,
     ...quantitiesOf('spike').map(({ id }) => spike.values[id]),
+    ...uncertain('spike').map(({ id }) => (spike.values[id] == null ? null : spike.u95?.[id])),
     ...phaseNames.flatMap((name) => {
       const phase = spike.phases.find((one) => one.name === name);
       return [phase?.from_s, phase?.to_s, phase?.net_ionic_sign];
@@ -328,9 +345,9 @@ export function dictionary(): object {
     quantities: Object.fromEntries(
       (['spike', 'sweep', 'cell'] as const)
         .flatMap((level) => quantitiesOf(level))
-        .map(({ id, label, symbol, unit, ucum, levels, definition, formula, source }) => [
+        .map(({ id, label, symbol, unit, ucum, levels, definition, formula, uncertainty, source }) => [
           id,
-          { label, symbol, unit, ucum, levels, definition, formula, source },
+          { label, symbol, unit, ucum, levels, definition, formula, uncertainty, source },
         ]),
     ),
   };

@@ -11,11 +11,13 @@ const cut = (value: number | null | undefined): number | null =>
 
 /** Every cell-level number under every condition, with spread, n, unit and the reason where it is missing. */
 export function numbersCsv(cell: CellRow): string {
-  const head = ['cell', 'condition', 'quantity', 'value', 'unit', 'sd', 'se', 'n', 'why_missing'];
+  const head = ['cell', 'condition', 'quantity', 'value', 'unit', 'u95', 'sd', 'se', 'n', 'why_missing'];
   const rows = cell.measure.conditions.flatMap(({ condition, readings }) =>
     quantitiesOf('cell').flatMap(({ id, unit }) => {
       const one = readings[id];
-      return one ? [[cell.cell, condition, id, cut(one.value), unit, cut(one.sd), cut(one.se), one.n, one.why]] : [];
+      return one
+        ? [[cell.cell, condition, id, cut(one.value), unit, cut(one.u95), cut(one.sd), cut(one.se), one.n, one.why]]
+        : [];
     }),
   );
   return csv([head, ...rows]);

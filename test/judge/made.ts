@@ -1,9 +1,17 @@
 /** Made-up cells for the tests of judging: sound unless a test changes something. */
+
 import { judgeCell } from '../../pipeline/judge/judge.ts';
 import type { Circumstances, Finding, JudgeInput, Judgement } from '../../pipeline/judge/types.ts';
 import type { NumberedSweep, Reading, Readings, Spike } from '../../pipeline/measure/types.ts';
+import { coverage95 } from '../../pipeline/signal/coverage.ts';
 
-export const read = (value: number, more: Partial<Reading> = {}): Reading => ({ value, n: 1, ...more });
+/** A reading as measuring would give it: its 95 % half-width from the standard error, else from the spread of n values. */
+export function read(value: number, more: Partial<Reading> = {}): Reading {
+  const n = more.n ?? 1;
+  const se = more.se ?? (more.sd !== undefined && n > 1 ? more.sd / Math.sqrt(n) : undefined);
+  const u95 = se === undefined ? {} : { u95: coverage95(n > 1 ? n - 1 : undefined) * se };
+  return { value, n: 1, ...u95, ...more };
+}
 
 export const circumstances = (changes: Partial<Circumstances> = {}): Circumstances => ({
   condition: 'baseline',

@@ -1,0 +1,32 @@
+/**
+ * Two-sided 95 % coverage factor of Student's t with a (possibly fractional) number of degrees of freedom: Hill's
+ * asymptotic inverse, exact for 1 and 2 (Hill 1970, Algorithm 396, Commun ACM 13:619–620; from memory). Within
+ * 1 % between 1 and 2, within 10⁻⁴ above. Without
+ * degrees of freedom: the normal distribution's 1.96. Below one degree that of one is given.
+ */
+export function coverage95(freedom?: number): number {
+  if (freedom === undefined || freedom > 1e6) return 1.959963984540054;
+  const n = Math.max(1, freedom);
+  const tail = 0.05;
+  if (n === 1) return 1 / Math.tan((tail * Math.PI) / 2);
+  if (n === 2) return Math.sqrt(2 / (tail * (2 - tail)) - 2);
+  const a = 1 / (n - 0.5);
+  const b = 48 / (a * a);
+  let c = (((20700 * a) / b - 98) * a - 16) * a + 96.36;
+  const d = ((94.5 / (b + c) - 3) / b + 1) * Math.sqrt((a * Math.PI) / 2) * n;
+  let x = d * tail;
+  let y = x ** (2 / n);
+  if (y > 0.05 + a) {
+    x = -1.959963984540054;
+    y = x * x;
+    if (n < 5) c += 0.3 * (n - 4.5) * (x + 0.6);
+    c += (((0.05 * d * x - 5) * x - 7) * x - 2) * x + b;
+    y = (((((0.4 * y + 6.3) * y + 36) * y + 94.5) / c - y - 3) / b + 1) * x;
+    y = Math.expm1(a * y * y);
+  } else {
+    y =
+      ((1 / (((n + 6) / (n * y) - 0.089 * d - 0.822) * (n + 2) * 3) + 0.5 / (n + 4)) * y - 1) * ((n + 1) / (n + 2)) +
+      1 / y;
+  }
+  return Math.sqrt(n * y);
+}
