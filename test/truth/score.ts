@@ -70,9 +70,7 @@ export function score(trials: readonly Trial[], measure: Measure = 'absolute'): 
     worst:
       found.length === 0
         ? null
-        : found.reduce((worst, one) =>
-            Math.abs(sized(one, measure)) > Math.abs(sized(worst, measure)) ? one : worst,
-          ),
+        : found.reduce((worst, one) => (Math.abs(sized(one, measure)) > Math.abs(sized(worst, measure)) ? one : worst)),
     p95: sizes.length === 0 ? null : sizes[Math.min(sizes.length - 1, Math.floor(0.95 * sizes.length))]!,
     held: withWidth.length === 0 ? null : withWidth.filter(holds).length / withWidth.length,
     withWidth: withWidth.length,
@@ -109,8 +107,7 @@ export function broken(limit: Limit, trials: readonly Trial[]): string[] {
   const complaints = found
     .filter(
       (trial) =>
-        Math.abs(sized(trial, limit.measure)) > limit.within &&
-        Math.abs(errorOf(trial)) > (limit.orWithin ?? 0),
+        Math.abs(sized(trial, limit.measure)) > limit.within && Math.abs(errorOf(trial)) > (limit.orWithin ?? 0),
     )
     .map(
       (trial) =>
