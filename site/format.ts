@@ -1,6 +1,5 @@
 /** How numbers, dates and counts are printed, everywhere alike. */
 import { quantity } from '../pipeline/measure/quantities.ts';
-import type { Reading } from '../pipeline/measure/types.ts';
 
 export { counted } from './sizes.ts';
 
@@ -25,13 +24,59 @@ export function withUnit(id: string, value: number): string {
   return unit === '' ? printed(id, value) : `${printed(id, value)}\u00a0${unit}`;
 }
 
-/** '±0.4 (n = 12)' for a reading that has a spread, else ''. */
-export function spreadOf(id: string, reading: Reading): string {
-  const { decimals } = quantity(id);
-  const spread = reading.sd === undefined ? '' : `±${number(reading.sd, decimals)}`;
-  const n = reading.n === undefined ? '' : `n = ${number(reading.n)}`;
-  if (spread !== '' && n !== '') return `${spread} (${n})`;
-  return spread !== '' ? spread : n;
+/** A number and its 95 % half-width as printed, without their unit; `u95` is '' where it is not known. */
+export interface Rounded {
+  value: string;
+  u95: string;
+  decimals: number;
+}
+
+/**
+ * The half-width to print: only of quantities whose registry entry says how it is had, so that a page never shows one
+ * that nobody can account for.
+ */
+export const knownHalfWidth = (id: string, u95: number | null | undefined): number | undefined =>
+  quantity(id).uncertainty === undefined ? undefined : (u95 ?? undefined);
+
+/** Decimal place of the second significant digit: 1 for 4.27, 3 for 0.0427, -1 for 427. */
+const secondDigit = (u95: number): number => 1 - Math.floor(Math.log10(u95));
+
+/** Rounded to a place that may lie left of the point. */
+const toPlace = (value: number, decimals: number): string =>
+  decimals >= 0 ? number(value, decimals) : number(Math.round(value * 10 ** decimals) / 10 ** decimals);
+
+/**
+ * Value and half-width cut at the same place: the half-width has two significant digits at most, never more decimals
+ * than `most`, and is rounded up where it would else be printed as nothing.
+ *
+ * @param u95 undefined where it is not known
+ * @see JCGM 100:2008, 7.2.6; ISO 80000-1:2009, annex B (rounding; from memory)
+ */
+export function cutTogether(value: number, u95: number | undefined, most: number): Rounded {
+  if (u95 === undefined || !(u95 >= 0)) return { value: toPlace(value, most), u95: '', decimals: most };
+  if (u95 === 0) return { value: toPlace(value, most), u95: toPlace(0, most), decimals: most };
+  const first = Math.min(most, secondDigit(u95));
+  // 9.96 cut at the tenth would be 10.0, three digits: cut once more where rounding carried.
+  const decimals = Math.min(first, secondDigit(Number(`${Math.round(u95 * 10 ** first)}e${-first}`) || u95));
+  const least = 10 ** -decimals;
+  return { value: toPlace(value, decimals), u95: toPlace(u95 < least / 2 ? least : u95, decimals), decimals };
+}
+
+/** A quantity's number with its half-width, where the registry says how that is had. */
+export const rounded = (id: string, value: number, u95?: number | null): Rounded =>
+  cutTogether(value, knownHalfWidth(id, u95), quantity(id).decimals);
+
+/** '−68.2 ± 0.4', or the number alone where its uncertainty is not known. */
+export function withHalfWidth(id: string, value: number, u95?: number | null): string {
+  const one = rounded(id, value, u95);
+  return one.u95 === '' ? one.value : `${one.value}\u00a0±\u00a0${one.u95}`;
+}
+
+/** '−68.2 ± 0.4 mV': number, half-width and unit. */
+export function inFull(id: string, value: number, u95?: number | null): string {
+  const { unit } = quantity(id);
+  const text = withHalfWidth(id, value, u95);
+  return unit === '' ? text : `${text}\u00a0${unit}`;
 }
 
 /** Kilobytes and megabytes as powers of 1000. */

@@ -6,6 +6,7 @@ import { type CellSummary, groupBy, type Sizes, sizesOf } from './almanac.ts';
 import { controlChart, type DrawnControl, eventLetter, speaksForRig } from './charts/control-chart.ts';
 import { fewestForLimits, individualsLimits } from './charts/control-limits.ts';
 import { domainOf } from './charts/frame.ts';
+import { knownHalfWidth } from './format.ts';
 import type { Link } from './links.ts';
 
 /** What drifts when a rig, a solution or a hand does. */
@@ -27,6 +28,8 @@ export interface TrendPoint {
   page: string;
   date: string;
   value: number;
+  /** 95 % half-width, where it is known. */
+  u95?: number | undefined;
   standing: CellSummary['standing'];
 }
 
@@ -61,6 +64,10 @@ export function trendsOf(cells: readonly CellSummary[]): Trend[] {
   });
 }
 
+/** Whether any number of a trend carries its half-width. */
+export const hasHalfWidths = (trend: Trend): boolean =>
+  trend.series.some((series) => series.points.some((point) => point.u95 !== undefined));
+
 /** Cells by rig; those whose rig is not stated come last. */
 function rigsOf(cells: readonly CellSummary[]): [string, CellSummary[]][] {
   const groups = groupBy(cells, (cell) => cell.rig?.id ?? '');
@@ -73,6 +80,7 @@ function seriesOf(id: string, rig: string, members: CellSummary[]): TrendSeries 
     page: cell.page,
     date: cell.date!,
     value: cell.readings[id]!.value!,
+    u95: knownHalfWidth(id, cell.readings[id]!.u95),
     standing: cell.standing,
   }));
   const plain = (a: string, b: string): number => (a < b ? -1 : a > b ? 1 : 0);

@@ -3,9 +3,9 @@
 import type { Finding, Outcome } from '../../pipeline/judge/types.ts';
 import type { CellRow, SweepRow } from '../../pipeline/ledger/types.ts';
 import { absenceSentences } from '../../pipeline/measure/absence.ts';
-import { quantitiesOf, quantity } from '../../pipeline/measure/quantities.ts';
-import type { ConditionMeasure, Reading } from '../../pipeline/measure/types.ts';
-import { number, printed } from '../format.ts';
+import { quantitiesOf } from '../../pipeline/measure/quantities.ts';
+import type { ConditionMeasure, Reading, Spike } from '../../pipeline/measure/types.ts';
+import { number, printed, rounded } from '../format.ts';
 import { factLabel } from '../words.ts';
 
 const outcomeRank: Record<Outcome, number> = { outside: 0, 'near limit': 1, 'not measured': 2, within: 3 };
@@ -99,16 +99,55 @@ export function absenceText(reading: Reading): string {
   return missing.length === 0 ? sentence : `${sentence}: ${missing.map(factLabel).join(', ')}`;
 }
 
-/** '±0.4, n = 12' from a reading's spread. */
-export function spreadText(id: string, reading: Reading): string {
-  const { decimals } = quantity(id);
-  return [
-    reading.sd === undefined ? '' : `±${number(reading.sd, decimals)}`,
-    reading.n === undefined ? '' : `n = ${number(reading.n)}`,
-  ]
-    .filter((part) => part !== '')
-    .join(', ');
+/** A number with its half-width, spread and count, each as printed; '' for what is not known. */
+export interface PrintedReading {
+  value: string;
+  u95: string;
+  sd: string;
+  n: string;
 }
+
+/** @returns null where there is no number */
+export function printedReading(id: string, reading: Reading | null): PrintedReading | null {
+  if (reading === null || reading.value === null) return null;
+  const { value, u95, decimals } = rounded(id, reading.value, reading.u95);
+  return {
+    value,
+    u95: u95 === '' ? '' : `±\u00a0${u95}`,
+    // A spread is told no finer than the number it belongs to.
+    sd: reading.sd === undefined ? '' : number(reading.sd, Math.max(0, decimals)),
+    n: reading.n === undefined ? '' : number(reading.n),
+  };
+}
+
+export interface SpikeValue {
+  id: string;
+  label: string;
+  unit: string;
+  printed: PrintedReading | null;
+  /** Why there is no number; '' where there is one. */
+  why: string;
+}
+
+/** Every quantity of one spike, in the registry's order. */
+export const spikeValues = (spike: Spike): SpikeValue[] =>
+  quantitiesOf('spike').flatMap(({ id, label, unit }) => {
+    const value = spike.values[id];
+    if (value === undefined) return [];
+    const reading: Reading = value === null ? { value: null } : { value, ...halfWidth(spike.u95?.[id]) };
+    const why = spike.why[id];
+    return [
+      {
+        id,
+        label,
+        unit,
+        printed: printedReading(id, reading),
+        why: value === null && why ? absenceSentences[why] : '',
+      },
+    ];
+  });
+
+const halfWidth = (u95: number | undefined): Pick<Reading, 'u95'> => (u95 === undefined ? {} : { u95 });
 
 /** The sweep whose first spike is shown, with that excerpt: rheobase's where there is one. */
 export function shownSpike(condition: ConditionMeasure | undefined, sweeps: readonly SweepRow[]) {

@@ -2,7 +2,7 @@
 
 import type { Standing } from '../../pipeline/judge/types.ts';
 import { quantity } from '../../pipeline/measure/quantities.ts';
-import { counted, longDate, number, withUnit } from '../format.ts';
+import { counted, inFull, longDate, number, withUnit } from '../format.ts';
 import { type ControlLimits, fewestForLimits, individualsLimits } from './control-limits.ts';
 import {
   type Chart,
@@ -10,6 +10,7 @@ import {
   element,
   escapeText,
   type Frame,
+  halfWidthRules,
   label,
   line,
   path,
@@ -26,6 +27,8 @@ export interface ControlPoint {
   /** ISO date, with a clock time where known. */
   date: string;
   value: number;
+  /** 95 % half-width, where it is known. */
+  u95?: number | undefined;
   standing: Standing;
   /** Link to the cell's page. */
   href: string;
@@ -80,6 +83,15 @@ export function controlChart(input: ControlChartInput): DrawnControl | null {
   const y = yScale(frame, domain);
   const right = frame.width - frame.margins.right;
   const beyond = limits ? points.filter((point) => point.value < limits.low || point.value > limits.high) : [];
+  const rules = halfWidthRules(
+    // Of a number beyond the axis the arrow speaks.
+    points
+      .filter((point) => point.value === clamped(point.value, domain))
+      .map((point) => ({ at: days(point.date), value: point.value, u95: point.u95 })),
+    x,
+    y,
+    3.4,
+  );
   const parts = [
     yAxis(y, frame.margins.left, `${input.title}: ${entry.label}`, entry.unit, right, 4),
     ...events(input.events, x, frame),
@@ -101,6 +113,7 @@ export function controlChart(input: ControlChartInput): DrawnControl | null {
       ),
       class: 'thread',
     }),
+    rules.svg,
     ...points.map((point) => dot(point, input.quantity, x, y, beyond.includes(point), domain)),
     monthAxis(x, span, frame),
   ];
@@ -110,7 +123,7 @@ export function controlChart(input: ControlChartInput): DrawnControl | null {
       ? `Mean ${withUnit(input.quantity, limits.centre)}, limits ${withUnit(input.quantity, limits.low)} and ${withUnit(input.quantity, limits.high)}; ${beyond.length === 0 ? 'no cell lies' : `${counted(beyond.length, 'cell')} ${beyond.length === 1 ? 'lies' : 'lie'}`} beyond them.`
       : `Limits need ${fewestForLimits} cells that are not unsound. Lowest ${withUnit(input.quantity, Math.min(...values))}, highest ${withUnit(input.quantity, Math.max(...values))}.`,
   ].join(' ');
-  return { ...picture(frame, alt, parts.join(''), 'group'), limits, beyond };
+  return { ...picture(frame, alt, parts.join(''), 'group'), limits, beyond, ruled: rules.ruled };
 }
 
 /** The standing's own marks, small: filled disc, half disc, open ring, dash. Points beyond the limits get a ring around. */
@@ -124,7 +137,7 @@ function dot(
 ): string {
   const shown = clamped(point.value, domain);
   const at = { x: x(days(point.date)), y: y(shown) };
-  const name = `${point.cell}, ${point.standing}, ${longDate(point.date)}: ${withUnit(id, point.value)}${beyond ? ', beyond the limits' : ''}`;
+  const name = `${point.cell}, ${point.standing}, ${longDate(point.date)}: ${inFull(id, point.value, point.u95)}${beyond ? ', beyond the limits' : ''}`;
   return element(
     'a',
     { href: point.href, class: `dot ${point.standing}` },

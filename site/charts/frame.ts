@@ -4,7 +4,7 @@
  * light, dark and print follow it. No ids, no clock, two decimals.
  */
 import { type ScaleLinear, scaleLinear } from 'd3';
-import { number } from '../format.ts';
+import { inFull, knownHalfWidth, number } from '../format.ts';
 
 export interface Margins {
   top: number;
@@ -25,7 +25,15 @@ export type Scale = ScaleLinear<number, number>;
 export interface Chart {
   svg: string;
   alt: string;
+  /** How many points carry a rule for their 95 % half-width; absent: none. */
+  ruled?: number;
 }
+
+/** What the rules through points are, for captions; '' where no point carries one. */
+export const ruledNote = (chart: Chart): string =>
+  chart.ruled === undefined || chart.ruled === 0
+    ? ''
+    : 'Upright rules: 95 % half-widths, where they reach beyond the mark.';
 
 export const escapeText = (text: string): string =>
   text.replace(/&/g, '&amp;').replace(/</g, '&lt;').replace(/>/g, '&gt;').replace(/"/g, '&quot;');
@@ -149,6 +157,50 @@ export function level(
 ): string {
   const y = scale(value);
   return line(from, y, to, y, 'level') + label(to, side === 'above' ? y - 4 : y + 12, name, 'level-name', 'end');
+}
+
+/** A plotted number; `u95` where its 95 % half-width is known. */
+export interface Plotted {
+  at: number;
+  value: number;
+  u95?: number | null | undefined;
+}
+
+/** Lower and upper end of each number's interval, as far as it is known: what a domain has to hold. */
+export const intervalEnds = (points: readonly Plotted[]): number[] =>
+  points.flatMap(({ value, u95 }) => (u95 ? [value - u95, value + u95] : [value]));
+
+/**
+ * One hairline through each point for its half-width, cut at the frame; none where the mark itself hides it.
+ * @param mark radius of the marks, px
+ */
+export function halfWidthRules(
+  points: readonly Plotted[],
+  x: Scale,
+  y: Scale,
+  mark: number,
+): { svg: string; ruled: number } {
+  const [bottom, top] = y.range() as [number, number];
+  let ruled = 0;
+  let d = '';
+  for (const { at, value, u95 } of points) {
+    if (!u95 || !Number.isFinite(u95)) continue;
+    const low = Math.min(bottom, y(value - u95));
+    const high = Math.max(top, y(value + u95));
+    if (low - high <= 2 * mark + 1) continue;
+    ruled++;
+    d += `M${px(x(at))},${px(high)}V${px(low)}`;
+  }
+  return { svg: d === '' ? '' : element('path', { d, class: 'half-width' }), ruled };
+}
+
+/** 'half-widths ±0.2 to ±0.5 mV' of the numbers that have one, for text alternatives; '' where none has. */
+export function halfWidthWords(id: string, points: readonly Plotted[]): string {
+  const known = points.flatMap(({ u95 }) => knownHalfWidth(id, u95) || []);
+  if (known.length === 0) return '';
+  const one = (u95: number): string => inFull(id, u95, u95).replace(/.*\u00a0±\u00a0/, '±');
+  const [least, most] = [one(Math.min(...known)), one(Math.max(...known))];
+  return `95 % half-widths ${least === most ? least : `${least} to ${most}`}`;
 }
 
 /** Path data through points; gaps where a value is not finite. */

@@ -1,7 +1,23 @@
 /** Deflection on current and rate on current: points, and the line whose slope is the reported number. */
+import type { SweepRow } from '../../pipeline/ledger/types.ts';
+import { quantity } from '../../pipeline/measure/quantities.ts';
 import type { ConditionMeasure } from '../../pipeline/measure/types.ts';
-import { counted, number } from '../format.ts';
-import { type Chart, domainOf, element, type Frame, line, picture, xAxis, xScale, yAxis, yScale } from './frame.ts';
+import { counted, inFull, knownHalfWidth } from '../format.ts';
+import {
+  type Chart,
+  domainOf,
+  element,
+  type Frame,
+  halfWidthRules,
+  halfWidthWords,
+  intervalEnds,
+  line,
+  picture,
+  xAxis,
+  xScale,
+  yAxis,
+  yScale,
+} from './frame.ts';
 
 const frame: Frame = { width: 460, height: 320, margins: { top: 26, right: 14, bottom: 40, left: 50 } };
 const right = frame.width - frame.margins.right;
@@ -17,35 +33,44 @@ const shapeOf = (index: number, x: number, y: number): string => {
 interface Point {
   pa: number;
   value: number;
+  u95?: number | undefined;
 }
 
+interface Group {
+  condition: string;
+  points: Point[];
+}
+
+const plotted = (points: readonly Point[]) => points.map(({ pa, value, u95 }) => ({ at: pa, value, u95 }));
+
 function relation(
-  groups: { condition: string; points: Point[] }[],
-  name: string,
-  unit: string,
+  groups: Group[],
+  id: string,
   lineThrough: { slope: number; at: Point } | null,
   alt: string,
 ): Chart | null {
+  const { label: name, unit } = quantity(id);
   const all = groups.flatMap((group) => group.points);
   const xDomain = domainOf(
     all.map((point) => point.pa),
     [0],
   );
-  const yDomain = domainOf(
-    all.map((point) => point.value),
-    [0],
-  );
+  const yDomain = domainOf(intervalEnds(plotted(all)), [0]);
   if (!xDomain || !yDomain || all.length < 2) return null;
   const x = xScale(frame, xDomain);
   const y = yScale(frame, yDomain);
+  const rules = halfWidthRules(plotted(all), x, y, 3.2);
   const parts = [
     yAxis(y, frame.margins.left, name, unit, right),
     line(x(0), frame.margins.top, x(0), bottom, 'grid zero'),
     lineThrough ? fitLine(lineThrough, x, y, xDomain, yDomain) : '',
+    rules.svg,
     ...groups.flatMap((group, index) => group.points.map((point) => shapeOf(index, x(point.pa), y(point.value)))),
     xAxis(x, bottom, 'Injected current', 'pA', 5),
   ];
-  return picture(frame, alt, parts.join(''));
+  const widths = halfWidthWords(id, plotted(all));
+  const words = widths === '' ? alt : `${alt.replace(/\.$/, '')}; ${widths}.`;
+  return { ...picture(frame, words, parts.join('')), ruled: rules.ruled };
 }
 
 /** The part of a line that lies inside the plot. */
@@ -70,11 +95,25 @@ const meanPoint = (points: Point[]): Point => ({
   value: points.reduce((sum, point) => sum + point.value, 0) / points.length,
 });
 
-/** Steady deflection on injected current; the line has the slope of the reported input resistance. */
-export function viChart(conditions: readonly ConditionMeasure[]): Chart | null {
+/** The half-width that a sweep's own number carries. */
+const halfWidthOf = (sweeps: readonly SweepRow[], sweep: number, id: string): number | undefined =>
+  knownHalfWidth(id, sweeps.find((one) => one.sweep === sweep)?.readings[id]?.u95);
+
+/** 'slope 77 ± 3 MΩ' of a cell's number; '' where it has none. */
+function reported(condition: ConditionMeasure | undefined, id: string, words: string): string {
+  const reading = condition?.readings[id];
+  return reading?.value == null ? '' : `${words} ${inFull(id, reading.value, reading.u95)}`;
+}
+
+/**
+ * Steady deflection on injected current; the line has the slope of the reported input resistance.
+ * @param sweeps where the half-widths of the points are looked up
+ */
+export function viChart(conditions: readonly ConditionMeasure[], sweeps: readonly SweepRow[] = []): Chart | null {
+  const id = 'steady_deflection_mv';
   const groups = conditions.map((one) => ({
     condition: one.condition,
-    points: one.vi.map((point) => ({ pa: point.pa, value: point.mv })),
+    points: one.vi.map(({ pa, mv, sweep }) => ({ pa, value: mv, u95: halfWidthOf(sweeps, sweep, id) })),
   }));
   const resistance = conditions[0]?.readings['input_resistance_mohm']?.value ?? null;
   const fitted = groups[0]?.points.filter((point) => point.pa <= 0) ?? [];
@@ -83,22 +122,32 @@ export function viChart(conditions: readonly ConditionMeasure[]): Chart | null {
       ? null
       : { slope: resistance / 1000, at: meanPoint([...fitted, { pa: 0, value: 0 }]) };
   const n = groups.reduce((sum, group) => sum + group.points.length, 0);
-  const alt = `Steady deflection on injected current, ${counted(n, 'step')}${resistance === null ? '' : `; slope ${number(resistance, 0)} MΩ`}.`;
-  return relation(groups, 'Steady deflection', 'mV', through, alt);
+  const told = [
+    `Steady deflection on injected current, ${counted(n, 'step')}`,
+    reported(conditions[0], 'input_resistance_mohm', 'slope'),
+  ];
+  return relation(groups, id, through, `${told.filter(Boolean).join('; ')}.`);
 }
 
-/** Mean rate on injected current, with the gain's line near rheobase. */
-export function fiChart(conditions: readonly ConditionMeasure[]): Chart | null {
+/**
+ * Mean rate on injected current, with the gain's line near rheobase.
+ * @param sweeps where the half-widths of the points are looked up
+ */
+export function fiChart(conditions: readonly ConditionMeasure[], sweeps: readonly SweepRow[] = []): Chart | null {
+  const id = 'mean_rate_hz';
   const groups = conditions.map((one) => ({
     condition: one.condition,
-    points: one.fi.map((point) => ({ pa: point.pa, value: point.hz })),
+    points: one.fi.map(({ pa, hz, sweep }) => ({ pa, value: hz, u95: halfWidthOf(sweeps, sweep, id) })),
   }));
   const gain = conditions[0]?.readings['rate_gain_hz_per_na']?.value ?? null;
   const most = Math.max(0, ...(groups[0]?.points.map((point) => point.value) ?? []));
   const near = groups[0]?.points.filter((point) => point.value > 0 && point.value <= most / 2 + 1e-9) ?? [];
   const through = gain === null || near.length === 0 ? null : { slope: gain / 1000, at: meanPoint(near) };
   const n = groups.reduce((sum, group) => sum + group.points.length, 0);
-  const rheobase = conditions[0]?.readings['rheobase_pa']?.value ?? null;
-  const alt = `Mean rate on injected current, ${counted(n, 'step')}${rheobase === null ? '' : `; rheobase ${number(rheobase, 0)} pA`}${gain === null ? '' : `, gain ${number(gain, 0)} Hz/nA`}.`;
-  return relation(groups, 'Mean rate', 'Hz', through, alt);
+  const told = [
+    `Mean rate on injected current, ${counted(n, 'step')}`,
+    reported(conditions[0], 'rheobase_pa', 'rheobase'),
+    reported(conditions[0], 'rate_gain_hz_per_na', 'gain'),
+  ];
+  return relation(groups, id, through, `${told.filter(Boolean).join('; ')}.`);
 }

@@ -2,12 +2,15 @@
 import type { UsableStretch } from '../../pipeline/judge/types.ts';
 import type { SweepRow } from '../../pipeline/ledger/types.ts';
 import { quantity } from '../../pipeline/measure/quantities.ts';
-import { counted, withUnit } from '../format.ts';
+import { counted, inFull, knownHalfWidth } from '../format.ts';
 import {
   type Chart,
   domainOf,
   element,
   type Frame,
+  halfWidthRules,
+  halfWidthWords,
+  intervalEnds,
   label,
   line,
   path,
@@ -31,6 +34,7 @@ export interface SessionPoint {
   sweep: SweepRow;
   at: number;
   value: number;
+  u95?: number | undefined;
 }
 
 /** Minutes since the first sweep where every sweep has a time, else sweep numbers. */
@@ -51,8 +55,12 @@ export function sessionAxis(sweeps: readonly SweepRow[]): {
 export function sessionPoints(sweeps: readonly SweepRow[], id: string): SessionPoint[] {
   const axis = sessionAxis(sweeps);
   return sweeps.flatMap((sweep) => {
-    const value = sweep.readings[id]?.value ?? sweep.spikes[0]?.values[id] ?? null;
-    return value === null ? [] : [{ sweep, at: axis.at(sweep), value }];
+    const reading = sweep.readings[id];
+    if (reading?.value != null)
+      return [{ sweep, at: axis.at(sweep), value: reading.value, u95: knownHalfWidth(id, reading.u95) }];
+    const spike = sweep.spikes[0];
+    const value = spike?.values[id] ?? null;
+    return value === null ? [] : [{ sweep, at: axis.at(sweep), value, u95: knownHalfWidth(id, spike?.u95?.[id]) }];
   });
 }
 
@@ -69,7 +77,7 @@ export function sessionStrip(input: SessionInput): Chart | null {
   };
   const xDomain = domainOf(input.sweeps.map(axis.at), [], 0.03)!;
   const values = points.map((point) => point.value);
-  const tight = domainOf(values, [], 0.12)!;
+  const tight = stretched(domainOf(values, [], 0.12)!, domainOf(intervalEnds(points), [], 0.04)!);
   // A strip never magnifies the last decimal into a drama.
   const least = 10 ** -entry.decimals * 4;
   const middle = (tight[0] + tight[1]) / 2;
@@ -78,6 +86,7 @@ export function sessionStrip(input: SessionInput): Chart | null {
   const y = yScale(frame, yDomain);
   const right = frame.width - frame.margins.right;
   const bottom = frame.height - frame.margins.bottom;
+  const rules = halfWidthRules(points, x, y, 2.4);
   const parts = [
     usableBand(input, x, frame),
     yAxis(y, frame.margins.left, entry.label, entry.unit, right, 3),
@@ -90,11 +99,25 @@ export function sessionStrip(input: SessionInput): Chart | null {
       ),
       class: 'thread',
     }),
+    rules.svg,
     ...points.map((point) => element('circle', { cx: x(point.at), cy: y(point.value), r: 2.4, class: 'point' })),
     input.withAxis ? xAxis(x, bottom, axis.name, axis.unit, 6) : '',
   ];
-  const alt = `${entry.label} over ${counted(points.length, 'sweep')}: from ${withUnit(input.quantity, values[0]!)} to ${withUnit(input.quantity, values.at(-1)!)}, lowest ${withUnit(input.quantity, Math.min(...values))}, highest ${withUnit(input.quantity, Math.max(...values))}.`;
-  return picture(frame, alt, parts.join(''));
+  const told = (point: SessionPoint): string => inFull(input.quantity, point.value, point.u95);
+  const byValue = [...points].sort((a, b) => a.value - b.value);
+  const alt = `${entry.label} over ${counted(points.length, 'sweep')}: from ${told(points[0]!)} to ${told(points.at(-1)!)}, lowest ${told(byValue[0]!)}, highest ${told(byValue.at(-1)!)}${prefixed('; ', halfWidthWords(input.quantity, points))}.`;
+  return { ...picture(frame, alt, parts.join('')), ruled: rules.ruled };
+}
+
+const prefixed = (prefix: string, text: string): string => (text === '' ? '' : prefix + text);
+
+/** Room for the intervals, at most the values' own span on either side: one poor sweep must not flatten the others. */
+function stretched(values: [number, number], intervals: [number, number]): [number, number] {
+  const room = values[1] - values[0];
+  return [
+    Math.max(values[0] - room, Math.min(values[0], intervals[0])),
+    Math.min(values[1] + room, Math.max(values[1], intervals[1])),
+  ];
 }
 
 function usableBand(input: SessionInput, x: (value: number) => number, frame: Frame): string {
@@ -115,7 +138,9 @@ function usableBand(input: SessionInput, x: (value: number) => number, frame: Fr
       height: frame.height - frame.margins.top - frame.margins.bottom,
       class: 'usable',
     }) +
-    (input.withAxis ? label(from + 3, frame.height - frame.margins.bottom - 4, 'usable stretch', 'usable-name') : '')
+    (input.withAxis && to - from > 84
+      ? label(from + 3, frame.height - frame.margins.bottom - 4, 'usable stretch', 'usable-name')
+      : '')
   );
 }
 

@@ -1,6 +1,6 @@
 /** One spike at full resolution with its four phases, and the same spike in the phase plane. */
 import type { Excerpt, Phase, Spike } from '../../pipeline/measure/types.ts';
-import { number } from '../format.ts';
+import { inFull, number, withHalfWidth } from '../format.ts';
 import {
   type Chart,
   domainOf,
@@ -39,6 +39,10 @@ const signWords: Record<string, string> = { '-1': 'inward', '0': 'not resolved',
 export const signWord = (sign: number): string => signWords[String(sign)] ?? 'not resolved';
 
 const value = (spike: Spike, id: string): number | null => spike.values[id] ?? null;
+
+/** '−45.2 ± 0.3', with the unit where it is wanted. */
+const told = (spike: Spike, id: string, unit = false): string =>
+  (unit ? inFull : withHalfWidth)(id, spike.values[id]!, spike.u95?.[id]);
 
 function thinned(points: [number, number][], x: Scale, y: Scale): string {
   const same = ((one: number) => one) as unknown as Scale;
@@ -142,7 +146,7 @@ function landmarks(spike: Spike, zeroS: number, x: Scale, y: Scale): string[] {
   const [low, high] = x.domain() as [number, number];
   if (threshold !== null && low <= 0 && high >= 0) {
     parts.push(element('circle', { cx: x(0), cy: y(threshold), r: 3.5, class: 'landmark' }));
-    const text = `threshold ${number(threshold, 1)}`;
+    const text = `threshold ${told(spike, 'threshold_mv')}`;
     // Beside the rise where the rise stands too near the axis for a name on its left.
     if (x(0) - x(low) > 100) parts.push(label(x(0) - 8, y(threshold) - 6, text, 'landmark-name', 'end'));
     else parts.push(label(x(0) + 12, y(threshold) + 4, text, 'landmark-name'));
@@ -150,7 +154,7 @@ function landmarks(spike: Spike, zeroS: number, x: Scale, y: Scale): string[] {
   if (peak !== null && peakAt !== null) {
     const at = x((peakAt - zeroS) * 1000);
     parts.push(element('circle', { cx: at, cy: y(peak), r: 3.5, class: 'landmark' }));
-    parts.push(label(at + 8, y(peak) + 4, `peak ${number(peak, 1)}`, 'landmark-name'));
+    parts.push(label(at + 8, y(peak) + 4, `peak ${told(spike, 'peak_mv')}`, 'landmark-name'));
   }
   const width = value(spike, 'half_width_ms');
   const height = value(spike, 'spike_height_mv');
@@ -158,7 +162,9 @@ function landmarks(spike: Spike, zeroS: number, x: Scale, y: Scale): string[] {
     const mv = threshold + height / 2;
     const middle = (peakAt - zeroS) * 1000;
     // The width is not centred on the peak: it is drawn where it lies only as far as the numbers say, beside the fall.
-    parts.push(label(x(middle + width) + 6, y(mv) + 4, `half-width ${number(width, 2)} ms`, 'landmark-name'));
+    parts.push(
+      label(x(middle + width) + 6, y(mv) + 4, `half-width ${told(spike, 'half_width_ms', true)}`, 'landmark-name'),
+    );
   }
   return parts;
 }
@@ -168,8 +174,8 @@ function spikeAlt(spike: Spike, input: SpikeChartInput): string {
   const threshold = value(spike, 'threshold_mv');
   const parts = [
     'One spike at full resolution',
-    threshold === null ? '' : `threshold ${number(threshold, 1)} mV`,
-    peak === null ? '' : `peak ${number(peak, 1)} mV`,
+    threshold === null ? '' : `threshold ${told(spike, 'threshold_mv', true)}`,
+    peak === null ? '' : `peak ${told(spike, 'peak_mv', true)}`,
     input.e_na_mv === null ? '' : `E_Na ${number(input.e_na_mv, 0)} mV`,
     input.e_k_mv === null ? '' : `E_K ${number(input.e_k_mv, 0)} mV`,
   ].filter((part) => part !== '');
@@ -221,12 +227,12 @@ export function phasePlane(excerpt: Excerpt, spike: Spike): Chart | null {
     threshold === null
       ? ''
       : line(x(threshold), frame.margins.top, x(threshold), bottom, 'level') +
-        label(x(threshold) + 4, frame.margins.top + 10, `threshold ${number(threshold, 1)}`, 'level-name'),
+        label(x(threshold) + 4, frame.margins.top + 10, `threshold ${told(spike, 'threshold_mv')}`, 'level-name'),
     element('path', { d: thinned(points, x, y), class: 'trace' }),
     xAxis(x, bottom + 18, 'Membrane potential', 'mV', 6),
   ];
   const rise = value(spike, 'max_rise_v_per_s');
   const fall = value(spike, 'max_fall_v_per_s');
-  const alt = `Phase plane of the same spike${rise === null ? '' : `: rises at up to ${number(rise, 0)} V/s`}${fall === null ? '' : `, falls at up to ${number(fall, 0)} V/s`}.`;
+  const alt = `Phase plane of the same spike${rise === null ? '' : `: rises at up to ${told(spike, 'max_rise_v_per_s', true)}`}${fall === null ? '' : `, falls at up to ${told(spike, 'max_fall_v_per_s', true)}`}.`;
   return picture(frame, alt, parts.join(''));
 }

@@ -9,7 +9,6 @@ import {
   element,
   type Frame,
   level,
-  path,
   picture,
   type Scale,
   xAxis,
@@ -32,6 +31,10 @@ export interface SweepsChartOptions {
 }
 
 const columns = 440;
+/** Fewest columns that still show where a sweep fires. */
+const fewestColumns = 60;
+/** What the paths of one chart may weigh, characters: noisy sweeps compress badly, and many of them lie over each other. */
+const pathBudget = 48_000;
 
 const open = (envelope: Envelope | null): Envelope | null => envelope && withGaps(envelope);
 
@@ -49,24 +52,30 @@ function windowed(envelope: Envelope, from: number, to: number): Envelope {
   };
 }
 
-function trace(envelope: Envelope, x: Scale, y: Scale, className: string): string {
-  const reduced = coarser(envelope, columns);
+/** Steps from point to point in tenths of a pixel, which take half the room of positions. */
+function steps(points: readonly (readonly [number, number])[]): string {
+  const tenth = (value: number): string => String(value / 10);
+  let text = '';
+  let [beforeX, beforeY] = [0, 0];
+  points.forEach(([a, b], index) => {
+    const [atX, atY] = [Math.round(a * 10), Math.round(b * 10)];
+    const [byX, byY] = [tenth(atX - beforeX), tenth(atY - beforeY)];
+    text += `${index === 0 ? 'M' : index === 1 ? 'l' : byX.startsWith('-') ? '' : ' '}${byX}${byY.startsWith('-') ? '' : ' '}${byY}`;
+    [beforeX, beforeY] = [atX, atY];
+  });
+  return text;
+}
+
+/** @param most columns that the envelope is joined to. */
+function trace(envelope: Envelope, x: Scale, y: Scale, className: string, most = columns): string {
+  const reduced = coarser(envelope, most);
   const points = [...envelopeLine(reduced, Math.abs(y.invert(0) - y.invert(0.8)))].map(
     ([t, value]) => [x(t), y(value)] as [number, number],
   );
   const parts: string[] = [];
   let run: [number, number][] = [];
   const flush = (): void => {
-    if (run.length > 1) {
-      const same: Scale = ((value: number) => value) as unknown as Scale;
-      parts.push(
-        path(
-          simplified(run, 0.35).map(([a, b]) => [Math.round(a * 10) / 10, Math.round(b * 10) / 10]),
-          same,
-          same,
-        ),
-      );
-    }
+    if (run.length > 1) parts.push(steps(simplified(run, 0.35)));
     run = [];
   };
   for (const point of points) {
@@ -86,6 +95,23 @@ function valuesIn(envelopes: (Envelope | null)[], from: number, to: number): num
     const part = windowed(envelope, from, to);
     return [...finite(part.low), ...finite(part.high)];
   });
+}
+
+/** All traces; those that recede are drawn in as many columns as the budget allows, the one in full ink in all. */
+function traces(drawn: readonly { envelope: Envelope; className: string }[], x: Scale, y: Scale): string[] {
+  const drawnIn = (most: number): string[] =>
+    drawn.map(({ envelope, className }) =>
+      trace(envelope, x, y, className, className.includes('receding') || drawn.length > 24 ? most : columns),
+    );
+  let most = columns;
+  let svg = drawnIn(most);
+  for (let turn = 0; turn < 3; turn++) {
+    const weight = svg.reduce((sum, one) => sum + one.length, 0);
+    if (weight <= pathBudget || most === fewestColumns) break;
+    most = Math.max(fewestColumns, Math.floor((0.95 * most * pathBudget) / weight));
+    svg = drawnIn(most);
+  }
+  return svg;
 }
 
 /** Sweeps that share a clamp mode and a length belong on one chart; others would not share its axes. */
@@ -140,7 +166,11 @@ export function sweepsChart(sweeps: readonly SweepRow[], options: SweepsChartOpt
       right,
     ),
     ...(clamp === 'current' ? equilibriumLevels(y, frame, options) : []),
-    ...ordered.map((sweep) => trace(windowed(main(sweep)!, from, to), x, y, className(sweep))),
+    ...traces(
+      ordered.map((sweep) => ({ envelope: windowed(main(sweep)!, from, to), className: className(sweep) })),
+      x,
+      y,
+    ),
   ];
   if (hasBelow) {
     const domain = domainOf(valuesIn(drawn.map(below), from, to), [0], 0.12);
@@ -155,9 +185,13 @@ export function sweepsChart(sweeps: readonly SweepRow[], options: SweepsChartOpt
           right,
           3,
         ),
-        ...ordered
-          .filter((sweep) => below(sweep))
-          .map((sweep) => trace(windowed(below(sweep)!, from, to), x, low, className(sweep))),
+        ...traces(
+          ordered
+            .filter((sweep) => below(sweep))
+            .map((sweep) => ({ envelope: windowed(below(sweep)!, from, to), className: className(sweep) })),
+          x,
+          low,
+        ),
       );
     }
   }

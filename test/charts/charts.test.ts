@@ -1,10 +1,11 @@
+import { scaleLinear } from 'd3';
 import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
 import type { SweepRow } from '../../pipeline/ledger/types.ts';
 import type { ConditionMeasure, Envelope, Excerpt, Spike } from '../../pipeline/measure/types.ts';
 import { controlChart, eventLetter } from '../../site/charts/control-chart.ts';
 import { fewestForLimits, individualsLimits } from '../../site/charts/control-limits.ts';
-import { domainOf } from '../../site/charts/frame.ts';
+import { domainOf, halfWidthRules, intervalEnds, ruledNote } from '../../site/charts/frame.ts';
 import { coarser, envelopeLine, simplified, withGaps } from '../../site/charts/reduce.ts';
 import { fiChart, viChart } from '../../site/charts/relations.ts';
 import { sessionStrip } from '../../site/charts/session.ts';
@@ -90,6 +91,48 @@ test('a domain holds its values; one value gets room around it; none gives none'
   expect(low).toBeLessThan(-70);
   expect(high).toBeGreaterThan(-70);
   expect(domainOf([1, 2], [5], 0)).toEqual([1, 5]);
+});
+
+describe('half-widths on charts', () => {
+  const x = scaleLinear([0, 10], [0, 100]);
+  const y = scaleLinear([0, 10], [100, 0]);
+  test('a hairline from value − u95 to value + u95, cut at the frame', () =>
+    expect(
+      halfWidthRules(
+        [
+          { at: 1, value: 5, u95: 2 },
+          { at: 2, value: 9, u95: 3 },
+        ],
+        x,
+        y,
+        3,
+      ),
+    ).toEqual({ svg: '<path d="M10,30V70M20,0V40" class="half-width"/>', ruled: 2 }));
+  test('none where it is not known, or the mark hides it', () =>
+    expect(
+      halfWidthRules(
+        [
+          { at: 1, value: 5 },
+          { at: 1, value: 5, u95: null },
+          { at: 2, value: 5, u95: 0.1 },
+        ],
+        x,
+        y,
+        3,
+      ),
+    ).toEqual({ svg: '', ruled: 0 }));
+  test('the axis holds both ends', () =>
+    expect(
+      intervalEnds([
+        { at: 0, value: 5, u95: 2 },
+        { at: 0, value: 9 },
+      ]),
+    ).toEqual([3, 7, 9]));
+  test('the caption speaks of them only where there are any', () => {
+    expect(ruledNote({ svg: '', alt: '' })).toBe('');
+    expect(ruledNote({ svg: '', alt: '', ruled: 0 })).toBe('');
+    expect(ruledNote({ svg: '', alt: '', ruled: 2 })).toMatch(/95 % half-widths/);
+  });
 });
 
 const spike: Spike = {
@@ -206,6 +249,38 @@ describe('charts', () => {
     const chart = sweepsChart([sweepRow({ voltage_envelope: { start_s: 0, end_s: 1, low, high: low } })])!;
     expect(chart.svg.match(notNumbers)).toBeNull();
     expect(chart.svg.match(/class="trace"/g)).toHaveLength(1);
+  });
+  // Forty noisy sweeps of one long recording: unbounded, their paths would weigh more than the page may.
+  test('noisy sweeps that recede are drawn within a budget, with their highest points kept', () => {
+    let state = 1;
+    const next = (): number => {
+      state = (state * 16_807) % 2_147_483_647;
+      return state / 2_147_483_647;
+    };
+    const noisy = (sweep: number) => {
+      const low = Array.from({ length: 1000 }, () => -70 - 8 * next());
+      const high = low.map((value, i) => (i === 500 ? 40 : value + 8 * next()));
+      return sweepRow({ sweep, voltage_envelope: { start_s: 0, end_s: 1, low, high } });
+    };
+    const chart = sweepsChart(
+      Array.from({ length: 40 }, (_, sweep) => noisy(sweep)),
+      { highlight: 3 },
+    )!;
+    expect(chart.svg.length).toBeLessThan(80_000);
+    expect(chart.svg.match(notNumbers)).toBeNull();
+    // All forty reach the same top: the smallest ordinate of each path, positions summed from its steps.
+    const tops = [...chart.svg.matchAll(/<path d="([^"]*)" class="trace/g)].map(([, d = '']) => {
+      const numbers = d.match(/-?\d+(?:\.\d+)?/g)!.map(Number);
+      let y = 0;
+      let top = Number.POSITIVE_INFINITY;
+      for (let i = 1; i < numbers.length; i += 2) {
+        y += numbers[i]!;
+        top = Math.min(top, y);
+      }
+      return top;
+    });
+    expect(tops).toHaveLength(40);
+    expect(Math.max(...tops) - Math.min(...tops)).toBeLessThan(0.6);
   });
   test('sweeps of another clamp mode or length stand on a chart of their own', () =>
     expect(

@@ -1,6 +1,9 @@
 import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
-import { bytes, longDate, mondayOf, number, withUnit } from '../../site/format.ts';
+import { absenceSentences } from '../../pipeline/measure/absence.ts';
+import { quantities } from '../../pipeline/measure/quantities.ts';
+import { printedReading, spikeValues } from '../../site/cell/view.ts';
+import { bytes, cutTogether, longDate, mondayOf, number, withUnit } from '../../site/format.ts';
 import { relativeLink } from '../../site/links.ts';
 import { pageNames } from '../../site/names.ts';
 import { escaped, resolvedHtml, withFigures } from '../../site/notes.ts';
@@ -107,6 +110,73 @@ describe('numbers and dates as printed', () => {
     [12345.6, 1, '12\u202f345.6'],
     [1234567, 0, '1\u202f234\u202f567'],
   ])('%f with %i decimals is %s', (value, decimals, text) => expect(number(value, decimals)).toBe(text));
+  // JCGM 100:2008, 7.2.6 (from memory): m = 100.021 47 g with u = 0.35 mg; R = 10.057 62 Ω with u = 27 mΩ becomes 10.058 Ω;
+  // two significant digits of the uncertainty at most, the value cut at the same place.
+  test.each([
+    [100.02147, 0.00035, 5, '100.02147', '0.00035'],
+    [10.05762, 0.027, 5, '10.058', '0.027'],
+    [-68.2412, 0.372, 1, '−68.2', '0.4'],
+    [-68.2412, 0.372, 3, '−68.24', '0.37'],
+    [345.6, 123.4, 1, '350', '120'],
+    [345.6, 9.96, 3, '346', '10'],
+    [1.2346, 0.0996, 3, '1.23', '0.10'],
+    [-68.24, 0.003, 1, '−68.2', '0.1'],
+    [0.25, 0, 1, '0.3', '0.0'],
+    [12_345, 1234, 0, '12\u202f300', '1200'],
+    [-0.02, 0.4, 1, '0.0', '0.4'],
+  ])('%d ± %d with at most %i decimals is %s ± %s', (value, u95, most, text, half) =>
+    expect(cutTogether(value, u95, most)).toMatchObject({ value: text, u95: half }),
+  );
+  test('a half-width that is not known is not printed', () => {
+    expect(cutTogether(1.25, undefined, 1)).toEqual({ value: '1.3', u95: '', decimals: 1 });
+    expect(cutTogether(1.25, Number.NaN, 1).u95).toBe('');
+  });
+  test('cut together, value ± half-width still says within half a place what it said before', () =>
+    fc.assert(
+      fc.property(
+        fc.double({ min: -900, max: 900, noNaN: true }),
+        fc.double({ min: 1e-4, max: 500, noNaN: true }),
+        fc.integer({ min: 0, max: 4 }),
+        (value, u95, most) => {
+          const plain = (text: string): number => Number(text.replace('−', '-').replaceAll('\u202f', ''));
+          const cut = cutTogether(value, u95, most);
+          const half = 0.5 * 10 ** -cut.decimals * 1.001;
+          expect(Math.abs(plain(cut.value) - value)).toBeLessThanOrEqual(half);
+          expect(plain(cut.u95)).toBeGreaterThan(0);
+          expect(cut.decimals).toBeLessThanOrEqual(most);
+          expect(
+            cut.u95
+              .replace(/^[0.]+/, '')
+              .replace('.', '')
+              .replaceAll('\u202f', '')
+              .replace(/0+$/, '').length,
+          ).toBeLessThanOrEqual(2);
+          if (u95 >= half) expect(Math.abs(plain(cut.u95) - u95)).toBeLessThanOrEqual(half);
+        },
+      ),
+      { seed: 21 },
+    ));
+  test('a reading in print: nothing stands where nothing is known', () => {
+    expect(printedReading('peak_mv', { value: 31.26 })).toEqual({ value: '31.3', u95: '', sd: '', n: '' });
+    expect(printedReading('peak_mv', { value: null, why: 'no-spikes' })).toBeNull();
+    expect(printedReading('spikes', { value: 3, n: 4, u95: 2 })).toEqual({ value: '3', u95: '', sd: '', n: '4' });
+  });
+  test('a half-width is printed of every quantity whose entry says how it is had, and of no other', () => {
+    for (const { id, uncertainty } of quantities)
+      expect(printedReading(id, { value: 1, u95: 0.5 })!.u95 !== '', id).toBe(uncertainty !== undefined);
+  });
+  test('every number of a spike, or why there is none', () =>
+    expect(
+      spikeValues({
+        spike: 0,
+        values: { threshold_mv: -45.23, peak_mv: null },
+        why: { peak_mv: 'clipped' },
+        phases: [],
+      }).map((one) => [one.id, one.printed?.value ?? one.why]),
+    ).toEqual([
+      ['threshold_mv', '−45.2'],
+      ['peak_mv', absenceSentences.clipped],
+    ]));
   test('a unit stands after a space that does not break', () =>
     expect(withUnit('peak_mv', 31.26)).toBe('31.3\u00a0mV'));
   test('sizes of files', () =>
