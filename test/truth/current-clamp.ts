@@ -176,11 +176,18 @@ export function cleanSweeps(cell: Cell): Clean[] {
   );
 }
 
+/** A seed of its own for every recording: shared noise would make many trials speak as one. */
+export function ownSeed(...names: readonly (string | number)[]): number {
+  let hash = 2166136261;
+  for (const letter of names.join('|')) hash = Math.imul(hash ^ letter.charCodeAt(0), 16777619);
+  return hash >>> 8;
+}
+
 export function* trialsOf(cell: Cell, clean: readonly Clean[], under: Conditions, seed: number): Generator<Trial> {
   const context: MeasureContext = { ...neuron, filter_khz: under.filter_stated ? under.filter_khz : null };
   const stated = cell.electrode.access_mohm - under.bridge_left_mohm;
   const sweeps = clean.map((one, k): NumberedSweep => {
-    const { mv, pa, rate_hz } = record(one, under, cell.electrode, seed * 1000 + k);
+    const { mv, pa, rate_hz } = record(one, under, cell.electrode, ownSeed(cell.name, under.name, seed, k));
     const measure = measureSweep(
       input(
         {
