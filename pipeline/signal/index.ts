@@ -1,4 +1,5 @@
 export * from './butterworth.ts';
+export * from './coverage.ts';
 export * from './crossing.ts';
 export * from './derivative.ts';
 export * from './envelope.ts';
@@ -6,6 +7,7 @@ export * from './excursions.ts';
 export * from './exponential.ts';
 export * from './line.ts';
 export * from './runs.ts';
+export * from './serial.ts';
 export * from './sine.ts';
 export * from './smoothing.ts';
 export * from './statistics.ts';
