@@ -41,17 +41,55 @@ export const spreadOf = (values: readonly number[]): Pick<Reading, 'n' | 'sd' | 
   return { n: values.length, ...(sd === null ? {} : { sd, se: sd / Math.sqrt(values.length) }) };
 };
 
-/** Median over sweeps with n, spread and the standard error of a mean; `at` is the sweep nearest the median. */
+/**
+ * Standard uncertainty of the mean or median of numbers that carry uncertainties of their own. Their scatter holds those
+ * uncertainties already; where it does not exceed them by more than chance would (95 %), the two are pooled, which keeps
+ * two or three sweeps from giving an absurd interval; where it does, the scatter alone speaks, with n − 1 degrees of
+ * freedom. The median of many normal numbers is √(π/2) times less certain than their mean.
+ * @param each standard uncertainty of each number; null where it has none
+ */
+export function uncertaintyOver(
+  values: readonly number[],
+  each: readonly (number | null)[],
+  of: 'mean' | 'median' = 'median',
+): Pick<Reading, 'n' | 'sd' | 'se' | 'freedom'> {
+  const n = values.length;
+  const own = each.filter((se) => se !== null);
+  const within = own.length === n && n > 0 ? own.reduce((sum, se) => sum + se * se, 0) / n : null;
+  if (n < 2) return { n, ...(within === null ? {} : { se: Math.sqrt(within) }) };
+  const sd = standardDeviation(values)!;
+  const medianCosts = of === 'mean' || n < 3 ? 1 : Math.sqrt(1 + (Math.PI / 2 - 1) * (1 - 2 / n));
+  if (within === null || sd * sd > within * chiSquareShare(n - 1))
+    return { n, sd, se: (medianCosts * sd) / Math.sqrt(n), freedom: n - 1 };
+  const freedom = n - 1 + ownFreedom;
+  const pooled = ((n - 1) * sd * sd + ownFreedom * within) / freedom;
+  return { n, sd, se: medianCosts * Math.sqrt(pooled / n), freedom };
+}
+
+/** What the numbers' own uncertainties count for against their scatter: as much as so many degrees of freedom. */
+const ownFreedom = 10;
+
+/** 95 % point of χ² over its degrees of freedom (Wilson & Hilferty 1931, PNAS 17:684–688; from memory). */
+const chiSquareShare = (freedom: number): number =>
+  (1 - 2 / (9 * freedom) + 1.6449 * Math.sqrt(2 / (9 * freedom))) ** 3;
+
+/** A reading's own standard uncertainty; null where it has none. */
+export const ownError = (reading: Reading): number | null =>
+  reading.se ?? (reading.u95 === undefined ? null : reading.u95 / 1.96);
+
+/** Median over sweeps with n, spread and standard uncertainty; `at` is the sweep nearest the median. */
 export function medianOver(points: readonly Point[], whenNone: Reading, note?: string): Reading {
   if (points.length === 0) return whenNone;
-  const value = median(points.map((point) => point.value))!;
+  const values = points.map((point) => point.value);
+  const value = median(values)!;
   const nearest = points.reduce((best, one) =>
     Math.abs(one.value - value) < Math.abs(best.value - value) ? one : best,
   );
   return measured(value, {
-    ...spreadOf(points.map((point) => point.value)),
-    // One sweep alone still has the error it was measured with.
-    ...(points.length === 1 && nearest.reading.se !== undefined ? { se: nearest.reading.se } : {}),
+    ...uncertaintyOver(
+      values,
+      points.map(({ reading }) => ownError(reading)),
+    ),
     at: placeOf(nearest),
     ...(note ? { note } : {}),
   });

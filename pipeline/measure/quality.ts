@@ -1,7 +1,6 @@
 import { bandPass } from '../signal/butterworth.ts';
-import { linearFit } from '../signal/line.ts';
 import { clippedRuns, quantum } from '../signal/runs.ts';
-import { type SineFit, sineFit, sineNear } from '../signal/sine.ts';
+import { type Piece, type PiecesFit, sineInPieces, sineInPiecesNear, withoutSine } from '../signal/sine-pieces.ts';
 import { countFinite, mean, median } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import { type Stretch, timeAt } from './stretches.ts';
@@ -146,6 +145,8 @@ export function noise(voltage: Signal, quiet: readonly Stretch[], filterKhz: num
   return measured(rms, {
     n,
     se: rms / Math.sqrt(2 * freedom),
+    // The skirts of the band and of the recorder's filter are not those of an ideal band: 1 %.
+    u95: Math.hypot((1.96 * rms) / Math.sqrt(2 * freedom), 0.01 * rms),
     ...(at ? { at } : {}),
     note: `${kilohertz(low)} to ${kilohertz(high)}${stated}`,
   });
@@ -153,94 +154,118 @@ export function noise(voltage: Signal, quiet: readonly Stretch[], filterKhz: num
 
 /** Longest stretch, s, over which hum is fitted: enough for a few hundredths of a hertz. */
 const humSpan_s = 2;
+/** A line stands out where its amplitude is so many times what noise alone gives one quadrature of it. */
+const standsOut = 5;
 
 /**
  * Amplitude and frequency of the mains hum: the least-squares sine near the mains frequency (50 and 60 Hz where it is
- * not known) in quiet stretches. A line that stands four times above its surroundings counts as hum, and its own
- * frequency is reported; otherwise the amplitude at the nominal frequency is, and the frequency is `unresolved`.
- * Where nothing stands out near the mains, a very clear line elsewhere between 20 and 150 Hz is reported instead, with
- * a remark: a misdeclared sampling rate moves the hum.
+ * not known), fitted in quiet stretches together with a straight line in each. A line five standard uncertainties high
+ * counts as hum and its own frequency is reported; otherwise the amplitude at the nominal frequency is, and the
+ * frequency is `unresolved`. Where nothing stands out near the mains, a very clear line elsewhere between 20 and 150 Hz
+ * is reported instead, with a remark: a misdeclared sampling rate moves the hum.
+ *
+ * Noise always adds to an amplitude: √(A² − 2u²) takes that off again (Gudbjartsson & Patz 1995, Magn Reson Med
+ * 34:910–914, for the same distribution; from memory).
  */
 export function hum(voltage: Signal, quiet: readonly Stretch[], mainsHz: number | null): Readings {
   const both = (reading: Reading): Readings => ({ mains_hum_mv: reading, mains_hum_hz: reading });
   if (voltage.rate_hz < 400) return both(absent('rate-too-low'));
   const trace = humTrace(voltage, quiet);
   if (!trace) return both(absent('no-spike-free-stretch'));
-  const rate = trace.rate_hz;
-  const seconds = trace.samples.length / rate;
+  const { pieces, rate_hz: rate } = trace;
   const candidates = (mainsHz === null ? [50, 60] : [mainsHz])
     .filter((hz) => hz < rate * 0.4)
-    .map((hz) => lineNear(trace.samples, rate, hz, Math.max(0.1 * hz, 1 / seconds), seconds))
+    .map((hz) => lineNear(trace, hz, Math.max(0.1 * hz, 1 / trace.seconds)))
     .filter((line) => line !== null);
   if (candidates.length === 0) return both(absent('sweep-too-short'));
   const nearest = candidates.reduce((best, line) => (line.fit.amplitude > best.fit.amplitude ? line : best));
-  const extra = (line: Line): Omit<Reading, 'value' | 'why'> => ({
-    n: line.fit.n * trace.block,
-    at: { from_s: trace.from_s, to_s: trace.from_s + seconds },
-  });
+  const amplitude = (line: Line, note?: string): Reading => {
+    const kept = keptByMeans(line.fit.frequency_hz, trace);
+    return measured(Math.sqrt(Math.max(0, line.fit.amplitude ** 2 - 2 * line.se ** 2)) / kept, {
+      n: line.fit.n * trace.block,
+      at: { from_s: trace.from_s, to_s: trace.from_s + trace.seconds },
+      se: line.se / kept,
+      freedom: line.freedom,
+      ...(note ? { note } : {}),
+    });
+  };
   const report = (line: Line, note?: string): Readings => ({
-    mains_hum_mv: measured(line.fit.amplitude / keptByMeans(line.fit.frequency_hz, trace), {
-      ...extra(line),
-      se: line.floor,
-      ...(note ? { note } : {}),
-    }),
-    // Standard error of a frequency from a sine of this amplitude and duration in white noise (Rife & Boorstyn 1974).
+    mains_hum_mv: amplitude(line, note),
     mains_hum_hz: measured(line.fit.frequency_hz, {
-      ...extra(line),
-      se: (Math.sqrt(6) * line.floor) / (Math.PI * seconds * line.fit.amplitude),
+      n: line.fit.n * trace.block,
+      at: { from_s: trace.from_s, to_s: trace.from_s + trace.seconds },
+      // Cramér–Rao bound for the frequency of a sine in white noise (Rife & Boorstyn 1974, IEEE Trans Inf Theory
+      // 20:591–598; from memory), written with the spread of the sampled times and the error of one quadrature.
+      se: line.se / (2 * Math.PI * line.fit.amplitude * timeSpread_s(trace)),
+      freedom: line.freedom,
       ...(note ? { note } : {}),
     }),
   });
-  if (nearest.fit.amplitude > 4 * nearest.floor) return report(nearest);
-  const elsewhere = strayLine(trace.samples, rate, seconds);
+  if (nearest.fit.amplitude > standsOut * nearest.se) return report(nearest);
+  const elsewhere = strayLine(trace);
   if (elsewhere) return report(elsewhere, 'no line near the mains frequency; this one stands out instead');
-  const nominal = sineFit(trace.samples, rate, nearest.nominal_hz);
+  const nominal = sineInPieces(pieces, rate, nearest.nominal_hz);
   return {
     mains_hum_mv: nominal
-      ? measured(nominal.amplitude / keptByMeans(nearest.nominal_hz, trace), {
-          ...extra(nearest),
-          se: nearest.floor,
-          note: `at ${nearest.nominal_hz} Hz`,
-        })
+      ? amplitude({ ...nearest, fit: nominal }, `at ${nearest.nominal_hz} Hz`)
       : absent('sweep-too-short'),
     mains_hum_hz: absent('unresolved'),
   };
 }
 
 interface Line {
-  fit: SineFit;
-  /** Median amplitude at frequencies round about: what noise alone gives. */
-  floor: number;
+  fit: PiecesFit;
+  /** Standard uncertainty of one quadrature of the amplitude, and its degrees of freedom. */
+  se: number;
+  freedom: number;
   nominal_hz: number;
 }
 
-function lineNear(samples: Float64Array, rate: number, hz: number, range: number, seconds: number): Line | null {
-  const fit = sineNear(samples, rate, hz, range);
+/** Standard deviation of the times that were sampled, s. */
+function timeSpread_s({ pieces, rate_hz }: HumTrace): number {
+  let [n, sum, squares] = [0, 0, 0];
+  for (const { from, samples } of pieces) {
+    const count = samples.length;
+    const middle = from + (count - 1) / 2;
+    n += count;
+    sum += count * middle;
+    squares += count * middle * middle + (count * (count * count - 1)) / 12;
+  }
+  return Math.sqrt(squares / n - (sum / n) ** 2) / rate_hz;
+}
+
+/**
+ * The line near a frequency. What noise does to its amplitude is read from six frequencies round about, whole multiples
+ * of 1/duration away, once the line itself is taken out: slow noise is not white.
+ */
+function lineNear(trace: HumTrace, hz: number, range: number): Line | null {
+  const { pieces, rate_hz: rate, seconds } = trace;
+  const fit = sineInPiecesNear(pieces, rate, hz, range);
   if (!fit) return null;
-  // Whole multiples of one over the duration away, where the line itself leaves nothing.
+  const rest = withoutSine(pieces, rate, fit);
   const beside = [-5, -4, -3, 3, 4, 5]
     .map((steps) => fit.frequency_hz + steps / seconds)
     .filter((frequency) => frequency > 2 / seconds && frequency > 8 && frequency < rate * 0.45)
-    .map((frequency) => sineFit(samples, rate, frequency)?.amplitude ?? Number.NaN);
-  const floor = median(beside);
-  return floor === null ? null : { fit, floor: Math.max(floor, fit.se_amplitude), nominal_hz: hz };
+    .flatMap((frequency) => sineInPieces(rest, rate, frequency)?.amplitude ?? []);
+  if (beside.length === 0) return null;
+  const se = Math.sqrt(beside.reduce((sum, amplitude) => sum + amplitude ** 2, 0) / (2 * beside.length));
+  // White noise alone would leave this much.
+  const white = Math.sqrt((2 * fit.rss) / Math.max(1, fit.n - 4) / fit.n);
+  return { fit, se: Math.max(se, 0.5 * white), freedom: 2 * beside.length, nominal_hz: hz };
 }
 
-function strayLine(samples: Float64Array, rate: number, seconds: number): Line | null {
+function strayLine(trace: HumTrace): Line | null {
+  const { pieces, rate_hz: rate, seconds } = trace;
   if (seconds < 0.4) return null;
-  // A coarse look first: one second at about 750 Hz.
-  const span_s = Math.min(seconds, 1);
-  const block = Math.max(1, Math.floor(rate / 750));
-  const some = blockMeans(samples.subarray(0, Math.round(span_s * rate)), block);
-  const spacing = 0.5 / span_s;
-  let best: SineFit | null = null;
+  const spacing = 0.5 / Math.min(seconds, 1);
+  let best: PiecesFit | null = null;
   for (let hz = 20; hz <= 150 && hz < rate * 0.4; hz += spacing) {
-    const fit = sineFit(some, rate / block, hz);
+    const fit = sineInPieces(pieces, rate, hz);
     if (fit && (!best || fit.amplitude > best.amplitude)) best = fit;
   }
   if (!best) return null;
-  const line = lineNear(samples, rate, best.frequency_hz, 2 * spacing, seconds);
-  return line && line.fit.amplitude > 12 * line.floor ? line : null;
+  const line = lineNear(trace, best.frequency_hz, 2 * spacing);
+  return line && line.fit.amplitude > 3 * standsOut * line.se ? line : null;
 }
 
 function blockMeans(samples: Float64Array, block: number): Float64Array {
@@ -251,11 +276,13 @@ function blockMeans(samples: Float64Array, block: number): Float64Array {
 }
 
 interface HumTrace {
-  /** Means over `block` samples of the quiet stretches, each freed of its own level and slope; NaN between them. */
-  samples: Float64Array;
+  /** Means over `block` samples of the quiet stretches, on one grid. */
+  pieces: Piece[];
   rate_hz: number;
   block: number;
   from_s: number;
+  /** From the first to the last sample. */
+  seconds: number;
 }
 
 /** What a mean over a block leaves of a sine. */
@@ -277,16 +304,22 @@ function humTrace(voltage: Signal, quiet: readonly Stretch[]): HumTrace | null {
   if (total(chosen) < 0.1 * voltage.rate_hz) return null;
   const block = Math.max(1, Math.floor(voltage.rate_hz / 3000));
   const first = chosen[0]!.from;
-  const samples = new Float64Array(Math.floor((chosen.at(-1)!.to - first) / block)).fill(Number.NaN);
-  for (const one of chosen) {
+  const pieces = chosen.map((one): Piece => {
     // Blocks lie on one grid over all stretches, so that the sine keeps its phase.
     const start = Math.ceil((one.from - first) / block);
     const count = Math.floor((one.to - first) / block) - start;
-    const means = blockMeans(voltage.samples.subarray(first + start * block, first + (start + count) * block), block);
-    const line = linearFit(Float64Array.from(means.keys()), means);
-    means.forEach((value, k) => {
-      samples[start + k] = value - (line ? line.intercept + line.slope * k : (mean(means) ?? 0));
-    });
-  }
-  return { samples, rate_hz: voltage.rate_hz / block, block, from_s: timeAt(voltage, first) };
+    return {
+      from: start,
+      samples: blockMeans(voltage.samples.subarray(first + start * block, first + (start + count) * block), block),
+    };
+  });
+  const rate_hz = voltage.rate_hz / block;
+  const last = pieces.at(-1)!;
+  return {
+    pieces,
+    rate_hz,
+    block,
+    from_s: timeAt(voltage, first),
+    seconds: (last.from + last.samples.length) / rate_hz,
+  };
 }

@@ -484,7 +484,10 @@ export const quantities: readonly Quantity[] = list([
     decimals: 3,
     definition:
       'Root-mean-square noise of quiet stretches from 1 kHz to the filter corner or 0.4 of the sampling rate; the band is stated beside it.',
-    formula: 'RMS of the band-passed potential',
+    formula:
+      '√mean(x²), x the quiet stretches (outside spikes and stimuli, at least 10 ms each, at most 2 s in all) after a fourth-order Butterworth band-pass run forwards and backwards; for a cell the median over sweeps',
+    uncertainty:
+      '1.96·V_rms/√(4·B·T), B the bandwidth and T the time, with 1 % for the shape of the band; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
     source: practice,
   },
   {
@@ -495,8 +498,11 @@ export const quantities: readonly Quantity[] = list([
     ...mv,
     decimals: 3,
     definition: 'Amplitude of the sine at the mains frequency in quiet stretches.',
-    formula: 'amplitude of the least-squares sine at the fundamental',
-    source: 'least-squares sine fit',
+    formula:
+      'A of the least-squares A·sin(2πft + φ) fitted with a straight line in each quiet stretch to means at about 3 kHz (at most 2 s); V_hum = √(A² − 2u²), u the noise of one quadrature; at the nominal frequency where A < 5u; for a cell the median over sweeps',
+    uncertainty:
+      't·u; u² = half the mean square of the amplitudes fitted at ±3, ±4, ±5 times 1/duration beside the line, the line taken out, with two degrees of freedom for each; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
+    source: 'least-squares sine fit; Gudbjartsson & Patz 1995, Magn Reson Med 34:910–914 for 2u² (from memory)',
   },
   {
     id: 'mains_hum_hz',
@@ -506,8 +512,11 @@ export const quantities: readonly Quantity[] = list([
     ...hz,
     decimals: 2,
     definition: 'Frequency at which the hum is strongest near the mains frequency.',
-    formula: 'maximum of the sine-fit amplitude over frequency',
-    source: 'least-squares sine fit',
+    formula:
+      'f within ±10 % of the mains frequency (50 and 60 Hz where it is not known) that leaves the smallest squared residual of that fit; not given where A < 5u; a line 15u high elsewhere between 20 and 150 Hz is reported with a remark',
+    uncertainty:
+      't·u/(2π·A·s_t), s_t the standard deviation of the sampled times; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
+    source: 'Rife & Boorstyn 1974, IEEE Trans Inf Theory 20:591–598 (from memory)',
   },
   {
     id: 'clipped_fraction',
@@ -758,7 +767,10 @@ export const quantities: readonly Quantity[] = list([
     ucum: 'mV/min',
     decimals: 2,
     definition: 'Slope of the baseline over the recording at the same holding current.',
-    formula: 'Theil–Sen slope of V_base on time',
+    formula:
+      'median of (V_j − V_i)/(t_j − t_i) over all pairs of sweeps held within 2 pA or 5 % of the usual current; at least 4 sweeps over at least 15 s',
+    uncertainty:
+      'half the distance between the pairwise slopes of ranks (N ∓ 1.96·√(n(n − 1)(2n + 5)/18))/2, N the number of pairs, n that of sweeps',
     source: 'Theil 1950; Sen 1968, J Am Stat Assoc 63:1379–1389',
   },
   {

@@ -254,7 +254,7 @@ const humTruth = ({ hum_mv, hum_hz, filter_khz }: Conditions): number => hum_mv 
  * White noise behind the filter, within the band that the quantity is defined over: from 1 kHz to the filter's corner,
  * at most 0.4 of the rate. What the sampling folds back into the band belongs to the recording and counts.
  */
-function noiseTruth({ noise_mv, filter_khz, filter_stated, rate_hz, quantum_mv }: Conditions): number {
+function noiseTruth({ noise_mv, wander_mv, filter_khz, filter_stated, rate_hz, quantum_mv }: Conditions): number {
   const corner = filter_khz * 1000;
   const high = Math.min(filter_stated ? corner : Number.POSITIVE_INFINITY, 0.4 * rate_hz);
   const low = 1000;
@@ -271,8 +271,14 @@ function noiseTruth({ noise_mv, filter_khz, filter_stated, rate_hz, quantum_mv }
     flat += 1;
     kept += bandGain(hz, low, high, rate_hz) ** 2;
   }
+  // What the slow noise reaches of the band: 2/(π·2πτ)·(1/low − 1/high) of its power at each correlation time.
+  const slow = [0.01, 0.1, 1].reduce(
+    (sum, tau) => sum + (1 / low - 1 / Math.min(high, 0.4 * rate_hz)) / (Math.PI ** 2 * tau),
+    0,
+  );
+  const wandering = (wander_mv ** 2 / 3) * slow;
   // Rounding to a step adds white noise of a twelfth of its square (Bennett 1948, Bell Syst Tech J 27:446–472; from memory).
-  return Math.sqrt((noise_mv ** 2 * inBand) / all + ((quantum_mv ** 2 / 12) * kept) / flat);
+  return Math.sqrt(wandering + (noise_mv ** 2 * inBand) / all + ((quantum_mv ** 2 / 12) * kept) / flat);
 }
 
 /** Butterworth band-pass of fourth order run forwards and backwards, by the bilinear transform's frequency scale. */

@@ -166,14 +166,14 @@ export interface Recorded {
 /** What the file holds. @param seed two recordings with one seed have one noise */
 export function record(clean: Clean, conditions: Conditions, electrode: Electrode, seed: number): Recorded {
   const { rate_hz, filter_khz, noise_mv, wander_mv, hum_mv, hum_hz, drift_mv_per_s, quantum_mv } = conditions;
-  const next = normalNoise(seed * 7919 + 17);
+  const next = normalNoise(seed | 0);
   // The first numbers of neighbouring seeds are alike.
   for (let k = 0; k < 50; k++) next();
   const corner = filter_khz * 1000;
   const n = clean.pipette_mv.length;
   const bridge_mohm = electrode.access_mohm - conditions.bridge_left_mohm;
   const white = noise_mv / throughput(corner);
-  const phase = Math.PI * (2 * ((((seed * 0.618) % 1) + 1) % 1));
+  const phase = 2 * Math.PI * ((seed % 10007) / 10007);
   const raw = Float64Array.from({ length: n }, (_, i) => {
     const t = i / fineHz;
     return (
