@@ -31,5 +31,7 @@ export const absenceSentences: Record<AbsenceCode, string> = {
   'filter-unknown': 'the filter corner is not known',
   'rate-too-low': 'the sampling rate is too low',
   'never-fired': 'no step made the cell fire',
+  'under-stimulus': 'hidden under the stimulus’s own artefact',
+  'not-this-class': 'given for heart and calcium spikes only',
   unreadable: 'the samples could not be read',
 };

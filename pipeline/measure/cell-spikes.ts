@@ -13,6 +13,7 @@ import {
 import { spikesDuring } from './firing.ts';
 import { quantitiesOf } from './quantities.ts';
 import { absent, measured } from './reading.ts';
+import { slowOnly } from './slow-spikes.ts';
 import type { AbsenceCode, CellContext, NumberedSweep, RatePoint, Reading, Readings, Spike } from './types.ts';
 
 /** Rate on current for every step long enough to have a rate. */
@@ -222,11 +223,21 @@ function spikeReading(id: string, reference: Reference | null, sweeps: readonly 
     );
   if (reference.atRheobase) {
     const value = reference.spike.values[id] ?? null;
-    if (value === null) return absent(reference.spike.why[id] ?? 'unresolved');
-    return measured(value, { n: 1, at: placeOfSpike(reference.sweep, reference.spike) });
+    if (value === null) return absent(reference.spike.why[id] ?? whyLeftOut(id, reference.spike));
+    return measured(value, {
+      n: 1,
+      ...widthOf(reference.spike, id),
+      at: placeOfSpike(reference.sweep, reference.spike),
+    });
   }
   return over(reference.pool, id, (values) => median(values)!, `median of spikes; no step made the cell fire`);
 }
+
+const whyLeftOut = (id: string, spike: Spike): AbsenceCode =>
+  !(id in spike.values) && slowOnly.includes(id) ? 'not-this-class' : 'unresolved';
+
+const widthOf = (spike: Spike, id: string): Pick<Reading, 'u95'> =>
+  spike.u95?.[id] === undefined ? {} : { u95: spike.u95[id] };
 
 function placeOfSpike(sweep: number, spike: Spike): NonNullable<Reading['at']> {
   const from_s = spike.values['threshold_at_s'] ?? spike.values['peak_at_s'] ?? null;
@@ -245,13 +256,14 @@ function over(
   });
   if (held.length === 0) {
     const reasons = pool.flatMap(({ spike }) => spike.why[id] ?? []);
-    return absent(reasons[0] ?? 'unresolved');
+    return absent(reasons[0] ?? (pool[0] ? whyLeftOut(id, pool[0].spike) : 'unresolved'));
   }
   const values = held.map((one) => one.value);
   const value = summary(values);
   const nearest = held.reduce((best, one) => (Math.abs(one.value - value) < Math.abs(best.value - value) ? one : best));
   return measured(value, {
     ...spreadOf(values),
+    ...(values.length > 1 ? { freedom: values.length - 1 } : widthOf(nearest.spike, id)),
     at: placeOfSpike(nearest.sweep.sweep, nearest.spike),
     ...(note ? { note } : {}),
   });

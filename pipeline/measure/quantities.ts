@@ -43,6 +43,8 @@ const one = { unit: '', ucum: '1' } as const;
 const practice = 'common practice, no source';
 const bean = 'Bean 2007, Nat Rev Neurosci 8:451–465 (criterion on dV/dt; from memory)';
 const circuit = 'linear circuit theory';
+const apdUncertainty =
+  'Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
 
 type Draft = Omit<Quantity, 'absolute_potential' | 'clamp'> & Partial<Pick<Quantity, 'absolute_potential' | 'clamp'>>;
 const list = (drafts: Draft[]): Quantity[] =>
@@ -217,9 +219,55 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'CL',
     ...ms,
     decimals: 1,
-    definition: 'Time from this spike’s peak to the next; for the cell, the median.',
-    formula: 't_peak(k+1) − t_peak(k)',
+    definition:
+      'Time from this spike’s peak to the next; for heart and calcium spikes, whose tops are flat, from steepest rise to steepest rise. For the cell, the median.',
+    formula: 't_peak(k+1) − t_peak(k); slow classes: t(dV/dt max)(k+1) − t(dV/dt max)(k)',
     source: practice,
+    uncertainty:
+      'Slow classes: each time of steepest rise is uncertain by w/√12, w the stretch whose slope lies within two standard deviations of slope noise of the steepest (at least 0.3 samples); the two are added in squares, times 1.96. For the cell: Student’s t times SD/√n.',
+  },
+  {
+    id: 'upstroke_at_s',
+    levels: ['spike'],
+    label: 'Upstroke time',
+    symbol: 't_up',
+    ...s,
+    decimals: 5,
+    definition: 'Time of the steepest rise from the start of the sweep; for heart and calcium spikes.',
+    formula: 'abscissa of the vertex through the largest dV/dt and its two neighbours',
+    source: practice,
+    uncertainty: 'As for one end of the cycle length.',
+  },
+  {
+    id: 'diastolic_potential_mv',
+    levels: ['spike', 'cell'],
+    label: 'Diastolic potential',
+    symbol: 'V_dia',
+    ...mv,
+    decimals: 1,
+    absolute_potential: true,
+    definition:
+      'Lowest potential between the previous spike and this one, at most the class’s window back; where the sweep begins after that minimum, the one after this spike. For heart and calcium spikes.',
+    formula:
+      'lowest running mean over ±2 ms, then the vertex of the least-squares parabola there, as wide (at most ±20 ms) as its residuals stay within what fast noise explains',
+    source:
+      'common practice (maximum diastolic potential); the parabola: Savitzky & Golay 1964, Anal Chem 36:1627–1639',
+    uncertainty:
+      '1.96 times the standard error of the fitted level, half its difference from the parabola over half the window, and slow noise (spread of 4 ms means 10 ms apart between spikes, less what fast noise gives), in squares.',
+  },
+  {
+    id: 'apd30_ms',
+    levels: ['spike', 'cell'],
+    label: 'Duration to 30 % repolarization',
+    symbol: 'APD30',
+    ...ms,
+    decimals: 1,
+    definition:
+      'Time from the steepest rise until three tenths of the way from the peak to the preceding diastolic level are gone; for heart and calcium spikes.',
+    formula:
+      't(V = V_peak − 0.3·(V_peak − V_dia), first fall) − t(dV/dt max); slow classes: where the least-squares parabola over at most ±10 ms meets the level',
+    source: practice,
+    uncertainty: apdUncertainty,
   },
   {
     id: 'apd50_ms',
@@ -230,8 +278,10 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     definition:
       'Time from the steepest rise until half of the way from the peak to the preceding diastolic level is gone.',
-    formula: 't(V = V_peak − 0.5·(V_peak − V_dia)) − t(dV/dt max)',
+    formula:
+      't(V = V_peak − 0.5·(V_peak − V_dia), first fall) − t(dV/dt max); slow classes: where the least-squares parabola over at most ±10 ms meets the level',
     source: practice,
+    uncertainty: apdUncertainty,
   },
   {
     id: 'apd90_ms',
@@ -242,8 +292,51 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     definition:
       'Time from the steepest rise until nine tenths of the way from the peak to the preceding diastolic level are gone.',
-    formula: 't(V = V_peak − 0.9·(V_peak − V_dia)) − t(dV/dt max)',
+    formula:
+      't(V = V_peak − 0.9·(V_peak − V_dia), first fall) − t(dV/dt max); slow classes: where the least-squares parabola over at most ±10 ms meets the level',
     source: practice,
+    uncertainty: apdUncertainty,
+  },
+  {
+    id: 'triangulation_ms',
+    levels: ['spike', 'cell'],
+    label: 'Triangulation',
+    symbol: 'APD90 − APD30',
+    ...ms,
+    decimals: 1,
+    definition: 'How long repolarization takes from 30 to 90 %; for heart and calcium spikes.',
+    formula: 'APD90 − APD30',
+    source: 'Hondeghem, Carlsson & Duker 2001, Circulation 103:2004–2013 (from memory)',
+    uncertainty: 'The two crossing times’ standard uncertainties in squares, times 1.96.',
+  },
+  {
+    id: 'plateau_mv',
+    levels: ['spike', 'cell'],
+    label: 'Plateau',
+    symbol: 'V_plateau',
+    ...mv,
+    decimals: 1,
+    absolute_potential: true,
+    definition: 'Mean potential midway between upstroke and 90 % repolarization; for heart and calcium spikes.',
+    formula: 'mean V from t_up + 0.4·APD90 to t_up + 0.6·APD90',
+    source: 'ours',
+    uncertainty:
+      '1.96 times, in squares: fast noise over the root of the number of samples, slow noise, and the slope there times half the uncertainty of APD90.',
+  },
+  {
+    id: 'stimulus_artefact_mv',
+    levels: ['spike', 'cell'],
+    label: 'Stimulus artefact',
+    symbol: 'ΔV_stim',
+    ...mv,
+    decimals: 1,
+    definition:
+      'Jump that electrode and bridge add while the brief pulse before the upstroke lasts, positive upwards. It is taken out of the other numbers. For heart and calcium spikes.',
+    formula:
+      'line through 0.1 to 0.5 ms after an edge less the line through as much before it, both at the edge; mean of onset and −offset, weighted by their errors; the better one where they disagree',
+    source: 'ours; linear circuit theory',
+    uncertainty:
+      '1.96 times the weighted error of the lines (residuals, and a quarter of the change of slope over the gap between them), at least half the difference between the edges.',
   },
   {
     id: 'sodium_headroom_mv',

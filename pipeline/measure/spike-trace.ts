@@ -119,7 +119,7 @@ function quietSpread(count: number, differenceAt: (i: number) => number): number
  * where spikes follow each other without pause, but too little of slow noise. The rounding of the digitizer is its
  * floor.
  */
-function fastNoise(mv: Float64Array, rateHz: number): number {
+export function fastNoise(mv: Float64Array, rateHz: number): number {
   const k = Math.max(1, Math.round(rateHz * 0.00005));
   const spread = quietSpread(
     Math.max(0, mv.length - 3 * k),

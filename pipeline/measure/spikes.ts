@@ -3,9 +3,11 @@ import { crossing, valueAt } from '../signal/crossing.ts';
 import { clippedRuns, type Run } from '../signal/runs.ts';
 import { movingAverage } from '../signal/smoothing.ts';
 import { vertex } from '../signal/vertex.ts';
+import { type Pulse, withoutArtefacts } from './artefact.ts';
 import { injectedCurrent, phasesOf } from './phases.ts';
+import { slowPeak, withSlowValues } from './slow-spikes.ts';
 import { detectSpikes, type FoundSpike, touchesEdge } from './spike-detection.ts';
-import { prepareTrace, type SpikeTrace, timeOf, unreadable } from './spike-trace.ts';
+import { fastNoise, prepareTrace, type SpikeTrace, timeOf, unreadable } from './spike-trace.ts';
 import type { AbsenceCode, MeasureContext, Signal, Spike, Stimulus } from './types.ts';
 
 export { excerptOf } from './envelope.ts';
@@ -55,8 +57,13 @@ export function measureSpikes(input: SpikeInput): { spikes: Spike[]; remarks: st
     if (!before || !after || after.pa === before.pa) return null;
     return after.pa > before.pa;
   };
-  const trace = prepareTrace(voltage, stimulus.edges_s, context.filter_khz, addsCurrent);
-  const { spikes: found, remarks } = detectSpikes(trace, stimulus, context);
+  const cleaned = context.slow
+    ? withoutArtefacts(voltage, stimulus, current, fastNoise(voltage.samples, voltage.rate_hz))
+    : { voltage, pulses: [], remarks: [] };
+  const trace = prepareTrace(cleaned.voltage, edgesOf(stimulus, cleaned.pulses), context.filter_khz, addsCurrent);
+  const detection = detectSpikes(trace, stimulus, context);
+  const found = detection.spikes;
+  const remarks = [...cleaned.remarks, ...detection.remarks];
   if (found.length === 0) return { spikes: [], remarks };
   const clipped = clippedRuns(voltage.samples);
   const smoothBy = new Map<number, Float64Array>();
@@ -83,8 +90,15 @@ export function measureSpikes(input: SpikeInput): { spikes: Spike[]; remarks: st
     };
     return measureOne(k, spike, found[k + 1] ?? null, around, input.baseline_mv, injected);
   });
-  return { spikes, remarks };
+  if (!context.slow) return { spikes, remarks };
+  return { spikes: withSlowValues(spikes, found, trace, context, cleaned.pulses, smoothed), remarks };
 }
+
+/** Edges of the stimulus, with those of pulses that only the voltage shows. */
+const edgesOf = (stimulus: Stimulus, pulses: readonly Pulse[]): number[] => [
+  ...stimulus.edges_s,
+  ...pulses.flatMap((pulse) => (pulse.inferred ? [pulse.on_s, pulse.off_s] : [])),
+];
 
 function measureOne(
   number: number,
@@ -178,11 +192,11 @@ function measureOne(
 }
 
 /** Parabola through the top three samples. */
-function peakOf(spike: FoundSpike, { trace, clipped }: Surroundings): Found {
+function peakOf(spike: FoundSpike, { trace, clipped, context }: Surroundings): Found {
   if (clipped.some((run) => run.at === 'top' && spike.peak >= run.from - 1 && spike.peak <= run.to))
     return missing('clipped');
   if (unreadable(trace, spike.peak - 1, spike.peak + 1)) return missing('unreadable');
-  const { position, value } = vertex(trace.mv, spike.peak);
+  const { position, value } = context.slow ? slowPeak(trace, spike.peak) : vertex(trace.mv, spike.peak);
   return { at: position, value };
 }
 

@@ -34,6 +34,8 @@ export type AbsenceCode =
   | 'filter-unknown'
   | 'rate-too-low'
   | 'never-fired'
+  | 'under-stimulus'
+  | 'not-this-class'
   | 'unreadable';
 
 /** A measured number, or the reason there is none. `value` is finite whenever it is not null. */

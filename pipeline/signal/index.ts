@@ -6,6 +6,7 @@ export * from './envelope.ts';
 export * from './excursions.ts';
 export * from './exponential.ts';
 export * from './line.ts';
+export * from './parabola.ts';
 export * from './runs.ts';
 export * from './serial.ts';
 export * from './sine.ts';

@@ -1,0 +1,350 @@
+/**
+ * What heart and calcium spikes have and others have not: a diastolic level, durations at three depths of
+ * repolarization, a plateau, and a stimulus artefact. Tops, bottoms and crossings are read from least-squares parabolas
+ * as wide as noise alone explains, so that no single noisy sample sets a number.
+ */
+import { coverage95 } from '../signal/coverage.ts';
+import { crossing } from '../signal/crossing.ts';
+import { levelOf, type Parabola, vertexOf, widestParabola } from '../signal/parabola.ts';
+import { movingAverage } from '../signal/smoothing.ts';
+import { vertex } from '../signal/vertex.ts';
+import type { Pulse } from './artefact.ts';
+import { type FoundSpike, touchesEdge } from './spike-detection.ts';
+import { type SpikeTrace, timeOf, unreadable } from './spike-trace.ts';
+import type { AbsenceCode, MeasureContext, Spike } from './types.ts';
+
+/** A number with its place and its standard uncertainty. */
+export interface Known {
+  at: number;
+  value: number;
+  se: number;
+}
+type Maybe = Known | AbsenceCode;
+const known = (found: Maybe): found is Known => typeof found === 'object';
+
+/** Widest parabola over a top or a crossing, and over a diastolic minimum, s on each side. */
+const widestTop_s = 0.01;
+const widestBottom_s = 0.02;
+/** Running mean that finds where the lowest diastolic potential lies, s on each side. */
+const diastolicMean_s = 0.002;
+/** Least stretch before a spike that can show a diastolic level, s. */
+const leastDiastole_s = 0.001;
+/** A pulse that ends this long before the upstroke still belongs to it, s. */
+const answersWithin_s = 0.1;
+
+export const durationsPercent = [30, 50, 90] as const;
+
+/** Per-spike quantities that only slow spikes have. */
+export const slowOnly: readonly string[] = [
+  'upstroke_at_s',
+  'diastolic_potential_mv',
+  'apd30_ms',
+  'triangulation_ms',
+  'plateau_mv',
+  'stimulus_artefact_mv',
+];
+
+/** Top or bottom of a slow trace around a sample: the vertex of the widest parabola that noise explains. */
+export function slowExtreme(trace: SpikeTrace, near: number, widest_s: number): Known {
+  const most = Math.max(1, Math.round(widest_s * trace.rateHz));
+  const fit = widestParabola(trace.mv, near, trace.noiseMv, most);
+  const own = fit && fit.half > 1 ? (vertexOf(fit) ?? { position: fit.centre, value: fit.c0 }) : null;
+  if (!fit || !own) {
+    const { position, value } = vertex(trace.mv, near);
+    return { at: position, value, se: trace.noiseMv };
+  }
+  // How far the place can be told: where the parabola has left its vertex by its own error.
+  return { at: own.position, value: own.value, se: bendOf(trace, fit, own.value) };
+}
+
+/** Error of a fitted level: the fit's own, the noise through it, and what half the window would have said instead. */
+function bendOf(trace: SpikeTrace, fit: Parabola, value: number): number {
+  const inner = widestParabola(trace.mv, fit.centre, Number.POSITIVE_INFINITY, Math.max(1, fit.half >> 1), 1);
+  const through = trace.noiseMv * Math.sqrt(9 / (4 * (2 * fit.half + 1)));
+  const other = inner ? Math.abs((vertexOf(inner)?.value ?? inner.c0) - value) : 0;
+  return Math.hypot(Math.max(fit.seLevel, through), Math.min(0.5 * other, trace.noiseMv));
+}
+
+interface Around {
+  trace: SpikeTrace;
+  context: MeasureContext;
+  pulses: readonly Pulse[];
+  /** Running mean that finds the diastolic minimum, and the one that finds crossings. */
+  calm: Float64Array;
+  smooth: Float64Array;
+  /** Noise slower than the fast one, mV: hum and wander that a fit over a few milliseconds follows. */
+  slowNoise: number;
+}
+
+/**
+ * Adds to measured slow spikes what only they have, with 95 % half-widths: see `quantities.ts` for each definition.
+ * @param spikes as `measureSpikes` found them, one for one with `found`
+ * @param pulses brief stimulus pulses with the jump each added
+ * @param smoothed the trace averaged over 2·m − 1 samples
+ */
+export function withSlowValues(
+  spikes: readonly Spike[],
+  found: readonly FoundSpike[],
+  trace: SpikeTrace,
+  context: MeasureContext,
+  pulses: readonly Pulse[],
+  smoothed: (m: number) => Float64Array,
+): Spike[] {
+  const calm = movingAverage(trace.masked, Math.max(1, Math.round(diastolicMean_s * trace.rateHz)));
+  const upstrokes = found.map((spike) => upstrokeOf(spike, trace));
+  const slowNoise = slowNoiseOf(trace, calm, found);
+  return spikes.map((spike, k) => {
+    const around: Around = { trace, context, pulses, calm, smooth: smoothed(found[k]!.slope.m), slowNoise };
+    return withValues(spike, k, found, upstrokes, around);
+  });
+}
+
+/**
+ * Steepest rise: its time is the vertex over three slopes; it is uncertain by the stretch whose slope noise cannot tell
+ * from the steepest.
+ */
+function upstrokeOf(spike: FoundSpike, trace: SpikeTrace): Maybe {
+  const { values, noise, m } = spike.rateSlope;
+  if (touchesEdge(trace, spike.steepest, m)) return 'under-stimulus';
+  const top = vertex(values, spike.steepest);
+  const near = Math.abs(top.position - spike.steepest) <= 1 ? top.position : spike.steepest;
+  const level = values[spike.steepest]! - 2 * noise;
+  let from = spike.steepest;
+  while (from > spike.base && values[from - 1]! >= level) from--;
+  let to = spike.steepest;
+  while (to < spike.peak && values[to + 1]! >= level) to++;
+  return { at: near, value: values[spike.steepest]!, se: Math.max(0.3, (to - from) / Math.sqrt(12)) };
+}
+
+/**
+ * Wander that fast noise does not explain, mV: half of the differences between running means 10 ms apart, in the
+ * quieter half of the trace between spikes.
+ */
+function slowNoiseOf(trace: SpikeTrace, calm: Float64Array, found: readonly FoundSpike[]): number {
+  const lag = Math.max(1, Math.round(0.01 * trace.rateHz));
+  const bends: number[] = [];
+  let next = 0;
+  for (let i = lag; i + lag < calm.length; i += lag) {
+    while (next < found.length && found[next]!.peak + 40 * lag < i) next++;
+    if (next < found.length && i > found[next]!.base - lag) continue;
+    bends.push(Math.abs(calm[i]! - 0.5 * (calm[i - lag]! + calm[i + lag]!)));
+  }
+  if (bends.length < 8) return 0;
+  bends.sort((a, b) => a - b);
+  // Median of |x| is 0.6745 SD; the difference has 1.5 times the variance.
+  const seen = bends[bends.length >> 1]! / 0.6745 / Math.sqrt(1.5);
+  const fast = trace.noiseMv / Math.sqrt(2 * diastolicMean_s * trace.rateHz + 1);
+  return Math.sqrt(Math.max(0, seen * seen - fast * fast));
+}
+
+function withValues(
+  spike: Spike,
+  k: number,
+  found: readonly FoundSpike[],
+  upstrokes: readonly Maybe[],
+  around: Around,
+): Spike {
+  const { trace, slowNoise } = around;
+  const values = { ...spike.values };
+  const why = { ...spike.why };
+  const u95: Record<string, number> = { ...spike.u95 };
+  const normal = coverage95();
+  const put = (id: string, found: AbsenceCode | { value: number; se: number }): void => {
+    delete u95[id];
+    if (typeof found === 'string' || !Number.isFinite(found.value)) {
+      values[id] = null;
+      why[id] = typeof found === 'string' ? found : 'unresolved';
+      return;
+    }
+    values[id] = found.value;
+    delete why[id];
+    if (Number.isFinite(found.se)) u95[id] = normal * found.se;
+  };
+  const own = found[k]!;
+  const perMs = trace.rateHz / 1000;
+  const rise = upstrokes[k]!;
+  const next = found[k + 1];
+  const sameStretch = next !== undefined && next.segment === own.segment;
+  const peak: Maybe = values['peak_mv'] == null ? (why['peak_mv'] ?? 'unresolved') : peakOf(own, around);
+  if (known(peak)) {
+    const level = Math.hypot(peak.se, slowNoise);
+    for (const id of ['peak_mv', 'overshoot_mv']) if (values[id] != null) u95[id] = normal * level;
+  }
+  const diastolic = diastolicOf(k, found, around);
+  put(
+    'diastolic_potential_mv',
+    known(diastolic) ? { ...diastolic, se: Math.hypot(diastolic.se, slowNoise) } : diastolic,
+  );
+  put('upstroke_at_s', known(rise) ? { value: timeOf(trace, rise.at), se: rise.se / trace.rateHz } : rise);
+  put('max_rise_v_per_s', maxRise(own, rise, around));
+  const after = upstrokes[k + 1];
+  put(
+    'cycle_length_ms',
+    next === undefined
+      ? (why['cycle_length_ms'] ?? 'cut-off-by-sweep-end')
+      : !sameStretch
+        ? 'unreadable'
+        : !known(rise)
+          ? rise
+          : !known(after!)
+            ? after!
+            : { value: (after.at - rise.at) / perMs, se: Math.hypot(after.se, rise.se) / perMs },
+  );
+  const ends = durationsPercent.map((percent) => {
+    const end = fallsTo(percent / 100, own, sameStretch ? next : null, peak, diastolic, around);
+    put(
+      `apd${percent}_ms`,
+      !known(end)
+        ? end
+        : !known(rise)
+          ? rise
+          : { value: (end.at - rise.at) / perMs, se: Math.hypot(end.se, rise.se) / perMs },
+    );
+    return end;
+  });
+  const [to30, , to90] = ends;
+  put(
+    'triangulation_ms',
+    !known(to30!)
+      ? to30!
+      : !known(to90!)
+        ? to90!
+        : { value: (to90.at - to30.at) / perMs, se: Math.hypot(to30.se, to90.se) / perMs },
+  );
+  put('plateau_mv', plateauOf(rise, to90!, around));
+  put('stimulus_artefact_mv', artefactOf(rise, own, around));
+  return { ...spike, values, why, u95 };
+}
+
+/** The top as `peakAt` reads it. */
+const peakOf = (spike: FoundSpike, { trace }: Around): Known => slowExtreme(trace, spike.peak, widestTop_s);
+
+/** Peak of a slow spike, for `measureSpikes`. */
+export const slowPeak = (trace: SpikeTrace, peak: number): { position: number; value: number } => {
+  const { at, value } = slowExtreme(trace, peak, widestTop_s);
+  return { position: at, value };
+};
+
+/**
+ * Lowest potential between the spike before and this one. Where the sweep begins later than that minimum, the minimum
+ * after this spike stands for it.
+ */
+function diastolicOf(k: number, found: readonly FoundSpike[], around: Around): Maybe {
+  const { trace, context, calm } = around;
+  const own = found[k]!;
+  const reach = (context.ahp_window_ms / 1000) * trace.rateHz;
+  const segment = trace.segments[own.segment]!;
+  const before = found[k - 1]?.segment === own.segment ? found[k - 1]! : null;
+  // What a pulse has already charged is no diastole.
+  const pulse = around.pulses.findLast(({ on_s }) => on_s < timeOf(trace, own.threshold ?? own.base));
+  const pulseAt = pulse ? Math.floor((pulse.on_s - 0.001 - trace.startS) * trace.rateHz) : Number.POSITIVE_INFINITY;
+  const rises = Math.floor(own.threshold ?? own.base);
+  const to =
+    pulseAt > (before?.peak ?? segment.from) && rises - pulseAt < answersWithin_s * trace.rateHz
+      ? Math.min(rises, pulseAt)
+      : rises;
+  const from = Math.ceil(Math.max(before ? before.peak : segment.from, to - reach));
+  const settle = Math.round(diastolicMean_s * trace.rateHz);
+  // The running mean shrinks at the ends of a trace, to single noisy samples.
+  const inner = to - from > 4 * settle ? settle : 0;
+  const lowest = to - from >= leastDiastole_s * trace.rateHz ? lowestIn(calm, from + inner, to) : null;
+  // Rising from the first sample on: the minimum was before it.
+  const missed =
+    lowest !== null && !before && from === segment.from && lowest - from <= 3 * settle && to - from > 8 * settle;
+  if (lowest !== null && !(missed && calm[to]! - calm[lowest]! > 6 * trace.noiseMv)) return bottomAt(lowest, around);
+  const next = found[k + 1]?.segment === own.segment ? found[k + 1]! : null;
+  const until = Math.floor(Math.min(next ? (next.threshold ?? next.base) : segment.to - 1, own.peak + reach));
+  const later = lowestIn(calm, own.peak, until);
+  if (later !== null && (next || until - later > 2 * settle)) return bottomAt(later, around);
+  return lowest === null ? 'no-baseline' : bottomAt(lowest, around);
+}
+
+function bottomAt(index: number, around: Around): Maybe {
+  const { trace } = around;
+  if (unreadable(trace, index, index)) return 'unreadable';
+  return slowExtreme(trace, index, widestBottom_s);
+}
+
+function lowestIn(values: Float64Array, from: number, to: number): number | null {
+  let lowest = -1;
+  for (let i = Math.max(0, from); i <= Math.min(values.length - 1, to); i++)
+    if (Number.isFinite(values[i]!) && (lowest < 0 || values[i]! < values[lowest]!)) lowest = i;
+  return lowest < 0 ? null : lowest;
+}
+
+/** First fall after the peak to a share of the way down to the diastolic level. */
+function fallsTo(
+  share: number,
+  spike: FoundSpike,
+  next: FoundSpike | null | undefined,
+  peak: Maybe,
+  diastolic: Maybe,
+  around: Around,
+): Maybe {
+  if (!known(peak)) return peak;
+  if (!known(diastolic)) return diastolic;
+  const { trace, smooth, slowNoise } = around;
+  const level = peak.value - share * (peak.value - diastolic.value);
+  const segment = trace.segments[spike.segment]!;
+  const until = next ? Math.ceil(next.threshold ?? next.base) : segment.to - 1;
+  const rough = crossing(smooth, level, { from: Math.floor(peak.at), to: until, direction: 'down' });
+  if (rough === null)
+    return next ? 'never-crosses' : segment.to === trace.mv.length ? 'cut-off-by-sweep-end' : 'unreadable';
+  if (unreadable(trace, rough, rough)) return 'unreadable';
+  const most = Math.max(1, Math.round(widestTop_s * trace.rateHz));
+  const centre = Math.round(rough);
+  const fit = widestParabola(trace.mv, centre, trace.noiseMv, Math.min(most, Math.max(1, centre - Math.ceil(peak.at))));
+  const at = fit && fit.half > 1 ? (levelOf(fit, level) ?? rough) : rough;
+  // A slope over too few samples is noise: it is taken over 2 ms on each side at least.
+  const least = Math.max(1, Math.min(Math.round(0.002 * trace.rateHz), centre - Math.ceil(peak.at)));
+  const broad = fit && fit.half >= least ? fit : widestParabola(trace.mv, centre, 0, least, least);
+  const slope = broad ? Math.abs(broad.c1) : Number.NaN;
+  const through = fit ? Math.max(fit.seLevel, trace.noiseMv * Math.sqrt(9 / (4 * (2 * fit.half + 1)))) : trace.noiseMv;
+  const levelSe = Math.hypot((1 - share) * peak.se, share * diastolic.se, slowNoise * Math.SQRT2, through);
+  return { at, value: level, se: slope > 0 ? Math.hypot(levelSe / slope, 0.05) : Number.NaN };
+}
+
+/** Steepest rise with the noise of a slope and what the sampling interval may have cut off it. */
+function maxRise(spike: FoundSpike, rise: Maybe, { trace }: Around): AbsenceCode | { value: number; se: number } {
+  if (!known(rise)) return rise;
+  const { m, noise } = spike.rateSlope;
+  const half = widestParabola(trace.mv, spike.steepest, Number.POSITIVE_INFINITY, 2 * m, 2 * m);
+  const wider = half ? (half.c1 * trace.rateHz) / 1000 : rise.value;
+  // The slope over ±m loses as Σx⁴/Σx² of its window; over ±2m as that of twice the window.
+  const weight = (w: number): number => (3 * w * w + 3 * w - 1) / 5;
+  const lost = Math.max(0, rise.value - wider) / (weight(2 * m) / weight(m) - 1);
+  return { value: rise.value, se: Math.hypot(noise, lost) };
+}
+
+/** Mean potential over the middle fifth of the time from the steepest rise to 90 % repolarization. */
+function plateauOf(
+  rise: Maybe,
+  to90: Maybe,
+  { trace, slowNoise }: Around,
+): AbsenceCode | { value: number; se: number } {
+  if (!known(rise)) return rise;
+  if (!known(to90)) return to90;
+  const length = to90.at - rise.at;
+  const from = Math.round(rise.at + 0.4 * length);
+  const to = Math.round(rise.at + 0.6 * length);
+  if (to - from < 2) return 'unresolved';
+  if (unreadable(trace, from, to)) return 'unreadable';
+  const stretch = trace.mv.subarray(from, to + 1);
+  const value = stretch.reduce((sum, mv) => sum + mv, 0) / stretch.length;
+  const slope = (trace.mv[to]! - trace.mv[from]!) / (to - from);
+  const shift = 0.5 * Math.hypot(to90.se, rise.se) * slope;
+  return { value, se: Math.hypot(trace.noiseMv / Math.sqrt(stretch.length), shift, slowNoise) };
+}
+
+/** The jump of the brief pulse that this upstroke answers. */
+function artefactOf(
+  rise: Maybe,
+  spike: FoundSpike,
+  { trace, pulses }: Around,
+): AbsenceCode | { value: number; se: number } {
+  const upstroke_s = timeOf(trace, known(rise) ? rise.at : spike.steepest);
+  const own = pulses.findLast((pulse) => pulse.on_s <= upstroke_s && upstroke_s - pulse.off_s <= answersWithin_s);
+  if (!own) return 'no-stimulus';
+  if (own.jump_mv === null) return 'under-stimulus';
+  return { value: own.jump_mv, se: (own.u95_mv ?? Number.NaN) / coverage95() };
+}
