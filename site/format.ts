@@ -1,5 +1,5 @@
 /** How numbers, dates and counts are printed, everywhere alike. */
-import { quantity } from '../pipeline/measure/quantities.ts';
+import { decimalsWith, quantity } from '../pipeline/measure/quantities.ts';
 
 export { counted } from './sizes.ts';
 
@@ -38,9 +38,6 @@ export interface Rounded {
 export const knownHalfWidth = (id: string, u95: number | null | undefined): number | undefined =>
   quantity(id).uncertainty === undefined ? undefined : (u95 ?? undefined);
 
-/** Decimal place of the second significant digit: 1 for 4.27, 3 for 0.0427, -1 for 427. */
-const secondDigit = (u95: number): number => 1 - Math.floor(Math.log10(u95));
-
 /** Rounded to a place that may lie left of the point. */
 const toPlace = (value: number, decimals: number): string =>
   decimals >= 0 ? number(value, decimals) : number(Math.round(value * 10 ** decimals) / 10 ** decimals);
@@ -55,9 +52,7 @@ const toPlace = (value: number, decimals: number): string =>
 export function cutTogether(value: number, u95: number | undefined, most: number): Rounded {
   if (u95 === undefined || !(u95 >= 0)) return { value: toPlace(value, most), u95: '', decimals: most };
   if (u95 === 0) return { value: toPlace(value, most), u95: toPlace(0, most), decimals: most };
-  const first = Math.min(most, secondDigit(u95));
-  // 9.96 cut at the tenth would be 10.0, three digits: cut once more where rounding carried.
-  const decimals = Math.min(first, secondDigit(Number(`${Math.round(u95 * 10 ** first)}e${-first}`) || u95));
+  const decimals = decimalsWith(u95, most);
   const least = 10 ** -decimals;
   return { value: toPlace(value, decimals), u95: toPlace(u95 < least / 2 ? least : u95, decimals), decimals };
 }

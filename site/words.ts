@@ -20,9 +20,9 @@ export const groundMeanings: Record<Ground, string> = {
 export const outcomes: readonly Outcome[] = ['within', 'near limit', 'outside', 'not measured'];
 
 export const outcomeMeanings: Record<Outcome, string> = {
-  within: 'The number keeps its limit.',
-  'near limit': 'The number lies beyond or so close to its limit that the 95 % uncertainty does not decide.',
-  outside: 'The number exceeds its limit by more than the 95 % uncertainty of number and limit together.',
+  within: 'The whole 95 % interval keeps the limit.',
+  'near limit': 'The 95 % interval of number and limit together straddles the limit, and so does not decide.',
+  outside: 'The whole 95 % interval of number and limit together lies beyond the limit.',
   'not measured': 'There is no number, or no limit to hold it against; what is missing is said.',
 };
 

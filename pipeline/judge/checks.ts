@@ -199,7 +199,7 @@ const conditions: CheckEntry[] = [
     ground: 'conditions',
     asks: 'Does the filter pass the rise of this spike?',
     limit:
-      'corner (kHz) · height (mV) / 0.66, in V/s (±10 %): a measured rise steeper than that has lost about a quarter or more to the filter',
+      'corner (kHz) · height (mV) / 0.66, in V/s (±10 % for the nominal corner, and the height’s own half-width; the measured rise’s half-width is left out, as it holds the loss that is asked about): a measured rise steeper than that has lost about a quarter or more to the filter',
     causes: ['filter corner set too low', 'filter stated wrongly'],
     bench:
       'Raise the corner to at least 5 kHz, to 10 kHz for fast-spiking cells, and sample at 2.5 times that or more.',

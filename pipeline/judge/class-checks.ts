@@ -92,8 +92,13 @@ export function askClass(setting: Setting, quantityId: string): Answer | null {
     reading,
     low,
     high,
+    // A reading as recorded has no correction that could be off, and the range is widened for the one it lacks.
     uncertainty: absolute
-      ? combined(measuredUncertainty(reading), offsetUncertaintyMv, junctionReadings(circumstances).uncertainty_mv)
+      ? combined(
+          measuredUncertainty(reading),
+          offsetUncertaintyMv,
+          circumstances.reading === 'corrected' ? junctionReadings(circumstances).uncertainty_mv : 0,
+        )
       : measuredUncertainty(reading),
     shifts: [0],
     subject,

@@ -52,21 +52,25 @@ interface Simple {
   meaning: string;
   /** 95 % half-width besides the measured one. */
   uncertainty?: number;
-  /** The number is an extreme: its spread says nothing of how well it is known. */
-  extreme?: boolean;
+  /**
+   * The number's own half-width is left out: of an extreme its spread says nothing; of a number held against what the
+   * recording could have shown, it holds the very loss that is asked about.
+   */
+  withoutOwn?: boolean;
   shifts?: readonly number[];
   remark?: string;
 }
 
 function hold(reading: Reading | undefined, simple: Simple): Answer {
   if (!isPresent(reading)) return unheldReading(simple.subject, reading);
+  const { u95: _own, ...bare } = reading;
   const held: Held = {
     kind: 'held',
     quantity: simple.quantity,
-    reading,
+    ...(simple.withoutOwn ? { reading: bare, standIn: '' } : { reading }),
     low: simple.low ?? null,
     high: simple.high ?? null,
-    uncertainty: Math.hypot(simple.extreme ? 0 : measuredUncertainty(reading), simple.uncertainty ?? 0),
+    uncertainty: Math.hypot(simple.withoutOwn ? 0 : measuredUncertainty(reading), simple.uncertainty ?? 0),
     shifts: simple.shifts ?? [0],
     subject: simple.subject,
     lowName: simple.name,
@@ -125,7 +129,7 @@ const riseSamples: CellQuestion = (setting) =>
     meaning: 'threshold, peak and maximum rise cannot be read off so few points',
     // Threshold lies between two samples.
     uncertainty: 0.5,
-    extreme: true,
+    withoutOwn: true,
   });
 
 const filterPassesRise: CellQuestion = (setting) => {
@@ -143,7 +147,9 @@ const filterPassesRise: CellQuestion = (setting) => {
     high,
     name: `the ${amount('max_rise_v_per_s', high)} that a filter at ${corner} kHz passes with less than a quarter lost`,
     meaning: 'the true rise was steeper, and the peak higher, than this recording shows',
-    uncertainty: 0.1 * high,
+    // Corners are nominal, to about a tenth; the limit is as well known as the height it is taken from.
+    uncertainty: high * Math.hypot(0.1, measuredUncertainty(height) / height.value),
+    withoutOwn: true,
   });
 };
 
@@ -213,7 +219,8 @@ const accessTimesCurrent: CellQuestion = (setting) => {
     setting.circumstances.bridge_mohm !== null || isPresent(setting.measure.readings['bridge_error_mohm']);
   // A pulse of a few milliseconds is over before the spike that it starts.
   const step = hasVoltage(setting) && !compensated ? largestStimulusPa(setting, 0.02) : null;
-  const current = Math.max(isPresent(inClamp) ? Math.abs(inClamp.value) : 0, step ?? 0);
+  const held = isPresent(inClamp) ? Math.abs(inClamp.value) : 0;
+  const current = Math.max(held, step ?? 0);
   // Nothing flows, or the bridge is accounted for by its own check.
   if (current === 0) return null;
   const high = (limits.accessErrorMv * 1000) / current;
@@ -223,6 +230,8 @@ const accessTimesCurrent: CellQuestion = (setting) => {
     high,
     name: `the ${amount('access_resistance_mohm', high)} across which ${amount('holding_pa', current)} drops ${limits.accessErrorMv} mV`,
     meaning: 'the potential read at the amplifier is not the potential of the cell',
+    // The limit is as well known as the current it is taken from; a stimulus is set, a holding current is measured.
+    uncertainty: isPresent(inClamp) && current === held ? (high * measuredUncertainty(inClamp)) / current : 0,
   });
 };
 
@@ -247,6 +256,7 @@ const bridgeError: CellQuestion = (setting) => {
         ? `the ±${amount('bridge_error_mohm', high)} across which ${amount('holding_pa', largest)} drops ${limits.bridgeErrorMv} mV`
         : `a tenth of the access resistance (±${amount('bridge_error_mohm', high)})`,
     meaning: `at the largest stimulus every potential is off by ${amount('steady_deflection_mv', (reading.value * largest) / 1000)}`,
+    uncertainty: high !== bySize && isPresent(access) ? limits.bridgeShareOfAccess * measuredUncertainty(access) : 0,
   });
 };
 

@@ -18,7 +18,7 @@ import { conditionLimits, conditionQuestions, sweepQuestions } from './condition
 import { physicsQuestions } from './physics.ts';
 import { askPolicy, askPolicySweep } from './policy.ts';
 import { count, tell, tellMissing } from './sentences.ts';
-import { type Answer, isPresent, type Setting } from './setting.ts';
+import { type Answer, type Held, isPresent, type Setting } from './setting.ts';
 import type { CheckEntry, Contradiction, Finding, JudgeInput, Judgement, Standing } from './types.ts';
 import { usableStretch } from './usable.ts';
 
@@ -27,6 +27,15 @@ interface Place {
   /** The condition's name where it is not the cell's first. */
   named: string | null;
   sweep: number | null;
+}
+
+/**
+ * Where a number should carry a half-width and does not, the comparison was made without it, and says so. Counts and
+ * settings have none to carry.
+ */
+function unknownHalfWidth(quantityId: string, answer: Held): string {
+  if (answer.reading.u95 !== undefined || quantity(quantityId).uncertainty === undefined) return '';
+  return answer.standIn ?? 'How well the number itself is known is not known, and was not counted.';
 }
 
 /** An answer held against its limits. */
@@ -45,6 +54,7 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
       ...shared,
       outcome: 'not measured',
       value: null,
+      value_u95: null,
       uncertainty: null,
       limit_low: null,
       limit_high: null,
@@ -65,6 +75,7 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
     quantity: judged,
     outcome: comparison.outcome,
     value: reading.value,
+    value_u95: reading.u95 ?? null,
     uncertainty,
     limit_low: low,
     limit_high: high,
@@ -74,6 +85,7 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
       quantity: judged,
       subject: readAt === undefined ? answer.subject : `${answer.subject} (sweep ${readAt})`,
       value: reading.value,
+      u95: reading.u95 ?? null,
       // Of a sweep, n counts samples; of an extreme, what it was picked from.
       n: place.sweep === null && entry.quantity !== 'rise_samples' ? (reading.n ?? null) : null,
       low,
@@ -84,7 +96,7 @@ function settle(entry: CheckEntry, answer: Answer, place: Place, remark = ''): F
       uncertainty,
       meaning: answer.meaning,
       condition: place.named,
-      remark: [answer.remark ?? '', remark].filter(Boolean).join(' '),
+      remark: [answer.remark ?? '', unknownHalfWidth(judged, answer), remark].filter(Boolean).join(' '),
     }),
     source: answer.source ?? entry.source,
     missing: [],

@@ -20,13 +20,18 @@ const trainSpikes = 10;
 /** How long the pump may hold the membrane below E_K after a train, s (DESIGN 7). */
 const pumpSeconds = 5;
 
-/** Standard error where there is none: the noise of a single reading (95 % half-width), mV. */
+/** The reading's own 95 % half-width; where it carries none, the noise of a single sample stands in, mV. */
 function potentialUncertainty(setting: Setting, reading: Reading): number {
-  const measured = measuredUncertainty(reading);
-  if (measured > 0) return measured;
+  if (reading.u95 !== undefined) return reading.u95;
   const noise = setting.measure.readings['noise_rms_mv'];
   return isPresent(noise) ? 1.96 * noise.value : 0;
 }
+
+const noiseStandsIn =
+  'How well the number itself is known is not known; 1.96 times the noise was counted in its place.';
+
+const standIn = (setting: Setting): { standIn?: string } =>
+  isPresent(setting.measure.readings['noise_rms_mv']) ? { standIn: noiseStandsIn } : {};
 
 function whole(setting: Setting, subject: string): Unheld | null {
   const { configuration } = setting.circumstances;
@@ -128,6 +133,7 @@ function against(question: Potential): Answer {
     lowName: limit.name,
     highName: limit.name,
     meaning: question.meaning,
+    ...standIn(setting),
     ...(question.remark === undefined ? {} : { remark: question.remark }),
   };
 }
@@ -154,7 +160,9 @@ export function firstSpike(setting: Setting, quantity: string): FirstSpike {
     const why = spike?.why[quantity];
     return { reading: null, absent: own ?? (why ? { value: null, why } : undefined), sweep, at_s };
   }
-  return { reading: { value, n: 1, at: { sweep: sweep!.sweep } }, absent: undefined, sweep, at_s };
+  const u95 = spike?.u95?.[quantity];
+  const reading = { value, n: 1, ...(u95 === undefined ? {} : { u95 }), at: { sweep: sweep!.sweep } };
+  return { reading, absent: undefined, sweep, at_s };
 }
 
 /** 'the peak of the first spike', or of a median over spikes where no step fires the cell: 'the median peak of the spikes'. */
@@ -382,6 +390,7 @@ const heightBelowSpan: CellQuestion = (setting) => {
     lowName: name,
     highName: name,
     meaning: 'no sodium spike is that high, whatever the offset',
+    ...standIn(setting),
   };
 };
 
@@ -399,13 +408,15 @@ const spikeGoesUp: CellQuestion = (setting) => {
     high: null,
     uncertainty: Math.max(
       physicsFloorMv,
-      combined(potentialUncertainty(setting, reading), potentialUncertainty(setting, height)),
+      // The limit is half the height: so is its share.
+      combined(potentialUncertainty(setting, reading), potentialUncertainty(setting, height) / 2),
     ),
     shifts: [0],
     subject,
     lowName: name,
     highName: name,
     meaning: 'the excursion goes down from the baseline first, as no action potential does',
+    ...standIn(setting),
   };
 };
 

@@ -1,5 +1,5 @@
 /** Plain sentences with the numbers in them. Every finding's wording is put together here. */
-import { quantity } from '../measure/quantities.ts';
+import { decimalsWith, quantity } from '../measure/quantities.ts';
 import type { Comparison } from './compare.ts';
 
 /** A minus sign, never a hyphen, and no sign before a zero. */
@@ -27,6 +27,43 @@ function written(quantityId: string, value: number): string {
 export function amount(quantityId: string, value: number): string {
   const text = written(quantityId, value);
   return quantity(quantityId).absolute_potential && value > 0 ? `+${text}` : text;
+}
+
+/** Rounded at a place that may lie left of the point. */
+const cut = (value: number, decimals: number): string =>
+  decimals >= 0 ? value.toFixed(decimals) : (Math.round(value * 10 ** decimals) / 10 ** decimals).toFixed(0);
+
+/**
+ * A number with its own 95 % half-width: '+61.5 ± 0.4 mV'; as `amount` where that is not known or nil. Cut at the same
+ * place, as pages cut them; a half-width that would be printed as nothing is rounded up.
+ */
+export function amountWithin(quantityId: string, value: number, u95: number | null | undefined): string {
+  if (u95 === null || u95 === undefined || !(u95 > 0)) return amount(quantityId, value);
+  const { decimals, unit, absolute_potential } = quantity(quantityId);
+  const percent = quantityId.endsWith('_fraction');
+  const scale = percent ? 100 : 1;
+  const places = decimalsWith(scale * u95, decimals - (percent ? 2 : 0));
+  const least = 10 ** -places;
+  const half = cut(scale * u95 < least / 2 ? least : scale * u95, places);
+  const size = cut(scale * Math.abs(value), places);
+  const sign = Number(size) === 0 ? '' : value < 0 ? '−' : absolute_potential ? '+' : '';
+  return withUnit(`${sign}${size} ± ${half}`, percent ? '%' : unit);
+}
+
+/** An interval with as many decimals as it takes to see on which side of a limit its ends lie. */
+function interval(quantityId: string, low: number, high: number, limit: number): string {
+  const { decimals, unit, absolute_potential } = quantity(quantityId);
+  const percent = quantityId.endsWith('_fraction');
+  const scale = percent ? 100 : 1;
+  const least = Math.max(0, decimals - (percent ? 2 : 0));
+  const seen = (places: number): boolean =>
+    [low, high].every((end) => (scale * end).toFixed(places) !== (scale * limit).toFixed(places));
+  const places = [least, least + 1, least + 2].find(seen) ?? least + 3;
+  const one = (value: number): string => {
+    const size = Math.abs(scale * value).toFixed(places);
+    return `${Number(size) === 0 ? '' : value < 0 ? '−' : absolute_potential ? '+' : ''}${size}`;
+  };
+  return withUnit(`${one(low)} to ${one(high)}`, percent ? '%' : unit);
 }
 
 /** A difference of two numbers of one quantity, without sign: '11.9 mV'. */
@@ -60,6 +97,8 @@ export interface Telling {
   /** 'the peak of the first spike'; may name the sweep. */
   subject: string;
   value: number;
+  /** The number's own 95 % half-width; null where it is not known. */
+  u95: number | null;
   n: number | null;
   low: number | null;
   high: number | null;
@@ -87,7 +126,7 @@ export function tell(telling: Telling): string {
     comparison.shift === 0 || comparison.disagree
       ? ''
       : `, read as ${amount(id, value + comparison.shift)} with the junction potential removed`;
-  const head = `${opening(telling.subject, telling.condition)}, ${amount(id, value)}${n}${moved},`;
+  const head = `${opening(telling.subject, telling.condition)}, ${amountWithin(id, value, telling.u95)}${n}${moved},`;
   const name = comparison.side === 'low' ? telling.lowName : telling.highName;
   const beyond = comparison.margin < 0;
   const direction = (comparison.side === 'low') === beyond ? 'below' : 'above';
@@ -102,10 +141,19 @@ export function tell(telling: Telling): string {
     if (comparison.outcome === 'near limit') {
       if (comparison.disagree)
         return `${head} comes out differently against ${name} with and without the junction potential; state “junction” to settle it.`;
-      const give = `the uncertainty of ±${difference(id, uncertainty)}: too close to call`;
+      const limit = (comparison.side === 'low' ? low : high)!;
+      const read = value + comparison.shift;
+      const ends = interval(id, read - uncertainty, read + uncertainty, limit);
+      const alone = telling.u95 !== null && Math.abs(uncertainty - telling.u95) < 1e-9 * Math.max(1, uncertainty);
+      const known = alone
+        ? 'its 95 % interval'
+        : `number and limit together are known to ±${difference(id, uncertainty)}, and the 95 % interval`;
+      const both = low !== null && high !== null && read - uncertainty < low && read + uncertainty > high;
+      const end = comparison.side === 'low' ? 'the lower end' : 'the upper end';
+      const which = both ? 'both ends' : range ? end : 'the limit';
       // Both ends have one name: what is above the lower end is inside, and "above the range" would say the reverse.
-      if (range && comparison.margin > 0) return `${head} lies ${away} inside ${name}, less than ${give}.`;
-      return `${head} ${lies}, inside ${give}.`;
+      const where = range && comparison.margin > 0 ? `lies ${away} inside ${name}` : lies;
+      return `${head} ${where}: ${known}, ${ends}, straddles ${which}.`;
     }
     if (range) return `${head} lies within ${name}.`;
     if (comparison.margin === 0) return `${head} meets ${name}.`;

@@ -1,6 +1,7 @@
 /** What one check sees of one condition, and what it answers before it is held against its limits. */
 import { absenceSentences } from '../measure/absence.ts';
 import type { ConditionMeasure, NumberedSweep, Reading } from '../measure/types.ts';
+import { coverage95 } from '../signal/coverage.ts';
 import type { Circumstances } from './types.ts';
 
 /** One condition of one cell. */
@@ -29,6 +30,8 @@ export interface Held {
   highName: string;
   meaning: string;
   remark?: string;
+  /** What was taken where the reading carries no half-width, as a sentence. */
+  standIn?: string;
   /** Replaces the registry's source where the limit has its own. */
   source?: string;
 }
@@ -79,19 +82,29 @@ export function medianOf(values: readonly number[]): number {
   return sorted.length % 2 === 1 ? sorted[half]! : (sorted[half - 1]! + sorted[half]!) / 2;
 }
 
-/** Median of one quantity over sweeps with n and sample SD, or null where no sweep has it. */
+/**
+ * Median of one quantity over sweeps with n, sample SD and 95 % half-width (Student's t times SD/√n; of one sweep alone
+ * its own), or null where no sweep has it.
+ */
 export function medianReading(sweeps: readonly NumberedSweep[], quantity: string): Present | null {
-  const values = sweeps.flatMap((sweep) => {
+  const readings = sweeps.flatMap((sweep) => {
     const reading = sweep.readings[quantity];
-    return isPresent(reading) ? [reading.value] : [];
+    return isPresent(reading) ? [reading] : [];
   });
+  const values = readings.map((reading) => reading.value);
   if (values.length === 0) return null;
   const mean = values.reduce((sum, value) => sum + value, 0) / values.length;
   const sd =
     values.length > 1
       ? Math.sqrt(values.reduce((sum, value) => sum + (value - mean) ** 2, 0) / (values.length - 1))
       : undefined;
-  return { value: medianOf(values), n: values.length, ...(sd === undefined ? {} : { sd }) };
+  const u95 = sd === undefined ? readings[0]!.u95 : (coverage95(values.length - 1) * sd) / Math.sqrt(values.length);
+  return {
+    value: medianOf(values),
+    n: values.length,
+    ...(sd === undefined ? {} : { sd }),
+    ...(u95 === undefined ? {} : { u95 }),
+  };
 }
 
 /** The cell's own reading, else the median over the condition's sweeps, else the reading that says why not. */

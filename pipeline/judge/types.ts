@@ -34,6 +34,8 @@ export interface Finding {
   /** Null for the cell as a whole. */
   sweep: number | null;
   value: number | null;
+  /** The number's own 95 % half-width, as measured; null where it is not known or there is no number. */
+  value_u95?: number | null;
   /** 95 % uncertainty of the comparison (value and limit combined), in the quantity's unit. */
   uncertainty: number | null;
   limit_low: number | null;

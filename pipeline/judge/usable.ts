@@ -75,7 +75,7 @@ export function complaintOf(usual: Usual, sweep: NumberedSweep, policy: readonly
   const height = first(sweep);
   if (height !== null && usual.height !== null) {
     const middle = usual.height;
-    if (height < leastHeightShare * middle)
+    if (height + (sweep.spikes[0]?.u95?.['spike_height_mv'] ?? 0) < leastHeightShare * middle)
       return `its first spike, ${amount('spike_height_mv', height)} high, reaches less than ${leastHeightShare * 100} % of the usual ${amount('spike_height_mv', middle)}`;
   }
   return null;

@@ -917,3 +917,17 @@ export function quantity(id: string): Quantity {
 export const isQuantity = (id: string): boolean => byId.has(id);
 
 export const quantitiesOf = (level: Level): Quantity[] => quantities.filter((entry) => entry.levels.includes(level));
+
+/**
+ * Decimals that a number of this quantity and its 95 % half-width are printed with: two significant digits of the
+ * half-width at most, never more than the entry wants; below zero they are cut left of the point.
+ * @param u95 in the quantity's unit, above zero
+ * @see JCGM 100:2008, 7.2.6; ISO 80000-1:2009, annex B (rounding; from memory)
+ */
+export function decimalsWith(u95: number, most: number): number {
+  // Decimal place of the second significant digit: 1 for 4.27, 3 for 0.0427, -1 for 427.
+  const second = (width: number): number => 1 - Math.floor(Math.log10(width));
+  const first = Math.min(most, second(u95));
+  // 9.96 cut at the tenth would be 10.0, three digits: cut once more where rounding carried.
+  return Math.min(first, second(Number(`${Math.round(u95 * 10 ** first)}e${-first}`) || u95));
+}

@@ -217,6 +217,7 @@ export const findingsTable: Table<{ cell: string; finding: Finding }> = {
     number('uncertainty', '95 % uncertainty of the comparison, in the quantity’s unit.'),
     number('margin', 'Distance to the nearest limit, negative beyond it.'),
     number('at_s', 'Where in the sweep to look.', 's'),
+    number('value_u95', '95 % half-width of the number itself; empty where it is not known.'),
   ],
   values: ({ cell, finding }) => [
     cell,
@@ -233,6 +234,7 @@ export const findingsTable: Table<{ cell: string; finding: Finding }> = {
     finding.uncertainty,
     finding.margin,
     finding.at_s,
+    finding.value_u95,
   ],
 };
 

@@ -213,6 +213,12 @@ describe('a cell against its class', () => {
   test('half-width of a layer 5 pyramidal neuron at 33 °C', () =>
     expect([half(0.9), half(4), half(0.1)]).toEqual(['within', 'outside', 'outside']));
   test('an excess inside the uncertainty is near the limit', () => expect(half(2.6, { se: 0.2 })).toBe('near limit'));
+  test('a potential as recorded has no correction that could be off: offset and measurement alone', () => {
+    const of = (circumstances: object) =>
+      finding('class-threshold-mv', { readings: { threshold_mv: read(-52, { u95: 1.5 }) }, circumstances }).uncertainty;
+    expect(of({ reading: 'recorded', junction: 'uncorrected', ljp_mv: null, ljp_from: null })).toBeCloseTo(2.5, 9);
+    expect(of({ reading: 'corrected', ljp_from: 'computed' })).toBeCloseTo(Math.hypot(2, 1.5, 3.5), 9);
+  });
   test('the same number is right for another class', () =>
     expect(
       outcome('class-half-width-ms', {

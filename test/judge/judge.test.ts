@@ -204,6 +204,16 @@ describe('the lab’s own limits', () => {
       [3, 'outside'],
     ]);
   });
+  test('a median over sweeps has the half-width that Student’s t gives its spread', () => {
+    // Values 1 to 6: SD 1.870829, t(0.975, 5) = 2.570582 (standard table): 2.570582 · 1.870829/√6 = 1.963316.
+    const sweeps = six((number) => ({ readings: { interval_cv: read(number + 1) } }));
+    const found = judged({ sweeps, ...policy('interval_cv', null, 5) }).findings.find(
+      (one) => one.ground === 'policy' && one.sweep === null,
+    );
+    expect(found?.outcome).toBe('near limit');
+    expect(found?.value_u95).toBeCloseTo(1.963316, 4);
+    expect(found?.uncertainty).toBeCloseTo(1.963316, 4);
+  });
   test('a number that is missing is not measured', () =>
     expect(outcome('policy-max-rate-hz', { ...policy('max_rate_hz', 10, null), without: ['max_rate_hz'] })).toBe(
       'not measured',

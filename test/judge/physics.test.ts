@@ -62,10 +62,23 @@ describe('peak against E_Na', () => {
     expect(found).toMatchObject({ outcome: 'outside', value: 75, at_s: 0.31 });
     expect(found?.sentence).toMatch(/sweep 1/);
   });
+  test('that spike’s own half-width counts: √(2² + 1² + 1² + 4²) = 4.69', () => {
+    const sweeps = [sweep(0, { spikes: [{ ...spike(0, { peak_mv: 62 }), u95: { peak_mv: 4 } }] })];
+    const input = made({ sweeps, without: ['peak_mv'] });
+    const found = judgeCell(input).findings.find((one) => one.check === 'peak-below-sodium');
+    expect(found).toMatchObject({ outcome: 'near limit', value: 62, value_u95: 4 });
+    expect(found?.uncertainty).toBeCloseTo(4.6904, 3);
+  });
+  test('a half-width known to be nil is no reason to put the noise in its place', () =>
+    expect(
+      finding('peak-below-sodium', {
+        readings: { peak_mv: read(40, { u95: 0 }), noise_rms_mv: read(3) },
+      }).uncertainty,
+    ).toBe(3));
   test('a median over spikes of a cell that no step fires is called so', () =>
     expect(
       finding('peak-below-sodium', { readings: { peak_mv: read(40, { n: 12, sd: 1, at: { sweep: 3 } }) } }).sentence,
-    ).toBe('The median peak of the spikes, +40.0 mV (n = 12), stays 20.5 mV below E_Na (+60.5 mV at 33 °C).'));
+    ).toBe('The median peak of the spikes, +40.0 ± 0.6 mV (n = 12), stays 20.5 mV below E_Na (+60.5 mV at 33 °C).'));
   test.each([
     ['configuration not stated', { configuration: null }, ['configuration']],
     ['a sharp electrode', { configuration: 'sharp' }, []],

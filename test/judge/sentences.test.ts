@@ -1,6 +1,16 @@
 import { describe, expect, test } from 'vitest';
 import { compare } from '../../pipeline/judge/compare.ts';
-import { amount, celsius, count, difference, listed, span, tell, tellMissing } from '../../pipeline/judge/sentences.ts';
+import {
+  amount,
+  amountWithin,
+  celsius,
+  count,
+  difference,
+  listed,
+  span,
+  tell,
+  tellMissing,
+} from '../../pipeline/judge/sentences.ts';
 import { finding, read } from './made.ts';
 
 describe('numbers in words', () => {
@@ -9,6 +19,11 @@ describe('numbers in words', () => {
     ['a potential below it', amount('peak_mv', -0.04), '−0.04 mV'],
     ['zero has no sign', amount('peak_mv', 0), '0.0 mV'],
     ['a width', amount('half_width_ms', 0.84), '0.840 ms'],
+    ['a potential with its half-width', amountWithin('peak_mv', 61.53, 0.42), '+61.5 ± 0.4 mV'],
+    ['two digits of a half-width at most', amountWithin('input_resistance_mohm', -346, 123), '−350 ± 120 MΩ'],
+    ['a half-width that would round away is rounded up', amountWithin('peak_mv', -61.53, 0.01), '−61.5 ± 0.1 mV'],
+    ['a share with its half-width', amountWithin('sag_fraction', 0.124, 0.031), '12 ± 3 %'],
+    ['no half-width', amountWithin('peak_mv', 61.53, null), '+61.5 mV'],
     ['a count', amount('rise_samples', 4), '4'],
     ['a share', amount('clipped_fraction', 0.0003), '0.03 %'],
     ['a tiny share is not shown as none', amount('missing_fraction', 0.0000012), '0.00012 %'],
@@ -28,28 +43,49 @@ describe('numbers in words', () => {
 
 describe('sentences', () => {
   const peak = (value: number, cell = {}) =>
-    finding('peak-below-sodium', { readings: { peak_mv: read(value) }, ...cell }).sentence;
+    finding('peak-below-sodium', { readings: { peak_mv: read(value, { u95: 0 }) }, ...cell }).sentence;
   test('outside', () =>
     expect(peak(72.4)).toBe(
       'The peak of the first spike (sweep 0), +72.4 mV, lies 11.9 mV above E_Na (+60.5 mV at 33 °C); no sodium spike can do that.',
     ));
   test('near the limit', () =>
     expect(peak(61.5)).toBe(
-      'The peak of the first spike (sweep 0), +61.5 mV, lies 1.0 mV above E_Na (+60.5 mV at 33 °C), inside the uncertainty of ±3.0 mV: too close to call.',
+      'The peak of the first spike (sweep 0), +61.5 mV, lies 1.0 mV above E_Na (+60.5 mV at 33 °C): number and limit together are known to ±3.0 mV, and the 95 % interval, +58.5 to +64.5 mV, straddles the limit.',
+    ));
+  test('near the limit, with the number’s own half-width beside it', () =>
+    expect(finding('peak-below-sodium', { readings: { peak_mv: read(61.5, { u95: 0.42 }) } }).sentence).toMatch(
+      /^The peak of the first spike \(sweep 0\), \+61\.5 ± 0\.4 mV, lies 1\.0 mV above E_Na .* straddles the limit\.$/,
+    ));
+  test('where nothing but the number is uncertain, the interval is its own', () =>
+    expect(finding('noise', { readings: { noise_rms_mv: read(0.48, { u95: 0.05 }) } }).sentence).toBe(
+      'The noise, 0.480 ± 0.050 mV, lies 0.020 mV below 0.5 mV: its 95 % interval, 0.430 to 0.530 mV, straddles the limit.',
+    ));
+  test('ends that would look like the limit get more decimals', () =>
+    expect(
+      finding('access-resistance', { readings: { access_resistance_mohm: read(35, { u95: 0.02 }) } }).sentence,
+    ).toBe(
+      'The access resistance, 35.0 ± 0.1 MΩ, lies exactly at the 35 MΩ up to which published work accepts whole-cell recordings: its 95 % interval, 34.98 to 35.02 MΩ, straddles the limit.',
     ));
   test.each([
-    [120, 'lies 39 pF inside the range (81 to 500 pF), less than the uncertainty of ±50 pF: too close to call.'],
-    [480, 'lies 20 pF inside the range (81 to 500 pF), less than the uncertainty of ±50 pF: too close to call.'],
-    [70, 'lies 11 pF below the range (81 to 500 pF), inside the uncertainty of ±50 pF: too close to call.'],
-    [510, 'lies 10 pF above the range (81 to 500 pF), inside the uncertainty of ±50 pF: too close to call.'],
-    [81, 'lies exactly at an end of the range (81 to 500 pF), inside the uncertainty of ±50 pF: too close to call.'],
-    [200, 'lies within the range (81 to 500 pF).'],
-  ])('near either end of a range, %d pF is told on the side where it is', (value, expected) => {
+    [120, 50, 'lies 39 pF inside the range (81 to 500 pF): its 95 % interval, 70 to 170 pF, straddles the lower end.'],
+    [480, 50, 'lies 20 pF inside the range (81 to 500 pF): its 95 % interval, 430 to 530 pF, straddles the upper end.'],
+    [70, 50, 'lies 11 pF below the range (81 to 500 pF): its 95 % interval, 20 to 120 pF, straddles the lower end.'],
+    [510, 50, 'lies 10 pF above the range (81 to 500 pF): its 95 % interval, 460 to 560 pF, straddles the upper end.'],
+    [
+      81,
+      50,
+      'lies exactly at an end of the range (81 to 500 pF): its 95 % interval, 31 to 131 pF, straddles the lower end.',
+    ],
+    [300, 400, 'lies 200 pF inside the range (81 to 500 pF): its 95 % interval, −100 to 700 pF, straddles both ends.'],
+    [200, 50, 'lies within the range (81 to 500 pF).'],
+  ])('near either end of a range, %d ± %d pF is told on the side where it is', (value, u95, expected) => {
     const name = 'the range (81 to 500 pF)';
-    const telling = { quantity: 'membrane_capacitance_pf', subject: 'the membrane capacitance', value, n: 1 };
-    const limits = { low: 81, high: 500, lowName: name, highName: name, uncertainty: 50 };
-    const rest = { comparison: compare(value, 81, 500, 50), meaning: '', condition: null, remark: '' };
-    expect(tell({ ...telling, ...limits, ...rest })).toBe(`The membrane capacitance, ${value} pF, ${expected}`);
+    const telling = { quantity: 'membrane_capacitance_pf', subject: 'the membrane capacitance', value, u95, n: 1 };
+    const limits = { low: 81, high: 500, lowName: name, highName: name, uncertainty: u95 };
+    const rest = { comparison: compare(value, 81, 500, u95), meaning: '', condition: null, remark: '' };
+    expect(tell({ ...telling, ...limits, ...rest })).toBe(
+      `The membrane capacitance, ${value} ± ${u95} pF, ${expected}`,
+    );
   });
   test('within', () =>
     expect(peak(40)).toBe(
@@ -73,6 +109,6 @@ describe('sentences', () => {
     ));
   test('n stands beside a median', () =>
     expect(finding('rest-above-potassium').sentence).toBe(
-      'The resting potential, −79.0 mV (n = 12), stays 25.0 mV above E_K (−104.0 mV at 33 °C).',
+      'The resting potential, −79.0 ± 0.4 mV (n = 12), stays 25.0 mV above E_K (−104.0 mV at 33 °C).',
     ));
 });

@@ -17,7 +17,8 @@ const allowed: Record<string, { folders: string[]; typesOf?: string[]; files?: s
   'pipeline/judge': {
     folders: ['pipeline/membrane'],
     typesOf: ['pipeline/measure'],
-    files: ['pipeline/measure/quantities.ts', 'pipeline/measure/absence.ts'],
+    // Student's t: medians over sweeps get their half-width as measuring gives it.
+    files: ['pipeline/measure/quantities.ts', 'pipeline/measure/absence.ts', 'pipeline/signal/coverage.ts'],
   },
   'pipeline/formats': { folders: [] },
   'pipeline/archive': { folders: [], typesOf: ['pipeline/formats'], files: ['pipeline/measure/quantities.ts'] },
