@@ -1,15 +1,22 @@
 /** From facts and recipes to what judging and measuring must know. Pure; opens nothing. */
 import type { Recipe, Settings } from '../archive/types.ts';
 import { classRanges } from '../judge/class-ranges.ts';
-import type { Circumstances, IonPotential } from '../judge/types.ts';
+import type { Circumstances, IonPotential, SolutionIons } from '../judge/types.ts';
 import { spikeCriteria } from '../measure/spike-criteria.ts';
 import type { CellContext, MeasureContext } from '../measure/types.ts';
 import { junctionPotential } from '../membrane/junction.ts';
+import { thermalVoltageMv } from '../membrane/nernst.ts';
 import { dissolve, equilibria } from '../membrane/solutions.ts';
 import { clockSeconds, type FactValues, numberFact, textFact } from './facts.ts';
 
 /** Half-width (95 %) taken for a stated bath temperature, °C; common practice, no source. */
 const temperatureUncertaintyC = 1;
+
+/**
+ * Temperature at which a solution is brought to its pH, °C: a recipe states the pH as read on the bench, and the titrant
+ * it took stays in the bottle when it is warmed. A bath in carbogen gets its pH at the cell. Common practice, no source.
+ */
+const benchCelsius = 22;
 
 /** The shipped class whose ranges and criteria hold for a class fact: itself, or what the lab says it is like. */
 export function shippedClass(settings: Settings, classId: string | null): string {
@@ -36,9 +43,20 @@ interface Ions {
   ljp_mv: number | null;
   ljp_uncertainty_mv: number | null;
   pipette_sodium_mm: number | null;
+  solution: SolutionIons | null;
 }
 
-const noIons: Ions = { e_na: null, e_k: null, ljp_mv: null, ljp_uncertainty_mv: null, pipette_sodium_mm: null };
+const noIons: Ions = {
+  e_na: null,
+  e_k: null,
+  ljp_mv: null,
+  ljp_uncertainty_mv: null,
+  pipette_sodium_mm: null,
+  solution: null,
+};
+
+/** Ions below this are left out of what is shown, mmol/L in both solutions together. */
+const shownFromMm = 1e-3;
 
 /** Dissolving takes milliseconds and an archive has few recipes and temperatures: each pair is worked out once. */
 const worked = new WeakMap<Recipe, WeakMap<Recipe, Map<number, Ions>>>();
@@ -67,8 +85,9 @@ function workOutIons(pipette: Recipe, bath: Recipe, celsius: number): Ions {
 }
 
 function dissolvedIons(pipette: Recipe, bath: Recipe, celsius: number): Ions {
-  const inside = dissolve(pipette, celsius);
-  const outside = dissolve(bath, celsius);
+  const settledAt = (recipe: Recipe): number => (/carbogen|co2/i.test(recipe.gas) ? celsius : benchCelsius);
+  const inside = dissolve(pipette, settledAt(pipette));
+  const outside = dissolve(bath, settledAt(bath));
   const potentials = equilibria({
     pipette: inside,
     bath: outside,
@@ -76,13 +95,29 @@ function dissolvedIons(pipette: Recipe, bath: Recipe, celsius: number): Ions {
     celsiusUncertainty: temperatureUncertaintyC,
   });
   const sodium = inside.ions.find((ion) => ion.ion === 'Na')?.millimolar ?? null;
-  const junction = junctionPotential(inside.ions, outside.ions, celsius);
+  const junction = junctionPotential(inside, outside, celsius, temperatureUncertaintyC);
   return {
     e_na: potentials.e_na,
     e_k: potentials.e_k,
     ljp_mv: junction.mv,
     ljp_uncertainty_mv: junction.uncertainty_mv,
     pipette_sodium_mm: sodium !== null && sodium > 0 ? sodium : null,
+    solution: {
+      celsius,
+      thermal_mv: thermalVoltageMv(celsius),
+      pipette_ph: inside.ph,
+      bath_ph: outside.ph,
+      // A thousandth of a millimole moves no potential by a tenth of a millivolt.
+      ions: junction.terms.filter((term) => term.pipette_mm + term.bath_mm >= shownFromMm),
+      ljp_mv: junction.mv,
+      ljp_uncertainty_mv: junction.uncertainty_mv,
+      ljp_parts: junction.parts,
+      notes: [
+        ...inside.notes.map((note) => `Pipette: ${note}`),
+        ...outside.notes.map((note) => `Bath: ${note}`),
+        ...junction.notes,
+      ],
+    },
   };
 }
 
@@ -136,6 +171,7 @@ export function circumstancesOf(
     ljp_from: stated !== null ? 'stated' : ljp !== null ? 'computed' : null,
     ljp_uncertainty_mv: stated !== null ? 1 : atZeroing.ljp_uncertainty_mv,
     ljp_computed_mv: atZeroing.ljp_mv,
+    solution: ions.solution,
     ljp_applied_mv: applied,
     reading: junction === 'corrected' || (junction === 'uncorrected' && ljp !== null) ? 'corrected' : 'recorded',
     e_na: wholeCell ? ions.e_na : null,

@@ -60,6 +60,36 @@ export interface IonPotential {
   uncertainty_mv: number;
   inside_mm: number;
   outside_mm: number;
+  /** What the half-width is made of, mV each, largest first; in quadrature. */
+  parts?: { cause: string; mv: number }[];
+  valence?: number;
+}
+
+/** Everything a person needs to do the potentials of a pair of solutions by hand. */
+export interface SolutionIons {
+  celsius: number;
+  /** RT/F, mV. */
+  thermal_mv: number;
+  pipette_ph: number;
+  bath_ph: number;
+  /** Free concentrations on both sides, valence, mobility relative to potassium with its 95 % share and its source. */
+  ions: {
+    ion: string;
+    valence: number;
+    pipette_mm: number;
+    bath_mm: number;
+    mobility: number;
+    mobility_uncertainty: number;
+    mobility_source: string;
+    /** What that half-width moves the junction potential by, mV. */
+    mobility_mv: number;
+  }[];
+  /** Computed from these ions, whatever is stated. */
+  ljp_mv: number;
+  ljp_uncertainty_mv: number;
+  ljp_parts: { cause: string; mv: number }[];
+  /** What had to be assumed. */
+  notes: string[];
 }
 
 /** What is known of the conditions under which one stretch of a cell was recorded. */
@@ -80,6 +110,8 @@ export interface Circumstances {
   ljp_uncertainty_mv?: number | null;
   /** What the recipes give, also where another value is stated: the difference is reported. */
   ljp_computed_mv?: number | null;
+  /** The stretch's own solutions, ion by ion; null where a recipe or the temperature is not known. */
+  solution?: SolutionIons | null;
   /** What was subtracted from the recorded potentials to get the readings judged here, mV. */
   ljp_applied_mv: number;
   reading: 'corrected' | 'recorded';

@@ -1,4 +1,5 @@
 /** Which forms buffers take at a pH, and how much calcium and magnesium they hold. */
+import { daviesTerm } from './activity.ts';
 import { type Buffer, buffers, chargeText, type Metal } from './buffers.ts';
 
 export interface Species {
@@ -20,19 +21,41 @@ interface Ligand {
   affinity: Record<Metal, number>;
 }
 
-function ligandAt(name: string, total: number, ph: number, celsius: number): Ligand {
+/** What the constants are read at. */
+export interface Surroundings {
+  ph: number;
+  celsius: number;
+  /** Ionic strength, mol/L. */
+  strength: number;
+  /** Added to every log₁₀ of an association constant with one metal: to see what their uncertainty does. */
+  shifted?: { metal: Metal; by: number };
+}
+
+/**
+ * Constants of one buffer, moved to the solution's temperature and ionic strength. A constant changes by the Davies
+ * term times the change of the sum of squared charges: 2z − 1 for a proton leaving a form of charge z (the pH is an
+ * activity and stays as it is), 4z for a divalent metal joining a form of charge z.
+ */
+function ligandAt(name: string, total: number, around: Surroundings): Ligand {
   const buffer = buffers[name]!;
-  const shift = celsius - buffer.celsius;
+  const warmer = around.celsius - buffer.celsius;
+  const stronger = daviesTerm(around.strength, around.celsius) - daviesTerm(buffer.strength, around.celsius);
   const weights = [1];
-  for (let step = buffer.pka.length - 1; step >= 0; step--)
-    weights.unshift(weights[0]! * 10 ** (buffer.pka[step]! + buffer.perKelvin[step]! * shift - ph));
+  for (let step = buffer.pka.length - 1; step >= 0; step--) {
+    const pka = buffer.pka[step]! + buffer.perKelvin[step]! * warmer + (2 * buffer.forms[step]!.valence - 1) * stronger;
+    weights.unshift(weights[0]! * 10 ** (pka - around.ph));
+  }
+  const bare = buffer.forms.at(-1)!.valence;
   const complex = (metal: Metal): { bare: number; protonated: number } => {
     const constants = buffer.binds?.[metal];
     if (!constants) return { bare: 0, protonated: 0 };
-    const moved = (constants.perKelvin ?? 0) * shift;
+    const moved = (constants.perKelvin ?? 0) * warmer + (around.shifted?.metal === metal ? around.shifted.by : 0) - 3;
     return {
-      bare: 10 ** (constants.bare + moved - 3),
-      protonated: constants.protonated === undefined ? 0 : weights.at(-2)! * 10 ** (constants.protonated + moved - 3),
+      bare: 10 ** (constants.bare + 4 * bare * stronger + moved),
+      protonated:
+        constants.protonated === undefined
+          ? 0
+          : weights.at(-2)! * 10 ** (constants.protonated + 4 * (bare + 1) * stronger + moved),
     };
   };
   const complexes = { Ca: complex('Ca'), Mg: complex('Mg') };
@@ -53,17 +76,36 @@ function ligandAt(name: string, total: number, ph: number, celsius: number): Lig
 const bareForm = (ligand: Ligand, calcium: number, magnesium: number): number =>
   ligand.total / (ligand.weightSum + calcium * ligand.affinity.Ca + magnesium * ligand.affinity.Mg);
 
-/** Free concentration at which free plus bound comes to the total; bound grows with free, so halving finds it. */
+/**
+ * Free concentration at which free plus bound comes to the total. In logarithms, since free calcium beside a chelator
+ * may be a millionth of the total; there free plus bound rises with free, by a slope between 0 and 1, so that false
+ * position with the kept end's weight halved (Illinois; Dowell & Jarratt 1971, from memory) takes some ten steps.
+ */
 function solveFree(total: number, boundPerFree: (free: number) => number): number {
   if (total === 0) return 0;
-  // In logarithms: free calcium beside a chelator may be a millionth of the total. 46 halvings of 40 leave 6e-13.
-  let low = Math.log(total) - 40;
-  let high = Math.log(total);
-  for (let round = 0; round < 46; round++) {
-    const middle = (low + high) / 2;
-    const free = Math.exp(middle);
-    if (free * (1 + boundPerFree(free)) > total) high = middle;
-    else low = middle;
+  const wanted = Math.log(total);
+  const excess = (log: number): number => log + Math.log1p(boundPerFree(Math.exp(log))) - wanted;
+  let high = wanted;
+  let low = wanted - 40;
+  let above = excess(high);
+  let below = excess(low);
+  if (above <= 0) return total;
+  let kept: 'low' | 'high' | null = null;
+  for (let round = 0; round < 100 && high - low > 1e-13; round++) {
+    const next = high - (above * (high - low)) / (above - below);
+    const value = excess(next);
+    if (Math.abs(value) < 1e-14) return Math.exp(next);
+    if (value > 0) {
+      high = next;
+      above = value;
+      if (kept === 'low') below /= 2;
+      kept = 'low';
+    } else {
+      low = next;
+      below = value;
+      if (kept === 'high') above /= 2;
+      kept = 'high';
+    }
   }
   return Math.exp((low + high) / 2);
 }
@@ -78,10 +120,9 @@ export function speciate(
   totals: ReadonlyMap<string, number>,
   calcium: number,
   magnesium: number,
-  ph: number,
-  celsius: number,
+  around: Surroundings,
 ): { species: Species[]; freeCalcium: number; freeMagnesium: number } {
-  const ligands = [...totals].map(([name, total]) => ligandAt(name, total, ph, celsius));
+  const ligands = [...totals].map(([name, total]) => ligandAt(name, total, around));
   const binding = ligands.filter((ligand) => ligand.buffer.binds);
   const boundTo = (metal: Metal, freeCalcium: number, freeMagnesium: number): number =>
     binding.reduce((sum, ligand) => sum + ligand.affinity[metal] * bareForm(ligand, freeCalcium, freeMagnesium), 0);

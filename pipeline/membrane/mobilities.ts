@@ -1,6 +1,6 @@
 /**
  * Mobilities of ions in water relative to potassium, 25 °C, limiting: u = λ/(|z|·73.48), λ the equivalent
- * conductivity. Their ratios change little with temperature, so one table serves.
+ * conductivity. One table serves every temperature and concentration; what that costs is `transfer`.
  */
 
 export interface Mobility {
@@ -18,16 +18,28 @@ const handbookRemembered = `${handbook} (from memory)`;
 const barry = 'Ng & Barry 1995, J Neurosci Methods 56:37–41 (from memory)';
 const potassium = 73.48;
 
-const conductivity = (equivalent: number, valence: number, source: string, uncertainty: number): Mobility => ({
+/**
+ * How much a ratio of mobilities moves, as a share, from infinite dilution at 25 °C to a physiological solution at the
+ * bath's temperature. Sodium against potassium: 50.08/73.48 = 0.682 in the limit, 0.651 in 0.1 M chlorides (Λ 106.74 and
+ * 128.96, transport numbers 0.3854 and 0.4898; Robinson & Stokes 1959, from memory), 4.5 % less.
+ */
+const transfer = 0.045;
+
+const conductivity = (equivalent: number, valence: number, source: string, own: number): Mobility => ({
   relative: equivalent / (Math.abs(valence) * potassium),
-  uncertainty,
+  uncertainty: Math.hypot(own, transfer),
   source,
   assumed: false,
 });
 const found = (equivalent: number, valence = 1): Mobility => conductivity(equivalent, valence, handbook, 0.01);
 const remembered = (equivalent: number, valence = 1): Mobility =>
   conductivity(equivalent, valence, handbookRemembered, 0.03);
-const relative = (value: number): Mobility => ({ relative: value, uncertainty: 0.1, source: barry, assumed: false });
+const relative = (value: number): Mobility => ({
+  relative: value,
+  uncertainty: Math.hypot(0.1, transfer),
+  source: barry,
+  assumed: false,
+});
 const assumed = (value: number, uncertainty: number, why: string): Mobility => ({
   relative: value,
   uncertainty,
@@ -48,6 +60,10 @@ const table: Record<string, Mobility> = {
   Mg: found(53.0, 2),
   Ba: found(63.6, 2),
   Co: found(55.0, 2),
+  Mn: found(53.5, 2),
+  Cd: found(54.0, 2),
+  La: found(69.7, 3),
+  Gd: found(67.3, 3),
   Na: remembered(50.08),
   Cl: remembered(76.31),
   Br: remembered(78.1),
@@ -64,7 +80,13 @@ const table: Record<string, Mobility> = {
   TEA: remembered(32.6),
   TMA: remembered(44.9),
   methanesulfonate: remembered(48.8),
-  Rb: relative(1.059),
+  lactate: remembered(38.8),
+  'citrate3-': remembered(70.2, 3),
+  'succinate2-': remembered(58.8, 2),
+  Rb: remembered(77.8),
+  Sr: remembered(59.4, 2),
+  Ni: remembered(50.0, 2),
+  Zn: remembered(52.8, 2),
   choline: relative(0.51),
   NMDG: relative(0.33),
   Tris: relative(0.4),
@@ -88,15 +110,12 @@ const table: Record<string, Mobility> = {
   'ATP4-': assumed(0.2, 0.5, nucleotide),
   'HATP3-': assumed(0.2, 0.5, nucleotide),
   'MgATP2-': assumed(0.2, 0.5, nucleotide),
-  'CaATP2-': assumed(0.2, 0.5, nucleotide),
   'phosphocreatine2-': assumed(0.25, 0.5, 'no measured value known'),
-  lactate: assumed(0.53, 0.15, 'equivalent conductivity near 38.8, from memory'),
-  Sr: assumed(0.404, 0.1, 'like calcium'),
-  Mn: assumed(0.364, 0.1, 'like magnesium'),
-  Ni: assumed(0.364, 0.1, 'like magnesium'),
-  Zn: assumed(0.36, 0.1, 'like magnesium'),
-  Cd: assumed(0.367, 0.1, 'like magnesium'),
-  PIPES: assumed(0.3, 0.4, 'like HEPES'),
+  'CaATP2-': assumed(0.2, 0.5, nucleotide),
+  'PIPES-': assumed(0.3, 0.4, 'like HEPES'),
+  'PIPES2-': assumed(0.3, 0.4, 'like HEPES'),
+  TES: assumed(0.3, 0.4, 'like HEPES'),
+  BES: assumed(0.3, 0.4, 'like HEPES'),
 };
 
 /**

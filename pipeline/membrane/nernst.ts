@@ -46,7 +46,7 @@ export interface UncertainNernst {
  * Half-width of ln c for a relative half-width of c, taken on the wider side and never beyond a factor of ten: the
  * logarithm of a concentration known to ±100 % has no lower end.
  */
-const logHalfWidth = (relative: number): number => -Math.log(1 - Math.min(relative, 0.9));
+export const logHalfWidth = (relative: number): number => -Math.log(1 - Math.min(relative, 0.9));
 
 /**
  * Nernst potential with its 95 % half-width: concentrations and temperature as independent, added in quadrature.

@@ -1,8 +1,10 @@
 /** From a recipe as a laboratory writes it to the ions in the bottle. */
-import { speciate } from './binding.ts';
+import { ionicStrengthMolar } from './activity.ts';
+import { type Surroundings, speciate } from './binding.ts';
 import { buffers, fixedIons } from './buffers.ts';
+import { carbogenPh } from './carbonate.ts';
 import { requireAmount, requireCelsius } from './guards.ts';
-import type { DissolvedIon } from './junction.ts';
+import type { DissolvedIon, Variant } from './junction.ts';
 import { readSubstance, readTitrant } from './names.ts';
 
 export interface SolutionRecipe {
@@ -18,6 +20,12 @@ export interface SolutionRecipe {
 export interface Dissolved {
   /** Charged species above a nanomolar, free concentrations, sorted by name. Their charges cancel. */
   ions: DissolvedIon[];
+  /** Solutions that the recipe may as well mean; each is electroneutral, and the causes are independent. */
+  variants: Variant[];
+  /** pH that was counted with, stated or not. */
+  ph: number;
+  /** Ionic strength, mol/L. */
+  strength: number;
   /** Null where no calcium was added: what is left as contamination nobody knows. */
   free_calcium_mm: number | null;
   /** Everything assumed or approximated, in sentences. */
@@ -28,15 +36,26 @@ export interface Dissolved {
 
 /** 95 % half-width of a weighed amount, as a share. Common practice, no source. */
 const weighing = 0.02;
-/** 95 % half-width of pH meter and apparent constants together, and of a pH that is assumed. */
+/**
+ * The same for chelators, nucleotides and phosphocreatine, which hold water and are less pure (EGTA: Miller & Smith
+ * 1984, Am J Physiol 246:C160–C166; from memory).
+ */
+const chelatorPurity = 0.05;
+/** 95 % half-width of pH meter and acid constants together, and of a pH that is assumed. */
 const statedPhHalfWidth = 0.1;
 const assumedPhHalfWidth = 0.3;
+/** 95 % half-width of log₁₀ of an association constant: what published ones for EGTA differ by (from memory). */
+const bindingHalfWidth = 0.2;
+/** Stands for the ion of a titrant that is not stated: neither sodium nor potassium, of middling mobility. */
+const otherTitrant = { base: 'Tris', acid: 'methanesulfonate' } as const;
 
 export interface Composition {
   /** Fixed ions and buffers in total, mmol/L, before anything was added to reach the pH. */
   totals: Map<string, number>;
   /** What an ion may have beyond the total, from names that leave its count open, mmol/L. */
   open: Map<string, number>;
+  /** What each substance brings, and by what share its amount may be off. */
+  substances: { name: string; parts: ReadonlyMap<string, number>; halfWidth: number }[];
   /** Ions named as titrants inside names ('HEPES-NaOH'). */
   titrants: string[];
   notes: string[];
@@ -54,7 +73,14 @@ const shown = (millimolar: number): string => String(Number(millimolar.toPrecisi
  * @throws RangeError naming the substance whose amount is impossible
  */
 export function compose(millimolar: Readonly<Record<string, number>>): Composition {
-  const composition: Composition = { totals: new Map(), open: new Map(), titrants: [], notes: [], unknown: [] };
+  const composition: Composition = {
+    totals: new Map(),
+    open: new Map(),
+    substances: [],
+    titrants: [],
+    notes: [],
+    unknown: [],
+  };
   for (const [name, amount] of Object.entries(millimolar)) {
     requireAmount(`millimolar["${name}"]`, amount);
     const substance = readSubstance(name);
@@ -70,6 +96,12 @@ export function compose(millimolar: Readonly<Record<string, number>>): Compositi
     for (const [part, count] of substance.parts) add(composition.totals, part, count * amount);
     if (substance.titratedWith) composition.titrants.push(substance.titratedWith);
     if (amount === 0) continue;
+    if (substance.parts.size > 0)
+      composition.substances.push({
+        name,
+        parts: new Map([...substance.parts].map(([part, count]) => [part, count * amount])),
+        halfWidth: [...substance.parts.keys()].some((part) => buffers[part]?.binds) ? chelatorPurity : weighing,
+      });
     if (substance.openCation) {
       const { ion, most } = substance.openCation;
       add(composition.open, ion, (most - 1) * amount);
@@ -97,7 +129,7 @@ interface Settled {
 }
 
 /** All ions at one pH before titration. */
-function settle(totals: ReadonlyMap<string, number>, ph: number, celsius: number): Settled {
+function settle(totals: ReadonlyMap<string, number>, around: Surroundings): Settled {
   const ions = new Map<string, { valence: number; millimolar: number }>();
   const put = (ion: string, valence: number, millimolar: number): void => {
     const before = ions.get(ion);
@@ -108,13 +140,7 @@ function settle(totals: ReadonlyMap<string, number>, ph: number, celsius: number
     if (Object.hasOwn(buffers, name)) weak.set(name, total);
     else if (name !== 'Ca' && name !== 'Mg') put(name, valenceOf(name), total);
   }
-  const { species, freeCalcium, freeMagnesium } = speciate(
-    weak,
-    totals.get('Ca') ?? 0,
-    totals.get('Mg') ?? 0,
-    ph,
-    celsius,
-  );
+  const { species, freeCalcium, freeMagnesium } = speciate(weak, totals.get('Ca') ?? 0, totals.get('Mg') ?? 0, around);
   if (totals.has('Ca')) put('Ca', 2, freeCalcium);
   if (totals.has('Mg')) put('Mg', 2, freeMagnesium);
   for (const one of species) if (one.valence !== 0) put(one.ion, one.valence, one.millimolar);
@@ -146,12 +172,55 @@ function mostAbundant(totals: ReadonlyMap<string, number>, valence: 1 | -1): str
   return best;
 }
 
+const strengthOf = ({ ions }: Settled): number =>
+  ionicStrengthMolar([...ions.values()].map((one) => ({ ...one, millimolar: Math.max(one.millimolar, 0) })));
+
+const listed = ({ ions }: Settled): { ion: string; valence: number; millimolar: number }[] =>
+  [...ions]
+    .flatMap(([ion, one]) => (one.millimolar > 1e-6 ? [{ ion, ...one }] : []))
+    .sort((a, b) => (a.ion < b.ion ? -1 : a.ion > b.ion ? 1 : 0));
+
+/** The pH counted with, how well it is known, and what is to be said of it. */
+function phOf(
+  recipe: SolutionRecipe,
+  totals: ReadonlyMap<string, number>,
+  celsius: number,
+): { ph: number; halfWidth: number; notes: string[] } {
+  const total = (name: string): number => totals.get(name) ?? 0;
+  // Below 1 mM it is no bicarbonate buffer.
+  const gassed = /carbogen|co2/i.test(recipe.gas) && total('HCO3') >= 1 ? carbogenPh(total('HCO3'), celsius) : null;
+  if (recipe.ph !== null) {
+    const off = gassed !== null && Math.abs(gassed - recipe.ph) > 0.25;
+    const notes = off
+      ? [
+          `${shown(total('HCO3'))} mM bicarbonate in 5 % carbon dioxide gives pH ${gassed.toFixed(2)}, not ${recipe.ph}.`,
+        ]
+      : [];
+    return { ph: recipe.ph, halfWidth: statedPhHalfWidth, notes };
+  }
+  if (gassed !== null) {
+    const ph = Number(gassed.toFixed(2));
+    const notes = [
+      `The pH is not stated: ${ph} is what 5 % carbon dioxide gives ${shown(total('HCO3'))} mM bicarbonate.`,
+    ];
+    return { ph, halfWidth: statedPhHalfWidth, notes };
+  }
+  const ph = total('Na') > total('K') + total('Cs') ? 7.4 : 7.3;
+  const weak = [...totals].some(([name, amount]) => Object.hasOwn(buffers, name) && amount > 0);
+  const notes = weak ? [`The pH is not stated: ${ph} ± ${assumedPhHalfWidth} is assumed. State "ph".`] : [];
+  return { ph, halfWidth: assumedPhHalfWidth, notes };
+}
+
 /**
- * The ions of a solution at its pH: salts dissociated, buffers in their forms, calcium and magnesium shared out
- * between chelators and nucleotides with published apparent constants, and the ion of the titrant in the amount that
- * cancels the charge. A solution in carbogen with bicarbonate and no stated titrant cancels it with bicarbonate, which
- * the gas supplies. Left out: ion pairs of sulfate, phosphate and bicarbonate; gluconate, which holds calcium with
- * 53 mM (Anal Biochem 2014, abstract) and so matters only where nothing stronger binds; other metals on chelators.
+ * The ions of a solution at its pH: salts dissociated, buffers in their forms at the solution's own temperature and
+ * ionic strength, calcium and magnesium shared out between chelators and nucleotides with published constants, and the
+ * ion of the titrant in the amount that cancels the charge. A solution in carbogen with bicarbonate and no stated
+ * titrant cancels it with bicarbonate, which the gas supplies. Left out: ion pairs of sulfate, phosphate and
+ * bicarbonate; gluconate, which holds calcium with 53 mM (Anal Biochem 2014, abstract) and so matters only where
+ * nothing stronger binds; other metals on chelators.
+ *
+ * Half-widths follow from `variants`: the whole solution worked out again with one thing off by its own half-width
+ * (each weighed amount, the pH, counts a name leaves open, a titrant that is not stated, the association constants).
  * @param recipe amounts in mmol/L; pH 0 to 14 or null
  * @param celsius temperature at which it was brought to pH, °C, above absolute zero
  * @returns free ions with 95 % half-widths, notes on everything assumed
@@ -161,16 +230,13 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
   requireCelsius('celsius', celsius);
   if (recipe.ph !== null && !(recipe.ph >= 0 && recipe.ph <= 14))
     throw new RangeError(`ph must be between 0 and 14 or null, got ${recipe.ph}`);
-  const { totals, open, titrants, notes, unknown } = compose(recipe.millimolar);
+  const { totals, open, substances, titrants, notes, unknown } = compose(recipe.millimolar);
   // The middle of what an open count allows, so that the half-width covers both ends.
   for (const [name, more] of open) add(totals, name, more / 2);
   const total = (name: string): number => totals.get(name) ?? 0;
   const weak = [...totals.keys()].filter((name) => Object.hasOwn(buffers, name) && total(name) > 0);
-
-  const assumedPh = total('Na') > total('K') + total('Cs') ? 7.4 : 7.3;
-  const ph = recipe.ph ?? assumedPh;
-  if (recipe.ph === null && weak.length > 0)
-    notes.push(`The pH is not stated: ${assumedPh} ± ${assumedPhHalfWidth} is assumed. State "ph".`);
+  const { ph, halfWidth, notes: ofPh } = phOf(recipe, totals, celsius);
+  notes.push(...ofPh);
 
   const stated = recipe.titrant?.trim() ? recipe.titrant.trim() : null;
   let titrant = stated ? readTitrant(stated) : null;
@@ -184,20 +250,21 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
     acid: charged < 0 ? titrant! : 'Cl',
   };
 
-  const carbogen = /carbogen|co2/i.test(recipe.gas);
-  const settled = settle(totals, ph, celsius);
-  const byBicarbonate = !known && total('HCO3') > 0 && total('HCO3') + settled.charge > 0.5 * total('HCO3');
+  const around: Surroundings = { ph, celsius, strength: 0.15 };
+  const uncancelled = settle(totals, around).charge;
+  const byBicarbonate = !known && total('HCO3') > 0 && total('HCO3') + uncancelled > 0.5 * total('HCO3');
   const way = byBicarbonate ? 'bicarbonate' : closing;
-  const { ion, added } = close(settled, way);
-
-  const halfWidth = recipe.ph === null ? assumedPhHalfWidth : statedPhHalfWidth;
-  const lower = settle(totals, ph - halfWidth, celsius);
-  const upper = settle(totals, ph + halfWidth, celsius);
-  close(lower, way);
-  close(upper, way);
+  const solve = (amounts: ReadonlyMap<string, number>, change: Partial<Surroundings> = {}) => {
+    const solution = settle(amounts, { ...around, ...change });
+    return { solution, ...close(solution, way) };
+  };
+  // The constants depend on the ionic strength and it, weakly, on them: three rounds settle it to 1e-6.
+  for (let round = 0; round < 3; round++) around.strength = strengthOf(solve(totals).solution);
+  const { solution: settled, ion, added } = solve(totals);
 
   const significant = Math.abs(added) > Math.max(0.1, 0.002 * total(closing.base));
   if (way === 'bicarbonate') {
+    const carbogen = /carbogen|co2/i.test(recipe.gas);
     if (significant)
       notes.push(
         `Bicarbonate is ${shown(settled.ions.get('HCO3')!.millimolar)} mM after the other buffers took their share at pH ${ph}${carbogen ? '' : '; the gas is not stated as carbogen'}.`,
@@ -215,7 +282,8 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
     );
   }
   const chelators = weak.filter((name) => buffers[name]!.binds);
-  if (chelators.length > 0 && (total('Ca') > 0 || total('Mg') > 0))
+  const metals = (['Ca', 'Mg'] as const).filter((metal) => total(metal) > 0);
+  if (chelators.length > 0 && metals.length > 0)
     notes.push(
       `Calcium and magnesium bound by ${chelators.join(', ')} are approximate, from apparent constants: ${[...new Set(chelators.map((name) => buffers[name]!.source))].join('; ')}.`,
     );
@@ -224,29 +292,57 @@ export function dissolve(recipe: SolutionRecipe, celsius: number): Dissolved {
   if (chelators.length > 0 && others.length > 0)
     notes.push(`${others.join(', ')} held by ${chelators.join(', ')} is not computed: all of it is counted as free.`);
 
-  const openSum = [...open].reduce((sum, [name, amount]) => (name === ion ? sum : sum + amount / 2), 0);
-  const ions: DissolvedIon[] = [];
-  for (const [name, { valence, millimolar }] of settled.ions) {
-    if (millimolar <= 1e-6) continue;
-    const below = lower.ions.get(name)?.millimolar ?? 0;
-    const above = upper.ions.get(name)?.millimolar ?? 0;
-    const assumedAmount = name === ion && way !== 'bicarbonate' && !known ? Math.abs(added) : 0;
-    ions.push({
-      ion: name,
-      valence,
-      millimolar,
-      uncertainty_mm: Math.hypot(
-        weighing * millimolar,
-        Math.max(Math.abs(above - millimolar), Math.abs(millimolar - below)),
-        (open.get(name) ?? 0) / 2,
-        // What the open counts leave out, the titrant makes good.
-        name === ion ? openSum : 0,
-        assumedAmount,
-      ),
-    });
+  const variants: Variant[] = [];
+  const vary = (cause: string, solution: Settled): number => variants.push({ cause, ions: listed(solution) });
+  const changed = (parts: ReadonlyMap<string, number>, share: number): Map<string, number> => {
+    const amounts = new Map(totals);
+    for (const [part, amount] of parts) add(amounts, part, share * amount);
+    return amounts;
+  };
+  for (const { name, parts, halfWidth: share } of substances)
+    vary(`amount of ${name}`, solve(changed(parts, share)).solution);
+  if (weak.length > 0)
+    for (const side of [-1, 1]) vary('pH and acid constants', solve(totals, { ph: ph + side * halfWidth }).solution);
+  for (const [name, more] of open)
+    for (const side of [-1, 1])
+      vary(`count of ${name} that a name leaves open`, solve(changed(new Map([[name, more]]), side / 2)).solution);
+  if (chelators.length > 0)
+    for (const metal of metals)
+      for (const side of [-1, 1])
+        vary(
+          `constants that bind ${metal}`,
+          solve(totals, { shifted: { metal, by: side * bindingHalfWidth } }).solution,
+        );
+  if (way !== 'bicarbonate' && !known && added > 1e-6) {
+    const { solution } = solve(totals);
+    const stands = ion === closing.base ? otherTitrant.base : otherTitrant.acid;
+    const place = stands === ion ? 'NMDG' : stands;
+    const valence = ion === closing.base ? 1 : -1;
+    solution.ions.get(ion)!.millimolar -= added;
+    solution.ions.set(place, { valence, millimolar: (solution.ions.get(place)?.millimolar ?? 0) + added });
+    vary('titrant, which is not stated', solution);
   }
-  ions.sort((a, b) => (a.ion < b.ion ? -1 : a.ion > b.ion ? 1 : 0));
-  return { ions, free_calcium_mm: total('Ca') > 0 ? settled.freeCalcium : null, notes, unknown };
+
+  const ions = listed(settled).map((one) => ({ ...one, uncertainty_mm: halfWidthOf(one, variants) }));
+  return {
+    ions,
+    variants,
+    ph,
+    strength: around.strength,
+    free_calcium_mm: total('Ca') > 0 ? settled.freeCalcium : null,
+    notes,
+    unknown,
+  };
+}
+
+/** The larger of a cause's two directions; causes in quadrature. */
+function halfWidthOf(one: { ion: string; millimolar: number }, variants: readonly Variant[]): number {
+  const causes = new Map<string, number>();
+  for (const { cause, ions } of variants) {
+    const off = Math.abs((ions.find((other) => other.ion === one.ion)?.millimolar ?? 0) - one.millimolar);
+    causes.set(cause, Math.max(causes.get(cause) ?? 0, off));
+  }
+  return Math.hypot(...causes.values());
 }
 
 export { type Equilibria, type Equilibrium, equilibria } from './equilibria.ts';

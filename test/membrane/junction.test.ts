@@ -2,11 +2,13 @@ import fc from 'fast-check';
 import { describe, expect, it, test } from 'vitest';
 import {
   type DissolvedIon,
+  hendersonErrorMv,
   hendersonPotential,
   type JunctionIon,
   junctionPotential,
 } from '../../pipeline/membrane/junction.ts';
 import { mobilityOf, tabulatedIons } from '../../pipeline/membrane/mobilities.ts';
+import { dissolve } from '../../pipeline/membrane/solutions.ts';
 
 const positive = new Set(['K', 'Na', 'Cs', 'Li', 'H']);
 const divalent: Record<string, number> = { Mg: 2, Ca: 2, SO4: -2, HPO4: -2, 'EGTA2-': -2, 'nucleotide2-': -2 };
@@ -18,12 +20,16 @@ const ions = (millimolar: Record<string, number>): DissolvedIon[] =>
     uncertainty_mm: 0,
   }));
 const ljp = (pipette: Record<string, number>, bath: Record<string, number>, celsius: number): number =>
-  junctionPotential(ions(pipette), ions(bath), celsius).mv;
+  junctionPotential({ ions: ions(pipette) }, { ions: ions(bath) }, celsius).mv;
 
 describe('junctionPotential(pipette, bath, celsius) refuses what has no answer', () => {
   it('no ions on a side', () => {
-    expect(() => junctionPotential([], ions({ Na: 150, Cl: 150 }), 22)).toThrow(/pipette must hold .* got none/);
-    expect(() => junctionPotential(ions({ Na: 150, Cl: 150 }), [], 22)).toThrow(/bath must hold .* got none/);
+    expect(() => junctionPotential({ ions: [] }, { ions: ions({ Na: 150, Cl: 150 }) }, 22)).toThrow(
+      /pipette must hold .* got none/,
+    );
+    expect(() => junctionPotential({ ions: ions({ Na: 150, Cl: 150 }) }, { ions: [] }, 22)).toThrow(
+      /bath must hold .* got none/,
+    );
   });
   it('amounts and temperatures that cannot be', () => {
     expect(() => ljp({ K: -1, Cl: 1 }, { Na: 1, Cl: 1 }, 22)).toThrow(/pipette\[0\]\.millimolar .* got -1/);
@@ -88,10 +94,13 @@ const pairs: [string, Record<string, number>, Record<string, number>, number, nu
   ['dilution of NaCl', { Na: 145, Cl: 145 }, { Na: 75, Cl: 75 }, 22, null, -3.48],
 ];
 test.each(pairs)('%s', (_label, pipette, bath, celsius, stated, recomputed) => {
-  const { mv, uncertainty_mv } = junctionPotential(ions(pipette), ions(bath), celsius);
+  const { mv, uncertainty_mv } = junctionPotential({ ions: ions(pipette) }, { ions: ions(bath) }, celsius);
   expect(Math.abs(mv - recomputed)).toBeLessThan(6e-4);
-  expect(uncertainty_mv).toBeCloseTo(3.5, 9);
-  if (stated !== null) expect(Math.abs(mv - stated)).toBeLessThanOrEqual(3.52);
+  expect(uncertainty_mv).toBeGreaterThanOrEqual(3.5);
+  // 3 M KCl lies beyond what the Davies equation says of activities, which alone adds 3 mV.
+  expect(uncertainty_mv).toBeLessThan(_label.startsWith('3 M') ? 4.5 : 3.7);
+  // K-aspartate: the stated 13 mV is for caesium aspartate in another bath, 3.51 mV lower.
+  if (stated !== null) expect(Math.abs(mv - stated)).toBeLessThanOrEqual(uncertainty_mv + 0.02);
 });
 
 // Two pairs whose nucleotides the references give a guessed mobility of their own, so they are held to the stated
@@ -114,11 +123,79 @@ test.each([
     16.118,
   ],
 ])('with nucleotides: %s', (_label, pipette, bath, celsius, stated, recomputed) => {
-  const { mv, uncertainty_mv, notes } = junctionPotential(ions(pipette), ions(bath), celsius);
-  expect(Math.abs(mv - stated)).toBeLessThan(3.5);
+  const { mv, uncertainty_mv, parts, notes } = junctionPotential(
+    { ions: ions(pipette) },
+    { ions: ions(bath) },
+    celsius,
+  );
+  expect(Math.abs(mv - stated)).toBeLessThan(uncertainty_mv);
   expect(Math.abs(mv - recomputed)).toBeLessThan(0.15);
-  expect(uncertainty_mv).toBeGreaterThan(3.5);
+  // Nobody has measured that mobility: with the best-known part of the rest it is among the larger ones.
+  expect(parts.find((part) => part.cause === 'mobility of nucleotide2-')!.mv).toBeGreaterThan(0.3);
   expect(notes.join(' ')).toMatch(/nucleotide2- is assumed/);
+});
+
+describe('the half-width of a junction potential', () => {
+  const pipette = dissolve(
+    {
+      millimolar: { 'K-gluconate': 130, KCl: 4, HEPES: 10, EGTA: 1, 'Mg-ATP': 4, 'Na-GTP': 0.3 },
+      ph: 7.3,
+      titrant: null,
+      gas: 'none',
+    },
+    22,
+  );
+  const bath = dissolve(
+    { millimolar: { NaCl: 140, KCl: 4, CaCl2: 2, MgCl2: 1, HEPES: 10 }, ph: 7.4, titrant: 'NaOH', gas: 'none' },
+    22,
+  );
+  const junction = junctionPotential(pipette, bath, 22);
+  it('takes Henderson’s own error from the measured junctions above', () => {
+    const residuals = [26.78 - 28.52, 33.09 - 33.38, 34.86 - 36.14, 6.42 - 4.86, 8.76 - 7.62, 2.62 - 2.76];
+    const rms = Math.sqrt(residuals.reduce((sum, one) => sum + one * one, 0) / 6);
+    // Student's t for 95 % and six degrees of freedom: 2.447 (tables).
+    expect(Math.abs(2.447 * rms - hendersonErrorMv)).toBeLessThan(0.05);
+  });
+  it('is its parts in quadrature, never below 3.5 mV', () => {
+    const sum = Math.hypot(...junction.parts.map((part) => part.mv));
+    expect(junction.uncertainty_mv).toBe(Math.max(3.5, sum));
+    for (const cause of ['mobility of gluconate', 'mobility of Na', 'mobility of MgATP2-', 'temperature'])
+      expect(junction.parts.map((part) => part.cause)).toContain(cause);
+  });
+  it('moves with each mobility as the equation says', () => {
+    // Second implementation: the closed derivative of the equation by ln u, times the share, for gluconate.
+    const share = mobilityOf('gluconate', -1).uncertainty;
+    let [drive, inside, outside] = [0, 0, 0];
+    for (const { valence: z, mobility: u, pipette_mm: p, bath_mm: b } of junction.terms) {
+      drive += z * u * (b - p);
+      inside += z * z * u * p;
+      outside += z * z * u * b;
+    }
+    const own = junction.terms.find((term) => term.ion === 'gluconate')!;
+    const [z, u, p, b] = [own.valence, own.mobility, own.pipette_mm, own.bath_mm];
+    const step = 1e-6;
+    const at = (d: number): number => {
+      const n = drive + d * z * u * (b - p);
+      const [i, o] = [inside + d * z * z * u * p, outside + d * z * z * u * b];
+      return 25.43405912 * (n / (o - i)) * Math.log(i / o);
+    };
+    expect(at(0)).toBeCloseTo(junction.mv, 6);
+    const slope = (at(step) - at(-step)) / (2 * step);
+    expect(Math.abs(own.mobility_mv - Math.abs(slope) * share)).toBeLessThan(0.1 * own.mobility_mv);
+  });
+  it('is wider where mobilities are guessed and titrants unknown', () => {
+    const guessed = junctionPotential({ ions: ions({ K: 150, novelate: 150 }) }, { ions: ions(saline) }, 22);
+    expect(guessed.uncertainty_mv).toBeGreaterThan(4.5);
+    expect(guessed.parts.slice(0, 2).map((part) => part.cause)).toContain('mobility of novelate');
+    expect(junction.parts.map((part) => part.cause)).toContain('pipette: titrant, which is not stated');
+  });
+  it('is the same from either side', () => {
+    const turned = junctionPotential(bath, pipette, 22);
+    expect(turned.mv).toBeCloseTo(-junction.mv, 9);
+    expect(turned.uncertainty_mv).toBeCloseTo(junction.uncertainty_mv, 9);
+  });
+  it('refuses a negative half-width of the temperature', () =>
+    expect(() => junctionPotential(pipette, bath, 22, -1)).toThrow(/celsiusUncertainty .* got -1/));
 });
 
 describe('sign and limit', () => {
@@ -189,28 +266,89 @@ describe('laws', () => {
     ));
   it('an ion listed twice is one ion of the sum', () => {
     const split = [...ions({ K: 100, Cl: 140 }), ...ions({ K: 40 })];
-    expect(junctionPotential(split, ions(saline), 22).mv).toBeCloseTo(ljp({ K: 140, Cl: 140 }, saline, 22), 10);
+    expect(junctionPotential({ ions: split }, { ions: ions(saline) }, 22).mv).toBeCloseTo(
+      ljp({ K: 140, Cl: 140 }, saline, 22),
+      10,
+    );
   });
 });
 
 describe('mobilities', () => {
   // Equivalent conductivities, CRC Handbook (found): u = λ/(|z|·73.48); Ng & Barry 1995 (from memory).
   test.each([
-    ['K', 1, 1],
+    ['K', 1, 1.0],
+    ['Na', 1, 0.6815],
     ['Cs', 1, 1.0506],
     ['Li', 1, 0.5261],
+    ['NH4', 1, 1.0003],
     ['H', 1, 4.7584],
     ['Ca', 2, 0.4047],
     ['Mg', 2, 0.3606],
-    ['Na', 1, 0.6815],
+    ['Ba', 2, 0.4328],
+    ['Co', 2, 0.3743],
     ['Cl', -1, 1.0385],
+    ['Br', -1, 1.0629],
+    ['F', -1, 0.7539],
+    ['I', -1, 1.0452],
+    ['NO3', -1, 0.972],
     ['HCO3', -1, 0.6056],
     ['SO4', -2, 0.5444],
+    ['H2PO4', -1, 0.4491],
+    ['HPO4', -2, 0.3879],
+    ['OH', -1, 2.6946],
+    ['acetate', -1, 0.5566],
+    ['ClO4', -1, 0.9159],
+    ['TEA', 1, 0.4437],
+    ['TMA', 1, 0.6111],
+    ['methanesulfonate', -1, 0.6641],
+    ['choline', 1, 0.51],
+    ['NMDG', 1, 0.33],
+    ['Tris', 1, 0.4],
     ['gluconate', -1, 0.33],
     ['aspartate', -1, 0.3],
+    ['glutamate', -1, 0.26],
+    ['HEPES', -1, 0.3],
+    ['isethionate', -1, 0.52],
+    ['MES', -1, 0.37],
+    ['MOPS', -1, 0.35],
     ['EGTA2-', -2, 0.24],
-    ['Tris', 1, 0.4],
+    ['EGTA3-', -3, 0.25],
+    ['SCN', -1, 0.9],
+    ['propionate', -1, 0.487],
+    ['butyrate', -1, 0.44],
+    ['benzoate', -1, 0.441],
   ])('%s', (ion, valence, relative) => expect(mobilityOf(ion, valence).relative).toBeCloseTo(relative, 4));
+  // Where both a conductivity and a value of Ng & Barry 1995 (from memory) are known they differ by up to 1.2 %: less
+  // than the half-width given to either.
+  test.each([
+    ['K', 1, 1.0],
+    ['Na', 1, 0.682],
+    ['Cs', 1, 1.05],
+    ['Li', 1, 0.525],
+    ['NH4', 1, 1.0],
+    ['H', 1, 4.757],
+    ['Ca', 2, 0.4048],
+    ['Mg', 2, 0.361],
+    ['Ba', 2, 0.433],
+    ['Co', 2, 0.37],
+    ['Cl', -1, 1.0388],
+    ['Br', -1, 1.063],
+    ['F', -1, 0.753],
+    ['I', -1, 1.045],
+    ['NO3', -1, 0.972],
+    ['HCO3', -1, 0.605],
+    ['SO4', -2, 0.544],
+    ['H2PO4', -1, 0.45],
+    ['HPO4', -2, 0.39],
+    ['acetate', -1, 0.556],
+    ['ClO4', -1, 0.916],
+    ['TEA', 1, 0.444],
+    ['TMA', 1, 0.611],
+  ])('%s as tabulated for junctions', (ion, valence, relative) => {
+    const { relative: ours, uncertainty } = mobilityOf(ion, valence);
+    expect(Math.abs(ours / relative - 1)).toBeLessThan(0.013);
+    expect(uncertainty).toBeGreaterThan(0.013);
+  });
   it('found values are closer than remembered ones, and those closer than assumptions', () => {
     expect(mobilityOf('K', 1).uncertainty).toBeLessThan(mobilityOf('Na', 1).uncertainty);
     expect(mobilityOf('Na', 1).uncertainty).toBeLessThan(mobilityOf('gluconate', -1).uncertainty);

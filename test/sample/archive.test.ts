@@ -118,7 +118,7 @@ describe('the solutions', () => {
       const tool = nernstPotential(1, mm(outside), mm(inside), celsius);
       expect(Math.abs(equilibriumMv(ion, bath, pipette, celsius) - tool)).toBeLessThan(0.5);
     }
-    const junction = junctionPotential(inside.ions, outside.ions, celsius).mv;
+    const junction = junctionPotential(inside, outside, celsius).mv;
     expect(Math.abs(junctionMv(bath, pipette, celsius) - junction)).toBeLessThan(0.7);
   });
 });
