@@ -1,14 +1,16 @@
 /**
- * Two-sided 95 % coverage factor of Student's t with a (possibly fractional) number of degrees of freedom: Hill's
- * asymptotic inverse, exact for 1 and 2 (Hill 1970, Algorithm 396, Commun ACM 13:619–620; from memory). Within
- * 1 % between 1 and 2, within 10⁻⁴ above. Without
- * degrees of freedom: the normal distribution's 1.96. Below one degree that of one is given.
+ * Two-sided 95 % coverage factor of Student's t with a (possibly fractional) number of degrees of freedom. From 2 on
+ * Hill's asymptotic inverse (Hill 1970, Algorithm 396, Commun ACM 13:619–620; from memory); from 1 to 2, where that is
+ * up to 4 % off, the cubic in 1/n of the factor's logarithm through its values at 1, 1.25, 1.5 and 2 (SciPy 1.10.1,
+ * `stats.t.ppf(0.975, n)`). Within 10⁻⁴ of SciPy throughout. Without degrees of freedom: the normal distribution's
+ * 1.96. Below one degree that of one is given.
  */
 export function coverage95(freedom?: number): number {
   if (freedom === undefined || freedom > 1e6) return 1.959963984540054;
   const n = Math.max(1, freedom);
   const tail = 0.05;
   if (n === 1) return 1 / Math.tan((tail * Math.PI) / 2);
+  if (n < 2) return Math.exp(0.6775063 + (1.15691758 + (0.91846666 - 0.21080011 / n) / n) / n);
   if (n === 2) return Math.sqrt(2 / (tail * (2 - tail)) - 2);
   const a = 1 / (n - 0.5);
   const b = 48 / (a * a);

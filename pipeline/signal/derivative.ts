@@ -44,18 +44,21 @@ export function slopeVPerS(mv: Float64Array, rateHz: number, halfWidth: number):
   // Both are summed afresh now and then, and after NaN, so that rounding does not build up.
   let moment = Number.NaN;
   let sum = Number.NaN;
+  // Σ k is 0, so a level taken off changes no slope; it keeps rounding small for samples far from zero.
+  let level = 0;
   for (let i = m; i < n - m; i++) {
     if (Number.isFinite(moment) && (i & 1023) !== 0) {
-      const leaving = mv[i - 1 - m]!;
-      const entering = mv[i + m]!;
+      const leaving = mv[i - 1 - m]! - level;
+      const entering = mv[i + m]! - level;
       moment += m * entering + (m + 1) * leaving - sum;
       sum += entering - leaving;
     } else {
       moment = 0;
       sum = 0;
+      level = mv[i]!;
       for (let k = -m; k <= m; k++) {
-        moment += k * mv[i + k]!;
-        sum += mv[i + k]!;
+        moment += k * (mv[i + k]! - level);
+        sum += mv[i + k]! - level;
       }
     }
     out[i] = moment * weight(m) * perMs;
@@ -70,6 +73,6 @@ export function slopeVPerS(mv: Float64Array, rateHz: number, halfWidth: number):
 
 function windowSlope(mv: Float64Array, at: number, m: number): number {
   let moment = 0;
-  for (let k = -m; k <= m; k++) moment += k * mv[at + k]!;
+  for (let k = -m; k <= m; k++) moment += k * (mv[at + k]! - mv[at]!);
   return (moment * 3) / (m * (m + 1) * (2 * m + 1));
 }

@@ -49,7 +49,7 @@ export function linearFit(x: ArrayLike<number>, y: ArrayLike<number>): LineFit |
   const slope = sxy / sxx;
   const intercept = meanY - slope * meanX;
   let rss = 0;
-  for (let i = 0; i < n; i++) rss += (points.y[i]! - intercept - slope * points.x[i]!) ** 2;
+  for (let i = 0; i < n; i++) rss += (points.y[i]! - meanY - slope * (points.x[i]! - meanX)) ** 2;
   const residualSd = n > 2 ? Math.sqrt(rss / (n - 2)) : null;
   return {
     slope,

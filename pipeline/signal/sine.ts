@@ -119,7 +119,7 @@ export function sineNear(samples: Float64Array, rateHz: number, aroundHz: number
   const coarseRate = rateHz / block;
   const residual = (hz: number): number => sineFit(coarse, coarseRate, hz)?.residual_sd ?? Number.POSITIVE_INFINITY;
   const spacing = rateHz / samples.length / 4;
-  const cells = Math.max(4, Math.min(400, Math.ceil((high - low) / spacing)));
+  const cells = Math.max(4, Math.ceil((high - low) / spacing));
   const at = (k: number): number => low + ((high - low) * k) / cells;
   let best = 0;
   let least = Number.POSITIVE_INFINITY;

@@ -9,14 +9,20 @@ import { spikeCriteria } from '../../pipeline/measure/spike-criteria.ts';
 import { measureSpikes } from '../../pipeline/measure/spikes.ts';
 import {
   butterworth,
+  coverage95,
   derivativeVPerS,
   exponentialFit,
+  finiteStretches,
   linearFit,
   localMaxima,
+  magnitude,
+  movingAverage,
   prominence,
   quantile,
   robustSpread,
+  runningMedian,
   sineFit,
+  sineNear,
   slopeVPerS,
   standardDeviation,
   theilSen,
@@ -157,6 +163,89 @@ describe.skipIf(!python)('kernels', () => {
   const hum = noisy.slice(0, 2000).map((v, i) => v + 0.2 * Math.sin((2 * Math.PI * 50 * i) / 20_000));
   const amplitude = scipy<number>('sine', { mv: hum, rate_hz: 20_000, frequency_hz: 50 });
   test('sine beside a straight line', () => expect(sineFit(hum, 20_000, 50)!.amplitude).toBeCloseTo(amplitude(), 8));
+});
+
+describe.skipIf(!python)('more kernels', () => {
+  // Corners at the edges of what can be had: next to 0, next to half the rate, and next to each other.
+  for (const [low_hz, high_hz] of [
+    [0.5, 9000],
+    [1000, 8000],
+    [4000, 4100],
+    [9000, 9990],
+    [null, 9990],
+    [0.5, null],
+  ] as const)
+    for (const order of [1, 3, 4, 8]) {
+      const frequency_hz = [
+        0.1, 0.5, 1, 10, 100, 999, 1000, 3900, 4000, 4050, 4100, 5000, 8000, 9000, 9500, 9990, 9999,
+      ];
+      const answer = scipy<number[]>('gain', { rate_hz: 20_000, order, low_hz, high_hz, frequency_hz });
+      test(`the gain of a Butterworth filter of order ${order} from ${low_hz ?? 0} to ${high_hz ?? '∞'} Hz`, () => {
+        const sections = butterworth(order, { low_hz, high_hz }, 20_000);
+        const ours = frequency_hz.map((hz) =>
+          sections.reduce((product, section) => product * magnitude(section, (2 * Math.PI * hz) / 20_000), 1),
+        );
+        // At a corner of half a hertz the coefficients of either program lose digits to 1 − z.
+        expectAlike(ours, answer(), low_hz === 0.5 ? 2e-3 : 1e-6);
+      });
+    }
+
+  const freedom = Array.from({ length: 120 }, (_, k) => 1 + k * 0.25 + (k > 60 ? (k - 60) ** 3 : 0));
+  const factors = scipy<number[]>('coverage', { freedom });
+  test('Student’s t at 97.5 %, whole and fractional degrees of freedom', () => {
+    factors().forEach((expected, k) => {
+      expect(Math.abs(coverage95(freedom[k]!) / expected - 1)).toBeLessThan(1e-4);
+    });
+  });
+
+  const g = normalNoise(41);
+  const hum = Float64Array.from(
+    { length: 20_000 },
+    (_, i) => -70 + 0.3 * (i / 20_000) + 0.15 * Math.sin((2 * Math.PI * 50.37 * i) / 20_000 + 2) + 0.2 * g(),
+  );
+  const nearest = scipy<{ frequency_hz: number; amplitude: number }>('sine_near', {
+    mv: hum,
+    rate_hz: 20_000,
+    frequency_hz: 50.3,
+  });
+  test('the frequency and amplitude of hum are those of a non-linear least-squares fit', () => {
+    const ours = sineNear(hum, 20_000, 50, 2)!;
+    expect(ours.frequency_hz).toBeCloseTo(nearest().frequency_hz, 2);
+    expect(ours.amplitude / nearest().amplitude).toBeCloseTo(1, 3);
+  });
+
+  const x = Array.from({ length: 60 }, (_, i) => i * 0.7);
+  const y = x.map((v) => 1e3 - 0.3 * v + 5 * g() ** 3);
+  const interval = scipy<{ low: number; high: number }>('theil_sen_interval', { x, y });
+  test('the standard error of the Theil–Sen slope is Sen’s interval over 2·1.96', () => {
+    const width = interval().high - interval().low;
+    expect(theilSen(x, y)!.se_slope! / (width / (2 * 1.959964))).toBeCloseTo(1, 1);
+  });
+  const far = x.map((_, i) => 1e6 + y[i]! * 1e-3);
+  const farLine = scipy<Record<string, number>>('line', { x, y: far });
+  test('a least-squares line a million away from zero', () => {
+    const ours = linearFit(x, far)!;
+    for (const key of ['slope', 'se_slope', 'se_intercept', 'r_squared'] as const)
+      expect(ours[key]! / farLine()[key]!).toBeCloseTo(1, 6);
+  });
+
+  for (const half_width of [1, 6]) {
+    const part = noisy.slice(0, 4000);
+    const medians = scipy<number[]>('medians', { mv: part, half_width });
+    const means = scipy<number[]>('means', { mv: part, half_width });
+    test(`running mean and median over ${2 * half_width + 1} samples, ends aside`, () => {
+      const inner = (values: ArrayLike<number>): number[] => Array.from(values).slice(half_width, -half_width);
+      expectAlike(inner(runningMedian(part, half_width)), inner(medians()), 1e-12);
+      expectAlike(inner(movingAverage(part, half_width)), inner(means()), 1e-9);
+    });
+  }
+  const gap = [0, 5, 6, 7, 200, 201, 999];
+  const stretches = scipy<[number, number][]>('stretches', { mv: noisy.slice(0, 1000), gap });
+  test('readable stretches between gaps', () => {
+    const samples = noisy.slice(0, 1000);
+    for (const i of gap) samples[i] = Number.NaN;
+    expect(finiteStretches(samples)).toEqual(stretches());
+  });
 });
 
 describe.skipIf(!python)('spikes', () => {

@@ -45,6 +45,50 @@ def butter(mv, rate_hz, order, low_hz, high_hz):
     return signal.sosfiltfilt(sos, mv).tolist()
 
 
+def gain(rate_hz, order, low_hz, high_hz, frequency_hz):
+    corners = [corner for corner in (low_hz, high_hz) if corner is not None]
+    kind = "bandpass" if len(corners) == 2 else "lowpass" if low_hz is None else "highpass"
+    sos = signal.butter(order, corners if len(corners) == 2 else corners[0], kind, fs=rate_hz, output="sos")
+    # signal.sosfreqz in SciPy before 1.15, signal.freqz_sos from then on.
+    _, response = signal.sosfreqz(sos, worN=frequency_hz, fs=rate_hz)
+    return np.abs(response).tolist()
+
+
+def coverage(freedom):
+    return stats.t.ppf(0.975, np.asarray(freedom)).tolist()
+
+
+def sine_near(mv, rate_hz, frequency_hz):
+    t = np.arange(len(mv)) / rate_hz
+    mv = np.asarray(mv)
+
+    def residual(p):
+        return p[0] * np.sin(2 * np.pi * p[2] * t) + p[1] * np.cos(2 * np.pi * p[2] * t) + p[3] + p[4] * t - mv
+
+    best = optimize.least_squares(residual, [0.1, 0.1, frequency_hz, mv.mean(), 0.0], x_scale=[1, 1, 0.1, 1, 1], xtol=1e-14, ftol=1e-14)
+    return {"frequency_hz": best.x[2], "amplitude": float(np.hypot(best.x[0], best.x[1]))}
+
+
+def theil_sen_interval(x, y):
+    slope, _, low, high = stats.theilslopes(y, x, 0.95)
+    return {"low": low, "high": high}
+
+
+def medians(mv, half_width):
+    return signal.medfilt(mv, 2 * half_width + 1).tolist()
+
+
+def means(mv, half_width):
+    return np.convolve(mv, np.ones(2 * half_width + 1) / (2 * half_width + 1), mode="same").tolist()
+
+
+def stretches(mv, gap):
+    mv = np.array(mv)
+    mv[gap] = np.nan
+    runs = np.ma.clump_unmasked(np.ma.masked_invalid(mv))
+    return [[int(run.start), int(run.stop)] for run in runs]
+
+
 def exponential(x, y):
     def model(t, offset, amplitude, tau):
         return offset + amplitude * np.exp(-t / tau)
@@ -87,10 +131,7 @@ def sine(mv, rate_hz, frequency_hz):
 
 
 if __name__ == "__main__":
-    tasks = {
-        f.__name__: f
-        for f in (peaks, maxima, gradient, savgol, butter, exponential, line, theil_sen, spread, sine)
-    }
+    tasks = {name: f for name, f in globals().items() if getattr(f, "__module__", None) == "__main__"}
     answers = []
     for request in json.load(sys.stdin):
         task = tasks[request.pop("task")]
