@@ -100,6 +100,13 @@ export const factKeys: readonly FactKey[] = [
   clock('break_in', 'Break-in', 'time', 'Clock time at which the membrane under the pipette was opened.'),
   number('bias_pa', 'Bias current', 'pA', [-10_000_000, 10_000_000], 'Constant current injected besides the stimulus.'),
   number('capacitance_pf', 'Capacitance', 'pF', [0.05, 10_000_000], 'Membrane capacitance as noted on the bench.'),
+  number(
+    'volume_pl',
+    'Cell volume',
+    'pL',
+    [0.001, 10_000_000],
+    'Volume that firing loads with sodium: soma and what exchanges freely with it, from its outline.',
+  ),
   number('access_mohm', 'Access resistance', 'MΩ', [0, 2000], 'Access resistance as noted on the bench.'),
   number(
     'end_offset_mv',

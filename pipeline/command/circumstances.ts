@@ -202,5 +202,19 @@ export function cellContext(circumstances: Circumstances, facts: FactValues, set
     break_in_to_start_s: start !== null && breakIn !== null && start >= breakIn ? start - breakIn : null,
     missing_for_e_na: circumstances.missing_e_na,
     missing_for_e_k: circumstances.missing_e_k,
+    gradients: {
+      volume_pl: numberFact(facts, 'volume_pl'),
+      celsius: circumstances.temperature_c,
+      sodium: circumstances.e_na,
+      potassium: circumstances.e_k,
+      pipette:
+        circumstances.configuration === 'whole-cell' && circumstances.solution
+          ? circumstances.solution.ions.map(({ ion, valence, pipette_mm }) => ({
+              ion,
+              valence,
+              millimolar: pipette_mm,
+            }))
+          : null,
+    },
   };
 }

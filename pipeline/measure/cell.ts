@@ -1,3 +1,4 @@
+import { gradientReadings } from './cell-gradients.ts';
 import { accessReadings, passiveReadings, vOnI } from './cell-passive.ts';
 import { firingReadings, rateOnI, referenceSpikeOf, spikeReadings } from './cell-spikes.ts';
 import { driftReading, qualityReadings, restingReadings, rundownReadings } from './cell-trends.ts';
@@ -49,7 +50,7 @@ function measureCondition(condition: string, sweeps: NumberedSweep[], context: C
   return {
     condition,
     sweeps: sweeps.map((sweep) => sweep.sweep),
-    readings: complete(readings, clamped.length > 0),
+    readings: complete({ ...readings, ...gradientReadings(sweeps, readings, context) }, clamped.length > 0),
     vi,
     fi,
     reference_spike: reference && { sweep: reference.sweep, spike: reference.spike.spike },

@@ -40,9 +40,14 @@ const hz = { unit: 'Hz', ucum: 'Hz' } as const;
 const rise = { unit: 'V/s', ucum: 'V/s' } as const;
 const one = { unit: '', ucum: '1' } as const;
 
+const mmolar = { unit: 'mM', ucum: 'mmol/L' } as const;
+
 const practice = 'common practice, no source';
 const bean = 'Bean 2007, Nat Rev Neurosci 8:451–465 (criterion on dV/dt; from memory)';
 const circuit = 'linear circuit theory';
+const excess =
+  'Carter & Bean 2009, Neuron 64:898–909 (κ 1.25 to 2); Hodgkin 1975, Phil Trans R Soc B 270:297 (κ 4; from memory)';
+const overKappa = 'the same with κ = 1 (the least possible) and κ = 4 (squid axon), the farther of the two';
 const apdUncertainty =
   'Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
 
@@ -877,6 +882,87 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Change of the first spike’s height per 100 spikes fired, at matched stimulus; negative when it falls.',
     formula: 'least-squares slope of H on spikes fired before, pooled within stimulus, ÷ mean H · 100 · 100',
     source: 'ours',
+  },
+  {
+    id: 'sodium_gain_mm_per_100_spikes',
+    levels: ['cell'],
+    label: 'Sodium gained by firing',
+    symbol: 'ΔNa_100',
+    ...mmolar,
+    decimals: 2,
+    definition:
+      'How much sodium 100 spikes bring into the stated volume, and how much potassium they take, without pump or pipette.',
+    formula:
+      '100·κ·C·H/(F·V): κ = 2, sodium that enters over the least that could; C the stated or measured capacitance; H the first spike’s height; V the stated volume (volume_pl); pF·mV/(C/mol)/pL is mM',
+    source: excess,
+    uncertainty: `${overKappa}; the half-widths of C and H in quadrature`,
+  },
+  {
+    id: 'e_na_change_mv_per_100_spikes',
+    levels: ['cell'],
+    label: 'E_Na lost by firing',
+    symbol: 'ΔE_Na,100',
+    ...mv,
+    decimals: 2,
+    definition: 'Change of the sodium equilibrium potential by 100 spikes, without pump or pipette.',
+    formula: '(RT/F)·ln(Na_in/(Na_in + ΔNa_100))',
+    source: `Nernst equation; ${excess}`,
+    uncertainty: overKappa,
+  },
+  {
+    id: 'e_k_change_mv_per_100_spikes',
+    levels: ['cell'],
+    label: 'E_K lost by firing',
+    symbol: 'ΔE_K,100',
+    ...mv,
+    decimals: 2,
+    definition: 'Change of the potassium equilibrium potential by 100 spikes, without pump or pipette.',
+    formula: '(RT/F)·ln(K_in/(K_in − ΔNa_100))',
+    source: `Nernst equation; ${excess}`,
+    uncertainty: overKappa,
+  },
+  {
+    id: 'expected_rundown_percent_per_100_spikes',
+    levels: ['cell'],
+    label: 'Expected rundown',
+    symbol: 'r_exp',
+    unit: '%',
+    ucum: '%',
+    decimals: 2,
+    definition:
+      'Change of the spike’s height that the loss of gradients by 100 spikes explains, without pump or pipette; stands beside the rundown of height.',
+    formula:
+      '100·ΔV_peak/H; ΔV_peak: change of (RT/F)·ln((K_out + α·Na_out)/(K_in + α·Na_in)) when Na_in rises and K_in falls by ΔNa_100, α such that the potential is the observed peak before; threshold held',
+    source: `Hodgkin & Katz 1949, J Physiol 108:37–77; ${excess}`,
+    uncertainty: overKappa,
+  },
+  {
+    id: 'exchange_time_constant_s',
+    levels: ['cell'],
+    label: 'Exchange time constant',
+    symbol: 'τ_ex',
+    ...s,
+    decimals: 0,
+    definition: 'Time constant with which sodium exchanges between the pipette and the stated volume.',
+    formula: 'R_a·V·(F²/RT)·Σ z²·(u/u_Na)·c over the ions of the pipette solution',
+    source:
+      'Oliva, Cohen & Mathias 1988, Biophys J 54:791–799, with the Nernst–Einstein relation; compare Pusch & Neher 1988, Pflügers Arch 411:204–211',
+    uncertainty: '50 % and the half-width of the access resistance, in quadrature',
+  },
+  {
+    id: 'dialysed_rundown_percent_per_100_spikes',
+    levels: ['cell'],
+    label: 'Expected rundown with exchange',
+    symbol: 'r_dia',
+    unit: '%',
+    ucum: '%',
+    decimals: 2,
+    definition:
+      'The expected rundown where the pipette takes back what entered, at the recording’s own mean rate; near 0 where exchange is quick.',
+    formula:
+      'as the expected rundown, with ΔNa_100·(1 − e^(−T/τ_ex))/(T/τ_ex), T the time 100 spikes took on average over the recording',
+    source: `${excess}; exchange as above`,
+    uncertainty: `${overKappa}; the same with τ_ex at the upper end of its own half-width, in quadrature`,
   },
   {
     id: 'height_stimulus_slope_mv_per_na',

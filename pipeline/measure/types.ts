@@ -220,6 +220,16 @@ export interface CellContext extends MeasureContext {
   /** Quantities that depend on a missing fact name it here: fact keys by need. */
   missing_for_e_na: string[];
   missing_for_e_k: string[];
+  /** What the loss of gradients by firing is computed from. Ions are those of a dialysed cell, null elsewhere. */
+  gradients?: {
+    /** Volume of the cell as stated, pL. */
+    volume_pl: number | null;
+    celsius: number | null;
+    sodium: { inside_mm: number; outside_mm: number } | null;
+    potassium: { inside_mm: number; outside_mm: number } | null;
+    /** Ions of the pipette solution. */
+    pipette: { ion: string; valence: number; millimolar: number }[] | null;
+  };
 }
 
 export interface VIPoint {

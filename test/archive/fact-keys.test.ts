@@ -18,7 +18,7 @@ const checked = (key: string, value: unknown): string | number => {
 describe('the closed list', () => {
   test('is exactly the list of the design, in its order', () =>
     expect(factKeys.map((entry) => entry.key).join(', ')).toBe(
-      'cell, subject, species, age, sex, genotype, region, slice, preparation, class, group, protocol, rig, person, date, time, configuration, bath, pipette, temperature_c, junction, ljp_mv, spike_ion, filter_khz, rate_hz, mains_hz, bridge_mohm, pipette_mohm, seal_gohm, break_in, bias_pa, capacitance_pf, access_mohm, end_offset_mv, clamp, batch_bath, batch_pipette, audience, figure, doi, note',
+      'cell, subject, species, age, sex, genotype, region, slice, preparation, class, group, protocol, rig, person, date, time, configuration, bath, pipette, temperature_c, junction, ljp_mv, spike_ion, filter_khz, rate_hz, mains_hz, bridge_mohm, pipette_mohm, seal_gohm, break_in, bias_pa, capacitance_pf, volume_pl, access_mohm, end_offset_mv, clamp, batch_bath, batch_pipette, audience, figure, doi, note',
     ));
   test('every number has a range and a unit, every choice its words, every key a definition of one sentence', () => {
     for (const entry of factKeys) {
