@@ -185,17 +185,21 @@ function deriveSpikes(sweeps: SweepRow[], contextOf: (condition: string) => Cell
   const capacitance = new Map(
     measured.conditions.map(({ condition, readings }) => [
       condition,
-      readings['membrane_capacitance_pf']?.value ?? readings['cell_capacitance_pf']?.value ?? null,
+      [readings['membrane_capacitance_pf'], readings['cell_capacitance_pf']].find(
+        (one) => (one?.value ?? null) !== null,
+      ),
     ]),
   );
   return sweeps.map((sweep) => {
     const context = contextOf(sweep.condition);
+    const own = context.stated_capacitance_pf === null ? capacitance.get(sweep.condition) : undefined;
     return {
       ...sweep,
       spikes: withDerived(sweep.spikes, {
         e_na_mv: context.e_na_mv,
         e_k_mv: context.e_k_mv,
-        capacitance_pf: context.stated_capacitance_pf ?? capacitance.get(sweep.condition) ?? null,
+        capacitance_pf: context.stated_capacitance_pf ?? own?.value ?? null,
+        capacitance_u95_pf: own?.u95 ?? null,
       }),
     };
   });

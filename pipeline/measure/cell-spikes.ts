@@ -11,6 +11,7 @@ import {
   stimulusReason,
 } from './cell-numbers.ts';
 import { spikesDuring } from './firing.ts';
+import { ionicIds } from './ionic.ts';
 import { quantitiesOf } from './quantities.ts';
 import { absent, measured } from './reading.ts';
 import { slowOnly } from './slow-spikes.ts';
@@ -198,6 +199,7 @@ export function spikeReadings(
     potassium_margin_mv: context.missing_for_e_k,
     minimum_charge_pc: ['capacitance_pf'],
     minimum_ions_millions: ['capacitance_pf'],
+    ...Object.fromEntries(ionicIds.map((id) => [id, ['capacitance_pf']])),
   };
   const readings = Object.fromEntries(
     spikeIds.map((id) => {

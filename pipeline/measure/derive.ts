@@ -1,4 +1,4 @@
-import { withCapacitance } from './phases.ts';
+import { withIonic } from './ionic.ts';
 import type { AbsenceCode, Spike } from './types.ts';
 
 /** Elementary charge, C. Exact in the 2019 SI. */
@@ -12,13 +12,16 @@ export interface KnownForSpikes {
   e_k_mv: number | null;
   /** Measured or stated capacitance, pF. */
   capacitance_pf: number | null;
+  /** Its 95 % half-width where it was measured, pF. */
+  capacitance_u95_pf?: number | null;
 }
 
 /**
  * Adds to each spike what needs a fact from outside the trace: how far the peak stays below E_Na
  * (`sodium_headroom_mv`), how far the minimum after the spike stays above E_K (`potassium_margin_mv`), and the least
  * charge and number of ions that the membrane capacitance needs for the spike's height (`minimum_charge_pc`,
- * `minimum_ions_millions`), and reads the sign of each phase's net ionic current with that capacitance. The potentials must already stand in the reading they are held against (see
+ * `minimum_ions_millions`), and reads the sign of each phase's net ionic current, its peaks and its charges with that
+ * capacitance (`ionic.ts`). The potentials must already stand in the reading they are held against (see
  * `junction.ts`). Where a fact is missing the reason is `fact-missing`; where the spike lacks the number it starts
  * from, that number's own reason is handed on.
  *
@@ -51,7 +54,6 @@ export function withDerived(spikes: readonly Spike[], known: KnownForSpikes): Sp
       known.capacitance_pf,
       (pf, heightMv) => (pf * heightMv * 1e-15) / elementaryChargeC / 1e6,
     );
-    const phases = spike.phases.map((phase) => withCapacitance(phase, known.capacitance_pf));
-    return { ...spike, values, why, phases };
+    return withIonic({ ...spike, values, why }, known);
   });
 }

@@ -62,28 +62,36 @@ export function injectedCurrent(current: Signal | null, stimulus: Stimulus): Inj
   };
 }
 
+/** 99 % of a normal distribution lies within so many standard deviations. */
+const clearOfNoise = 2.58;
+
 /**
  * Sign of the mean net ionic current I − C·dV/dt between two times: outward +1, inward −1, 0 where noise or missing
  * knowledge leaves it open. The mean of dV/dt over a phase is its whole change of potential over its length, so only
- * the noise of the two end points counts. Without a capacitance the sign is still certain where the current is zero
- * or where both terms have the same sign.
+ * the noise of the two end points counts, beside that of the mean current and of the capacitance: the current must
+ * differ from 0 by 2.58 of their standard deviations, so that noise alone gives a sign in at most one of 100 phases that
+ * have none. Without a capacitance the sign is still certain where the current is zero or where both terms have the
+ * same sign.
+ * @param capacitance_u95_pf 95 % half-width of the capacitance, pF
  */
 export function netIonicSign(
   change: { mv: number; ms: number; noise_mv: number },
   injected: { pa: number; se: number } | null,
   capacitance_pf: number | null,
+  capacitance_u95_pf = 0,
 ): -1 | 0 | 1 {
   if (!injected || !(change.ms > 0)) return 0;
-  // Two standard deviations of the difference of two readings.
-  const doubt = 2 * Math.SQRT2 * change.noise_mv;
+  // Of the difference of two readings.
+  const doubt = clearOfNoise * Math.SQRT2 * change.noise_mv;
   if (capacitance_pf !== null) {
     // pF · mV/ms = pA.
     const net = injected.pa - (capacitance_pf * change.mv) / change.ms;
-    const limit = 2 * injected.se + (capacitance_pf * doubt) / change.ms;
+    const fromSize = ((clearOfNoise / 1.96) * capacitance_u95_pf * change.mv) / change.ms;
+    const limit = Math.hypot(clearOfNoise * injected.se, (capacitance_pf * doubt) / change.ms, fromSize);
     return Math.abs(net) > limit ? (Math.sign(net) as -1 | 1) : 0;
   }
   const fromMembrane = Math.abs(change.mv) > doubt ? -Math.sign(change.mv) : 0;
-  const fromCurrent = Math.abs(injected.pa) > 2 * injected.se ? Math.sign(injected.pa) : 0;
+  const fromCurrent = Math.abs(injected.pa) > clearOfNoise * injected.se ? Math.sign(injected.pa) : 0;
   if (fromCurrent === 0 || fromCurrent === fromMembrane) return (fromMembrane || 0) as -1 | 0 | 1;
   return 0;
 }
@@ -128,9 +136,9 @@ export function phasesOf(
 }
 
 /** The phase with the sign of its net ionic current as this capacitance, pF, gives it; null where none is known. */
-export function withCapacitance(phase: Phase, capacitance_pf: number | null): Phase {
+export function withCapacitance(phase: Phase, capacitance_pf: number | null, capacitance_u95_pf = 0): Phase {
   const { basis } = phase;
   if (!basis) return phase;
   const change = { mv: basis.mv, ms: (phase.to_s - phase.from_s) * 1000, noise_mv: basis.noise_mv };
-  return { ...phase, net_ionic_sign: netIonicSign(change, basis, capacitance_pf) };
+  return { ...phase, net_ionic_sign: netIonicSign(change, basis, capacitance_pf, capacitance_u95_pf) };
 }

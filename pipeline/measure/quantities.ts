@@ -48,6 +48,10 @@ const circuit = 'linear circuit theory';
 const excess =
   'Carter & Bean 2009, Neuron 64:898–909 (κ 1.25 to 2); Hodgkin 1975, Phil Trans R Soc B 270:297 (κ 4; from memory)';
 const overKappa = 'the same with κ = 1 (the least possible) and κ = 4 (squid axon), the farther of the two';
+const ionic = 'Hodgkin & Huxley 1952, J Physiol 117:500–544, eq. 1: I = C·dV/dt + I_ionic';
+const density = { unit: 'pA/pF', ucum: 'pA/pF' } as const;
+const ionicUncertainty =
+  'Half-widths of dV/dt times C, of C times dV/dt (not where C is stated) and of the mean injected current (1.96 standard errors), in squares; per pF, divided by C, with C’s own times I/C² in place of the second.';
 const apdUncertainty =
   'Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
 
@@ -389,6 +393,87 @@ export const quantities: readonly Quantity[] = list([
     definition: 'How many monovalent ions carry the least charge, in millions.',
     formula: 'C·H / e',
     source: 'Carter & Bean 2009, Neuron 64:898–909; elementary charge exact in the 2019 SI',
+  },
+  {
+    id: 'peak_inward_current_pa',
+    levels: ['spike', 'cell'],
+    label: 'Peak inward current',
+    symbol: 'I_in',
+    ...pa,
+    decimals: 0,
+    definition:
+      'Net ionic current at the steepest rise, where it is largest inward (negative; outward is positive). Assumes an isopotential cell and a current that is steady over the phase.',
+    formula:
+      'I − C·(dV/dt max): I the mean injected current over the depolarization, C the stated or else the measured capacitance',
+    source: ionic,
+    uncertainty: ionicUncertainty,
+  },
+  {
+    id: 'peak_inward_current_pa_per_pf',
+    levels: ['spike', 'cell'],
+    label: 'Peak inward current density',
+    symbol: 'I_in/C',
+    ...density,
+    decimals: 0,
+    definition: 'The same per capacitance; known without one where nothing is injected.',
+    formula: 'I/C − (dV/dt max)',
+    source: ionic,
+    uncertainty: ionicUncertainty,
+  },
+  {
+    id: 'peak_outward_current_pa',
+    levels: ['spike', 'cell'],
+    label: 'Peak outward current',
+    symbol: 'I_out',
+    ...pa,
+    decimals: 0,
+    definition:
+      'Net ionic current at the steepest fall, where it is largest outward (positive; outward is positive). Assumes an isopotential cell and a current that is steady over the phase.',
+    formula:
+      'I − C·(dV/dt min): I the mean injected current over the repolarization, C the stated or else the measured capacitance',
+    source: ionic,
+    uncertainty: ionicUncertainty,
+  },
+  {
+    id: 'peak_outward_current_pa_per_pf',
+    levels: ['spike', 'cell'],
+    label: 'Peak outward current density',
+    symbol: 'I_out/C',
+    ...density,
+    decimals: 0,
+    definition: 'The same per capacitance; known without one where nothing is injected.',
+    formula: 'I/C − (dV/dt min)',
+    source: ionic,
+    uncertainty: ionicUncertainty,
+  },
+  {
+    id: 'depolarization_charge_pc',
+    levels: ['spike', 'cell'],
+    label: 'Depolarization charge',
+    symbol: 'Q_dep',
+    unit: 'pC',
+    ucum: 'pC',
+    decimals: 2,
+    definition: 'Net ionic charge that crosses the membrane from threshold to peak, outward positive.',
+    formula: 'I·t_dep − C·H: I the mean injected current over the phase',
+    source: ionic,
+    uncertainty:
+      'Half-widths of the height times C, of C times the height, of the mean current (1.96 standard errors) times the duration and of the duration times the current, in squares.',
+  },
+  {
+    id: 'repolarization_charge_pc',
+    levels: ['spike', 'cell'],
+    label: 'Repolarization charge',
+    symbol: 'Q_rep',
+    unit: 'pC',
+    ucum: 'pC',
+    decimals: 2,
+    definition:
+      'Net ionic charge that crosses the membrane from the peak back to the threshold potential, outward positive.',
+    formula: 'I·t_rep + C·H: I the mean injected current over the phase',
+    source: ionic,
+    uncertainty:
+      'Half-widths of the height times C, of C times the height, of the mean current (1.96 standard errors) times the duration and of the duration times the current, in squares.',
   },
   {
     id: 'rise_samples',
