@@ -22,6 +22,8 @@ export interface Cleaned {
   /** The voltage less what the pulses added, their edges bridged by straight lines. */
   voltage: Signal;
   pulses: Pulse[];
+  /** Samples before and after an edge that its artefact spreads over; null where nothing was taken out. */
+  guard: { before: number; after: number } | null;
   remarks: string[];
 }
 
@@ -53,17 +55,21 @@ export function withoutArtefacts(
           inferred: false,
           spread_s: Math.max(settle_s, current ? edgeSpread_s(current, pair.on_s) + 0.0001 : 0),
         }));
-  if (edges.length === 0) return { voltage, pulses: [], remarks };
+  if (edges.length === 0) return { voltage, pulses: [], guard: null, remarks };
   const samples = voltage.samples.slice();
+  let guard: Cleaned['guard'] = null;
   const seenAll = edges.map(({ on_s, off_s, inferred, spread_s }): Pulse => {
     const jump = jumpOf(voltage, on_s, off_s, spread_s, noise_mv);
-    const least = Math.max(4 * noise_mv, 0.5);
-    const resolved = jump !== null && Math.abs(jump.mv) > least;
-    if (resolved) lower(samples, voltage, on_s, off_s, spread_s, jump.mv);
+    const resolved = jump !== null && isResolved(jump.mv, jump.u95, noise_mv);
+    if (resolved) {
+      const own = guardOf(voltage, spread_s);
+      lower(samples, voltage, on_s, off_s, own, jump.mv);
+      guard = { before: Math.max(own.before, guard?.before ?? 0), after: Math.max(own.after, guard?.after ?? 0) };
+    }
     return { on_s, off_s, jump_mv: jump === null ? null : jump.mv, u95_mv: jump?.u95 ?? null, inferred };
   });
   const pulses = seenAll.filter(
-    (pulse) => !pulse.inferred || Math.abs(pulse.jump_mv ?? 0) > Math.max(4 * noise_mv, 0.5),
+    (pulse) => !pulse.inferred || isResolved(pulse.jump_mv ?? 0, pulse.u95_mv ?? 0, noise_mv),
   );
   const seen = pulses.filter((pulse) => pulse.inferred);
   if (seen.length > 0) {
@@ -71,10 +77,13 @@ export function withoutArtefacts(
     remarks.push(
       `No stimulus was recorded; jumps of the potential show ${seen.length === 1 ? 'one brief pulse' : `${seen.length} brief pulses`} of ${Number(length.toPrecision(2))} ms. What they add is taken out of the numbers.`,
     );
-  } else if (pulses.some((pulse) => pulse.jump_mv !== null && Math.abs(pulse.jump_mv) > Math.max(4 * noise_mv, 0.5)))
-    remarks.push('The artefact of the brief stimulus pulse is taken out of the numbers.');
-  return { voltage: { ...voltage, samples }, pulses, remarks };
+  } else if (guard !== null) remarks.push('The artefact of the brief stimulus pulse is taken out of the numbers.');
+  return { voltage: { ...voltage, samples }, pulses, guard, remarks };
 }
+
+/** A jump that noise, half a millivolt or its own uncertainty could be is left alone. */
+const isResolved = (jump_mv: number, u95_mv: number, noise_mv: number): boolean =>
+  Math.abs(jump_mv) > Math.max(4 * noise_mv, 0.5, u95_mv);
 
 /** The pulses of a recorded or stated stimulus that are short enough to pace with. */
 function briefPulses(stimulus: Stimulus): { on_s: number; off_s: number }[] {
@@ -176,14 +185,24 @@ function jumpOf(
   return better.se < 0.25 * worse.se ? { mv: better.mv, u95: 1.96 * better.se } : null;
 }
 
+const guardOf = (voltage: Signal, spread_s: number): { before: number; after: number } => ({
+  before: Math.max(1, Math.ceil((spread_s - settle_s) * voltage.rate_hz - 1e-6)),
+  after: Math.max(2, Math.ceil(spread_s * voltage.rate_hz - 1e-6)),
+});
+
 /** Takes a pulse's jump out of the samples and bridges the samples that its edges spread over. */
-function lower(samples: Float64Array, voltage: Signal, on_s: number, off_s: number, spread_s: number, jump: number) {
+function lower(
+  samples: Float64Array,
+  voltage: Signal,
+  on_s: number,
+  off_s: number,
+  guard: { before: number; after: number },
+  jump: number,
+): void {
   const index = (time_s: number): number => Math.round((time_s - voltage.start_s) * voltage.rate_hz);
-  const spread = Math.max(2, Math.ceil(spread_s * voltage.rate_hz));
-  const lead = Math.max(1, Math.ceil((spread_s - settle_s) * voltage.rate_hz));
   for (let i = Math.max(0, index(on_s)); i < Math.min(samples.length, index(off_s)); i++) samples[i]! -= jump;
   for (const edge of [index(on_s), index(off_s)]) {
-    const [from, to] = [Math.max(0, edge - lead), Math.min(samples.length - 1, edge + spread)];
+    const [from, to] = [Math.max(0, edge - guard.before - 1), Math.min(samples.length - 1, edge + guard.after + 1)];
     for (let i = from + 1; i < to; i++)
       samples[i] = samples[from]! + ((samples[to]! - samples[from]!) * (i - from)) / (to - from);
   }

@@ -47,10 +47,16 @@ export const slowOnly: readonly string[] = [
 /** Top or bottom of a slow trace around a sample: the vertex of the widest parabola that noise explains. */
 export function slowExtreme(trace: SpikeTrace, near: number, widest_s: number): Known {
   const most = Math.max(1, Math.round(widest_s * trace.rateHz));
-  const fit = widestParabola(trace.mv, near, trace.noiseMv, most);
+  const fit = widestParabola(trace.masked, near, trace.noiseMv, most);
   const own = fit && fit.half > 1 ? (vertexOf(fit) ?? { position: fit.centre, value: fit.c0 }) : null;
+  if (!own && touchesEdge(trace, near, 1)) {
+    // A parabola through samples bridged under an edge would invent a top: the sample itself, and its neighbours' doubt.
+    const beside = Math.max(trace.masked[near - 1] ?? -1e9, trace.masked[near + 1] ?? -1e9);
+    const value = trace.masked[near]!;
+    return { at: near, value, se: Math.hypot(trace.noiseMv, Math.min(Math.abs(value - beside), 2)) };
+  }
   if (!fit || !own) {
-    const { position, value } = vertex(trace.mv, near);
+    const { position, value } = vertex(trace.masked, near);
     return { at: position, value, se: trace.noiseMv };
   }
   // How far the place can be told: where the parabola has left its vertex by its own error.
@@ -59,7 +65,7 @@ export function slowExtreme(trace: SpikeTrace, near: number, widest_s: number): 
 
 /** Error of a fitted level: the fit's own, the noise through it, and what half the window would have said instead. */
 function bendOf(trace: SpikeTrace, fit: Parabola, value: number): number {
-  const inner = widestParabola(trace.mv, fit.centre, Number.POSITIVE_INFINITY, Math.max(1, fit.half >> 1), 1);
+  const inner = widestParabola(trace.masked, fit.centre, Number.POSITIVE_INFINITY, Math.max(1, fit.half >> 1), 1);
   const through = trace.noiseMv * Math.sqrt(9 / (4 * (2 * fit.half + 1)));
   const other = inner ? Math.abs((vertexOf(inner)?.value ?? inner.c0) - value) : 0;
   return Math.hypot(Math.max(fit.seLevel, through), Math.min(0.5 * other, trace.noiseMv));
@@ -105,6 +111,10 @@ export function withSlowValues(
  */
 function upstrokeOf(spike: FoundSpike, trace: SpikeTrace): Maybe {
   const { values, noise, m } = spike.rateSlope;
+  if (spike.hidden) {
+    const { from, to } = spike.hidden;
+    return { at: (from + to) / 2, value: Number.NaN, se: (to - from) / Math.sqrt(12) };
+  }
   if (touchesEdge(trace, spike.steepest, m)) return 'under-stimulus';
   const top = vertex(values, spike.steepest);
   const near = Math.abs(top.position - spike.steepest) <= 1 ? top.position : spike.steepest;
@@ -117,18 +127,25 @@ function upstrokeOf(spike: FoundSpike, trace: SpikeTrace): Maybe {
 }
 
 /**
- * Wander that fast noise does not explain, mV: half of the differences between running means 10 ms apart, in the
- * quieter half of the trace between spikes.
+ * Wander that fast noise does not explain, mV: running means over 4 ms against the mean of those 10 ms before and after,
+ * from the lowest potential after a spike to the rise of the next.
  */
 function slowNoiseOf(trace: SpikeTrace, calm: Float64Array, found: readonly FoundSpike[]): number {
   const lag = Math.max(1, Math.round(0.01 * trace.rateHz));
   const bends: number[] = [];
-  let next = 0;
-  for (let i = lag; i + lag < calm.length; i += lag) {
-    while (next < found.length && found[next]!.peak + 40 * lag < i) next++;
-    if (next < found.length && i > found[next]!.base - lag) continue;
-    bends.push(Math.abs(calm[i]! - 0.5 * (calm[i - lag]! + calm[i + lag]!)));
-  }
+  const quiet = (from: number, to: number): void => {
+    for (let i = from + lag; i + lag < to; i += Math.ceil(lag / 2))
+      bends.push(Math.abs(calm[i]! - 0.5 * (calm[i - lag]! + calm[i + lag]!)));
+  };
+  const risesAt = (spike: FoundSpike): number => Math.floor(spike.threshold ?? spike.base);
+  found.forEach((spike, k) => {
+    const segment = trace.segments[spike.segment]!;
+    const next = found[k + 1];
+    const until = (next ? risesAt(next) : segment.to) - lag;
+    if (k === 0) quiet(segment.from, risesAt(spike) - lag);
+    const lowest = lowestIn(calm, spike.peak, until);
+    if (lowest !== null) quiet(lowest, until);
+  });
   if (bends.length < 8) return 0;
   bends.sort((a, b) => a - b);
   // Median of |x| is 0.6745 SD; the difference has 1.5 times the variance.
@@ -217,7 +234,20 @@ function withValues(
 }
 
 /** The top as `peakAt` reads it. */
-const peakOf = (spike: FoundSpike, { trace }: Around): Known => slowExtreme(trace, spike.peak, widestTop_s);
+function peakOf(spike: FoundSpike, { trace, pulses }: Around): Known {
+  const plain = slowExtreme(trace, spike.peak, widestTop_s);
+  // While a pulse lasts its jump has been taken off, and with it comes what is not known of it.
+  const during = pulses.find(({ on_s, off_s }) => on_s <= timeOf(trace, plain.at) && timeOf(trace, plain.at) <= off_s);
+  const top = during?.u95_mv ? { ...plain, se: Math.hypot(plain.se, during.u95_mv / coverage95()) } : plain;
+  const { before, after } = trace.guard;
+  const edge = trace.edges.find(({ index }) => top.at >= index - before - 1 && top.at <= index + after + 1);
+  if (!edge) return top;
+  // Under a stimulus edge the electrode's own settling may stand on the top: what is seen outside is as good a reading.
+  let outside = Number.NEGATIVE_INFINITY;
+  for (const i of [edge.index - before - 2, edge.index + after + 2])
+    if (i > spike.base && i < trace.mv.length) outside = Math.max(outside, trace.mv[i]!);
+  return { ...top, se: Math.hypot(top.se, Number.isFinite(outside) ? top.value - outside : 0) };
+}
 
 /** Peak of a slow spike, for `measureSpikes`. */
 export const slowPeak = (trace: SpikeTrace, peak: number): { position: number; value: number } => {
@@ -293,11 +323,16 @@ function fallsTo(
   if (unreadable(trace, rough, rough)) return 'unreadable';
   const most = Math.max(1, Math.round(widestTop_s * trace.rateHz));
   const centre = Math.round(rough);
-  const fit = widestParabola(trace.mv, centre, trace.noiseMv, Math.min(most, Math.max(1, centre - Math.ceil(peak.at))));
+  const fit = widestParabola(
+    trace.masked,
+    centre,
+    trace.noiseMv,
+    Math.min(most, Math.max(1, centre - Math.ceil(peak.at))),
+  );
   const at = fit && fit.half > 1 ? (levelOf(fit, level) ?? rough) : rough;
   // A slope over too few samples is noise: it is taken over 2 ms on each side at least.
   const least = Math.max(1, Math.min(Math.round(0.002 * trace.rateHz), centre - Math.ceil(peak.at)));
-  const broad = fit && fit.half >= least ? fit : widestParabola(trace.mv, centre, 0, least, least);
+  const broad = fit && fit.half >= least ? fit : widestParabola(trace.masked, centre, 0, least, least);
   const slope = broad ? Math.abs(broad.c1) : Number.NaN;
   const through = fit ? Math.max(fit.seLevel, trace.noiseMv * Math.sqrt(9 / (4 * (2 * fit.half + 1)))) : trace.noiseMv;
   const levelSe = Math.hypot((1 - share) * peak.se, share * diastolic.se, slowNoise * Math.SQRT2, through);
@@ -305,15 +340,26 @@ function fallsTo(
 }
 
 /** Steepest rise with the noise of a slope and what the sampling interval may have cut off it. */
-function maxRise(spike: FoundSpike, rise: Maybe, { trace }: Around): AbsenceCode | { value: number; se: number } {
+function maxRise(
+  spike: FoundSpike,
+  rise: Maybe,
+  { trace, context }: Around,
+): AbsenceCode | { value: number; se: number } {
   if (!known(rise)) return rise;
+  if (spike.hidden) return 'under-stimulus';
   const { m, noise } = spike.rateSlope;
-  const half = widestParabola(trace.mv, spike.steepest, Number.POSITIVE_INFINITY, 2 * m, 2 * m);
-  const wider = half ? (half.c1 * trace.rateHz) / 1000 : rise.value;
-  // The slope over ±m loses as Σx⁴/Σx² of its window; over ±2m as that of twice the window.
-  const weight = (w: number): number => (3 * w * w + 3 * w - 1) / 5;
-  const lost = Math.max(0, rise.value - wider) / (weight(2 * m) / weight(m) - 1);
-  return { value: rise.value, se: Math.hypot(noise, lost) };
+  const broad = widestParabola(trace.masked, spike.steepest, Number.POSITIVE_INFINITY, 2 * m, 2 * m);
+  const wider = broad ? (broad.c1 * trace.rateHz) / 1000 : rise.value;
+  // A bell-shaped dV/dt of spread σ whose peak is read through something of spread s is lowered by √(1 + s²/σ²). The
+  // window over ±m has s² = Δt²·(3m² + 3m − 1)/15; a filter s = 0.1325/f (Gaussian; a Bessel one is near it).
+  const spread = (half: number): number => ((1000 / trace.rateHz) ** 2 * (3 * half * half + 3 * half - 1)) / 15;
+  const filter = context.filter_khz === null ? 0 : (0.1325 / context.filter_khz) ** 2;
+  const ratio = (rise.value / wider) ** 2;
+  const seen = ratio > 1 ? (spread(2 * m) - spread(m)) / (ratio - 1) : Number.POSITIVE_INFINITY;
+  const own = seen - spread(m) - filter;
+  if (!(own > 0.1 * seen)) return 'unresolved';
+  const lost = rise.value * (Math.sqrt(seen / own) - 1);
+  return { value: rise.value, se: Math.hypot(noise, Number.isFinite(lost) ? lost : 0) };
 }
 
 /** Mean potential over the middle fifth of the time from the steepest rise to 90 % repolarization. */

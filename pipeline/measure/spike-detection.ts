@@ -14,6 +14,8 @@ export interface FoundSpike {
   why_no_threshold: AbsenceCode | null;
   /** Index of the segment of the trace that it lies in. */
   segment: number;
+  /** The steepest part of the rise lies under the end of a stimulus: its rate is not known, its time to within that. */
+  hidden: { from: number; to: number } | null;
   /** Slope used for this spike's threshold and for its steepest rise and fall. */
   slope: Slope;
   rateSlope: Slope;
@@ -183,9 +185,11 @@ function fastSpike(
   if (widthMs(trace, candidate) < narrowestFast_ms) return 'narrow';
   const run = mainRise(trace, slope, candidate);
   const steepest = steepestIn(trace, slope, run.from, run.to);
-  if (steepest < 0) return 'passive';
-  if (slope.values[steepest]! < criterion) return 'slow';
+  const hidden = hiddenRise(trace, candidate, context.prominence_mv, inView(trace, slopes, run));
+  if (steepest < 0 && !hidden) return 'passive';
+  if (!hidden && slope.values[steepest]! < criterion) return 'slow';
   if (!peakSeen(trace, candidate)) return 'cut';
+  if (hidden) return { spike: underEdge(trace, candidate, hidden, slope, slope, criterion, floor), raised: 0 };
   const found = thresholdBefore(trace, slope, steepest, criterion, floor, inferEdges);
   if (found === 'passive') return 'passive';
   const rateSlope = slopes.quietest(0.03 * slope.values[steepest]!, widest);
@@ -196,6 +200,7 @@ function fastSpike(
       peak: candidate.peak,
       ...found,
       segment: candidate.segment,
+      hidden: null,
       slope,
       rateSlope,
     },
@@ -215,6 +220,15 @@ function slowSpike(
   const first = slopes.of(Math.max(1, Math.round(trace.rateHz * 0.0005)));
   const run = mainRise(trace, first, candidate);
   const roughly = steepestIn(trace, first, run.from, run.to);
+  const hidden = hiddenRise(trace, candidate, context.prominence_mv, inView(trace, slopes, run));
+  if (hidden) {
+    if (!peakSeen(trace, candidate)) return 'cut';
+    const slope = slopes.of(1);
+    return {
+      spike: underEdge(trace, candidate, hidden, slope, slope, relativeCriterion * hidden.rate, floor),
+      raised: 0,
+    };
+  }
   if (roughly < 0) return 'passive';
   const rough = first.values[roughly]!;
   if (!(rough * slowestRise_ms >= context.prominence_mv)) return 'slow';
@@ -238,10 +252,80 @@ function slowSpike(
       peak: candidate.peak,
       ...found,
       segment: candidate.segment,
+      hidden: null,
       slope,
       rateSlope,
     },
     raised: criterion > wanted ? criterion / largest : 0,
+  };
+}
+
+interface HiddenRise {
+  from: number;
+  to: number;
+  /** Mean rise across the hidden stretch, V/s. */
+  rate: number;
+}
+
+/** Steepest central difference outside the guard zones: the narrowest look at what happens beside them. */
+function inView(
+  trace: SpikeTrace,
+  slopes: SlopeBook,
+  run: { from: number; to: number },
+): { at: number; m: number; rate: number } | null {
+  const narrow = slopes.of(1);
+  const at = steepestIn(trace, narrow, run.from, run.to);
+  return at < 0 ? null : { at, m: 1, rate: narrow.values[at]! };
+}
+
+/**
+ * The rise across the guard zone of an edge that takes current away, where it is steeper than anything seen outside, or
+ * the steepest seen lies beside it, and covers half the prominence: with the current gone only the cell itself can have made it.
+ */
+function hiddenRise(
+  trace: SpikeTrace,
+  candidate: Candidate,
+  prominence: number,
+  visible: { at: number; m: number; rate: number } | null,
+): HiddenRise | null {
+  let best: HiddenRise | null = null;
+  const seen = visible?.rate ?? 0;
+  for (const { index, up } of trace.edges) {
+    if (up !== false) continue;
+    const from = index - trace.guard.before - 1;
+    const to = index + trace.guard.after + 1;
+    if (from < candidate.base || to > candidate.peak + trace.guard.after + 1 || to >= trace.mv.length) continue;
+    const rise = trace.mv[to]! - trace.mv[from]!;
+    const rate = (rise * trace.rateHz) / (to - from) / 1000;
+    // The steepest slope in view right beside the zone has most likely not come to its top there.
+    const beside = visible !== null && visible.at + visible.m + 1 >= from + 1 && visible.at - visible.m - 1 <= to - 1;
+    if (rise >= prominence / 2 && (rate > seen || beside) && (!best || rate > best.rate)) best = { from, to, rate };
+  }
+  return best;
+}
+
+/** A spike whose steepest rise is hidden: its threshold is given where it was passed before the hidden stretch. */
+function underEdge(
+  trace: SpikeTrace,
+  candidate: Candidate,
+  hidden: HiddenRise,
+  slope: Slope,
+  rateSlope: Slope,
+  criterion: number,
+  floor: number,
+): FoundSpike {
+  const last = hidden.from - slope.m;
+  const passed = last > floor && slope.values[last]! >= criterion;
+  const found = passed ? thresholdBefore(trace, slope, last, criterion, floor, false) : 'passive';
+  return {
+    base: candidate.base,
+    steepest: Math.round((hidden.from + hidden.to) / 2),
+    peak: candidate.peak,
+    ...(found === 'passive' ? { threshold: null, why_no_threshold: 'under-stimulus' as const } : found),
+    segment: candidate.segment,
+    hidden: { from: hidden.from, to: hidden.to },
+    slope,
+    rateSlope,
   };
 }
 

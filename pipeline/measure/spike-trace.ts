@@ -38,12 +38,14 @@ export interface SpikeTrace {
 /**
  * @param edgesS times of the stimulus edges, s. @param filterKhz low-pass corner where known
  * @param addsCurrent whether the edge at a time adds current; null where not known
+ * @param leastGuard samples before and after an edge that are its own at least
  */
 export function prepareTrace(
   voltage: Signal,
   edgesS: readonly number[],
   filterKhz: number | null,
   addsCurrent: (time_s: number) => boolean | null = () => null,
+  leastGuard: SpikeTrace['guard'] | null = null,
 ): SpikeTrace {
   const { samples, rate_hz: rateHz, start_s: startS } = voltage;
   const n = samples.length;
@@ -68,7 +70,10 @@ export function prepareTrace(
 
   // A filter of corner f settles within about 0.7/f (0.05 ms where it is not known); two samples are the least.
   const settle_s = filterKhz === null ? 0.00005 : 0.0007 / filterKhz;
-  const guard = { before: 1, after: Math.max(2, Math.ceil(settle_s * rateHz)) };
+  const guard = {
+    before: Math.max(1, leastGuard?.before ?? 1),
+    after: Math.max(2, Math.ceil(settle_s * rateHz), leastGuard?.after ?? 2),
+  };
   const masked = mv.slice();
   const underEdge = new Uint8Array(n);
   const edges = edgesS

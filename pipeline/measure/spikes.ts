@@ -59,8 +59,14 @@ export function measureSpikes(input: SpikeInput): { spikes: Spike[]; remarks: st
   };
   const cleaned = context.slow
     ? withoutArtefacts(voltage, stimulus, current, fastNoise(voltage.samples, voltage.rate_hz))
-    : { voltage, pulses: [], remarks: [] };
-  const trace = prepareTrace(cleaned.voltage, edgesOf(stimulus, cleaned.pulses), context.filter_khz, addsCurrent);
+    : { voltage, pulses: [], guard: null, remarks: [] };
+  const trace = prepareTrace(
+    cleaned.voltage,
+    edgesOf(stimulus, cleaned.pulses),
+    context.filter_khz,
+    (edge_s) => pulseAdds(edge_s, cleaned.pulses) ?? addsCurrent(edge_s),
+    cleaned.guard,
+  );
   const detection = detectSpikes(trace, stimulus, context);
   const found = detection.spikes;
   const remarks = [...cleaned.remarks, ...detection.remarks];
@@ -99,6 +105,16 @@ const edgesOf = (stimulus: Stimulus, pulses: readonly Pulse[]): number[] => [
   ...stimulus.edges_s,
   ...pulses.flatMap((pulse) => (pulse.inferred ? [pulse.on_s, pulse.off_s] : [])),
 ];
+
+/** Whether an edge is a pulse's onset that pushes up or its end that lets go, as the voltage itself shows it. */
+function pulseAdds(edge_s: number, pulses: readonly Pulse[]): boolean | null {
+  for (const { on_s, off_s, jump_mv, inferred } of pulses) {
+    if (!inferred || jump_mv === null) continue;
+    if (Math.abs(on_s - edge_s) < 1e-9) return jump_mv > 0;
+    if (Math.abs(off_s - edge_s) < 1e-9) return jump_mv < 0;
+  }
+  return null;
+}
 
 function measureOne(
   number: number,
@@ -156,7 +172,9 @@ function measureOne(
       : (height as AbsenceCode),
   );
 
-  const rise = extremeSlope(spike, 'rise', isFound(threshold) ? threshold.at : spike.base, peakAt, around);
+  const rise = spike.hidden
+    ? missing('under-stimulus')
+    : extremeSlope(spike, 'rise', isFound(threshold) ? threshold.at : spike.base, peakAt, around);
   put('max_rise_v_per_s', isFound(rise) ? rise.value : rise.why);
   const lowest = lowestAfter(peakAt, back, limit, around);
   const fallEnd = isFound(lowest) ? lowest.at : isFound(back) ? back.at : limit.end;
