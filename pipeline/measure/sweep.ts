@@ -312,7 +312,7 @@ function voltageClampSweep(
     readings: {
       ...recorded,
       ...setAsideCompensated(
-        measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz),
+        measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz, context.mains_hz),
         context.capacitance_pf,
       ),
     },

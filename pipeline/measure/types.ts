@@ -31,6 +31,8 @@ export type AbsenceCode =
   | 'no-spike-free-stretch'
   | 'no-test-pulse'
   | 'no-electrode-transient'
+  | 'no-membrane-transient'
+  | 'membrane-charged'
   | 'filter-unknown'
   | 'rate-too-low'
   | 'never-fired'

@@ -1,35 +1,42 @@
-import { exponentialFit } from '../signal/exponential.ts';
-import { mean, median, standardDeviation } from '../signal/statistics.ts';
+import { median, standardDeviation } from '../signal/statistics.ts';
+import { type ClampFit, type CommandEdge, fitClamp } from './clamp-fit.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
-import { filterDelayMs, gathered, indexAt, type Stretch, timeAt } from './stretches.ts';
+import { gathered, indexAt, timeAt } from './stretches.ts';
 import type { Reading, Readings, Signal, Stimulus } from './types.ts';
 
 /** Command steps up to this size, mV, count as test pulses: larger ones open channels. */
 const largestTestPulse_mv = 20;
 const shortestTestPulse_s = 0.002;
+/** After a larger step channels may still be open for this long, s. */
+const afterLargeStep_s = 0.03;
 /** As many edges as a sweep is measured at; more say nothing new. */
-const mostEdges = 24;
+const mostEdges = 16;
+/** A half-width above this share of the number makes it unresolved. */
+const widest = 0.5;
+/** A charge below this, pF per mV, is what a neutralized pipette leaves: no membrane. Ours. */
+export const leastMembrane_pf = 3;
+/** From here on, MΩ, a pipette without a membrane behind it counts as sealed. Ours; a good seal has ten times it. */
+const leastSeal_mohm = 500;
 
-/** One command edge and the current that answered it. */
-interface Answer {
-  /** All by linear circuit theory; null where the transient could not be resolved. */
-  access_mohm: number | null;
-  total_mohm: number;
-  capacitance_pf: number | null;
-  from_s: number;
-  to_s: number;
-}
+const ids = [
+  'access_resistance_mohm',
+  'membrane_resistance_mohm',
+  'cell_capacitance_pf',
+  'transient_capacitance_pf',
+  'seal_resistance_gohm',
+] as const;
 
 /**
  * Readings of a voltage-clamp sweep: command and holding current, and from the edges of small command steps (test
- * pulses, at most 20 mV) the access resistance ΔV/I extrapolated to the edge, the membrane resistance ΔV/ΔI − R_a
- * and the capacitance Q/ΔV·((R_a + R_m)/R_m)². Medians over the edges with n and spread. Where no transient stands
- * out of the noise (no cell, or a command too slow) the resistance is the total one, and says so.
+ * pulses, at most 20 mV) the access resistance, the membrane resistance and the capacitance of the circuit that explains
+ * the current best (see `clamp-fit.ts`), each with its 95 % half-width. Where no membrane was charged (no cell, a leak,
+ * a seal, a compensated transient) the resistance is the total one, and says so.
  *
  * @param current recorded current, pA
  * @param levels the command's levels, mV, in the time of the sweep
- * @param filterKhz corner of the recorder's low-pass; it delays the current, and with it the edge it is carried back to
+ * @param filterKhz corner of the recorder's low-pass; null: found from the edges
+ * @param mainsHz where hum is looked for; null: 50 and 60 Hz
  */
 export function measureVoltageClamp(
   current: Signal | null,
@@ -37,8 +44,8 @@ export function measureVoltageClamp(
   stimulus: Stimulus,
   levels: readonly Level[],
   filterKhz: number | null,
+  mainsHz: number | null = null,
 ): Readings {
-  const ids = ['access_resistance_mohm', 'membrane_resistance_mohm', 'cell_capacitance_pf'];
   const all = (reading: Reading): Readings => Object.fromEntries(ids.map((id) => [id, reading]));
   const readings: Readings = { command_mv: commandReading(command, stimulus) };
   if (!current || current.samples.length < 3) {
@@ -47,12 +54,11 @@ export function measureVoltageClamp(
   }
   readings['holding_current_pa'] = holdingCurrent(current, command, levels);
   if (!command) return { ...readings, ...all(absent('no-voltage')) };
-  const answers = testPulseEdges(levels)
-    .slice(0, mostEdges)
-    .map((edge) => answerAt(current, edge, filterDelayMs(filterKhz)))
-    .filter((answer) => answer !== null);
-  if (answers.length === 0) return { ...readings, ...all(absent('no-test-pulse')) };
-  return { ...readings, ...summary(answers) };
+  const edges = commandEdges(levels);
+  if (!edges.some((edge) => edge.used)) return { ...readings, ...all(absent('no-test-pulse')) };
+  const fit = fitClamp(current, edges, filterKhz, mainsHz);
+  if (!fit) return { ...readings, ...all(absent('too-few-points')) };
+  return { ...readings, ...circuitReadings(fit) };
 }
 
 /** A transient with less than this share of the stated capacitance is what compensation left over. Ours. */
@@ -95,6 +101,10 @@ function commandReading(command: Signal | null, stimulus: Stimulus): Reading {
   return measured(stimulus.holding + stimulus.amplitude, { at: { from_s: stimulus.onset_s, to_s: stimulus.end_s } });
 }
 
+/**
+ * Median over the command's first level, at most its last half second. Its standard error is that of a median of ten
+ * blocks, so that slow noise, hum and drift count.
+ */
 function holdingCurrent(current: Signal, command: Signal | null, levels: readonly Level[]): Reading {
   // The command's first level; without a command nothing says where holding ends.
   if (!command) return absent('no-voltage');
@@ -108,144 +118,165 @@ function holdingCurrent(current: Signal, command: Signal | null, levels: readonl
   return measured(median(values)!, {
     n: values.length,
     sd,
+    ...blockError(values),
     at: { from_s: timeAt(current, from), to_s: timeAt(current, to) },
   });
 }
 
-interface Edge {
-  at_s: number;
-  step_mv: number;
-  /** Step that led to the level before, 0 where the sweep began with it. */
-  previous_mv: number;
-  /** The level before began, the level after ends. */
-  before_s: number;
-  after_s: number;
+/** Standard error of a median from the medians of ten blocks, not below that of independent samples. */
+function blockError(values: Float64Array): { se?: number; freedom?: number } {
+  const blocks = 10;
+  if (values.length < 5 * blocks) return {};
+  const medians = Array.from(
+    { length: blocks },
+    (_, k) =>
+      median(
+        values.subarray(Math.floor((k * values.length) / blocks), Math.floor(((k + 1) * values.length) / blocks)),
+      )!,
+  );
+  return { se: standardDeviation(medians)! / Math.sqrt(blocks), freedom: blocks - 1 };
 }
 
-/** Steps of the command that are small and long enough, in order of time. */
-function testPulseEdges(levels: readonly Level[]): Edge[] {
-  return levels.slice(1).flatMap((level, k) => {
+/** Every step of the command, and which of them are small, long and undisturbed enough to be measured at. */
+function commandEdges(levels: readonly Level[]): CommandEdge[] {
+  let used = 0;
+  return levels.slice(1).map((level, k) => {
     const previous = levels[k]!;
-    const step_mv = level.level - previous.level;
-    const previous_mv = k === 0 ? 0 : previous.level - levels[k - 1]!.level;
-    const long = Math.min(previous.to_s - previous.from_s, level.to_s - level.from_s) >= shortestTestPulse_s;
-    const small = Math.abs(step_mv) <= largestTestPulse_mv * 1.001 && Math.abs(step_mv) >= 0.2;
-    return long && small
-      ? [{ at_s: level.from_s, step_mv, previous_mv, before_s: previous.from_s, after_s: level.to_s }]
-      : [];
+    const mv = level.level - previous.level;
+    const long = Math.min(previous.to_s - previous.from_s, level.to_s - level.from_s) >= shortestTestPulse_s * 0.999;
+    const small = Math.abs(mv) <= largestTestPulse_mv * 1.001 && Math.abs(mv) >= 0.2;
+    const disturbed = levels
+      .slice(1, k + 1)
+      .some(
+        (one, j) =>
+          Math.abs(one.level - levels[j]!.level) > largestTestPulse_mv * 1.001 &&
+          level.from_s - one.from_s < afterLargeStep_s,
+      );
+    const use = long && small && !disturbed && used < mostEdges;
+    if (use) used++;
+    return { at_s: level.from_s, mv, used: use };
   });
 }
 
-/** What the current says at one edge. Null where it cannot be read or does not answer at all. */
-function answerAt(current: Signal, edge: Edge, delay_ms: number): Answer | null {
-  const rate = current.rate_hz;
-  const from = indexAt(current, edge.at_s);
-  const to = Math.min(indexAt(current, edge.after_s), from + Math.round(0.2 * rate));
-  const start = indexAt(current, edge.before_s);
-  if (to - from < 8 || from - start < 4) return null;
-  // The last fifth of each level, at most 20 ms, has come nearest to rest.
-  const share = (length: number): number => Math.max(4, Math.min(Math.floor(length / 5), Math.round(0.02 * rate)));
-  const earlier = { from: from - share(from - start), to: from };
-  const later = { from: to - share(to - from), to };
-  const before = current.samples.subarray(earlier.from, earlier.to);
-  const late = current.samples.subarray(later.from, later.to);
-  const calm = mean(before);
-  const steady = mean(late);
-  const noise = standardDeviation(before);
-  if (calm === null || steady === null || noise === null) return null;
-  const where = { from_s: edge.at_s, to_s: timeAt(current, to) };
-  const part = current.samples.subarray(from, to);
-  let change = steady - calm;
-  let transient = transientOf(part, steady, edge.step_mv, noise, rate, delay_ms);
-  if (transient) {
-    // What the transient still is in the last fifth, and what the one before was when this one began, is known: out.
-    const { tau_ms } = transient;
-    const left = (stretch: Stretch, edgeIndex: number): number =>
-      meanDecay(((stretch.from - edgeIndex) * 1000) / rate, ((stretch.to - edgeIndex) * 1000) / rate, tau_ms);
-    const height = transient.height_pa;
-    const settled = steady - height * left(later, from);
-    const rested = calm - height * (edge.previous_mv / edge.step_mv) * left(earlier, start);
-    change = settled - rested;
-    transient = transientOf(part, settled, edge.step_mv, noise, rate, delay_ms) ?? transient;
-  }
-  // A change that is lost in noise, or against the step, is no resistance.
-  const error = noise * Math.sqrt(1 / before.length + 1 / late.length);
-  if (!(change * edge.step_mv > 0 && Math.abs(change) > 2 * error)) return null;
-  // mV/pA is GΩ.
-  const total_mohm = (edge.step_mv / change) * 1000;
-  const unresolved = { access_mohm: null, total_mohm, capacitance_pf: null, ...where };
-  if (!transient) return unresolved;
-  const access_mohm = (edge.step_mv / (transient.height_pa + change)) * 1000;
-  const membrane_mohm = total_mohm - access_mohm;
-  if (!(access_mohm > 0 && membrane_mohm > 0)) return unresolved;
-  // pA·ms is fC; fC/mV is pF.
-  const capacitance_pf = (transient.charge_fc / edge.step_mv) * (total_mohm / membrane_mohm) ** 2;
-  return { access_mohm, total_mohm, capacitance_pf, ...where };
+interface Derived {
+  value: number;
+  se: number;
 }
 
-/** Mean of exp(−t/tau) between two times. */
-const meanDecay = (from_ms: number, to_ms: number, tau_ms: number): number =>
-  (tau_ms * (Math.exp(-from_ms / tau_ms) - Math.exp(-to_ms / tau_ms))) / (to_ms - from_ms);
-
-/**
- * The transient above the steady current: its height extrapolated to the edge and its charge. The first samples belong
- * to the pipette and the filter: the exponential is fitted from where the transient has fallen to 80 % of its top.
- */
-function transientOf(
-  part: Float64Array,
-  steady: number,
-  step_mv: number,
-  noise: number,
-  rate: number,
-  delay_ms: number,
-): { height_pa: number; charge_fc: number; tau_ms: number } | null {
-  const sign = Math.sign(step_mv);
-  const above = part.map((value) => (value - steady) * sign);
-  const search = Math.min(above.length, Math.max(4, Math.round(0.003 * rate)));
-  let top = 0;
-  for (let i = 1; i < search; i++) if (above[i]! > above[top]!) top = i;
-  if (!(above[top]! > 6 * noise)) return null;
-  let first = top;
-  while (first < above.length && above[first]! > 0.8 * above[top]!) first++;
-  let last = first;
-  while (last < above.length && above[last]! > Math.max(0.02 * above[top]!, noise)) last++;
-  last = Math.min(above.length, first + Math.max(8, 2 * (last - first)));
-  if (last - first < 6) return null;
-  const ms = Float64Array.from({ length: last - first }, (_, i) => ((first + i) * 1000) / rate);
-  const fit = exponentialFit(ms, above.subarray(first, last));
-  if (!fit?.converged || fit.amplitude <= 0 || fit.tau < 1000 / rate) return null;
-  const peak = fit.amplitude * Math.exp((fit.x0 - delay_ms) / fit.tau);
-  // The charge of the samples, not of the fit: it does not depend on the shape. A trapezium from the extrapolated
-  // top to the first sample beyond the pipette's, then the samples themselves.
-  let charge = fit.tau * (peak - fit.amplitude);
-  const until = Math.min(above.length, first + Math.round((8 * fit.tau * rate) / 1000));
-  for (let i = first; i < until; i++) charge += (above[i]! * 1000) / rate;
-  charge -= (0.5 * above[first]! * 1000) / rate;
-  return { height_pa: peak * sign, charge_fc: charge * sign, tau_ms: fit.tau };
+/** A function of the fit's parameters and its standard error by the law of propagation (GUM, JCGM 100:2008, 5.2). */
+function derived(fit: ClampFit, f: (p: readonly number[]) => number): Derived {
+  const p = fit.parameters;
+  const value = f(p);
+  const gradient = p.map((one, k) => {
+    const step = 1e-5 * Math.max(Math.abs(one), 1e-3);
+    return (f(p.with(k, one + step)) - f(p.with(k, one - step))) / (2 * step);
+  });
+  let variance = 0;
+  for (let j = 0; j < p.length; j++)
+    for (let k = 0; k < p.length; k++) variance += gradient[j]! * gradient[k]! * fit.covariance[j]![k]!;
+  return { value, se: Math.sqrt(Math.max(0, variance)) };
 }
 
-function summary(answers: Answer[]): Readings {
-  const at = { from_s: answers[0]!.from_s, to_s: answers[0]!.to_s };
-  const resolved = answers.filter((one) => one.access_mohm !== null);
-  const over = (values: number[], note?: string): Reading => {
-    const sd = standardDeviation(values);
-    return measured(median(values)!, {
-      n: values.length,
-      at,
-      ...(sd === null ? {} : { sd, se: sd / Math.sqrt(values.length) }),
-      ...(note ? { note } : {}),
-    });
+/** The circuit's elements as functions of [steady nS, transient nS, ln tau, …, fast pF]. */
+const access = (p: readonly number[]): number => 1000 / (p[0]! + p[1]!);
+const total = (p: readonly number[]): number => 1000 / p[0]!;
+const membrane = (p: readonly number[]): number => total(p) - access(p);
+const membranePf = (p: readonly number[]): number =>
+  (1000 * Math.exp(p[2]!) * total(p)) / (access(p) * membrane(p));
+const slowCharge = (p: readonly number[]): number => p[1]! * Math.exp(p[2]!);
+const wholeCharge = (p: readonly number[]): number => slowCharge(p) + p[4]!;
+
+/** The circuit of the fit as readings, or why it is none. */
+function circuitReadings(fit: ClampFit): Readings {
+  const at = { from_s: fit.from_s, to_s: fit.to_s };
+  const n = fit.edges;
+  const told = (of: Derived, note?: string): Reading => measured(of.value, { n, se: of.se, at, ...(note ? { note } : {}) });
+  const steady = derived(fit, (p) => p[0]!);
+  const transient = derived(fit, slowCharge);
+  const whole = derived(fit, wholeCharge);
+  const flows = steady.value > 1.96 * steady.se;
+  const leastTotal = 1000 / Math.max(1e-9, steady.value + 1.96 * steady.se);
+  const against = steady.value < -3 * steady.se ? 'the steady current goes against the step' : null;
+  const charged = fit.parameters[1]! > 0 && transient.value > 3 * transient.se && transient.value > 1;
+  const turned = fit.parameters[1]! < 0 && transient.value < -3 * transient.se && transient.value < -1;
+  const resolved = (of: Derived, note: string): Reading =>
+    1.96 * of.se <= widest * Math.abs(of.value) && of.value > 0 ? told(of) : absent('unresolved', { note });
+  const transientReading = told(whole);
+  const without = (note: string): Readings => ({
+    access_resistance_mohm: absent('no-membrane-transient', { note }),
+    cell_capacitance_pf: absent('no-membrane-transient', { note }),
+    transient_capacitance_pf: transientReading,
+  });
+  const totalReading = (note: string): Reading => {
+    if (against) return absent('unresolved', { note: against });
+    if (!flows) return absent('unresolved', { note: `at least ${leastTotal.toPrecision(2)} MΩ` });
+    return resolved(derived(fit, total), `at least ${leastTotal.toPrecision(2)} MΩ`).value === null
+      ? absent('unresolved', { note: `at least ${leastTotal.toPrecision(2)} MΩ` })
+      : told(derived(fit, total), note);
   };
-  const totals = answers.map((one) => one.total_mohm);
-  if (resolved.length === 0)
+  if (turned)
     return {
-      access_resistance_mohm: absent('unresolved', { note: 'no capacitive transient stands out of the noise' }),
-      membrane_resistance_mohm: over(totals, 'total resistance: the access could not be told apart'),
-      cell_capacitance_pf: absent('unresolved', { note: 'no capacitive transient stands out of the noise' }),
+      ...without('the transient runs against the step: the amplifier takes more away than there is'),
+      membrane_resistance_mohm: totalReading('total resistance: the access could not be told apart'),
+      seal_resistance_gohm: absent('no-membrane-transient'),
     };
+  if (!charged) {
+    const bare = whole.value - 1.96 * whole.se < leastMembrane_pf;
+    const sealed = bare && (flows ? 1000 / steady.value : leastTotal) >= leastSeal_mohm;
+    const seal = derived(fit, (p) => total(p) / 1000);
+    if (sealed)
+      return {
+        ...without('no membrane was charged: a sealed pipette before break-in, or a compensated transient'),
+        membrane_resistance_mohm: absent('no-membrane-transient', { note: 'see the seal resistance' }),
+        seal_resistance_gohm: resolved(seal, `at least ${(leastTotal / 1000).toPrecision(2)} GΩ`),
+      };
+    const what = bare ? bareWords(1000 / steady.value) : 'the transient is faster than this filter and noise resolve';
+    return {
+      ...without(what),
+      membrane_resistance_mohm: totalReading(`total resistance: the access could not be told apart; ${what}`),
+      seal_resistance_gohm: absent('unresolved', { note: `less than ${leastSeal_mohm / 1000} GΩ: no seal` }),
+    };
+  }
+  const tau_ms = Math.exp(fit.parameters[2]!);
+  const corner = fit.corner_khz === null ? '' : ` behind a filter of ${fit.corner_khz.toPrecision(2)} kHz`;
+  const fast = `the transient of ${tau_ms.toPrecision(2)} ms is not resolved${corner}`;
+  const single =
+    fit.left_over > mostLeftOver
+      ? `${Math.round(100 * fit.left_over)} % of the transient is no single exponential: a branched cell, or partly compensated`
+      : null;
+  if (single !== null && fit.left_over > tooMuchLeftOver)
+    return {
+      access_resistance_mohm: absent('unresolved', { note: single }),
+      cell_capacitance_pf: absent('unresolved', { note: single }),
+      transient_capacitance_pf: transientReading,
+      membrane_resistance_mohm: totalReading('total resistance: the access could not be told apart'),
+      seal_resistance_gohm: absent('membrane-charged'),
+    };
+  const noted = (reading: Reading): Reading =>
+    single !== null && reading.value !== null ? { ...reading, note: single } : reading;
   return {
-    access_resistance_mohm: over(resolved.map((one) => one.access_mohm!)),
-    membrane_resistance_mohm: over(resolved.map((one) => one.total_mohm - one.access_mohm!)),
-    cell_capacitance_pf: over(resolved.map((one) => one.capacitance_pf!)),
+    access_resistance_mohm: noted(resolved(derived(fit, access), fast)),
+    membrane_resistance_mohm: against
+      ? absent('unresolved', { note: against })
+      : flows
+        ? resolved(derived(fit, membrane), `at least ${Math.max(0, leastTotal - access(fit.parameters)).toPrecision(2)} MΩ`)
+        : absent('unresolved', { note: `at least ${Math.max(0, leastTotal - access(fit.parameters)).toPrecision(2)} MΩ` }),
+    cell_capacitance_pf: noted(flows || !against ? resolved(derived(fit, membranePfSafe), fast) : absent('unresolved', { note: fast })),
+    transient_capacitance_pf: transientReading,
+    seal_resistance_gohm: absent('membrane-charged'),
   };
 }
+
+/** Where the steady current is lost in noise the membrane is taken as closed: C = tau/R_a. */
+const membranePfSafe = (p: readonly number[]): number =>
+  p[0]! > 0 ? membranePf(p) : (1000 * Math.exp(p[2]!)) / access(p);
+
+/** Shares of the largest current that the circuit may leave unexplained: worth a word, and too much. Ours. */
+const mostLeftOver = 0.03;
+const tooMuchLeftOver = 0.1;
+
+/** What a resistance without a membrane behind it usually is. */
+const bareWords = (mohm: number): string =>
+  mohm < 20
+    ? 'no membrane was charged: an open pipette in the bath'
+    : 'no membrane was charged: a leak without a cell, or a compensated transient';

@@ -88,8 +88,8 @@ describe('a test pulse in voltage clamp', () => {
     const { voltage } = clampedSweep(cell, pulse);
     const current = signalOf(0.2, 50000, (t) => (t >= 0.05 && t < 0.1 ? 1000 : 0) - 14000 + 20 * noise());
     const { readings } = measureSweep(input({ voltage, current }, { clamp: 'voltage' }), neuron);
-    expect(readings['access_resistance_mohm']!.why).toBe('unresolved');
-    expect(readings['cell_capacitance_pf']!.why).toBe('unresolved');
+    expect(readings['access_resistance_mohm']!.why).toBe('no-membrane-transient');
+    expect(readings['cell_capacitance_pf']!.why).toBe('no-membrane-transient');
     expect(numberIn(readings, 'membrane_resistance_mohm')).toBeCloseTo(5, 1);
     expect(readings['membrane_resistance_mohm']!.note).toContain('total');
     expect(numberIn(readings, 'holding_current_pa')).toBeCloseTo(-14000, -1);
