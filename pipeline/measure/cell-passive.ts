@@ -292,7 +292,7 @@ function bridgeError(sweeps: readonly NumberedSweep[]): Reading {
 export function accessReadings(sweeps: readonly NumberedSweep[], bridgeLeft: Reading, context: CellContext): Readings {
   const clamped = sweeps.filter((sweep) => sweep.clamp === 'voltage');
   const over = (id: string): Reading =>
-    medianOver(
+    overSweeps(
       pointsOf(clamped, id),
       clamped.length === 0 ? absent('not-this-clamp') : commonReason(clamped, id, 'no-test-pulse'),
     );
@@ -308,8 +308,29 @@ export function accessReadings(sweeps: readonly NumberedSweep[], bridgeLeft: Rea
     access_change_percent: accessChange(apart ? pulses : bridged, apart ? 2 : 4),
     membrane_resistance_mohm: over('membrane_resistance_mohm'),
     cell_capacitance_pf: over('cell_capacitance_pf'),
+    transient_capacitance_pf: over('transient_capacitance_pf'),
+    seal_resistance_gohm: over('seal_resistance_gohm'),
     holding_current_pa: over('holding_current_pa'),
   };
+}
+
+/**
+ * Median over sweeps whose errors are partly the same (filter, moment of the command, pipette): the scatter is divided
+ * by the number of sweeps, what the errors have in common is not.
+ */
+function overSweeps(points: readonly Point[], whenNone: Reading, note?: string): Reading {
+  const found = medianOver(points, whenNone, note);
+  if (found.value === null || points.length < 2) return found;
+  const own = points.flatMap(({ reading }) => (reading.se === undefined ? [] : [reading.se ** 2]));
+  const { value, u95: _u95, ...rest } = found;
+  const scatter = (found.sd ?? 0) ** 2;
+  const common = Math.max(0, (mean(own) ?? 0) - scatter);
+  return measured(value, {
+    ...rest,
+    se: Math.sqrt(scatter / points.length + common),
+    // Scatter known from few sweeps, common errors from the fits.
+    ...(common > scatter / points.length ? {} : { freedom: points.length - 1 }),
+  });
 }
 
 function access(
@@ -318,7 +339,7 @@ function access(
   bridgeLeft: Reading,
   context: CellContext,
 ): Reading {
-  if (pulses.length > 0) return medianOver(pulses, absent('no-test-pulse'), 'from voltage-clamp test pulses');
+  if (pulses.length > 0) return overSweeps(pulses, absent('no-test-pulse'), 'from voltage-clamp test pulses');
   if (context.stated_access_mohm !== null) return measured(context.stated_access_mohm, { note: 'as stated' });
   const bridges = sweeps.flatMap((sweep) => sweep.bridge_mohm ?? []);
   const bridge = median(bridges) ?? context.stated_bridge_mohm ?? null;

@@ -3,8 +3,8 @@
  * resistance into a membrane (resistance and capacitance in parallel), what is left of the pipette’s own capacitance, the
  * recorder’s filter, and the moment within a sample at which the command changed.
  */
-import { type BesselLowPass, besselLowPass } from '../signal/bessel.ts';
-import { type LeastSquares, leastSquares, type Prior } from '../signal/least-squares.ts';
+import { besselLowPass, type FilteredStep, type LowPass, noLowPass } from '../signal/bessel.ts';
+import { type Evaluation, type LeastSquares, leastSquares, type Prior } from '../signal/least-squares.ts';
 import { mean } from '../signal/statistics.ts';
 import { indexAt } from './stretches.ts';
 import type { Signal } from './types.ts';
@@ -17,12 +17,25 @@ export interface CommandEdge {
   used: boolean;
 }
 
-/** The circuit as one mV sees it. Conductances in nS (pA/mV), charge per mV in pF. */
+export interface Estimate {
+  value: number;
+  /** Standard uncertainty. */
+  se: number;
+}
+
+/** The circuit that explains the current best, averaged over the moments at which the command may have changed. */
 export interface ClampFit {
-  /** [steady conductance nS, transient conductance nS, ln tau (ms), delay of the edge (ms), fast charge pF, ln corner (kHz)] */
-  parameters: number[];
-  /** Of those six, scaled so that the residuals have the size they have. */
-  covariance: number[][];
+  access_mohm: Estimate;
+  membrane_mohm: Estimate;
+  total_mohm: Estimate;
+  membrane_pf: Estimate;
+  /** 1/(R_a + R_m), nS. */
+  steady_ns: Estimate;
+  /** Charge of the exponential transient over the step, and with that of the pipette, pF. */
+  slow_pf: Estimate;
+  whole_pf: Estimate;
+  tau_ms: Estimate;
+  /** Edges measured at. */
   edges: number;
   /** Root-mean-square of the current about the fit, pA, and how many samples make one independent one. */
   noise_pa: number;
@@ -39,12 +52,19 @@ export interface ClampFit {
 }
 
 /** Priors, all ours. The edge lies between the sample that shows it and the one before, give or take 5 µs. */
-const corner_sd = 0.05;
+const edgeAt = (interval_ms: number): Prior => ({
+  mean: 0.008 - 0.2 * interval_ms,
+  sd: Math.hypot(0.3 * interval_ms, 0.012),
+});
+const corner_sd = 0.1;
 const unknownCorner_sd = 0.8;
 /** Pipette capacitance left after neutralization, pF. */
-const fast_sd = 4;
+const fast_sd = 2.5;
 /** What filter and command are allowed to differ from the model while the edge passes, as a share of the peak. */
-const edgeError = 0.003;
+const edgeError = 0.015;
+/** Later it fades, by this share per period of the corner after the first ones, to this. */
+const slowestEdge = 1.5;
+const edgeErrorFloor = 1e-4;
 
 /** How much of a level is looked at before and after an edge, s. */
 const longestAfter_s = 0.1;
@@ -66,14 +86,6 @@ interface Bin {
   last: number;
 }
 
-const noFilter: BesselLowPass = {
-  impulse: () => 0,
-  step: (ms) => (ms >= -1e-7 ? 1 : 0),
-  decay: (ms, tau) => (ms >= -1e-7 ? Math.exp(-Math.max(0, ms) / tau) : 0),
-  gainOfDecay: () => 1,
-  settled_ms: 0,
-};
-
 /**
  * @param current pA; unreadable samples are left out, and so are those stuck at the recorder’s limits
  * @param edges in order of time
@@ -90,7 +102,9 @@ export function fitClamp(
   const { samples, spans } = prepared(current, edges);
   if (spans.length === 0) return null;
   const rate_khz = current.rate_hz / 1000;
-  const bins = spans.flatMap((span, episode) => binsOf(current, samples, span, episode, edges, filterKhz ?? rate_khz / 4));
+  const bins = spans.flatMap((span, episode) =>
+    binsOf(current, samples, span, episode, edges, filterKhz ?? rate_khz / 4),
+  );
   const used = edges.filter((edge) => edge.used).length;
   if (bins.length < 12) return null;
 
@@ -100,9 +114,19 @@ export function fitClamp(
   let kept: readonly Bin[] = bins;
   let hums: number[] = [];
   let best: Candidate | null = null;
+  const cornerOf = (found: Candidate | null): number => {
+    const first = filterKhz ?? rate_khz / 4;
+    return found?.filtered ? Math.min(first, Math.exp(found.fit.parameters[5]!)) : first;
+  };
   for (let pass = 0; pass < 3; pass++) {
-    const problem = problemOf(kept, edges, noise, size, filterKhz ?? rate_khz / 4, hums, spans.length);
-    best = bestOf(problem, best, filterKhz, rate_khz, size / Math.max(...edges.filter((e) => e.used).map((e) => Math.abs(e.mv))));
+    const problem = problemOf(kept, edges, noise, size, cornerOf(best), hums, spans.length);
+    best = bestOf(
+      problem,
+      best,
+      filterKhz,
+      rate_khz,
+      size / Math.max(...edges.filter((e) => e.used).map((e) => Math.abs(e.mv))),
+    );
     if (!best || pass === 2) break;
     const left = residualsAtRate(current, samples, spans, edges, best, problem);
     noise = { sd: Math.max(left.sd, 1e-6 * size), correlated: left.correlated };
@@ -115,29 +139,78 @@ export function fitClamp(
       if (hum === null && far.length >= 0.8 * bins.length) kept = far;
     }
   }
-  const covariance = best?.fit.covariance;
-  if (!best || !covariance) return null;
-  const { fit } = best;
-  const freedom = Math.max(1, kept.length - 2 * spans.length - fit.parameters.length);
-  const misfit = fit.chi2 / freedom;
+  if (!best) return null;
+  const problem = problemOf(kept, edges, noise, size, cornerOf(best), hums, spans.length);
+  const nodes = best.filtered ? acrossMoments(problem, best, filterKhz, rate_khz) : [{ fit: best.fit, weight: 1 }];
+  const solid = nodes.filter(({ fit }) => fit.covariance !== null);
+  if (solid.length === 0) return null;
+  const top = solid.reduce((a, b) => (b.weight > a.weight ? b : a)).fit;
+  const freedom = Math.max(1, kept.length - 2 * problem.lines.length - top.parameters.length);
+  const misfit = top.chi2 / freedom;
   const scale = Math.max(1, misfit);
-  const problem = problemOf(kept, edges, noise, size, filterKhz ?? rate_khz / 4, hums, spans.length);
-  const weighted = weightedResiduals(problem, best);
-  const early = kept.map((bin, k) => ({ bin, left: weighted[k]! * problem.sds[k]! })).filter(({ bin }) => bin.since_ms > 0 && bin.since_ms < 3);
-  const excess = early.map(({ left, bin }) => left ** 2 - (noise.sd ** 2 * Math.min(1, noise.correlated)) / bin.count);
+  const weighted = evaluated(problem, top.parameters, best.filtered, false).residuals;
+  const excess = kept.flatMap((bin, k) =>
+    bin.since_ms > 0 && bin.since_ms < 3
+      ? [(weighted[k]! * problem.sds[k]!) ** 2 - (noise.sd ** 2 * Math.min(1, noise.correlated)) / bin.count]
+      : [],
+  );
+  const over = (f: (p: readonly number[]) => number): Estimate => averaged(solid, f, scale);
   return {
-    parameters: fit.parameters.slice(0, 6),
-    covariance: covariance.slice(0, 6).map((row) => row.slice(0, 6).map((value) => value * scale)),
+    access_mohm: over(access),
+    membrane_mohm: over((p) => total(p) - access(p)),
+    total_mohm: over(total),
+    membrane_pf: over(membranePf),
+    steady_ns: over((p) => p[0]!),
+    slow_pf: over((p) => p[1]! * Math.exp(p[2]!)),
+    whole_pf: over((p) => p[1]! * Math.exp(p[2]!) + p[4]!),
+    tau_ms: over((p) => Math.exp(p[2]!)),
     edges: used,
     noise_pa: noise.sd,
     correlated: noise.correlated,
     misfit,
     left_over: size > 0 ? Math.sqrt(Math.max(0, mean(excess) ?? 0)) / size : 0,
-    corner_khz: best.filtered ? Math.exp(fit.parameters[5]!) : null,
-    hum_pa: hums.length > 0 ? Math.hypot(fit.parameters[6]!, fit.parameters[7]!) : null,
+    corner_khz: best.filtered ? Math.exp(top.parameters[5]!) : null,
+    hum_pa: hums.length > 0 ? Math.hypot(top.parameters[6]!, top.parameters[7]!) : null,
     from_s: spans[0]!.from_s,
     to_s: spans[0]!.to_s,
   };
+}
+
+/** The circuit's elements as functions of [steady nS, transient nS, ln tau, …]: MΩ and pF. */
+const access = (p: readonly number[]): number => 1000 / (p[0]! + p[1]!);
+const total = (p: readonly number[]): number => 1000 / p[0]!;
+/** tau = C·R_a·R_m/(R_a + R_m); ms/MΩ is nF. Where no steady current flows the membrane is closed. */
+const membranePf = (p: readonly number[]): number => {
+  const closed = p[0]! > 0 ? (total(p) - access(p)) / total(p) : 1;
+  return (1000 * Math.exp(p[2]!)) / (access(p) * closed);
+};
+
+interface Node {
+  fit: LeastSquares;
+  weight: number;
+}
+
+/**
+ * A function of the parameters over all nodes: its mean, and the root of the mean variance within them (law of
+ * propagation, GUM, JCGM 100:2008, 5.2) and the variance among them.
+ */
+function averaged(nodes: readonly Node[], f: (p: readonly number[]) => number, scale: number): Estimate {
+  const parts = nodes.map(({ fit, weight }) => {
+    const p = fit.parameters;
+    const gradient = p.map((one, k) => {
+      const step = 1e-5 * Math.max(Math.abs(one), 1e-3);
+      return (f(p.with(k, one + step)) - f(p.with(k, one - step))) / (2 * step);
+    });
+    let variance = 0;
+    for (let j = 0; j < p.length; j++)
+      for (let k = 0; k < p.length; k++) variance += gradient[j]! * gradient[k]! * fit.covariance![j]![k]!;
+    return { value: f(p), variance: scale * Math.max(0, variance), weight };
+  });
+  const all = parts.reduce((sum, part) => sum + part.weight, 0);
+  const value = parts.reduce((sum, part) => sum + part.weight * part.value, 0) / all;
+  const variance =
+    parts.reduce((sum, part) => sum + part.weight * (part.variance + (part.value - value) ** 2), 0) / all;
+  return { value, se: Math.sqrt(variance) };
 }
 
 interface Span {
@@ -162,7 +235,8 @@ function prepared(current: Signal, edges: readonly CommandEdge[]): { samples: Fl
     const last = group.at(-1)!;
     const before = first === 0 ? current.start_s : edges[first - 1]!.at_s;
     // The level before belongs half to the pulse before it, unless that was none.
-    const start = first > 0 && edges[first - 1]!.used ? (before + edges[first]!.at_s) / 2 : before + (first > 0 ? 0.003 : 0);
+    const start =
+      first > 0 && edges[first - 1]!.used ? (before + edges[first]!.at_s) / 2 : before + (first > 0 ? 0.003 : 0);
     const after = last + 1 < edges.length ? edges[last + 1]!.at_s : end;
     const next = edges[last + 1];
     const stop = next?.used && group.length > 1 ? (edges[last]!.at_s + after) / 2 : after;
@@ -273,12 +347,7 @@ interface Noise {
 }
 
 /** Of the level before the first step used, a straight line taken out. */
-function noiseBefore(
-  current: Signal,
-  samples: Float64Array,
-  edges: readonly CommandEdge[],
-  corner_khz: number,
-): Noise {
+function noiseBefore(current: Signal, samples: Float64Array, edges: readonly CommandEdge[], corner_khz: number): Noise {
   const k = edges.findIndex((edge) => edge.used);
   const to = indexAt(current, edges[k]!.at_s) - 1;
   const start = k === 0 ? 0 : indexAt(current, (edges[k - 1]!.at_s + edges[k]!.at_s) / 2);
@@ -332,6 +401,10 @@ function withoutLine(values: Float64Array): Float64Array {
   return values.map((value, i) => value - my - (sxy / sxx) * (i - mx));
 }
 
+/** Share of the peak by which the model may be wrong, at a time after the edge in periods of the corner. */
+const modelError = (periods: number, edges: number): number =>
+  edgeErrorFloor + (periods < 0 ? 0 : edgeError * Math.sqrt(edges) * Math.exp(-Math.max(0, periods - slowestEdge) * 2));
+
 interface Problem {
   bins: readonly Bin[];
   edges: readonly CommandEdge[];
@@ -350,10 +423,11 @@ function problemOf(
   hums: readonly number[],
   episodes: number,
 ): Problem {
+  // An error of the model repeats at every edge: more edges do not average it away.
+  const used = edges.filter((edge) => edge.used).length;
   const sds = Float64Array.from(bins, (bin) =>
     Math.sqrt(
-      (noise.sd ** 2 * noise.correlated) / bin.count +
-        (bin.since_ms >= 0 && bin.since_ms < 2.5 / corner_khz ? edgeError * size : 1e-6 * size) ** 2,
+      (noise.sd ** 2 * noise.correlated) / bin.count + (size * modelError(bin.since_ms * corner_khz, used)) ** 2,
     ),
   );
   const lines = Array.from({ length: episodes }, (_, episode) => {
@@ -363,7 +437,10 @@ function problemOf(
     while (to < bins.length && bins[to]!.episode === episode) to++;
     const a = sds.slice(from, to).map((sd) => 1 / sd);
     normalize(a);
-    const b = Float64Array.from({ length: to - from }, (__, k) => (bins[from + k]!.ms - bins[from]!.ms) / sds[from + k]!);
+    const b = Float64Array.from(
+      { length: to - from },
+      (__, k) => (bins[from + k]!.ms - bins[from]!.ms) / sds[from + k]!,
+    );
     takeOut(b, a);
     normalize(b);
     return { from, to, a, b };
@@ -383,63 +460,124 @@ function takeOut(v: Float64Array, unit: Float64Array): void {
   for (let i = 0; i < v.length; i++) v[i]! -= sum * unit[i]!;
 }
 
-/** What the circuit makes of the command at one time, pA, without the level it stands on. */
+/**
+ * What the circuit makes of the command at one time, pA, without the level it stands on, and its derivatives by the
+ * parameters (`into`, where given).
+ */
 function modelAt(
-  ms: number,
-  width_ms: number,
-  first: number,
-  last: number,
+  at: Pick<Bin, 'ms' | 'width_ms' | 'first' | 'last'>,
   edges: readonly CommandEdge[],
   p: readonly number[],
-  filter: BesselLowPass,
+  filter: LowPass,
   hums: readonly number[],
+  into?: Float64Array,
 ): number {
   const tau = Math.exp(p[2]!);
   let sum = 0;
-  for (let e = first; e < last; e++) {
-    const t = ms - edges[e]!.at_s * 1000 - p[3]!;
-    if (t < -1e-6) continue;
-    const own =
-      t > filter.settled_ms
-        ? p[0]! + (t < 30 * tau ? p[1]! * filter.gainOfDecay(tau) * Math.exp(-Math.max(0, t) / tau) : 0)
-        : p[0]! * filter.step(t) + p[1]! * filter.decay(t, tau) + p[4]! * filter.impulse(t);
-    sum += own * edges[e]!.mv;
+  into?.fill(0);
+  for (let e = at.first; e < at.last; e++) {
+    const t = at.ms - edges[e]!.at_s * 1000 - p[3]!;
+    filter.at(t, tau, response);
+    if (response.step === 0) continue;
+    const { mv } = edges[e]!;
+    const { step, decay, impulse, impulseSlope, decayByLogTau } = response;
+    sum += (p[0]! * step + p[1]! * decay + p[4]! * impulse) * mv;
+    if (!into) continue;
+    const decaySlope = impulse - decay / tau;
+    into[0]! += step * mv;
+    into[1]! += decay * mv;
+    into[2]! += p[1]! * decayByLogTau * mv;
+    into[3]! -= (p[0]! * impulse + p[1]! * decaySlope + p[4]! * impulseSlope) * mv;
+    into[4]! += impulse * mv;
+    // All depend on corner · t and corner · tau alone, the impulse on a factor of the corner besides.
+    into[5]! +=
+      (p[0]! * t * impulse + p[1]! * (t * decaySlope + decayByLogTau) + p[4]! * (impulse + t * impulseSlope)) * mv;
   }
   hums.forEach((hz, k) => {
-    const half = (Math.PI * hz * width_ms) / 1000;
+    const half = (Math.PI * hz * at.width_ms) / 1000;
     const loss = half > 1e-6 ? Math.sin(half) / half : 1;
-    const angle = (2 * Math.PI * hz * ms) / 1000;
-    sum += loss * (p[6 + 2 * k]! * Math.sin(angle) + p[7 + 2 * k]! * Math.cos(angle));
+    const angle = (2 * Math.PI * hz * at.ms) / 1000;
+    const [s, c] = [loss * Math.sin(angle), loss * Math.cos(angle)];
+    sum += p[6 + 2 * k]! * s + p[7 + 2 * k]! * c;
+    if (into) {
+      into[6 + 2 * k] = s;
+      into[7 + 2 * k] = c;
+    }
   });
   return sum;
 }
+const response: FilteredStep = { impulse: 0, impulseSlope: 0, step: 0, decay: 0, decayByLogTau: 0 };
 
 interface Candidate {
   fit: LeastSquares;
   filtered: boolean;
 }
 
-const filterOf = (p: readonly number[], filtered: boolean): BesselLowPass =>
-  filtered ? besselLowPass(Math.exp(p[5]!)) : noFilter;
+const filterOf = (p: readonly number[], filtered: boolean): LowPass =>
+  filtered ? besselLowPass(Math.exp(p[5]!)) : noLowPass;
 
 function weightedResiduals(problem: Problem, { fit, filtered }: Candidate): Float64Array {
-  return residualsOf(problem, fit.parameters, filtered);
+  return evaluated(problem, fit.parameters, filtered, false).residuals;
 }
 
-function residualsOf(problem: Problem, p: readonly number[], filtered: boolean): Float64Array {
+/** Weighted residuals with each episode's offset and slope projected out, and likewise their derivatives. */
+function evaluated(problem: Problem, p: readonly number[], filtered: boolean, derivatives: boolean): Evaluation {
   const { bins, edges, sds, lines, hums } = problem;
   const filter = filterOf(p, filtered);
-  const r = new Float64Array(bins.length);
+  const residuals = new Float64Array(bins.length);
+  const columns = derivatives ? p.map(() => new Float64Array(bins.length)) : null;
+  const own = derivatives ? new Float64Array(p.length) : undefined;
   for (let k = 0; k < bins.length; k++) {
-    const bin = bins[k]!;
-    r[k] = (modelAt(bin.ms, bin.width_ms, bin.first, bin.last, edges, p, filter, hums) - bin.value) / sds[k]!;
+    residuals[k] = (modelAt(bins[k]!, edges, p, filter, hums, own) - bins[k]!.value) / sds[k]!;
+    if (own && columns) for (let j = 0; j < own.length; j++) columns[j]![k] = own[j]! / sds[k]!;
   }
-  for (const { from, to, a, b } of lines) {
-    const part = r.subarray(from, to);
-    takeOut(part, a);
-    takeOut(part, b);
-  }
-  return r;
+  for (const { from, to, a, b } of lines)
+    for (const vector of [residuals, ...(columns ?? [])]) {
+      const part = vector.subarray(from, to);
+      takeOut(part, a);
+      takeOut(part, b);
+    }
+  return { residuals, columns };
+}
+
+/** One fit from one first guess; `moment`, ms, holds the edge where it is said to be. */
+function fitFrom(
+  problem: Problem,
+  start: readonly number[],
+  filterKhz: number | null,
+  rate_khz: number,
+  filtered: boolean,
+  most: number,
+  moment?: number,
+): LeastSquares {
+  const interval = 1 / rate_khz;
+  const hums = problem.hums.flatMap(() => [0, 0]);
+  const free: Prior = { mean: 0, sd: Number.POSITIVE_INFINITY };
+  const corner: Prior =
+    filterKhz === null
+      ? { mean: Math.log(rate_khz / 4), sd: unknownCorner_sd }
+      : { mean: Math.log(filterKhz), sd: corner_sd };
+  const edge = filtered ? edgeAt(interval) : { ...edgeAt(interval), mean: 0 };
+  const priors: Prior[] = [
+    free,
+    free,
+    { mean: 0, sd: 2 },
+    moment === undefined ? edge : { mean: moment, sd: 1e-7 },
+    { mean: 0, sd: filtered ? fast_sd : 1e-6 },
+    corner,
+    ...hums.map(() => free),
+  ];
+  const wide = [-1e9, 1e9] as const;
+  const bounds = [
+    wide,
+    wide,
+    [Math.log(0.01), Math.log(100)] as const,
+    filtered ? ([-2 * interval - 0.1, interval + 0.2] as const) : ([-interval, 0] as const),
+    wide,
+    [Math.log(0.2), Math.log(Math.max(2 * rate_khz, 2 * (filterKhz ?? 0)))] as const,
+    ...hums.map(() => wide),
+  ];
+  return leastSquares((p, derivatives) => evaluated(problem, p, filtered, derivatives), start, priors, bounds, most);
 }
 
 /** From several first guesses the fit of least cost; from the pass before, where there is one. */
@@ -450,56 +588,82 @@ function bestOf(
   rate_khz: number,
   peak_ns: number,
 ): Candidate | null {
-  const interval = 1 / rate_khz;
   const hums = problem.hums.flatMap(() => [0, 0]);
   const scale = Math.max(peak_ns, 1e-3);
-  const run = (start: number[], filtered: boolean, most: number): Candidate => {
-    const corner: Prior =
-      filterKhz === null
-        ? { mean: Math.log(rate_khz / 4), sd: unknownCorner_sd }
-        : { mean: Math.log(filterKhz), sd: corner_sd };
-    const priors: Prior[] = [
-      { mean: 0, sd: Number.POSITIVE_INFINITY },
-      { mean: 0, sd: Number.POSITIVE_INFINITY },
-      { mean: 0, sd: 2 },
-      { mean: filtered ? -0.25 * interval : 0, sd: Math.hypot(0.3 * interval, 0.005) },
-      { mean: 0, sd: filtered ? fast_sd : 1e-6 },
-      corner,
-      ...hums.map(() => ({ mean: 0, sd: Number.POSITIVE_INFINITY })),
-    ];
-    const wide = [-1e9, 1e9] as const;
-    const bounds = [
-      wide,
-      wide,
-      [Math.log(0.01), Math.log(100)] as const,
-      filtered ? ([-2 * interval - 0.1, interval + 0.2] as const) : ([-interval, 0] as const),
-      wide,
-      [Math.log(0.2), Math.log(Math.max(2 * rate_khz, 2 * (filterKhz ?? 0)))] as const,
-      ...hums.map(() => wide),
-    ];
-    const steps = [1e-4 * scale, 1e-4 * scale, 1e-4, 1e-4, 1e-3, 1e-4, ...hums.map(() => 1e-2)];
-    const fit = leastSquares((p) => residualsOf(problem, p, filtered), start, steps, priors, bounds, most);
-    return { fit, filtered };
-  };
+  const run = (start: readonly number[], filtered: boolean, most: number): Candidate => ({
+    fit: fitFrom(problem, start, filterKhz, rate_khz, filtered, most),
+    filtered,
+  });
   const cheapest = (candidates: Candidate[]): Candidate =>
     candidates.reduce((best, one) => (one.fit.cost < best.fit.cost ? one : best));
-  if (before) {
-    const start = [...before.fit.parameters.slice(0, 6), ...(hums.length > 0 ? hums : [])];
-    return run(start, before.filtered, 40);
-  }
+  if (before) return run([...before.fit.parameters.slice(0, 6), ...hums], before.filtered, 20);
   const corners = filterKhz === null ? [rate_khz / 8, rate_khz / 3] : [filterKhz];
-  const starts = [0.15, 0.6, 2.5].flatMap((tau) =>
-    corners.map((corner) => [0.1 * scale, 0.9 * scale, Math.log(tau), -0.25 * interval, 0, Math.log(corner), ...hums]),
-  );
-  const filtered = starts.map((start) => run(start, true, 12));
-  const unfiltered =
-    filterKhz === null
-      ? [0.15, 0.6, 2.5].map((tau) =>
-          run([0.1 * scale, 0.9 * scale, Math.log(tau), 0, 0, Math.log(rate_khz / 4), ...hums], false, 12),
-        )
-      : [];
+  const at = edgeAt(1 / rate_khz).mean;
+  const guess = (tau: number, corner: number, moment: number, fast: number): number[] => [
+    0.1 * scale,
+    0.9 * scale,
+    Math.log(tau),
+    moment,
+    fast,
+    Math.log(corner),
+    ...hums,
+  ];
+  const taus = [0.15, 0.6, 2.5];
+  const filtered = taus.flatMap((tau) => corners.map((corner) => run(guess(tau, corner, at, 0), true, 10)));
+  const unfiltered = filterKhz === null ? taus.map((tau) => run(guess(tau, rate_khz / 4, 0, 0), false, 10)) : [];
   const first = cheapest([...filtered, ...unfiltered]);
-  return run(first.fit.parameters, first.filtered, 40);
+  return run(first.fit.parameters, first.filtered, 20);
+}
+
+/**
+ * When within a sample the command changed, and how much fast charge the pipette took, look alike: a later edge is a
+ * smaller charge. The fit is therefore made at nine moments across what is known of it, each weighted by how well it
+ * explains the current (Laplace’s approximation to the marginal likelihood), with moments between them interpolated.
+ */
+function acrossMoments(problem: Problem, best: Candidate, filterKhz: number | null, rate_khz: number): Node[] {
+  const { mean: centre, sd } = edgeAt(1 / rate_khz);
+  const spread = [-2.4, -1.8, -1.2, -0.6, 0, 0.6, 1.2, 1.8, 2.4];
+  const logs: { fit: LeastSquares; log: number; moment: number }[] = [];
+  // From the middle outwards, each from its neighbour.
+  const middle = 4;
+  const order = [4, 3, 2, 1, 0, 5, 6, 7, 8];
+  const fits = new Map<number, LeastSquares>();
+  for (const k of order) {
+    const moment = centre + spread[k]! * sd;
+    const neighbour = k === middle ? best.fit : fits.get(k < middle ? k + 1 : k - 1)!;
+    const start = neighbour.parameters.with(3, moment);
+    // A later edge leaves more of the charge to the pipette.
+    if (k === middle) start[4] = Math.max(-5, Math.min(10, start[4]!));
+    start[4] = start[4]! + (moment - neighbour.parameters[3]!) * (start[0]! + start[1]!);
+    const fit = fitFrom(problem, start, filterKhz, rate_khz, true, 30, moment);
+    fits.set(k, fit);
+  }
+  spread.forEach((z, k) => {
+    const fit = fits.get(k)!;
+    const determinant = fit.covariance ? logDeterminant(fit.covariance) : Number.NaN;
+    if (Number.isFinite(determinant))
+      logs.push({ fit, log: -0.5 * (fit.cost + z * z) + 0.5 * determinant, moment: centre + z * sd });
+  });
+  if (logs.length === 0) return [];
+  const highest = Math.max(...logs.map(({ log }) => log));
+  return logs.map(({ fit, log }) => ({ fit, weight: Math.exp(log - highest) }));
+}
+
+function logDeterminant(covariance: readonly (readonly number[])[]): number {
+  // By elimination, rows scaled to a unit diagonal first.
+  const n = covariance.length;
+  const scale = covariance.map((row, k) => Math.sqrt(row[k]!));
+  const m = covariance.map((row, j) => row.map((value, k) => value / (scale[j]! * scale[k]!)));
+  let log = 0;
+  for (let k = 0; k < n; k++) {
+    if (!(m[k]![k]! > 0)) return Number.NaN;
+    log += Math.log(m[k]![k]!) + 2 * Math.log(scale[k]!);
+    for (let j = k + 1; j < n; j++) {
+      const factor = m[j]![k]! / m[k]![k]!;
+      for (let i = k; i < n; i++) m[j]![i]! -= factor * m[k]![i]!;
+    }
+  }
+  return log;
 }
 
 interface Residuals extends Noise {
@@ -526,13 +690,17 @@ function residualsAtRate(
       const from = indexAt(current, bounds[k]!);
       const to = indexAt(current, bounds[k + 1]!);
       if (to - from < 5) continue;
-      const ms = Float64Array.from({ length: to - from }, (_, i) => (current.start_s + (from + i) / current.rate_hz) * 1000);
+      const ms = Float64Array.from(
+        { length: to - from },
+        (_, i) => (current.start_s + (from + i) / current.rate_hz) * 1000,
+      );
       let first = 0;
       while (first < edges.length && edges[first]!.at_s < Math.min(span.from_s, bounds[k]!) - memory_s) first++;
       let last = first;
       while (last < edges.length && edges[last]!.at_s < bounds[k + 1]!) last++;
       const values = ms.map(
-        (time, i) => samples[from + i]! - modelAt(time, 0, first, last, edges, p, filter, problem.hums),
+        (time, i) =>
+          samples[from + i]! - modelAt({ ms: time, width_ms: 0, first, last }, edges, p, filter, problem.hums),
       );
       stretches.push({ ms, values });
     }
@@ -576,4 +744,3 @@ function humIn({ stretches, sd, correlated }: Residuals, candidates: readonly nu
   }
   return best?.hz ?? null;
 }
-

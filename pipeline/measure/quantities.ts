@@ -54,6 +54,10 @@ const ionicUncertainty =
   'Half-widths of dV/dt times C, of C times dV/dt (not where C is stated) and of the mean injected current (1.96 standard errors), in squares; per pF, divided by C, with C’s own times I/C² in place of the second.';
 const apdUncertainty =
   'Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
+const pulseFit =
+  'The fit: to the current from 50 ms before to 100 ms after every command step of 0.2 to 20 mV (at most 16 in a sweep), each pulse on a straight line of its own, least squares of ΔV·(g_ss·s(t) + g_tr·e(t) + C_p·h(t)) with s, e and h the answers of a four-pole Bessel low-pass (declared corner ± 10 %, undeclared: found) to a step, to exp(−t/τ) and to an impulse; t counts from the moment of the command, known to within a sample (mean 8 µs − 0.2 of the interval, SD 0.3 of it and 12 µs combined); C_p = 0 ± 2.5 pF is what is left of the pipette; a sine at the mains frequency is added where it stands out';
+const pulseError =
+  '1.96 × the standard error: the fit is made at nine moments of the command across what is known of it, each weighted by its likelihood (Laplace); variance within (covariance of the fit, GUM 5.2, noise with its autocorrelation, 1.5 % of the peak for what filter and command may differ from the model while the edge passes, all × χ² over its freedom where above 1) plus variance among them. For the cell: t(0.975, n − 1)·√(SD²/n + what the sweeps’ errors have in common), the latter their mean square less SD². A half-width above half the number is not reported as a number';
 
 type Draft = Omit<Quantity, 'absolute_potential' | 'clamp'> & Partial<Pick<Quantity, 'absolute_potential' | 'clamp'>>;
 const list = (drafts: Draft[]): Quantity[] =>
@@ -760,9 +764,10 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     clamp: 'both',
     definition:
-      'Resistance between the amplifier and the cell’s interior: from voltage-clamp test pulses, else stated, else the stated bridge plus what it left over.',
-    formula: 'ΔV / I_peak extrapolated to the edge; or R_bridge + bridge error',
+      'Resistance between the amplifier and the cell’s interior: from voltage-clamp test pulses, else stated, else the stated bridge plus what it left over. What the amplifier corrects of it while it records is not in it.',
+    formula: `1/(g_ss + g_tr) of the test-pulse fit; by hand, ΔV over the exponential transient carried back to the moment the command changed, steady current included. ${pulseFit}. In current clamp: R_bridge + bridge error`,
     source: circuit,
+    uncertainty: pulseError,
   },
   {
     id: 'access_change_percent',
@@ -785,9 +790,12 @@ export const quantities: readonly Quantity[] = list([
     ...mohm,
     decimals: 0,
     clamp: 'voltage',
-    definition: 'Resistance of the membrane from a voltage-clamp test pulse.',
-    formula: 'ΔV / I_steady − R_a',
+    definition:
+      'Resistance of the membrane, its leak and its seal together, from voltage-clamp test pulses; where the access cannot be told apart the total, and the number says so.',
+    formula:
+      '1/g_ss − R_a of the test-pulse fit (see access resistance); by hand, ΔV over the change of the steady current, less R_a',
     source: circuit,
+    uncertainty: pulseError,
   },
   {
     id: 'cell_capacitance_pf',
@@ -797,9 +805,12 @@ export const quantities: readonly Quantity[] = list([
     ...pf,
     decimals: 1,
     clamp: 'voltage',
-    definition: 'Capacitance of the cell from the charge of a voltage-clamp test pulse.',
-    formula: 'Q/ΔV·((R_a + R_m)/R_m)²',
+    definition:
+      'Capacitance of the cell from voltage-clamp test pulses, the pipette’s own left out. What the amplifier takes away of the transient without the file saying so is not in it.',
+    formula:
+      'τ·(R_a + R_m)/(R_a·R_m) of the test-pulse fit (see access resistance); the same as Q/ΔV·((R_a + R_m)/R_m)² with Q the charge of the exponential transient above the steady current',
     source: circuit,
+    uncertainty: pulseError,
   },
   {
     id: 'transient_capacitance_pf',
@@ -809,9 +820,11 @@ export const quantities: readonly Quantity[] = list([
     ...pf,
     decimals: 1,
     clamp: 'voltage',
-    definition: 'Charge',
-    formula: 'Q',
+    definition:
+      'Charge that a voltage-clamp test pulse moves beyond its steady current, over the size of the pulse: membrane and pipette together. Below about 3 pF nothing was charged but a neutralized pipette.',
+    formula: 'g_tr·τ + C_p of the test-pulse fit (see access resistance); by hand, ∫(I − I_steady)dt/ΔV',
     source: circuit,
+    uncertainty: pulseError,
   },
   {
     id: 'seal_resistance_gohm',
@@ -822,9 +835,12 @@ export const quantities: readonly Quantity[] = list([
     ucum: 'GOhm',
     decimals: 2,
     clamp: 'voltage',
-    definition: 'Seal',
-    formula: 'R',
-    source: circuit,
+    definition:
+      'Resistance to a test pulse that charged no membrane, where it is at least 0.5 GΩ: a pipette sealed to a cell that it has not entered.',
+    formula:
+      '1/g_ss of the test-pulse fit (see access resistance), where g_tr·τ is not resolved and the charge of the transient may lie below 3 pF; by hand, ΔV over the change of the steady current',
+    source: 'gigaseal: Hamill et al. 1981, Pflugers Arch 391:85–100 (from memory); limit ours',
+    uncertainty: pulseError,
   },
   {
     id: 'holding_current_pa',
@@ -834,9 +850,11 @@ export const quantities: readonly Quantity[] = list([
     ...pa,
     decimals: 1,
     clamp: 'voltage',
-    definition: 'Current needed to hold the command potential before the test pulse.',
-    formula: 'median I before onset',
+    definition: 'Current needed to hold the command potential before its first step.',
+    formula: 'median I over the command’s first level, at most its last 0.5 s',
     source: practice,
+    uncertainty:
+      'the stretch is cut into ten equal blocks: t(0.975, 9)·SD of their medians/√10. For the cell: from the spread over the sweeps and their own errors, as with the access resistance',
   },
 
   // Per cell.

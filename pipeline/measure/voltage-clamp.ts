@@ -1,5 +1,5 @@
 import { median, standardDeviation } from '../signal/statistics.ts';
-import { type ClampFit, type CommandEdge, fitClamp } from './clamp-fit.ts';
+import { type ClampFit, type CommandEdge, type Estimate, fitClamp } from './clamp-fit.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
 import { gathered, indexAt, timeAt } from './stretches.ts';
@@ -158,48 +158,21 @@ function commandEdges(levels: readonly Level[]): CommandEdge[] {
   });
 }
 
-interface Derived {
-  value: number;
-  se: number;
-}
-
-/** A function of the fit's parameters and its standard error by the law of propagation (GUM, JCGM 100:2008, 5.2). */
-function derived(fit: ClampFit, f: (p: readonly number[]) => number): Derived {
-  const p = fit.parameters;
-  const value = f(p);
-  const gradient = p.map((one, k) => {
-    const step = 1e-5 * Math.max(Math.abs(one), 1e-3);
-    return (f(p.with(k, one + step)) - f(p.with(k, one - step))) / (2 * step);
-  });
-  let variance = 0;
-  for (let j = 0; j < p.length; j++)
-    for (let k = 0; k < p.length; k++) variance += gradient[j]! * gradient[k]! * fit.covariance[j]![k]!;
-  return { value, se: Math.sqrt(Math.max(0, variance)) };
-}
-
-/** The circuit's elements as functions of [steady nS, transient nS, ln tau, …, fast pF]. */
-const access = (p: readonly number[]): number => 1000 / (p[0]! + p[1]!);
-const total = (p: readonly number[]): number => 1000 / p[0]!;
-const membrane = (p: readonly number[]): number => total(p) - access(p);
-const membranePf = (p: readonly number[]): number =>
-  (1000 * Math.exp(p[2]!) * total(p)) / (access(p) * membrane(p));
-const slowCharge = (p: readonly number[]): number => p[1]! * Math.exp(p[2]!);
-const wholeCharge = (p: readonly number[]): number => slowCharge(p) + p[4]!;
-
 /** The circuit of the fit as readings, or why it is none. */
 function circuitReadings(fit: ClampFit): Readings {
   const at = { from_s: fit.from_s, to_s: fit.to_s };
   const n = fit.edges;
-  const told = (of: Derived, note?: string): Reading => measured(of.value, { n, se: of.se, at, ...(note ? { note } : {}) });
-  const steady = derived(fit, (p) => p[0]!);
-  const transient = derived(fit, slowCharge);
-  const whole = derived(fit, wholeCharge);
+  const told = (of: Estimate, note?: string): Reading =>
+    measured(of.value, { n, se: of.se, at, ...(note ? { note } : {}) });
+  const steady = fit.steady_ns;
+  const transient = fit.slow_pf;
+  const whole = fit.whole_pf;
   const flows = steady.value > 1.96 * steady.se;
   const leastTotal = 1000 / Math.max(1e-9, steady.value + 1.96 * steady.se);
   const against = steady.value < -3 * steady.se ? 'the steady current goes against the step' : null;
-  const charged = fit.parameters[1]! > 0 && transient.value > 3 * transient.se && transient.value > 1;
-  const turned = fit.parameters[1]! < 0 && transient.value < -3 * transient.se && transient.value < -1;
-  const resolved = (of: Derived, note: string): Reading =>
+  const charged = transient.value > 3 * transient.se && transient.value > 1;
+  const turned = transient.value < -3 * transient.se && transient.value < -1;
+  const resolved = (of: Estimate, note: string): Reading =>
     1.96 * of.se <= widest * Math.abs(of.value) && of.value > 0 ? told(of) : absent('unresolved', { note });
   const transientReading = told(whole);
   const without = (note: string): Readings => ({
@@ -210,9 +183,9 @@ function circuitReadings(fit: ClampFit): Readings {
   const totalReading = (note: string): Reading => {
     if (against) return absent('unresolved', { note: against });
     if (!flows) return absent('unresolved', { note: `at least ${leastTotal.toPrecision(2)} MΩ` });
-    return resolved(derived(fit, total), `at least ${leastTotal.toPrecision(2)} MΩ`).value === null
+    return resolved(fit.total_mohm, `at least ${leastTotal.toPrecision(2)} MΩ`).value === null
       ? absent('unresolved', { note: `at least ${leastTotal.toPrecision(2)} MΩ` })
-      : told(derived(fit, total), note);
+      : told(fit.total_mohm, note);
   };
   if (turned)
     return {
@@ -223,7 +196,7 @@ function circuitReadings(fit: ClampFit): Readings {
   if (!charged) {
     const bare = whole.value - 1.96 * whole.se < leastMembrane_pf;
     const sealed = bare && (flows ? 1000 / steady.value : leastTotal) >= leastSeal_mohm;
-    const seal = derived(fit, (p) => total(p) / 1000);
+    const seal = { value: fit.total_mohm.value / 1000, se: fit.total_mohm.se / 1000 };
     if (sealed)
       return {
         ...without('no membrane was charged: a sealed pipette before break-in, or a compensated transient'),
@@ -237,7 +210,7 @@ function circuitReadings(fit: ClampFit): Readings {
       seal_resistance_gohm: absent('unresolved', { note: `less than ${leastSeal_mohm / 1000} GΩ: no seal` }),
     };
   }
-  const tau_ms = Math.exp(fit.parameters[2]!);
+  const tau_ms = fit.tau_ms.value;
   const corner = fit.corner_khz === null ? '' : ` behind a filter of ${fit.corner_khz.toPrecision(2)} kHz`;
   const fast = `the transient of ${tau_ms.toPrecision(2)} ms is not resolved${corner}`;
   const single =
@@ -255,21 +228,21 @@ function circuitReadings(fit: ClampFit): Readings {
   const noted = (reading: Reading): Reading =>
     single !== null && reading.value !== null ? { ...reading, note: single } : reading;
   return {
-    access_resistance_mohm: noted(resolved(derived(fit, access), fast)),
+    access_resistance_mohm: noted(resolved(fit.access_mohm, fast)),
     membrane_resistance_mohm: against
       ? absent('unresolved', { note: against })
       : flows
-        ? resolved(derived(fit, membrane), `at least ${Math.max(0, leastTotal - access(fit.parameters)).toPrecision(2)} MΩ`)
-        : absent('unresolved', { note: `at least ${Math.max(0, leastTotal - access(fit.parameters)).toPrecision(2)} MΩ` }),
-    cell_capacitance_pf: noted(flows || !against ? resolved(derived(fit, membranePfSafe), fast) : absent('unresolved', { note: fast })),
+        ? resolved(fit.membrane_mohm, `at least ${Math.max(0, leastTotal - fit.access_mohm.value).toPrecision(2)} MΩ`)
+        : absent('unresolved', {
+            note: `at least ${Math.max(0, leastTotal - fit.access_mohm.value).toPrecision(2)} MΩ`,
+          }),
+    cell_capacitance_pf: noted(
+      flows || !against ? resolved(fit.membrane_pf, fast) : absent('unresolved', { note: fast }),
+    ),
     transient_capacitance_pf: transientReading,
     seal_resistance_gohm: absent('membrane-charged'),
   };
 }
-
-/** Where the steady current is lost in noise the membrane is taken as closed: C = tau/R_a. */
-const membranePfSafe = (p: readonly number[]): number =>
-  p[0]! > 0 ? membranePf(p) : (1000 * Math.exp(p[2]!)) / access(p);
 
 /** Shares of the largest current that the circuit may leave unexplained: worth a word, and too much. Ours. */
 const mostLeftOver = 0.03;

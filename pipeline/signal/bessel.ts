@@ -29,62 +29,91 @@ const conjugate = (a: Complex): Complex => ({ re: a.re, im: -a.im });
 /** Residues of 105/(s⁴ + …) at the two poles above: H(s) = Σ r/(s − p) over all four. */
 const residues = poles.map((pole, k) => {
   const other = poles[1 - k]!;
-  const product = [conjugate(pole), other, conjugate(other)]
-    .map((one) => minus(pole, one))
-    .reduce(times);
+  const product = [conjugate(pole), other, conjugate(other)].map((one) => minus(pole, one)).reduce(times);
   return over({ re: 105, im: 0 }, product);
 });
 
-export interface BesselLowPass {
-  /** Output at a time after a unit impulse (1/ms), a unit step, and a step that decays as exp(−t/tau). 0 before it. */
-  impulse(ms: number): number;
-  step(ms: number): number;
-  decay(ms: number, tau_ms: number): number;
-  /** From here on, ms, the filter’s own response is below 10⁻⁷ of a step. */
-  settled_ms: number;
-  /** Gain for a decaying exponential: what `decay` tends to is this times exp(−t/tau). */
-  gainOfDecay(tau_ms: number): number;
+/** What the filter makes of an impulse, a step and a decaying step at one time, and how it changes with its arguments. */
+export interface FilteredStep {
+  /** Output for a unit impulse, 1/ms, and its slope, 1/ms². */
+  impulse: number;
+  impulseSlope: number;
+  /** Output for a unit step. */
+  step: number;
+  /** Output for a unit step that decays as exp(−t/tau), and its derivative by ln tau. */
+  decay: number;
+  decayByLogTau: number;
+}
+
+export interface LowPass {
+  /** Fills `into` with the outputs at a time, ms, after the edge; all 0 before it. */
+  at(ms: number, tau_ms: number, into: FilteredStep): void;
 }
 
 /** @param cornerKhz frequency of −3 dB, kHz, above 0 */
-export function besselLowPass(cornerKhz: number): BesselLowPass {
+export function besselLowPass(cornerKhz: number): LowPass {
   if (!(cornerKhz > 0 && Number.isFinite(cornerKhz)))
     throw new RangeError(`cornerKhz must be a finite frequency above 0 kHz, got ${cornerKhz}`);
   const rate = (2 * Math.PI * cornerKhz) / corner;
   const p = poles.map(({ re, im }) => ({ re: re * rate, im: im * rate }));
   const r = residues.map(({ re, im }) => ({ re: re * rate, im: im * rate }));
   const stepWeights = p.map((pole, k) => over(r[k]!, pole));
-  /** Twice the real part of Σ w·exp(p·t): both of each conjugate pair. */
-  const sum = (weights: readonly Complex[], ms: number): number => {
-    let total = 0;
-    for (let k = 0; k < 2; k++) {
-      const size = Math.exp(p[k]!.re * ms);
-      const angle = p[k]!.im * ms;
-      total += 2 * size * (weights[k]!.re * Math.cos(angle) - weights[k]!.im * Math.sin(angle));
-    }
-    return total;
-  };
+  const slopeWeights = p.map((pole, k) => times(r[k]!, pole));
+  // By partial fractions the decaying step is Σ w·(exp(pt) − exp(−t/tau)) with w = r/(p + 1/tau).
   let heldTau = Number.NaN;
-  let decayWeights: Complex[] = [];
+  let once: Complex[] = [];
+  let twice: Complex[] = [];
   let gain = 1;
+  let gainSlope = 0;
   const prepare = (tau: number): void => {
     if (tau === heldTau) return;
     heldTau = tau;
-    decayWeights = p.map((pole, k) => over(r[k]!, { re: pole.re + 1 / tau, im: pole.im }));
-    gain = -2 * (decayWeights[0]!.re + decayWeights[1]!.re);
+    const shifted = p.map((pole) => ({ re: pole.re + 1 / tau, im: pole.im }));
+    once = shifted.map((own, k) => over(r[k]!, own));
+    twice = shifted.map((own, k) => over(once[k]!, own));
+    gain = -2 * (once[0]!.re + once[1]!.re);
+    gainSlope = 2 * (twice[0]!.re + twice[1]!.re);
   };
+  // Here the filter's own response is below 10⁻⁸ of a step.
+  const settled = 20 / -p[1]!.re;
   return {
-    impulse: (ms) => (ms <= 0 ? 0 : sum(r, ms)),
-    step: (ms) => (ms <= 0 ? 0 : 1 + sum(stepWeights, ms)),
-    decay(ms, tau) {
-      if (ms <= 0) return 0;
+    at(ms, tau, into) {
+      into.impulse = 0;
+      into.impulseSlope = 0;
+      into.step = 0;
+      into.decay = 0;
+      into.decayByLogTau = 0;
+      if (ms <= 0) return;
       prepare(tau);
-      return sum(decayWeights, ms) + gain * Math.exp(-ms / tau);
-    },
-    settled_ms: 18 / -p[1]!.re,
-    gainOfDecay(tau) {
-      prepare(tau);
-      return gain;
+      const late = Math.exp(-ms / tau);
+      into.step = 1;
+      into.decay = gain * late;
+      let byRate = (gainSlope - gain * ms) * late;
+      if (ms < settled)
+        for (let k = 0; k < 2; k++) {
+          const size = 2 * Math.exp(p[k]!.re * ms);
+          const angle = p[k]!.im * ms;
+          const c = size * Math.cos(angle);
+          const s = size * Math.sin(angle);
+          into.impulse += r[k]!.re * c - r[k]!.im * s;
+          into.impulseSlope += slopeWeights[k]!.re * c - slopeWeights[k]!.im * s;
+          into.step += stepWeights[k]!.re * c - stepWeights[k]!.im * s;
+          into.decay += once[k]!.re * c - once[k]!.im * s;
+          byRate -= twice[k]!.re * c - twice[k]!.im * s;
+        }
+      into.decayByLogTau = -byRate / tau;
     },
   };
 }
+
+/** No filter at all: the sample at the edge already holds the whole step. */
+export const noLowPass: LowPass = {
+  at(ms, tau, into) {
+    const after = ms >= -1e-7;
+    into.impulse = 0;
+    into.impulseSlope = 0;
+    into.step = after ? 1 : 0;
+    into.decay = after ? Math.exp(-Math.max(0, ms) / tau) : 0;
+    into.decayByLogTau = after ? (Math.max(0, ms) / tau) * into.decay : 0;
+  },
+};

@@ -16,18 +16,22 @@ export interface LeastSquares {
   n: number;
 }
 
+/** Weighted residuals, and their derivatives by each parameter where they were asked for. */
+export interface Evaluation {
+  residuals: Float64Array;
+  columns: Float64Array[] | null;
+}
+
 /**
- * Minimizes Σ r² + Σ ((p − mean)/sd)². Residuals must be weighted: divided by their standard deviation. The Jacobian is
- * taken by forward differences.
- * @param residuals weighted residuals at the parameters; always of one length
- * @param start first guess. @param steps step of each parameter for its difference, in its unit, not 0
+ * Minimizes Σ r² + Σ ((p − mean)/sd)². Residuals must be weighted: divided by their standard deviation.
+ * @param evaluate residuals at the parameters, always of one length, with their derivatives on demand
+ * @param start first guess
  * @param priors one for each parameter. @param bounds [low, high] for each: steps are cut there
  * @see Levenberg 1944, Q Appl Math 2:164–168; Marquardt 1963, J SIAM 11:431–441 (from memory)
  */
 export function leastSquares(
-  residuals: (parameters: readonly number[]) => Float64Array,
+  evaluate: (parameters: readonly number[], derivatives: boolean) => Evaluation,
   start: readonly number[],
-  steps: readonly number[],
   priors: readonly Prior[],
   bounds: readonly (readonly [number, number])[],
   most = 40,
@@ -44,17 +48,12 @@ export function leastSquares(
   const priorCost = (p: readonly number[]): number =>
     p.reduce((sum, value, k) => sum + precision[k]! * (value - priors[k]!.mean) ** 2, 0);
   let parameters = held(start);
-  let r = residuals(parameters);
+  let r = evaluate(parameters, false).residuals;
   let chi2 = squares(r);
   let cost = chi2 + priorCost(parameters);
   let damping = 1e-3;
   const system = (): { normal: number[][]; gradient: number[] } => {
-    const columns = parameters.map((value, k) => {
-      const step = value + steps[k]! > bounds[k]![1] ? -steps[k]! : steps[k]!;
-      const moved = residuals(parameters.map((one, j) => (j === k ? one + step : one)));
-      for (let i = 0; i < moved.length; i++) moved[i] = (moved[i]! - r[i]!) / step;
-      return moved;
-    });
+    const columns = evaluate(parameters, true).columns!;
     const normal = columns.map((a, j) =>
       columns.map((b, k) => {
         let sum = j === k ? precision[j]! : 0;
@@ -70,29 +69,31 @@ export function leastSquares(
     return { normal, gradient };
   };
   let current = system();
+  let slow = 0;
   for (let round = 0; round < most; round++) {
     let improved = false;
-    for (let trial = 0; trial < 8; trial++) {
+    for (let trial = 0; trial < 14; trial++) {
       const damped = current.normal.map((row, j) => row.map((value, k) => (j === k ? value * (1 + damping) : value)));
       const move = solve(damped, current.gradient);
       if (move) {
         const next = held(parameters.map((value, k) => value - move[k]!));
-        const nextR = residuals(next);
+        const nextR = evaluate(next, false).residuals;
         const nextChi2 = squares(nextR);
         const nextCost = nextChi2 + priorCost(next);
         if (Number.isFinite(nextCost) && nextCost < cost) {
-          improved = cost - nextCost > 1e-7 * (1 + cost);
+          improved = true;
+          slow = cost - nextCost > 1e-6 * (1 + cost) ? 0 : slow + 1;
           parameters = next;
           r = nextR;
           chi2 = nextChi2;
           cost = nextCost;
-          damping = Math.max(1e-9, damping / 5);
+          damping = Math.max(1e-9, damping / 4);
           break;
         }
       }
-      damping *= 6;
+      damping *= 4;
     }
-    if (!improved) break;
+    if (!improved || slow >= 2) break;
     current = system();
   }
   current = system();

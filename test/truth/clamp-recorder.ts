@@ -40,7 +40,12 @@ export interface Rig {
 const stepHz = 1_000_000;
 
 /** Current of the clamped circuit behind the filter, pA, on the fine grid, for steps of the command of `mv`. */
-export function clampCurrent(circuit: Circuit, rig: Rig, edges: readonly { at_s: number; mv: number }[], seconds: number): Float64Array {
+export function clampCurrent(
+  circuit: Circuit,
+  rig: Rig,
+  edges: readonly { at_s: number; mv: number }[],
+  seconds: number,
+): Float64Array {
   const n = Math.round(seconds * stepHz);
   const dt = 1000 / stepHz; // ms
   const { access_mohm: ra, membrane_mohm: rm, pf } = circuit;
@@ -96,13 +101,12 @@ export function recordClamp(
   circuit: Circuit,
   rig: Rig,
   seed: number,
-  clean?: Float64Array,
 ): { command: Float64Array; current: Float64Array; seconds: number; holding_pa: number } {
   const { edges, seconds } = protocol(rig);
-  const fine = clean ?? clampCurrent(circuit, rig, edges, seconds);
+  const fine = clampCurrent(circuit, rig, edges, seconds);
   const n = Math.round(seconds * rig.rate_hz);
   const noise = colouredNoise(rig, n, seed);
-  const phase = normalNoise(seed + 7777)() * 3;
+  const phase = 3 * (noise[0]! / (rig.noise_pa || 1));
   const holding_pa = -40;
   const command = new Float64Array(n).fill(-70);
   const current = new Float64Array(n);
@@ -124,6 +128,7 @@ export function recordClamp(
 export function protocol(rig: Rig): { edges: { at_s: number; mv: number }[]; seconds: number } {
   const length = rig.pulse_ms / 1000;
   const gap = Math.max(0.03, 2 * length);
+  // Whole samples, so that the file’s command is what was asked for at the sample that shows it.
   const shift = rig.phase_us * 1e-6;
   const edges = Array.from({ length: rig.pulses }, (_, p) => {
     const from = 0.05 + p * (length + gap);

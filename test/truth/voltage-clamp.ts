@@ -3,8 +3,8 @@
  * of conditions and measured by the whole of `measureSweep`.
  */
 import { measureSweep } from '../../pipeline/measure/sweep.ts';
-import { neuron } from '../measure/made.ts';
-import { type Circuit, clampCurrent, protocol, type Rig, recordClamp } from './clamp-recorder.ts';
+import { neuron, uniform } from '../measure/made.ts';
+import { type Circuit, type Rig, recordClamp } from './clamp-recorder.ts';
 import type { Trial, TrialOptions } from './score.ts';
 
 const circuits: Circuit[] = (
@@ -48,7 +48,6 @@ const rig = (name: string, more: Partial<Rig>): Rig => ({ ...usual, name, ...mor
 /** Conditions under which a number must be right; those of a compensated transient stand apart. */
 export const rigs: Rig[] = [
   usual,
-  rig('edge between samples', { phase_us: 20 }),
   rig('5 kHz filter', { filter_khz: 5 }),
   rig('50 kHz, 10 kHz filter', { rate_hz: 50_000, filter_khz: 10 }),
   rig('10 kHz, 3 kHz filter', { rate_hz: 10_000, filter_khz: 3 }),
@@ -66,17 +65,44 @@ export const rigs: Rig[] = [
   rig('drift 100 pA/s', { drift_pa_per_s: 100 }),
   rig('access corrected by half', { correction: 0.5 }),
 ];
-const quickRigs = new Set([usual.name, '50 kHz, 10 kHz filter', 'filter not stated', 'hum 10 pA', 'edge between samples']);
+const quickRigs = new Set([usual.name, '50 kHz, 10 kHz filter', 'filter not stated', 'hum 10 pA']);
 
 export function trials({ seeds, quick }: TrialOptions): Trial[] {
   const out: Trial[] = [];
   for (const condition of rigs.filter((one) => !quick || quickRigs.has(one.name)))
     for (const circuit of quick ? circuits.slice(0, 3) : circuits) {
-      const { edges, seconds } = protocol(condition);
-      const clean = clampCurrent(circuit, condition, edges, seconds);
-      for (let seed = 1; seed <= seeds; seed++) out.push(...measuredTrials(circuit, condition, seed, clean));
+      for (let seed = 1; seed <= seeds; seed++)
+        out.push(...measuredTrials(circuit, drawn(condition, `${condition.name} ${circuit.name} ${seed}`), seed));
     }
   return out;
+}
+
+/** A number for each text, the same in every run. */
+function seedOf(text: string): number {
+  let hash = 2166136261;
+  for (const letter of text) hash = Math.imul(hash ^ letter.codePointAt(0)!, 16777619);
+  return (hash >>> 1) + 1;
+}
+
+/**
+ * The rig with what nobody states drawn anew for every recording: when within a sample the command changes (at the
+ * sample itself in half of them), how slow the command is (3 to 15 µs), what is left of the pipette (SD 1 pF), and by how
+ * much the filter’s corner differs from its name (SD 4 %).
+ */
+function drawn(condition: Rig, text: string): Rig & { named_khz: number } {
+  const next = uniform(seedOf(text));
+  const normal = Math.sqrt(-2 * Math.log(next())) * Math.cos(2 * Math.PI * next());
+  const normal2 = Math.sqrt(-2 * Math.log(next())) * Math.cos(2 * Math.PI * next());
+  const interval_us = 1e6 / condition.rate_hz;
+  const special = (id: keyof Rig): boolean => condition[id] !== usual[id];
+  return {
+    ...condition,
+    named_khz: condition.filter_khz,
+    phase_us: next() < 0.5 ? 0 : Math.floor(next() * interval_us),
+    command_us: special('command_us') ? condition.command_us : 3 + 12 * next(),
+    pipette_pf: special('pipette_pf') ? condition.pipette_pf : normal,
+    filter_khz: condition.filter_khz * (1 + 0.04 * normal2),
+  };
 }
 
 /** What the definitions ask of the circuit: the access is what is left after correction. */
@@ -86,18 +112,18 @@ const truths = (circuit: Circuit, condition: Rig): Record<string, number> => ({
   cell_capacitance_pf: circuit.pf,
 });
 
-export function readingsOf(circuit: Circuit, condition: Rig, seed: number, clean?: Float64Array) {
-  const { command, current, holding_pa, seconds } = recordClamp(circuit, condition, seed, clean);
+export function readingsOf(circuit: Circuit, condition: Rig & { named_khz?: number }, seed: number) {
+  const { command, current, holding_pa, seconds } = recordClamp(circuit, condition, seed);
   const signal = (samples: Float64Array) => ({ samples, rate_hz: condition.rate_hz, start_s: 0 });
   const { readings } = measureSweep(
     { clamp: 'voltage', voltage: signal(command), current: signal(current), stated_stimulus: null, bridge_mohm: null },
-    { ...neuron, filter_khz: condition.filter_stated ? condition.filter_khz : null },
+    { ...neuron, filter_khz: condition.filter_stated ? (condition.named_khz ?? condition.filter_khz) : null },
   );
   return { readings, holding_pa, seconds };
 }
 
-function measuredTrials(circuit: Circuit, condition: Rig, seed: number, clean: Float64Array): Trial[] {
-  const { readings, holding_pa } = readingsOf(circuit, condition, seed, clean);
+function measuredTrials(circuit: Circuit, condition: Rig, seed: number): Trial[] {
+  const { readings, holding_pa } = readingsOf(circuit, condition, seedOf(`${circuit.name} ${condition.name} ${seed}`));
   // The first level lasts 50 ms.
   const truth = { ...truths(circuit, condition), holding_current_pa: holding_pa + 0.025 * condition.drift_pa_per_s };
   return Object.entries(truth).map(([quantity, value]) => {
