@@ -73,7 +73,8 @@ function rheobaseOf(sweeps: readonly NumberedSweep[], firing: readonly NumberedS
   if (!first) return absent(tried.length > 0 || longSteps(sweeps).length > 0 ? 'never-fired' : stimulusReason(sweeps));
   if (own) return absent('unresolved', { note: 'the cell fires without a stimulus' });
   const value = stepPa(first)!;
-  const below = Math.max(0, ...tried.map((sweep) => stepPa(sweep)!).filter((pa) => pa < value - 1e-6));
+  // A recorded step is never twice the very same: within 1 % it is the same step.
+  const below = Math.max(0, ...tried.map((sweep) => stepPa(sweep)!).filter((pa) => pa < 0.99 * value));
   const brief = stepLength_s(first) < 0.1 ? `, steps of ${(stepLength_s(first) * 1000).toPrecision(3)} ms` : '';
   return measured(value, {
     n: tried.length,
@@ -86,11 +87,12 @@ function rheobaseOf(sweeps: readonly NumberedSweep[], firing: readonly NumberedS
 
 /** Slope from rheobase to half the largest rate, repeats averaged; the next point is taken in where two are too few. */
 function gain(fi: readonly RatePoint[], rheobase: number): Reading {
-  const levels = [...Map.groupBy(fi, (point) => Number(point.pa.toPrecision(6)))]
+  const rounded = (pa: number): number => Number(pa.toPrecision(6));
+  const levels = [...Map.groupBy(fi, (point) => rounded(point.pa))]
     .map(([pa, points]) => ({ pa, hz: mean(points.map((point) => point.hz))!, sweep: points[0]!.sweep }))
     .sort((a, b) => a.pa - b.pa);
   const largest = levels.reduce((best, one) => (one.hz > best.hz ? one : best), { pa: 0, hz: 0, sweep: -1 });
-  const rising = levels.filter((one) => one.pa >= rheobase - 1e-6 && one.pa <= largest.pa);
+  const rising = levels.filter((one) => one.pa >= rounded(rheobase) && one.pa <= largest.pa);
   const lower = rising.filter((one) => one.hz <= largest.hz / 2);
   const chosen = lower.length >= 3 ? lower : rising.slice(0, Math.max(2, lower.length + 1));
   const fit = linearFit(
