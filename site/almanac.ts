@@ -1,5 +1,5 @@
 /** The ledger as the pages need it: read once, with one short row for each cell. */
-import type { CheckEntry, IonPotential, Standing } from '../pipeline/judge/types.ts';
+import type { CheckEntry, IonPotential, SolutionIons, Standing } from '../pipeline/judge/types.ts';
 import { openLedgerReader } from '../pipeline/ledger/read.ts';
 import type { ArchiveRow, CellRow, FileRow, LedgerReader, NoteRow, SweepRow } from '../pipeline/ledger/types.ts';
 import type { Readings } from '../pipeline/measure/types.ts';
@@ -27,6 +27,8 @@ export interface Solutions {
   ljp_from: 'stated' | 'computed' | null;
   e_k: IonPotential | null;
   e_na: IonPotential | null;
+  /** Ion by ion; null where a recipe or the temperature is not known. */
+  solution: SolutionIons | null;
 }
 
 /** What lists and tables say about a cell. */
@@ -170,6 +172,7 @@ function summaryOf(
           ljp_from: circumstances.ljp_from,
           e_k: circumstances.e_k,
           e_na: circumstances.e_na,
+          solution: circumstances.solution ?? null,
         }
       : null,
     readings: first?.readings ?? {},

@@ -60,7 +60,12 @@ export function gradientReadings(sweeps: readonly NumberedSweep[], done: Reading
   const access = done['access_resistance_mohm'] ?? absent('fact-missing', { missing: ['access_mohm'] });
 
   const noVolume = volume === null ? absent('fact-missing', { missing: ['volume_pl'] }) : null;
-  const noSize = noVolume ?? (height.value === null ? height : capacitance.value === null ? capacitance : null);
+  // A plateau or a calcium spike lets in sodium by another measure than C·H: no published factor holds for it.
+  const otherMeasure = context.slow
+    ? absent('unresolved', { note: 'no published factor for spikes with a plateau or carried by calcium' })
+    : null;
+  const noSize =
+    noVolume ?? otherMeasure ?? (height.value === null ? height : capacitance.value === null ? capacitance : null);
   const gain = (excess: number, spikes = spikesCounted): number =>
     spikes * changePerSpikeMm(capacitance.value!, Math.max(height.value!, 0), excess, volume!);
   const sizes = [shareOf(capacitance), shareOf(height)];

@@ -97,6 +97,15 @@ describe('gradientReadings(sweeps, readings, context)', () => {
     const stated = read(sweepsOf(5, 5, 5), known, { stated_capacitance_pf: 100 });
     expect(numberIn(stated, 'sodium_gain_mm_per_100_spikes')).toBeCloseTo(2 * 1.6583, 3);
   });
+  it('does not count plateau spikes by a factor measured on brief ones', () => {
+    const slow = read(sweepsOf(5, 5, 5), known, { slow: true });
+    expect(slow['sodium_gain_mm_per_100_spikes']).toMatchObject({
+      value: null,
+      note: expect.stringMatching(/plateau/),
+    });
+    expect(slow['expected_rundown_percent_per_100_spikes']!.value).toBeNull();
+    expect(numberIn(slow, 'exchange_time_constant_s')).toBeGreaterThan(50);
+  });
   it('says so where nothing would be left of the gradient', () =>
     expect(
       read(sweepsOf(5, 5, 5), known, { gradients: { ...gradients, volume_pl: 0.01 } })['e_k_change_mv_per_100_spikes'],
