@@ -159,6 +159,22 @@ const physics: CheckEntry[] = [
 
 const conditions: CheckEntry[] = [
   {
+    id: 'pulse-sign',
+    quantity: 'pulse_response_mohm',
+    ground: 'conditions',
+    asks: 'Does the membrane charge the way the brief pulse’s current flows?',
+    limit: 'above zero; outside only beyond the 95 % uncertainty of the measurement',
+    causes: [
+      'the current is stored with the sign of a membrane current, outward positive',
+      'sign of the stimulus channel inverted',
+      'stimulus and response belong to different sweeps',
+    ],
+    bench:
+      'Which way does the trace go when negative current is injected? Multiply the stored current by −1 if it is turned.',
+    source: 'I = C·dV/dt: positive current into a cell depolarizes it',
+    level: 'cell',
+  },
+  {
     id: 'no-cell',
     quantity: 'baseline_mv',
     ground: 'conditions',

@@ -120,6 +120,18 @@ const baselineNegative: CellQuestion = (setting) => {
   });
 };
 
+const pulseSign: CellQuestion = (setting) => {
+  const reading = cellReading(setting, 'pulse_response_mohm');
+  if (!isPresent(reading)) return null;
+  return hold(reading, {
+    quantity: 'pulse_response_mohm',
+    subject: 'the response to the brief pulses',
+    low: 0,
+    name: 'zero',
+    meaning: 'the cell charges against the stored current, so that the sign of the current or of the voltage is turned',
+  });
+};
+
 const riseSamples: CellQuestion = (setting) =>
   hold(cellReading(setting, 'rise_samples'), {
     quantity: 'rise_samples',
@@ -402,6 +414,7 @@ const baselineDrift: CellQuestion = (setting) => {
 
 export const conditionQuestions: Record<string, CellQuestion> = {
   'no-cell': noCell,
+  'pulse-sign': pulseSign,
   'baseline-negative': baselineNegative,
   'rise-samples': riseSamples,
   'filter-passes-rise': filterPassesRise,

@@ -34,6 +34,7 @@ export const absenceSentences: Record<AbsenceCode, string> = {
   'rate-too-low': 'the sampling rate is too low',
   'never-fired': 'no step made the cell fire',
   'under-stimulus': 'hidden under the stimulus’s own artefact',
-  'not-this-class': 'given for heart and calcium spikes only',
+  'not-this-class': 'not given for this kind of cell',
+  'not-blocked': 'no depolarization block in this sweep',
   unreadable: 'the samples could not be read',
 };

@@ -4,8 +4,9 @@
  */
 import { linearFit } from '../signal/line.ts';
 import { median } from '../signal/statistics.ts';
+import { absent, measured } from './reading.ts';
 import { timeAt } from './stretches.ts';
-import type { Signal, Stimulus } from './types.ts';
+import type { Reading, Signal, Spike, Stimulus } from './types.ts';
 
 export interface Pulse {
   on_s: number;
@@ -260,4 +261,39 @@ function suddenRise(
     }
   }
   return null;
+}
+
+/**
+ * How far the membrane charges while a brief pulse lasts, over the pulse's current, MΩ: from where the edge has settled
+ * to just before the end, the jumps at the edges left out; median over pulses in which no spike peaks. A membrane charges
+ * the way the current flows, so that a negative value speaks of a turned sign.
+ */
+export function pulseResponse(
+  voltage: Signal,
+  stimulus: Stimulus,
+  current: Signal | null,
+  spikes: readonly Spike[],
+  noise_mv: number,
+): Reading {
+  const pulses = briefPulses(stimulus);
+  const pa = stimulus.amplitude;
+  if (pulses.length === 0 || pa === null || pa === 0) return absent('no-stimulus', { note: 'no brief pulse' });
+  const peaks = spikes.map((spike) => spike.values['peak_at_s'] ?? Number.NaN);
+  const found = pulses.flatMap(({ on_s, off_s }) => {
+    if (peaks.some((peak) => peak >= on_s && peak <= off_s)) return [];
+    const spread_s = Math.max(settle_s, current ? edgeSpread_s(current, on_s) + 0.0001 : 0);
+    const from = Math.ceil((on_s + spread_s - voltage.start_s) * voltage.rate_hz);
+    const to =
+      Math.floor((off_s - Math.max(1 / voltage.rate_hz, spread_s - settle_s) - voltage.start_s) * voltage.rate_hz) - 1;
+    if (from < 0 || to >= voltage.samples.length || to - from < 1) return [];
+    const change = voltage.samples[to]! - voltage.samples[from]!;
+    return Number.isFinite(change) ? [{ change, at_s: on_s }] : [];
+  });
+  const change = median(found.map((one) => one.change));
+  if (change === null) return absent('unresolved');
+  return measured((change / pa) * 1000, {
+    n: found.length,
+    se: Math.abs((noise_mv * Math.SQRT2 * 1000) / pa / Math.sqrt(found.length)),
+    at: { from_s: found[0]!.at_s },
+  });
 }

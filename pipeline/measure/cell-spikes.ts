@@ -1,7 +1,9 @@
 import { linearFit } from '../signal/line.ts';
 import { mean, median } from '../signal/statistics.ts';
 import {
+  commonReason,
   longSteps,
+  medianOver,
   type Point,
   placeOf,
   pointsOf,
@@ -70,6 +72,11 @@ export function firingReadings(sweeps: readonly NumberedSweep[], fi: readonly Ra
 function rheobaseOf(sweeps: readonly NumberedSweep[], firing: readonly NumberedSweep[], own: boolean): Reading {
   const first = firing[0];
   const tried = longSteps(sweeps).filter((sweep) => stepPa(sweep)! > 0);
+  const answered = longSteps(sweeps).filter(
+    (sweep) => stepPa(sweep)! < 0 && stepLength_s(sweep) <= 0.02 && fires(sweep),
+  );
+  if (!first && answered.length > 0)
+    return absent('unresolved', { note: 'spikes follow brief negative pulses: the sign of the current may be turned' });
   if (!first) return absent(tried.length > 0 || longSteps(sweeps).length > 0 ? 'never-fired' : stimulusReason(sweeps));
   if (own) return absent('unresolved', { note: 'the cell fires without a stimulus' });
   const value = stepPa(first)!;
@@ -271,4 +278,35 @@ function over(
     at: placeOfSpike(nearest.sweep.sweep, nearest.spike),
     ...(note ? { note } : {}),
   });
+}
+
+/** Response to brief pulses, doublets, bursts and spikelets of all sweeps, and the largest instantaneous rate of any. */
+export function trainReadings(sweeps: readonly NumberedSweep[]): Readings {
+  const total = (id: string): Reading => {
+    const points = pointsOf(sweeps, id);
+    if (points.length === 0) return commonReason(sweeps, id, 'not-this-clamp');
+    const most = points.reduce((best, one) => (one.value > best.value ? one : best));
+    return measured(
+      points.reduce((sum, one) => sum + one.value, 0),
+      { n: points.length, ...(most.value > 0 ? { at: placeOf(most) } : {}) },
+    );
+  };
+  const rates = pointsOf(sweeps, 'largest_instantaneous_rate_hz');
+  const fastest = rates.length === 0 ? null : rates.reduce((best, one) => (one.value > best.value ? one : best));
+  return {
+    pulse_response_mohm: medianOver(
+      pointsOf(sweeps, 'pulse_response_mohm'),
+      commonReason(sweeps, 'pulse_response_mohm', 'not-this-clamp'),
+    ),
+    doublets: total('doublets'),
+    bursts: total('bursts'),
+    spikelets: total('spikelets'),
+    largest_instantaneous_rate_hz: fastest
+      ? measured(fastest.value, {
+          n: rates.length,
+          ...(fastest.reading.se === undefined ? {} : { se: fastest.reading.se }),
+          at: placeOf(fastest),
+        })
+      : commonReason(sweeps, 'largest_instantaneous_rate_hz', 'not-this-clamp'),
+  };
 }

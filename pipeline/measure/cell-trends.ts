@@ -130,7 +130,24 @@ export function driftReading(sweeps: readonly NumberedSweep[], context: CellCont
   });
 }
 
-/** Height of the first spike of each step: against spikes fired before, and against the stimulus. */
+/** Brief pulses drive a cell whichever sign their current was stored with, s. */
+const briefest_s = 0.02;
+
+/** Sweeps with a stimulus to fire on: depolarizing steps, trains of pulses, and brief pulses of either sign. */
+function drivenSweeps(sweeps: readonly NumberedSweep[]): { sweep: NumberedSweep; pa: number }[] {
+  const steps = longSteps(sweeps).flatMap((sweep) => {
+    const pa = stepPa(sweep)!;
+    const brief = (sweep.stimulus.end_s ?? 0) - (sweep.stimulus.onset_s ?? 0) <= briefest_s;
+    return pa > 0 || brief ? [{ sweep, pa: Math.abs(pa) }] : [];
+  });
+  const trains = sweeps.flatMap((sweep) => {
+    const { kind, amplitude } = sweep.stimulus;
+    return kind === 'pulse train' && amplitude !== null ? [{ sweep, pa: Math.abs(amplitude) }] : [];
+  });
+  return [...steps, ...trains].sort((a, b) => a.sweep.sweep - b.sweep.sweep);
+}
+
+/** Height of the first spike of each step or train of pulses: against spikes fired before, and against the stimulus. */
 export function rundownReadings(sweeps: readonly NumberedSweep[]): Readings {
   let fired = 0;
   const before = new Map(
@@ -140,13 +157,15 @@ export function rundownReadings(sweeps: readonly NumberedSweep[]): Readings {
       return [sweep, count] as const;
     }),
   );
-  const firsts = longSteps(sweeps).flatMap((sweep) => {
-    const pa = stepPa(sweep)!;
+  const stimulated = drivenSweeps(sweeps);
+  const firsts = stimulated.flatMap(({ sweep, pa }) => {
     const height = spikesDuring(sweep.spikes, sweep.stimulus)[0]?.values['spike_height_mv'] ?? null;
-    return pa > 0 && height !== null ? [{ pa, height, sweep, fired: before.get(sweep)! }] : [];
+    return height !== null ? [{ pa, height, sweep, fired: before.get(sweep)! }] : [];
   });
   if (firsts.length === 0) {
-    const none = absent(longSteps(sweeps).length === 0 ? stimulusReason(sweeps) : 'never-fired');
+    const none = absent(
+      stimulated.length === 0 && longSteps(sweeps).length === 0 ? stimulusReason(sweeps) : 'never-fired',
+    );
     return { height_rundown_percent_per_100_spikes: none, height_stimulus_slope_mv_per_na: none };
   }
   return {

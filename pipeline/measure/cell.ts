@@ -1,6 +1,7 @@
+import { beatReadings } from './cell-beats.ts';
 import { gradientReadings } from './cell-gradients.ts';
 import { accessReadings, passiveReadings, vOnI } from './cell-passive.ts';
-import { firingReadings, rateOnI, referenceSpikeOf, spikeReadings } from './cell-spikes.ts';
+import { firingReadings, rateOnI, referenceSpikeOf, spikeReadings, trainReadings } from './cell-spikes.ts';
 import { driftReading, qualityReadings, restingReadings, rundownReadings } from './cell-trends.ts';
 import { quantitiesOf } from './quantities.ts';
 import { absent, measured } from './reading.ts';
@@ -43,6 +44,8 @@ function measureCondition(condition: string, sweeps: NumberedSweep[], context: C
     ...accessReadings(sweeps, passive['bridge_error_mohm']!, context),
     ...firingReadings(clamped, fi),
     ...spikeReadings(clamped, reference, context),
+    ...beatReadings(clamped),
+    ...trainReadings(clamped),
     drift_mv_per_min: driftReading(clamped, context),
     ...rundownReadings(clamped),
     minutes_since_break_in: minutesSinceBreakIn(sweeps, context),

@@ -4,6 +4,8 @@ import { indexAt, timeAt } from './stretches.ts';
 import type { MeasureContext, Reading, Readings, Signal, Spike, Stimulus, SweepMeasure } from './types.ts';
 
 const peakOf = (spike: Spike): number => spike.values['peak_at_s'] ?? Number.NaN;
+/** When a spike fired: a slow one by its steepest rise, for its top is flat. */
+const firedAt = (spike: Spike): number => spike.values['upstroke_at_s'] ?? peakOf(spike);
 const startOf = (spike: Spike): number => spike.values['threshold_at_s'] ?? peakOf(spike);
 
 /** Stimuli shorter than this have no rate, s: one spike would already count as tens of hertz. */
@@ -27,7 +29,7 @@ export function measureFiring(spikes: readonly Spike[], stimulus: Stimulus, volt
     spikes: measured(spikes.length),
     mean_rate_hz: meanRate(during, stimulus, voltage),
     first_spike_latency_ms: latency(during, stimulus),
-    ...measureIntervals(during.map(peakOf).filter(Number.isFinite)),
+    ...measureIntervals(during.map(firedAt).filter(Number.isFinite)),
   };
 }
 
@@ -134,7 +136,8 @@ export function measureSpontaneous(
     found.spikes += inside.length;
     found.seconds += to_s - from_s;
     inside.slice(1).forEach((spike, k) => {
-      const lowest = lowestMean(voltage, peakOf(inside[k]!), peakOf(spike), block);
+      const own = spike.values['diastolic_potential_mv'] ?? null;
+      const lowest = own ?? lowestMean(voltage, peakOf(inside[k]!), peakOf(spike), block);
       if (lowest !== null) found.minima_mv.push(lowest);
     });
   }

@@ -9,6 +9,7 @@ import {
   filterDelayMs,
   gathered,
   indexAt,
+  plateauHoles,
   readable,
   type Stretch,
   spikeHoles,
@@ -42,7 +43,11 @@ const recovery_s = 0.05;
  */
 export function baselineStretches(input: PassiveInput): { stretches: Stretch[]; note: string | null } {
   const { voltage, stimulus, levels, spikes, slow } = input;
-  const holes = [...spikeHoles(voltage, spikes, slow), ...stimulusHoles(voltage, stimulus, levels, recovery_s)];
+  const holes = [
+    ...spikeHoles(voltage, spikes, slow),
+    ...(slow ? plateauHoles(voltage, spikes) : []),
+    ...stimulusHoles(voltage, stimulus, levels, recovery_s),
+  ];
   const all = { from: 0, to: voltage.samples.length };
   const shortest = Math.max(3, Math.round(0.001 * voltage.rate_hz));
   const inside = (whole: Stretch): Stretch[] =>

@@ -630,6 +630,81 @@ export const quantities: readonly Quantity[] = list([
     source: practice,
   },
   {
+    id: 'largest_instantaneous_rate_hz',
+    levels: ['sweep', 'cell'],
+    label: 'Largest instantaneous rate',
+    symbol: 'f_inst',
+    ...hz,
+    decimals: 0,
+    definition: 'Rate of the shortest interval between two peaks; for the cell, the largest of its sweeps.',
+    formula: '1 / min I_k',
+    source: practice,
+    uncertainty:
+      'f²·√2·Δt/√12 times 1.96: each peak time lies anywhere within a sample interval Δt. (An upper bound: the parabola does better.)',
+  },
+  {
+    id: 'doublets',
+    levels: ['sweep', 'cell'],
+    label: 'Doublets',
+    symbol: 'n_2',
+    ...one,
+    decimals: 0,
+    definition:
+      'Pairs of spikes within 20 ms of each other and less than a third of the pause before and after the pair apart; for the cell, in all its sweeps.',
+    formula:
+      'number of groups of two: every interval within ≤ 20 ms and < ⅓ of both bounding intervals (of the one there is at either end of the train)',
+    source: practice,
+  },
+  {
+    id: 'bursts',
+    levels: ['sweep', 'cell'],
+    label: 'Bursts',
+    symbol: 'n_b',
+    ...one,
+    decimals: 0,
+    definition:
+      'Groups of three or more spikes that follow each other within 20 ms and in less than a third of the pause before and after the group; for the cell, in all its sweeps. A train without pauses is no burst.',
+    formula: 'number of groups of three or more, as for doublets',
+    source: practice,
+  },
+  {
+    id: 'spikelets',
+    levels: ['sweep', 'cell'],
+    label: 'Spikelets',
+    symbol: 'n_s',
+    ...one,
+    decimals: 0,
+    definition:
+      'Small brief depolarizations that are no spikes: at least 3 mV and eight standard deviations of fast noise high, below the class’s prominence; their heights stand beside the count.',
+    formula:
+      'tops that stand so high above the lowest potential of the 2 ms before and fall by half of it within 3 ms; not within 3 ms of a stimulus edge, 5 ms after a peak, or in a depolarization block',
+    source: practice,
+  },
+  {
+    id: 'block_onset_ms',
+    levels: ['sweep'],
+    label: 'Onset of block',
+    symbol: 't_block',
+    ...ms,
+    decimals: 1,
+    definition: 'Time from stimulus onset to the last spike of a step that drives the cell into depolarization block.',
+    formula:
+      't_peak(last spike of the step) − t_onset, where the potential then stays above the first threshold (or within 15 mV of it, the spikes having shrunk below 60 %) for the rest of the step, at least a quarter of it',
+    source: practice,
+  },
+  {
+    id: 'block_recovery_ms',
+    levels: ['sweep'],
+    label: 'Recovery from block',
+    symbol: 't_rec',
+    ...ms,
+    decimals: 1,
+    definition:
+      'Time from the end of a step that blocked firing to the next spike of at least 80 % of the step’s first spike’s height.',
+    formula: 't_peak − t_end',
+    source: practice,
+  },
+  {
     id: 'steady_deflection_mv',
     levels: ['sweep'],
     label: 'Steady deflection',
@@ -661,6 +736,20 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Jump of the potential at the stimulus edges that no membrane can make: what the bridge left over.',
     formula: 'V extrapolated back to the edge − V before it, mean over onset and end with sign of the step',
     source: circuit,
+  },
+  {
+    id: 'pulse_response_mohm',
+    levels: ['sweep', 'cell'],
+    label: 'Response to brief pulses',
+    symbol: 'ΔV_p/I',
+    ...mohm,
+    decimals: 1,
+    definition:
+      'How far the membrane charges while a brief pulse (at most 20 ms) lasts, over the pulse’s current; the jumps at its edges are left out. Its sign is that of the current against the voltage.',
+    formula:
+      '(V just before the end − V once the onset has settled, at least 0.25 ms) / I; median over pulses in which no spike peaks',
+    source: circuit,
+    uncertainty: 'Fast noise times √2 over the current and the root of the number of pulses, times 1.96.',
   },
   {
     id: 'noise_rms_mv',
@@ -972,6 +1061,32 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Spikes outside any stimulus over the time outside any stimulus, for cells that fire by themselves.',
     formula: 'n / t',
     source: practice,
+  },
+  {
+    id: 'apd90_variability_ms',
+    levels: ['cell'],
+    label: 'Beat-to-beat variability',
+    symbol: 'STV',
+    ...ms,
+    decimals: 2,
+    definition: 'Short-term variability of the duration to 90 % repolarization, over successive beats.',
+    formula: 'Σ|APD90(k+1) − APD90(k)| / (n·√2)',
+    source: 'Thomsen et al. 2004, Circulation 110:2453–2459 (from memory)',
+    uncertainty:
+      'Student’s t times the standard deviation of the single terms over √(2n/3), 2n/3 − 1 degrees of freedom: neighbouring terms share a beat.',
+  },
+  {
+    id: 'apd90_alternation_ms',
+    levels: ['cell'],
+    label: 'Alternans',
+    symbol: 'ΔAPD',
+    ...ms,
+    decimals: 1,
+    definition:
+      'By how much long and short beats differ when they alternate: the part of the duration to 90 % repolarization that changes sign from beat to beat, in the longest unbroken row of at least five beats.',
+    formula: '2|c| of the least-squares fit APD90(k) = a + b·k + c·(−1)^k',
+    source: 'least squares; ours',
+    uncertainty: 'Student’s t with n − 3 degrees of freedom times twice the standard error of c.',
   },
   {
     id: 'bridge_error_mohm',

@@ -1,3 +1,4 @@
+import { median } from '../signal/statistics.ts';
 import type { Level } from './stimulus.ts';
 import type { Signal, Spike, Stimulus } from './types.ts';
 
@@ -79,6 +80,29 @@ export function spikeHoles(voltage: Signal, spikes: readonly Spike[], slow: bool
     const span = spikeSpan(spike, spikes[k + 1], slow);
     return span ? [{ from: indexAt(voltage, span.from_s), to: indexAt(voltage, span.to_s) }] : [];
   });
+}
+
+/**
+ * Where a heart or calcium cell is not in diastole: further up than three tenths of the way from the diastolic level to
+ * the peak, medians of the sweep's spikes. A sweep that begins on a plateau has no spike there to be cut out.
+ */
+export function plateauHoles(voltage: Signal, spikes: readonly Spike[]): Stretch[] {
+  const known = (id: string): number | null => median(spikes.flatMap((spike) => spike.values[id] ?? []));
+  const [low, high] = [known('diastolic_potential_mv'), known('peak_mv')];
+  if (low === null || high === null) return [];
+  const level = low + 0.3 * (high - low);
+  const holes: Stretch[] = [];
+  let from = -1;
+  for (let i = 0; i <= voltage.samples.length; i++) {
+    const above = i < voltage.samples.length && voltage.samples[i]! > level;
+    if (above && from < 0) from = i;
+    if (!above && from >= 0) {
+      // The foot of the fall is no diastole yet.
+      holes.push({ from, to: i + Math.round(0.05 * voltage.rate_hz) });
+      from = -1;
+    }
+  }
+  return holes;
 }
 
 /**

@@ -1,4 +1,5 @@
 import { countFinite } from '../signal/statistics.ts';
+import { pulseResponse } from './artefact.ts';
 import { envelopeOf, excerptOf } from './envelope.ts';
 import { isBlocked, measureFiring, measureSpontaneous } from './firing.ts';
 import {
@@ -12,9 +13,11 @@ import {
 import { clippedFraction, digitizerStep, hum, missingFraction, noise, sampleInterval } from './quality.ts';
 import { quantitiesOf } from './quantities.ts';
 import { absent, measured } from './reading.ts';
+import { fastNoise } from './spike-trace.ts';
 import { measureSpikes } from './spikes.ts';
 import { type CommandReading, type Level, readCommand } from './stimulus.ts';
 import { gathered, indexAt, readable, type Stretch, spikeHoles, stimulusHoles, timeAt, without } from './stretches.ts';
+import { countSpikelets, measureTrains } from './trains.ts';
 import type {
   AbsenceCode,
   Clamp,
@@ -104,10 +107,24 @@ function currentClampSweep(
   const { spikes, passive, baseline } = found;
   const quiet = quietStretches(passive);
   const bridgeStep = measureBridgeStep(passive);
+  const blocked = isBlocked(spikes, stimulus, voltage, context.slow);
+  const trains = measureTrains(spikes, stimulus, voltage, blocked, context.slow);
   const readings: Readings = {
     ...stimulusReadings({ ...command, stimulus }, current, bias),
     ...baseline,
     ...measureFiring(spikes, stimulus, voltage),
+    ...trains,
+    pulse_response_mohm: pulseResponse(voltage, stimulus, current, spikes, fastNoise(voltage.samples, voltage.rate_hz)),
+    spikelets: context.slow
+      ? absent('not-this-class')
+      : countSpikelets(
+          voltage,
+          spikes,
+          stimulus,
+          fastNoise(voltage.samples, voltage.rate_hz),
+          context.prominence_mv,
+          trains['block_onset_ms']?.at?.from_s ?? null,
+        ),
     ...measureDeflections(passive, baseline['baseline_mv']!),
     bridge_step_mv: bridgeStep,
     access_resistance_mohm: accessFromBridge(input.bridge_mohm, bridgeStep, stimulus),
@@ -125,7 +142,7 @@ function currentClampSweep(
     stimulus,
     readings,
     spikes,
-    depolarization_block: isBlocked(spikes, stimulus, voltage, context.slow),
+    depolarization_block: blocked,
     remarks: [...command.remarks, ...remarks, ...found.remarks],
     voltage_envelope: envelopeOf(voltage, outlineColumns),
     current_envelope,

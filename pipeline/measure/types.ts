@@ -38,6 +38,7 @@ export type AbsenceCode =
   | 'never-fired'
   | 'under-stimulus'
   | 'not-this-class'
+  | 'not-blocked'
   | 'unreadable';
 
 /** A measured number, or the reason there is none. `value` is finite whenever it is not null. */
