@@ -225,7 +225,9 @@ function jumpPairs(voltage: Signal, noise_mv: number): { on_s: number; off_s: nu
     if (!(fall > least) || !(v[i + 1]! < v[i]!) || v[i - w]! - v[i]! > 0.3 * fall) continue;
     if (!stays(v, i + w, w, (value) => value < v[i]! - 0.5 * fall)) continue;
     const on = suddenRise(v, i - shortest, Math.max(3 * w, i - longest), w, 0.4 * fall, noise_mv);
-    if (on !== null) found.push({ on, off: i });
+    let off = i;
+    while (off < i + w - 1 && v[off]! - v[off + 1]! < 0.3 * fall) off++;
+    if (on !== null) found.push({ on, off });
     i += 4 * w;
   }
   // A pacemaker's pulses are all of one length; what is not is chance.

@@ -38,6 +38,7 @@ const failing: Record<string, Made> = {
   'cell-capacitance-positive': { sweeps: inClamp, readings: { cell_capacitance_pf: read(-90) } },
   'access-resistance-positive': { readings: { access_resistance_mohm: read(-2) } },
   'no-cell': { sweeps: silent, readings: { resting_potential_mv: read(-1) } },
+  'pulse-sign': { readings: { pulse_response_mohm: read(-15) } },
   'baseline-negative': { readings: { resting_potential_mv: read(12) } },
   'rise-samples': { readings: { rise_samples: read(3) } },
   'filter-passes-rise': { circumstances: { filter_khz: 1 } },
