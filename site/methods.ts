@@ -1,7 +1,17 @@
 /** What the page of methods says about this archive: limits, classes and solutions in force. */
+
+import { judgingConstants } from '../pipeline/judge/checks.ts';
 import { type ClassInfo, classRanges, type ShippedClass } from '../pipeline/judge/class-ranges.ts';
 import type { CheckEntry, Ground } from '../pipeline/judge/types.ts';
 import { type Level, type Quantity, quantities } from '../pipeline/measure/quantities.ts';
+import {
+  avogadroPerMol,
+  boltzmannJPerK,
+  elementaryChargeC,
+  faradayCPerMol,
+  gasConstantJPerMolK,
+  zeroCelsiusK,
+} from '../pipeline/membrane/constants.ts';
 import { type Almanac, type CellSummary, groupBy, type Sizes, type Solutions, sizesOf } from './almanac.ts';
 
 export const levelTitles: Record<Level, string> = { spike: 'Of a spike', sweep: 'Of a sweep', cell: 'Of a cell' };
@@ -57,3 +67,35 @@ export function solutionPairs(cells: readonly CellSummary[]): SolutionPair[] {
     ([, members]) => ({ solutions: members[0]!.solutions!, sizes: sizesOf(members) }),
   );
 }
+
+/** Checks that hold a quantity against something, in the registry's order. */
+export const checksOf = (checks: readonly CheckEntry[], quantityId: string): CheckEntry[] =>
+  checks.filter((check) => check.quantity === quantityId);
+
+/** '1.602176634 × 10⁻¹⁹' for numbers far from one, else as it stands. */
+export function scientific(value: number): string {
+  const size = value === 0 ? 0 : Math.floor(Math.log10(Math.abs(value)));
+  if (size > -4 && size < 7) return String(Number(value.toPrecision(10))).replace('-', '−');
+  const raised = [...String(size)].map((digit) => '⁻⁰¹²³⁴⁵⁶⁷⁸⁹'['-0123456789'.indexOf(digit)]).join('');
+  return `${Number((value / 10 ** size).toPrecision(10))} × 10${raised}`;
+}
+
+export interface Constant {
+  label: string;
+  value: string;
+  unit: string;
+  source: string;
+}
+
+const si = 'exact in the 2019 SI';
+
+/** Constants of nature, and those that judging brings along. */
+export const constants = (): Constant[] => [
+  { label: 'Molar gas constant R', value: scientific(gasConstantJPerMolK), unit: 'J/(mol·K)', source: si },
+  { label: 'Faraday constant F', value: scientific(faradayCPerMol), unit: 'C/mol', source: si },
+  { label: 'Elementary charge e', value: scientific(elementaryChargeC), unit: 'C', source: si },
+  { label: 'Boltzmann constant k', value: scientific(boltzmannJPerK), unit: 'J/K', source: si },
+  { label: 'Avogadro constant N_A', value: scientific(avogadroPerMol), unit: '1/mol', source: si },
+  { label: '0 °C', value: scientific(zeroCelsiusK), unit: 'K', source: 'definition of the degree Celsius' },
+  ...judgingConstants.map(({ label, value, unit, source }) => ({ label, value: scientific(value), unit, source })),
+];

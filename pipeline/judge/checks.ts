@@ -4,6 +4,7 @@
  */
 import { isQuantity, quantities, quantity } from '../measure/quantities.ts';
 import { classRanges } from './class-ranges.ts';
+import { largestJunctionMv, offsetUncertaintyMv, physicsFloorMv } from './compare.ts';
 import type { CheckEntry, Contradiction } from './types.ts';
 
 const practice = 'common practice, no source';
@@ -563,3 +564,41 @@ export function check(id: string): CheckEntry {
   if (isQuantity(quantityId)) return policyEntry(quantityId);
   throw new RangeError(`no check "${id}" in the registry`);
 }
+
+/** A number that judging uses and no recording gives. */
+export interface JudgingConstant {
+  label: string;
+  value: number;
+  unit: string;
+  source: string;
+}
+
+/** What enters a comparison besides the measured number, its half-width and the limit. */
+export const judgingConstants: readonly JudgingConstant[] = [
+  {
+    label: 'Electrode and amplifier offset left after zeroing, 95 % half-width, on every potential against the bath',
+    value: offsetUncertaintyMv,
+    unit: 'mV',
+    source: practice,
+  },
+  { label: 'Stated junction potential, 95 % half-width', value: 1, unit: 'mV', source: practice },
+  {
+    label: 'Computed junction potential, least 95 % half-width',
+    value: 3.5,
+    unit: 'mV',
+    source: `concentrations for activities, reference electrode not ideal; ${practice}`,
+  },
+  {
+    label: 'No physical limit on a potential is held tighter than',
+    value: physicsFloorMv,
+    unit: 'mV',
+    source: 'rule of this tool',
+  },
+  {
+    label: 'Largest junction potential allowed for where its state is not known',
+    value: largestJunctionMv,
+    unit: 'mV',
+    source: 'K-gluconate in saline, +12 to +16 mV; Barry & Lynch 1991, J Membr Biol 121:101–117 (from memory)',
+  },
+  { label: 'Stated bath temperature, 95 % half-width', value: 1, unit: '°C', source: practice },
+];

@@ -1,6 +1,6 @@
 /** Small tables that belong to one cell and lie beside its page. */
 import { stringify } from 'csv-stringify/sync';
-import type { CellRow } from '../../pipeline/ledger/types.ts';
+import type { CellRow, SweepRow } from '../../pipeline/ledger/types.ts';
 import { quantitiesOf } from '../../pipeline/measure/quantities.ts';
 import type { Excerpt } from '../../pipeline/measure/types.ts';
 
@@ -27,4 +27,29 @@ export function numbersCsv(cell: CellRow): string {
 export function spikeCsv(excerpt: Excerpt): string {
   const rows = excerpt.mv.map((mv, i) => [cut(excerpt.start_s + i / excerpt.rate_hz), cut(mv)]);
   return csv([['time_s', 'membrane_potential_mv'], ...rows]);
+}
+
+/** Every step of the first condition: its current and what the potential and the cell made of it. */
+export function stepsCsv(cell: CellRow, sweeps: readonly SweepRow[]): string {
+  const ids = ['steady_deflection_mv', 'largest_deflection_mv', 'mean_rate_hz'];
+  const own = new Set(cell.measure.conditions[0]?.sweeps ?? []);
+  const rows = sweeps
+    .filter((sweep) => own.has(sweep.sweep) && sweep.clamp === 'current' && sweep.stimulus.kind === 'step')
+    .map((sweep) => [
+      sweep.sweep,
+      cut(sweep.stimulus.onset_s),
+      cut(sweep.stimulus.end_s),
+      cut(sweep.stimulus.amplitude),
+      sweep.spikes.length,
+      ...ids.flatMap((id) => [cut(sweep.readings[id]?.value), cut(sweep.readings[id]?.u95)]),
+    ]);
+  const head = ['sweep', 'onset_s', 'end_s', 'stimulus_pa', 'spikes', ...ids.flatMap((id) => [id, `${id}_u95`])];
+  return csv([head, ...rows]);
+}
+
+/** The onset of one response to a small hyperpolarizing step, time from the start of its sweep. */
+export function responseCsv(sweep: SweepRow): string {
+  const { start_s, rate_hz, mv } = sweep.step_response!;
+  const rows = mv.map((value, k) => [sweep.sweep, cut(start_s + k / rate_hz), cut(value)]);
+  return csv([['sweep', 'time_s', 'membrane_potential_mv'], ...rows]);
 }

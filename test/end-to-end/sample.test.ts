@@ -2,10 +2,11 @@
 import { existsSync, mkdtempSync, readFileSync, rmSync } from 'node:fs';
 import os from 'node:os';
 import path from 'node:path';
+import { gzipSync } from 'node:zlib';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
-import { quantity } from '../../pipeline/measure/quantities.ts';
-import { number } from '../../site/format.ts';
+import { rounded } from '../../site/format.ts';
 import { almanac, filesBelow, generator, hashOf, killWhen, type Ran, type Row, run, table } from './almanac.ts';
+import { redone } from './worked-example.ts';
 
 interface TrueSweep {
   protocol: string;
@@ -126,12 +127,42 @@ describe('pages and tables', () => {
     ];
     for (const cell of cells.filter((one) => one['standing'] !== 'unread').slice(0, 12)) {
       const page = readFileSync(path.join(out, 'cells', cell['cell']!, 'index.html'), 'utf8');
+      const [, numbers = ''] = page.split('id="quantities"');
       for (const id of shown) {
-        const row = page.split('<tr>').find((part) => part.includes(`#quantity-${id}"`) && part.includes('</td>'));
+        const row = numbers.split('<tr>').find((part) => part.includes(`#quantity-${id}"`) && part.includes('</td>'));
         if (cell[id] === '') continue;
-        expect(row, `${cell['cell']} ${id}`).toContain(`>${number(Number(cell[id]), quantity(id).decimals)}<`);
+        const half = cell[`${id}_u95`];
+        const { value, u95 } = rounded(id, Number(cell[id]), half ? Number(half) : null);
+        expect(row, `${cell['cell']} ${id}`).toContain(`>${value}<`);
+        if (u95 !== '') expect(row, `${cell['cell']} ${id}`).toContain(`>±\u00a0${u95}<`);
       }
     }
+  });
+
+  test('the worked example is what anyone gets from its files, and what the tables say', () => {
+    const done = redone(out);
+    expect(Object.keys(done.numbers)).toEqual(
+      expect.arrayContaining(['threshold_mv', 'peak_mv', 'half_width_ms', 'input_resistance_mohm', 'e_k', 'ljp']),
+    );
+    for (const [id, one] of Object.entries(done.numbers)) {
+      // The page's own arithmetic, redone here by other code, to the last digit it prints.
+      expect(one.again, `${id}: again from the files ${one.again}, on the page ${one.onPage}`).toBe(one.onPage);
+      // And measuring's: within its half-width, or within a tenth where noise made it look further than a glance.
+      const away = Math.abs(one.byFiles - one.inTables);
+      expect(away, `${id}: ${one.byFiles} by hand, ${one.inTables} in the tables`).toBeLessThanOrEqual(
+        Math.max(one.u95 ?? 0, 0.1 * Math.abs(one.inTables)),
+      );
+    }
+  });
+
+  test('no page of a cell weighs more than 60 kB compressed', () => {
+    const heavy = cells
+      .map((cell) => ({
+        cell: cell['cell']!,
+        bytes: gzipSync(readFileSync(path.join(out, 'cells', cell['cell']!, 'index.html'))).length,
+      }))
+      .filter(({ bytes }) => bytes > 60_000);
+    expect(heavy).toEqual([]);
   });
 
   test('spikes of a sweep are as many as its rows', () => {

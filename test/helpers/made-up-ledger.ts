@@ -230,6 +230,7 @@ function readingsFor(random: Random, level: 'cell' | 'sweep', fires: boolean): R
     const n = 3 + Math.floor(random.between(0, 30));
     const sd = round(Math.abs(range[1] - range[0]) * random.between(0.02, 0.1));
     const reading: Reading = { value, n, sd, se: round(sd / Math.sqrt(n)) };
+    if (entry.uncertainty !== undefined && n % 5 !== 0) reading.u95 = round((2.1 * sd) / Math.sqrt(n));
     if (entry.id === 'noise_rms_mv') reading.note = '1 to 8 kHz';
     readings[entry.id] = reading;
   }
