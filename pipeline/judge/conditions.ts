@@ -365,6 +365,17 @@ const drift: CellQuestion = (setting) => {
   });
 };
 
+/** How much of a falling height the sodium explains that firing brings in; nothing where the cell's volume is not stated. */
+function gradientsExplain(setting: Setting, observed: number): string | undefined {
+  const { dialysed_rundown_percent_per_100_spikes: dialysed, expected_rundown_percent_per_100_spikes: alone } =
+    setting.measure.readings;
+  const expected = isPresent(dialysed) ? dialysed : alone;
+  if (observed >= 0 || !isPresent(expected)) return undefined;
+  const between = isPresent(dialysed) ? 'with the pipette’s exchange' : 'without pump or pipette';
+  const half = amount('expected_rundown_percent_per_100_spikes', measuredUncertainty(expected));
+  return `The sodium that firing brings in would explain ${amount('expected_rundown_percent_per_100_spikes', expected.value)} ± ${half} of it, ${between}.`;
+}
+
 const heightRundown: CellQuestion = (setting) => {
   if (!hasVoltage(setting)) return null;
   const subject = 'the rundown of the spike height';
@@ -373,6 +384,7 @@ const heightRundown: CellQuestion = (setting) => {
   if (!isPresent(reading)) return unheldReading(subject, reading);
   if (fired === 0) return unheld(subject, 'no spike was fired');
   const high = (limits.rundownPercent * 100) / fired;
+  const explained = gradientsExplain(setting, reading.value);
   return hold(reading, {
     quantity: 'height_rundown_percent_per_100_spikes',
     subject: `${subject} per 100 spikes`,
@@ -380,6 +392,7 @@ const heightRundown: CellQuestion = (setting) => {
     high,
     name: `${limits.rundownPercent} % over the ${fired} spikes fired (±${amount('height_rundown_percent_per_100_spikes', high)})`,
     meaning: 'early and late spikes do not show the cell in the same state',
+    ...(explained === undefined ? {} : { remark: explained }),
   });
 };
 

@@ -107,7 +107,7 @@ export function peakShiftMv(
  * Biophys J 54:791–799; found). With the Nernst–Einstein relation for ρ and D it becomes
  * R_a·V·(F²/RT)·Σ z²·(u/u_Na)·c over the pipette's ions: temperature acts through RT alone. Pusch & Neher 1988 (Pflügers
  * Arch 411:204–211, from memory) measured 0.6·R_a·M^⅓ in chromaffin cells of some 1.5 pL (R_a in MΩ, M the molar mass):
- * 1.7 s per MΩ for sodium, where this gives 1.5.
+ * 1.7 s per MΩ for sodium, where this gives 1.6.
  * @param accessMohm access resistance, MΩ, above 0 @param volumePl pL, above 0
  * @param pipette ions of the pipette solution, mmol/L
  * @throws RangeError naming the argument

@@ -1,4 +1,5 @@
 import { describe, expect, test } from 'vitest';
+import type { Reading } from '../../pipeline/measure/types.ts';
 import { finding, judged, type Made, outcome, read, spike, sweep } from './made.ts';
 
 const six = (change: (number: number) => Parameters<typeof sweep>[1]) =>
@@ -286,6 +287,17 @@ test('rundown: 10 % over the 600 spikes fired is 1.67 % per 100', () => {
   const rundown = (value: number) =>
     outcome('height-rundown', { sweeps, readings: { height_rundown_percent_per_100_spikes: read(value) } });
   expect([rundown(-1.6), rundown(-1.7), rundown(2)]).toEqual(['within', 'outside', 'outside']);
+  const sentence = (value: number, more: Record<string, Reading>) =>
+    finding('height-rundown', { sweeps, readings: { height_rundown_percent_per_100_spikes: read(value), ...more } })
+      .sentence;
+  const alone = { expected_rundown_percent_per_100_spikes: read(-1.2, { u95: 0.9 }) };
+  expect(sentence(-2.5, alone)).toMatch(
+    /sodium that firing brings in would explain −1\.20? %? ?± 0\.90? % of it, without pump/,
+  );
+  const both = { ...alone, dialysed_rundown_percent_per_100_spikes: read(-0.3, { u95: 0.3 }) };
+  expect(sentence(-2.5, both)).toMatch(/−0\.30? .* with the pipette’s exchange\.$/);
+  expect(sentence(2.5, both)).not.toMatch(/sodium/);
+  expect(sentence(-2.5, {})).not.toMatch(/sodium/);
 });
 
 describe('no cell', () => {
