@@ -53,6 +53,7 @@ const inputOf = (samples: SweepSamples, bridge: number | null, bias: number | nu
   stated_stimulus: samples.stated_stimulus,
   bridge_mohm: samples.bridge_mohm ?? bridge,
   bias_pa: bias,
+  compensation: samples.compensation ?? null,
 });
 
 async function run(task: Task, report: (answer: Answer) => void): Promise<Answer> {

@@ -355,6 +355,7 @@ function readSweep(plan: Plan, hdf5: Hdf5): SweepSamples {
     current,
     stated_stimulus: plan.noCurrent ? { kind: 'none' } : null,
     bridge_mohm: plan.entry.bridge_mohm,
+    compensation: plan.entry.clamp === 'voltage' ? plan.response.series.compensation : null,
     problems,
   };
 }

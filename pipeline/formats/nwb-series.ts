@@ -16,7 +16,7 @@ import {
   textsAttribute,
 } from './hdf5.ts';
 import { blocker, plain, warning } from './problems.ts';
-import type { Problem } from './types.ts';
+import type { Problem, SweepSamples } from './types.ts';
 import { parseUnit, type Unit } from './units.ts';
 
 const responseTypes = ['CurrentClampSeries', 'VoltageClampSeries', 'IZeroClampSeries', 'PatchClampSeries'];
@@ -50,6 +50,7 @@ export interface Series {
   label: string;
   bridge_mohm: number | null;
   bias_pa: number | null;
+  compensation: NonNullable<SweepSamples['compensation']> | null;
   gain: number | null;
 }
 
@@ -225,8 +226,20 @@ function seriesOf(group: Group, hdf5: Hdf5, problems: Problem[]): Series | null 
     label: textAttribute(group, 'stimulus_description', module),
     bridge_mohm: type === 'IZeroClampSeries' ? null : bridge(group, problems),
     bias_pa: type === 'IZeroClampSeries' ? 0 : bias(group, problems),
+    compensation: compensation(group),
     gain: setting(group, 'gain'),
   };
+}
+
+/** What the amplifier took away in voltage clamp. The standard stores farads and percent. */
+function compensation(group: Group): Series['compensation'] {
+  const farads = setting(group, 'whole_cell_capacitance_comp');
+  const said = {
+    whole_cell_pf: farads === null ? null : farads * 1e12,
+    correction_percent: setting(group, 'resistance_comp_correction'),
+    prediction_percent: setting(group, 'resistance_comp_prediction'),
+  };
+  return Object.values(said).some((value) => value !== null) ? said : null;
 }
 
 const finite = (value: unknown): number | null => (typeof value === 'number' && Number.isFinite(value) ? value : null);

@@ -87,6 +87,12 @@ export interface SweepSamples {
   current: Samples | null;
   stated_stimulus: { kind: 'step'; start_s: number; end_s: number; pa: number } | { kind: 'none' } | null;
   bridge_mohm: number | null;
+  /** Voltage clamp: what the file says the amplifier compensated. */
+  compensation?: {
+    whole_cell_pf: number | null;
+    correction_percent: number | null;
+    prediction_percent: number | null;
+  } | null;
   problems: Problem[];
 }
 

@@ -188,6 +188,37 @@ const conditions: CheckEntry[] = [
     level: 'cell',
   },
   {
+    id: 'no-membrane',
+    quantity: 'transient_capacitance_pf',
+    ground: 'conditions',
+    asks: 'Does a test pulse in voltage clamp charge a membrane?',
+    limit:
+      'a charge of at least 3 pF, which a neutralized pipette alone does not take up; not held where the file or a stated capacitance says that the amplifier took the transient away',
+    causes: [
+      'there was no cell: an open pipette, or a leak',
+      'the pulse was given before break-in',
+      'the amplifier took the transient away and nobody says so',
+    ],
+    bench: 'Was the whole-cell capacitance compensated? State capacitance_pf. Else: was there a cell?',
+    source: `${practice}; the smallest cells published in whole-cell work have some 5 pF (from memory)`,
+    level: 'cell',
+  },
+  {
+    id: 'escaped-currents',
+    quantity: 'escaped_currents',
+    ground: 'conditions',
+    asks: 'Did the clamp hold the cell without action currents that escape it?',
+    limit: 'none: no inward peak of a millisecond and 200 pA or more at a time of its own',
+    causes: [
+      'parts of the cell that the clamp does not reach fire (an axon, a dendrite)',
+      'access resistance too high or not compensated',
+      'the cell fires before break-in or in the loose-patch configuration',
+    ],
+    bench: 'Lower the access resistance; block sodium channels, or step from a potential that inactivates them.',
+    source: 'space clamp: Armstrong & Gilly 1992, Methods Enzymol 207:100–122 (from memory); size and width: ours',
+    level: 'sweep',
+  },
+  {
     id: 'baseline-negative',
     quantity: 'baseline_mv',
     ground: 'conditions',

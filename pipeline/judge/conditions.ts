@@ -40,6 +40,7 @@ export const conditionLimits = {
   rundownPercent: 10,
   baselineDriftMv: 2,
   emptyPipetteMv: -15,
+  leastChargePf: 3,
 } as const;
 const limits = conditionLimits;
 
@@ -106,6 +107,39 @@ const noCell: CellQuestion = (setting) => {
     uncertainty: 2,
   });
 };
+
+const noMembrane: CellQuestion = (setting) => {
+  const subject = 'the charge that a test pulse moves';
+  const reading = cellReading(setting, 'transient_capacitance_pf');
+  const of = cellReading(setting, 'cell_capacitance_pf');
+  if (of?.why === 'compensated') return unheldReading(subject, of);
+  const through = setting.measure.readings['membrane_resistance_mohm'];
+  const seal = setting.measure.readings['seal_resistance_gohm'];
+  const remark = isPresent(seal)
+    ? `The resistance is that of a seal, ${amount('seal_resistance_gohm', seal.value)}.`
+    : isPresent(through)
+      ? `All the current flows through ${amount('membrane_resistance_mohm', through.value)}.`
+      : '';
+  const empty = isPresent(reading) && reading.value < limits.leastChargePf;
+  return hold(reading, {
+    quantity: 'transient_capacitance_pf',
+    subject,
+    low: limits.leastChargePf,
+    name: `the ${amount('transient_capacitance_pf', limits.leastChargePf)} that a membrane takes up at least`,
+    meaning: 'there is no cell behind the pipette, or its transient is compensated and nothing says so',
+    ...(empty && remark ? { remark } : {}),
+  });
+};
+
+const escapedOf = (reading: Reading | undefined, subject: string): Answer =>
+  hold(reading, {
+    quantity: 'escaped_currents',
+    subject,
+    high: 0,
+    name: 'the limit of none',
+    meaning: 'the clamp does not hold the whole cell, and currents near them are not at the command potential',
+    ...(isPresent(reading) && reading.note ? { remark: `Peaks ${reading.note}.` } : {}),
+  });
 
 const baselineNegative: CellQuestion = (setting) => {
   if (!hasVoltage(setting)) return null;
@@ -428,6 +462,9 @@ const baselineDrift: CellQuestion = (setting) => {
 export const conditionQuestions: Record<string, CellQuestion> = {
   'no-cell': noCell,
   'pulse-sign': pulseSign,
+  'no-membrane': noMembrane,
+  'escaped-currents': (setting) =>
+    escapedOf(setting.measure.readings['escaped_currents'], 'the number of escaped action currents'),
   'baseline-negative': baselineNegative,
   'rise-samples': riseSamples,
   'filter-passes-rise': filterPassesRise,
@@ -463,6 +500,7 @@ export const sweepQuestions: Record<string, SweepQuestion> = {
   missing: ofSweep('missing_fraction', missing, 'the share of unreadable samples'),
   'mains-hum': ofSweep('mains_hum_mv', hum, 'the mains hum'),
   noise: ofSweep('noise_rms_mv', noise, 'the noise'),
+  'escaped-currents': ofSweep('escaped_currents', escapedOf, 'the number of escaped action currents'),
   'access-resistance': (setting, sweep) => namedSweep(accessResistanceSweep(setting, sweep), sweep),
   'baseline-drift': (_setting, sweep) => {
     const reading = sweep.readings['baseline_drift_mv_per_s'];

@@ -30,6 +30,7 @@ export const absenceSentences: Record<AbsenceCode, string> = {
   'no-electrode-transient': 'no instantaneous step at the stimulus edges',
   'no-membrane-transient': 'no membrane was charged by the test pulse',
   'membrane-charged': 'the test pulse charged a membrane: the cell is open',
+  compensated: 'the amplifier took the transient away',
   'filter-unknown': 'the filter corner is not known',
   'rate-too-low': 'the sampling rate is too low',
   'never-fired': 'no step made the cell fire',

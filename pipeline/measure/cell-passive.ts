@@ -310,8 +310,19 @@ export function accessReadings(sweeps: readonly NumberedSweep[], bridgeLeft: Rea
     cell_capacitance_pf: over('cell_capacitance_pf'),
     transient_capacitance_pf: over('transient_capacitance_pf'),
     seal_resistance_gohm: over('seal_resistance_gohm'),
+    escaped_currents: escaped(clamped),
     holding_current_pa: over('holding_current_pa'),
   };
+}
+
+/** Escaped action currents of all sweeps; where to look is the sweep with most. */
+function escaped(clamped: readonly NumberedSweep[]): Reading {
+  const points = pointsOf(clamped, 'escaped_currents');
+  if (points.length === 0)
+    return clamped.length === 0 ? absent('not-this-clamp') : commonReason(clamped, 'escaped_currents', 'no-voltage');
+  const most = points.reduce((best, one) => (one.value > best.value ? one : best));
+  const count = points.reduce((sum, point) => sum + point.value, 0);
+  return measured(count, count > 0 ? { at: placeOf(most) } : {});
 }
 
 /**

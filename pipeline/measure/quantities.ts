@@ -932,6 +932,20 @@ export const quantities: readonly Quantity[] = list([
     uncertainty: pulseError,
   },
   {
+    id: 'escaped_currents',
+    levels: ['sweep', 'cell'],
+    label: 'Escaped action currents',
+    symbol: 'n_esc',
+    ...one,
+    decimals: 0,
+    clamp: 'voltage',
+    definition:
+      'Inward action currents that the clamp did not hold: all or none, a millisecond wide, at times of their own; for the cell, in all its sweeps.',
+    formula:
+      'inward peaks of at least 200 pA and 8 times the noise (1.4826 × median size) above the median of the 20 ms around, 0.15 to 4 ms wide at half their size, later than 3 ms after a step of the command (6 ms after one above 20 mV)',
+    source: practice,
+  },
+  {
     id: 'holding_current_pa',
     levels: ['sweep', 'cell'],
     label: 'Holding current in voltage clamp',

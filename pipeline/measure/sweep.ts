@@ -331,6 +331,7 @@ function voltageClampSweep(
       ...setAsideCompensated(
         measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz, context.mains_hz),
         context.capacitance_pf,
+        input.compensation ?? null,
       ),
     },
     spikes: [],

@@ -33,6 +33,7 @@ export type AbsenceCode =
   | 'no-electrode-transient'
   | 'no-membrane-transient'
   | 'membrane-charged'
+  | 'compensated'
   | 'filter-unknown'
   | 'rate-too-low'
   | 'never-fired'
@@ -83,6 +84,15 @@ export interface Signal {
 /** A stimulus that is known from a statement (sidecar, file attribute) and not from a recorded channel. */
 export type StatedStimulus = { kind: 'step'; start_s: number; end_s: number; pa: number } | { kind: 'none' };
 
+/** What the amplifier is said to have done to a voltage-clamp recording. Null: not said. */
+export interface Compensation {
+  /** Capacitance of the cell whose transient was taken away, pF. */
+  whole_cell_pf: number | null;
+  /** Share of the access resistance that was corrected, and of the step that was predicted, %. */
+  correction_percent: number | null;
+  prediction_percent: number | null;
+}
+
 /** One sweep as a format reader delivered it, in mV and pA. */
 export interface SweepInput {
   clamp: Clamp;
@@ -95,6 +105,8 @@ export interface SweepInput {
   bridge_mohm: number | null;
   /** Constant current injected beside the recorded one, pA, where the file says so; absent or null: not known. */
   bias_pa?: number | null;
+  /** Voltage clamp, where the file says so. */
+  compensation?: Compensation | null;
 }
 
 /** What measuring must know besides the samples. Every number may be null: it then says so in its readings. */

@@ -1,9 +1,10 @@
 import { median, standardDeviation } from '../signal/statistics.ts';
 import { type ClampFit, type CommandEdge, type Estimate, fitClamp } from './clamp-fit.ts';
+import { escapedCurrents } from './escaped.ts';
 import { absent, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
 import { gathered, indexAt, timeAt } from './stretches.ts';
-import type { Reading, Readings, Signal, Stimulus } from './types.ts';
+import type { Compensation, Reading, Readings, Signal, Stimulus } from './types.ts';
 
 /** Command steps up to this size, mV, count as test pulses: larger ones open channels. */
 const largestTestPulse_mv = 20;
@@ -16,6 +17,8 @@ const mostEdges = 16;
 const widest = 0.5;
 /** A charge below this, pF per mV, is what a neutralized pipette leaves: no membrane. Ours. */
 export const leastMembrane_pf = 3;
+/** A charge known no better than this, pF, and than by half, is not reported. Ours. */
+const widestCharge_pf = 5;
 /** From here on, MΩ, a pipette without a membrane behind it counts as sealed. Ours; a good seal has ten times it. */
 const leastSeal_mohm = 500;
 
@@ -25,6 +28,7 @@ const ids = [
   'cell_capacitance_pf',
   'transient_capacitance_pf',
   'seal_resistance_gohm',
+  'escaped_currents',
 ] as const;
 
 /**
@@ -55,42 +59,80 @@ export function measureVoltageClamp(
   readings['holding_current_pa'] = holdingCurrent(current, command, levels);
   if (!command) return { ...readings, ...all(absent('no-voltage')) };
   const edges = commandEdges(levels);
-  if (!edges.some((edge) => edge.used)) return { ...readings, ...all(absent('no-test-pulse')) };
+  const escaped = { escaped_currents: escapedCurrents(current, edges) };
+  if (!edges.some((edge) => edge.used)) return { ...readings, ...all(absent('no-test-pulse')), ...escaped };
   const fit = fitClamp(current, edges, filterKhz, mainsHz);
-  if (!fit) return { ...readings, ...all(absent('too-few-points')) };
-  return { ...readings, ...circuitReadings(fit) };
+  if (!fit) return { ...readings, ...all(absent('too-few-points')), ...escaped };
+  return { ...readings, ...circuitReadings(fit), ...escaped };
 }
 
 /** A transient with less than this share of the stated capacitance is what compensation left over. Ours. */
 const leastShareOfStated = 0.5;
+/** Prediction below this share does not show in the transient. Ours. */
+const leastPrediction_percent = 1;
 
 /**
- * Sets aside an access resistance and a capacitance read off a transient that holds too little of the stated
- * capacitance: the amplifier has taken the rest away, and what is left over says nothing of the electrode. The
- * membrane resistance is then the total again.
+ * Sets aside an access resistance and a capacitance read off a transient that is not the cell's: the file says that the
+ * amplifier took it away or speeded it up, or the transient holds too little of the capacitance stated. What is left over
+ * says nothing of the electrode. The membrane resistance is then the total again.
  *
  * @param stated_pf capacitance stated for the cell, pF; null where none is
  */
-export function setAsideCompensated(readings: Readings, stated_pf: number | null): Readings {
-  const found = readings['cell_capacitance_pf']?.value ?? null;
-  if (stated_pf === null || found === null || found >= leastShareOfStated * stated_pf) return readings;
-  const note = `the transient holds ${found.toFixed(1)} of the ${stated_pf.toFixed(1)} pF stated: the rest is compensated, or the statement is wrong`;
-  const access = readings['access_resistance_mohm']?.value ?? 0;
-  const membrane = readings['membrane_resistance_mohm'];
+export function setAsideCompensated(
+  readings: Readings,
+  stated_pf: number | null,
+  compensation: Compensation | null = null,
+): Readings {
+  const note = compensated(readings, stated_pf, compensation);
+  if (note === null) return corrected(readings, compensation);
+  const gone = (id: string): Reading =>
+    readings[id]?.why === 'no-test-pulse' ? readings[id]! : absent('compensated', { note });
   return {
     ...readings,
-    access_resistance_mohm: absent('unresolved', { note }),
-    cell_capacitance_pf: absent('unresolved', { note }),
-    ...(membrane?.value == null
-      ? {}
-      : {
-          membrane_resistance_mohm: {
-            ...membrane,
-            value: membrane.value + access,
-            note: 'total resistance: the access could not be told apart',
-          },
-        }),
+    access_resistance_mohm: gone('access_resistance_mohm'),
+    cell_capacitance_pf: gone('cell_capacitance_pf'),
+    seal_resistance_gohm: gone('seal_resistance_gohm'),
+    membrane_resistance_mohm: totalOf(readings),
   };
+}
+
+/** In words, what the amplifier did to the transient; null where nothing says that it did. */
+function compensated(readings: Readings, stated_pf: number | null, compensation: Compensation | null): string | null {
+  const taken = compensation?.whole_cell_pf ?? 0;
+  const prediction = compensation?.prediction_percent ?? 0;
+  if (!('transient_capacitance_pf' in readings) || readings['transient_capacitance_pf']!.why === 'no-test-pulse')
+    return null;
+  if (taken > 0) return `the file says that the amplifier took a cell of ${taken.toFixed(1)} pF off the transient`;
+  if (prediction >= leastPrediction_percent)
+    return `the file says that the amplifier predicted ${prediction.toFixed(0)} % of the step`;
+  const found = readings['cell_capacitance_pf']?.value ?? readings['transient_capacitance_pf']?.value ?? null;
+  if (stated_pf === null || found === null || found >= leastShareOfStated * stated_pf) return null;
+  return `the transient holds ${Math.max(0, found).toFixed(1)} of the ${stated_pf.toFixed(1)} pF stated: the rest is compensated, or the statement is wrong`;
+}
+
+/** An access resistance of which the amplifier corrects a share is told with what it would be without. */
+function corrected(readings: Readings, compensation: Compensation | null): Readings {
+  const share = (compensation?.correction_percent ?? 0) / 100;
+  const reading = readings['access_resistance_mohm'];
+  if (reading?.value == null || !(share > 0 && share < 1)) return readings;
+  const before = reading.value / (1 - share);
+  const note = `what is left after ${(100 * share).toFixed(0)} % correction; about ${before.toPrecision(2)} MΩ without it`;
+  return { ...readings, access_resistance_mohm: { ...reading, note } };
+}
+
+const totalNote = 'total resistance: the access could not be told apart';
+
+function totalOf(readings: Readings): Reading {
+  const seal = readings['seal_resistance_gohm'];
+  const membrane = readings['membrane_resistance_mohm'];
+  const access = readings['access_resistance_mohm']?.value ?? 0;
+  if (seal?.value != null) {
+    const { value, se, u95: _u95, ...rest } = seal;
+    return measured(1000 * value, { ...rest, ...(se === undefined ? {} : { se: 1000 * se }), note: totalNote });
+  }
+  return membrane?.value == null
+    ? (membrane ?? absent('unresolved'))
+    : { ...membrane, value: membrane.value + access, note: totalNote };
 }
 
 function commandReading(command: Signal | null, stimulus: Stimulus): Reading {
@@ -174,7 +216,10 @@ function circuitReadings(fit: ClampFit): Readings {
   const turned = transient.value < -3 * transient.se && transient.value < -1;
   const resolved = (of: Estimate, note: string): Reading =>
     1.96 * of.se <= widest * Math.abs(of.value) && of.value > 0 ? told(of) : absent('unresolved', { note });
-  const transientReading = told(whole);
+  const transientReading =
+    1.96 * whole.se <= Math.max(widestCharge_pf, widest * Math.abs(whole.value))
+      ? told(whole)
+      : absent('unresolved', { note: 'noise or a slow current hides the transient' });
   const without = (note: string): Readings => ({
     access_resistance_mohm: absent('no-membrane-transient', { note }),
     cell_capacitance_pf: absent('no-membrane-transient', { note }),
@@ -190,7 +235,7 @@ function circuitReadings(fit: ClampFit): Readings {
   if (turned)
     return {
       ...without('the transient runs against the step: the amplifier takes more away than there is'),
-      membrane_resistance_mohm: totalReading('total resistance: the access could not be told apart'),
+      membrane_resistance_mohm: totalReading(totalNote),
       seal_resistance_gohm: absent('no-membrane-transient'),
     };
   if (!charged) {
@@ -222,7 +267,7 @@ function circuitReadings(fit: ClampFit): Readings {
       access_resistance_mohm: absent('unresolved', { note: single }),
       cell_capacitance_pf: absent('unresolved', { note: single }),
       transient_capacitance_pf: transientReading,
-      membrane_resistance_mohm: totalReading('total resistance: the access could not be told apart'),
+      membrane_resistance_mohm: totalReading(totalNote),
       seal_resistance_gohm: absent('membrane-charged'),
     };
   const noted = (reading: Reading): Reading =>

@@ -39,6 +39,8 @@ const failing: Record<string, Made> = {
   'access-resistance-positive': { readings: { access_resistance_mohm: read(-2) } },
   'no-cell': { sweeps: silent, readings: { resting_potential_mv: read(-1) } },
   'pulse-sign': { readings: { pulse_response_mohm: read(-15) } },
+  'no-membrane': { sweeps: inClamp, readings: { transient_capacitance_pf: read(0.4, { u95: 0.3 }) } },
+  'escaped-currents': { sweeps: inClamp, readings: { escaped_currents: read(3) } },
   'baseline-negative': { readings: { resting_potential_mv: read(12) } },
   'rise-samples': { readings: { rise_samples: read(3) } },
   'filter-passes-rise': { circumstances: { filter_khz: 1 } },
@@ -101,9 +103,13 @@ describe('the registry of checks', () => {
         mains_hum_mv: read(3),
         noise_rms_mv: read(2),
         baseline_drift_mv_per_s: read(50),
+        escaped_currents: read(2),
       },
     }));
-    const found = judged({ sweeps: bad }).findings.filter((one) => one.sweep === 0 && one.outcome === 'outside');
+    // Escaped currents are asked after only where something was recorded in voltage clamp.
+    const found = judged({
+      sweeps: [...bad, ...inClamp.map((one) => ({ ...one, sweep: 6 + one.sweep }))],
+    }).findings.filter((one) => one.sweep === 0 && one.outcome === 'outside');
     expect(new Set(found.map((one) => one.check))).toEqual(
       new Set(checks.filter((entry) => entry.level === 'sweep').map((entry) => entry.id)),
     );

@@ -27,7 +27,7 @@ describe('a test pulse in voltage clamp', () => {
     const sweep = (capacitance_pf: number | null) =>
       measureSweep(input(clampedSweep(cell, pulse), { clamp: 'voltage' }), { ...neuron, capacitance_pf }).readings;
     for (const id of ['access_resistance_mohm', 'cell_capacitance_pf']) {
-      expect(sweep(250)[id]).toMatchObject({ value: null, why: 'unresolved' });
+      expect(sweep(250)[id]).toMatchObject({ value: null, why: 'compensated' });
       for (const stated of [null, 110, 190]) expect(sweep(stated)[id]!.value).not.toBeNull();
     }
     expect(numberIn(sweep(250), 'membrane_resistance_mohm')).toBeCloseTo(210, 1);
@@ -113,4 +113,110 @@ it('the junction moves the command of a voltage-clamp sweep and no resistance', 
   expect(numberIn(corrected.readings, 'command_mv')).toBeCloseTo(-79, 9);
   expect(corrected.stimulus).toMatchObject({ holding: -84, amplitude: 5 });
   expect(corrected.readings['access_resistance_mohm']).toEqual(sweep.readings['access_resistance_mohm']);
+});
+
+describe('what the pulse ran into', () => {
+  const at = (ohms: (t: number) => number, noise_pa: number, seed: number) => {
+    const noise = normalNoise(seed);
+    const { voltage } = clampedSweep(cell, pulse);
+    const current = signalOf(0.2, 50000, (t) => (t >= 0.05 && t < 0.1 ? 5000 / ohms(t) : 0) + noise_pa * noise());
+    return measureSweep(input({ voltage, current }, { clamp: 'voltage' }), neuron).readings;
+  };
+
+  it('is a seal from half a gigaohm on', () => {
+    const readings = at(() => 2500, 1, 3);
+    expect(Math.abs(numberIn(readings, 'seal_resistance_gohm') - 2.5)).toBeLessThan(
+      readings['seal_resistance_gohm']!.u95!,
+    );
+    expect(readings['seal_resistance_gohm']!.u95!).toBeLessThan(0.5);
+    expect(readings['membrane_resistance_mohm']).toMatchObject({ value: null, why: 'no-membrane-transient' });
+    expect(Math.abs(numberIn(readings, 'transient_capacitance_pf'))).toBeLessThan(1);
+    expect(at(() => 50_000, 5, 4)['seal_resistance_gohm']!).toMatchObject({ value: null, why: 'unresolved' });
+    expect(at(() => 50_000, 5, 4)['seal_resistance_gohm']!.note).toMatch(/^at least [\d.]+ GΩ/);
+  });
+
+  it('is a leak, or an open pipette, in plain words', () => {
+    expect(at(() => 150, 2, 5)['membrane_resistance_mohm']!.note).toContain('a leak without a cell');
+    expect(
+      Math.abs(
+        numberIn(
+          at(() => 150, 2, 5),
+          'membrane_resistance_mohm',
+        ) - 150,
+      ),
+    ).toBeLessThan(3);
+    expect(at(() => 4, 10, 6)['membrane_resistance_mohm']!.note).toContain('an open pipette in the bath');
+    expect(at(() => 150, 2, 5)['seal_resistance_gohm']!.value).toBeNull();
+  });
+
+  it('is a cell, of which no seal is told', () =>
+    expect(measure(clampedSweep(cell, pulse)).readings['seal_resistance_gohm']!.why).toBe('membrane-charged'));
+});
+
+describe('what the file says of the amplifier', () => {
+  const with_ = (compensation: NonNullable<Parameters<typeof measureSweep>[0]['compensation']>) =>
+    measureSweep(input(clampedSweep(cell, pulse), { clamp: 'voltage', compensation }), neuron).readings;
+  const nothing = { whole_cell_pf: null, correction_percent: null, prediction_percent: null };
+
+  it('sets aside a transient that was taken away or predicted', () => {
+    for (const readings of [with_({ ...nothing, whole_cell_pf: 80 }), with_({ ...nothing, prediction_percent: 70 })]) {
+      for (const id of ['access_resistance_mohm', 'cell_capacitance_pf'])
+        expect(readings[id]).toMatchObject({ value: null, why: 'compensated' });
+      expect(numberIn(readings, 'membrane_resistance_mohm')).toBeCloseTo(210, 1);
+    }
+  });
+
+  it('tells an access that was partly corrected with what it was before', () => {
+    const reading = with_({ ...nothing, correction_percent: 50 })['access_resistance_mohm']!;
+    expect(reading.value).toBeCloseTo(10, 2);
+    expect(reading.note).toContain('about 20 MΩ without it');
+    expect(with_(nothing)['access_resistance_mohm']!.note).toBeUndefined();
+  });
+});
+
+describe('escaped action currents', () => {
+  // A current of the shape of an action current’s derivative, ms wide, on a clamped step to −10 mV.
+  const escaping = (sizes: readonly number[], times: readonly number[], width_ms = 0.6) => {
+    const made = clampedSweep({ ...cell, noise_pa: 8 }, [{ from_s: 0.05, to_s: 0.15, mv: 60 }]);
+    made.current.samples.forEach((_, i) => {
+      times.forEach((time, k) => {
+        const t = (i / 50000 - time) * 1000;
+        made.current.samples[i]! -= sizes[k]! * Math.exp(-0.5 * (t / (width_ms / 2.355)) ** 2);
+      });
+    });
+    return measure(made).readings['escaped_currents']!;
+  };
+
+  it('are counted where they come at times of their own', () => {
+    const two = escaping([900, 870], [0.0712, 0.1034]);
+    expect(two.value).toBe(2);
+    expect(Math.abs(two.at!.from_s! - 0.0712)).toBeLessThan(1e-4);
+    expect(escaping([1500], [0.17]).value).toBe(1);
+    expect(escaping([], []).value).toBe(0);
+  });
+
+  it('are not synaptic currents, held sodium currents, slow currents or glitches', () => {
+    expect(escaping([60, 45, 80], [0.02, 0.09, 0.17]).value).toBe(0);
+    expect(escaping([2000], [0.0512]).value).toBe(0);
+    expect(escaping([600], [0.1], 12).value).toBe(0);
+    expect(escaping([3000], [0.1], 0.04).value).toBe(0);
+  });
+
+  it('cannot be told from the command’s own answer without a command', () => {
+    const { current } = clampedSweep(cell, pulse);
+    const { readings } = measureSweep(input({ voltage: null, current }, { clamp: 'voltage' }), neuron);
+    expect(readings['escaped_currents']!.why).toBe('no-voltage');
+  });
+});
+
+// The worked example of the reference collection (passive_oracles), exact by linear circuit theory: 10 MΩ, 200 MΩ ∥ 100 pF, 5 mV: 500 pA at the edge,
+// 23.8095 pA in the end, tau 0.95238 ms, charge 0.45351 pC, 210 MΩ in all; Cm = Q/dV·((Rs + Rm)/Rm)².
+it('agrees with the worked example of a voltage-clamp step', () => {
+  const { readings } = measure(clampedSweep(cell, pulse));
+  expect(5000 / numberIn(readings, 'access_resistance_mohm')).toBeCloseTo(500, 0);
+  const total = numberIn(readings, 'access_resistance_mohm') + numberIn(readings, 'membrane_resistance_mohm');
+  expect(total).toBeCloseTo(210, 1);
+  expect(5000 / total).toBeCloseTo(23.8095, 2);
+  expect(numberIn(readings, 'transient_capacitance_pf')).toBeCloseTo(90.70294784580499, 1);
+  expect(numberIn(readings, 'cell_capacitance_pf')).toBeCloseTo(90.70294784580499 * (210 / 200) ** 2, 1);
 });
