@@ -1,18 +1,21 @@
-import { exponentialFit, goldenMinimum } from '../signal/exponential.ts';
 import { linearFit } from '../signal/line.ts';
-import { mean, median, standardDeviation } from '../signal/statistics.ts';
+import { mean, median } from '../signal/statistics.ts';
 import {
   commonReason,
   longSteps,
   medianOver,
+  ownError,
   type Point,
   placeOf,
   pointsOf,
   spreadOf,
   stepPa,
 } from './cell-numbers.ts';
+import { averaged, responseOf, timeConstants } from './cell-onset.ts';
+import { backToEdge } from './edge.ts';
 import { spikesDuring } from './firing.ts';
-import { absent, measured } from './reading.ts';
+import { filterAtEdge } from './passive.ts';
+import { absent, combinedError, measured } from './reading.ts';
 import type { CellContext, NumberedSweep, Reading, Readings, VIPoint } from './types.ts';
 
 /** Steady potential change on current, for every step without a spike in it. */
@@ -25,44 +28,120 @@ const steadyPoints = (sweeps: readonly NumberedSweep[]): Point[] =>
     ({ sweep }) => spikesDuring(sweep.spikes, sweep.stimulus).length === 0,
   );
 
-/** Input resistance, time constant, capacitance, sag and bridge error of one condition. */
-export function passiveReadings(sweeps: readonly NumberedSweep[]): Readings {
+/** Input resistance, time constants, capacitance, sag, rebound, rectification and bridge error of one condition. */
+export function passiveReadings(sweeps: readonly NumberedSweep[], filter_khz: number | null): Readings {
   const down = steadyPoints(sweeps).filter(({ sweep }) => stepPa(sweep)! < 0);
-  const bridge = bridgeError(sweeps);
+  const bridge = bridgeError(sweeps, filter_khz);
   const resistance = inputResistance(sweeps, down, bridge);
-  const timeConstant = membraneTimeConstant(sweeps, down);
+  const constants = timeConstants(sweeps, down, filter_khz);
   return {
     input_resistance_mohm: resistance,
-    membrane_time_constant_ms: timeConstant,
-    membrane_capacitance_pf: capacitance(resistance, timeConstant),
-    sag_fraction: sag(sweeps, down),
+    ...constants,
+    membrane_capacitance_pf: capacitance(resistance, constants.membrane_time_constant_ms),
+    ...sagAndRebound(sweeps, down, bridge),
+    rectification_ratio: rectification(sweeps, down, bridge),
     bridge_error_mohm: bridge,
+  };
+}
+
+/** mV/pA is GΩ. */
+const mohmPer = 1000;
+
+interface Slope {
+  /** mV/pA. */
+  value: number;
+  se: number;
+  freedom?: number;
+}
+
+/**
+ * Least-squares line with intercept through (I, ΔV) and (0, 0). The scatter about it holds both noise and the bend of
+ * the membrane's own curve: with two degrees of freedom left beside a parabola, the scatter about that is what noise
+ * does. Scatter and the points' own uncertainties are pooled as over sweeps.
+ */
+function slopeThrough(points: readonly Point[]): Slope | null {
+  const x = [0, ...points.map(({ sweep }) => stepPa(sweep)!)];
+  const y = [0, ...points.map(({ value }) => value)];
+  const fit = linearFit(x, y);
+  if (!fit) return null;
+  const n = x.length;
+  const middle = mean(x)!;
+  const sxx = x.reduce((sum, value) => sum + (value - middle) ** 2, 0);
+  const own = points.map(({ reading }) => ownError(reading));
+  // The origin is certain; each point moves the slope by (I − mean I)/Sxx of its own error.
+  const within = own.every((se) => se !== null)
+    ? points.reduce((sum, { sweep }, k) => sum + ((own[k]! * (stepPa(sweep)! - middle)) / sxx) ** 2, 0)
+    : null;
+  const bent = bendFreeScatter(x, y);
+  const scatter = bent && { variance: bent.variance / sxx, freedom: bent.freedom };
+  if (within === null)
+    return scatter ? { value: fit.slope, se: Math.sqrt(scatter.variance), freedom: scatter.freedom } : null;
+  return { value: fit.slope, ...pooled(within, scatter, n) };
+}
+
+/** Variance of the points about their parabola, or about their line where they are too few for one. */
+function bendFreeScatter(x: readonly number[], y: readonly number[]): { variance: number; freedom: number } | null {
+  const line = linearFit(x, y);
+  if (!line || x.length < 3) return null;
+  const fromLine = (values: readonly number[], fit: { slope: number; intercept: number }): number[] =>
+    values.map((value, k) => value - fit.intercept - fit.slope * x[k]!);
+  if (x.length < 5) return { variance: (line.residual_sd ?? 0) ** 2, freedom: x.length - 2 };
+  // The parabola beside the line: residuals of y on those of x² (Frisch & Waugh 1933, Econometrica 1:387–401).
+  const squares = x.map((value) => value * value);
+  const rest = fromLine(squares, linearFit(x, squares)!);
+  const left = fromLine(y, line);
+  const power = rest.reduce((sum, value) => sum + value * value, 0);
+  const bend = power > 0 ? rest.reduce((sum, value, k) => sum + value * left[k]!, 0) / power : 0;
+  const rss = left.reduce((sum, value, k) => sum + (value - bend * rest[k]!) ** 2, 0);
+  return { variance: rss / (x.length - 3), freedom: x.length - 3 };
+}
+
+/** What the points' own uncertainties count for against their scatter: as much as so many degrees of freedom. */
+const ownFreedom = 10;
+
+/**
+ * Uncertainty of a slope from the points' own and from their scatter (both variances of the slope): pooled where the
+ * scatter is no more than chance makes of the points' own (F at 95 %), else the scatter alone.
+ */
+function pooled(
+  within: number,
+  scatter: { variance: number; freedom: number } | null,
+  n: number,
+): { se: number; freedom?: number } {
+  if (!scatter) return { se: Math.sqrt(within), freedom: ownFreedom };
+  const excess = 1 + 2.2 / Math.sqrt(scatter.freedom) + 1.2 / scatter.freedom;
+  if (scatter.variance > excess * within) return { se: Math.sqrt(scatter.variance), freedom: scatter.freedom };
+  const freedom = scatter.freedom + ownFreedom;
+  return {
+    se: Math.sqrt((scatter.freedom * scatter.variance + ownFreedom * within) / freedom),
+    freedom: Math.max(freedom, n),
   };
 }
 
 function inputResistance(sweeps: readonly NumberedSweep[], down: readonly Point[], bridge: Reading): Reading {
   if (down.length === 0) return withoutHyperpolarizing(sweeps);
-  const fit = linearFit([0, ...down.map(({ sweep }) => stepPa(sweep)!)], [0, ...down.map(({ value }) => value)]);
+  const fit = slopeThrough(down);
   if (!fit) return absent('too-few-points');
-  // mV/pA is GΩ. One step alone leaves no scatter: its own error stands in.
-  const alone = down[0]!;
-  const se =
-    fit.se_slope ?? (alone.reading.se === undefined ? null : alone.reading.se / Math.abs(stepPa(alone.sweep)!));
   const left = bridge.value;
-  const included =
-    left !== null && Math.abs(left) > Math.max(1, 0.05 * Math.abs(fit.slope * 1000), 2 * (bridge.se ?? 0))
-      ? { note: `holds a bridge error of ${left.toFixed(1)} MΩ` }
-      : {};
-  return measured(fit.slope * 1000, {
+  const error = combinedError([
+    { ...fit, se: fit.se * mohmPer },
+    ...(left === null
+      ? []
+      : [{ se: bridge.se ?? 0, ...(bridge.freedom === undefined ? {} : { freedom: bridge.freedom }) }]),
+  ]);
+  return measured(fit.value * mohmPer - (left ?? 0), {
     n: down.length,
-    ...(se === null ? {} : { se: se * 1000 }),
+    ...error,
     at: placeOf(down.reduce((best, one) => (stepPa(one.sweep)! < stepPa(best.sweep)! ? one : best))),
-    ...included,
+    note:
+      left === null
+        ? 'holds what the bridge left over, which could not be measured'
+        : `bridge error of ${left.toFixed(1)} MΩ taken off`,
   });
 }
 
 /** Why no hyperpolarizing step could be used: none was made, or those made could not be measured. */
-function withoutHyperpolarizing(sweeps: readonly NumberedSweep[]): Reading {
+export function withoutHyperpolarizing(sweeps: readonly NumberedSweep[]): Reading {
   const made = longSteps(sweeps).filter((sweep) => stepPa(sweep)! < 0);
   if (made.length > 0) return commonReason(made, 'steady_deflection_mv', 'no-hyperpolarizing-steps');
   return absent(
@@ -72,187 +151,176 @@ function withoutHyperpolarizing(sweeps: readonly NumberedSweep[]): Reading {
   );
 }
 
-/** Responses up to this deflection, mV, count as small; sag up to this share of it counts as none. */
-const smallDeflection_mv = 10;
-const largestSag = 0.12;
-
-interface Response {
-  sweep: NumberedSweep;
-  /** ms after onset and mV below the level before it, per pA of the step. */
-  ms: number[];
-  perPa: number[];
-  /** Steady and largest deflection per pA, and the share of the largest that is gone by the end. */
-  steadyPerPa: number;
-  largestPerPa: number;
-  sag: number;
-}
-
-/**
- * Single exponential through the averaged onset of small hyperpolarizing steps, from 10 to 90 % of the steady
- * deflection. Each response is divided by its current, so that steps of several sizes average into one.
- */
-function membraneTimeConstant(sweeps: readonly NumberedSweep[], down: readonly Point[]): Reading {
-  if (down.length === 0) return withoutHyperpolarizing(sweeps);
-  const usable = down.filter(({ sweep, value }) => sweep.step_response !== null && value < -0.3);
-  const small = usable.filter(({ value }) => value >= -smallDeflection_mv);
-  const least = usable.reduce<Point | null>((best, one) => (!best || one.value > best.value ? one : best), null);
-  const chosen = small.length > 0 ? small : least && least.value >= -2.5 * smallDeflection_mv ? [least] : [];
-  if (chosen.length === 0)
-    return absent(
-      usable.length === 0 ? 'unresolved' : 'no-hyperpolarizing-steps',
-      usable.length === 0 ? {} : { note: 'no step deflects by 25 mV or less' },
-    );
-  const responses = chosen.flatMap((point) => responseOf(point) ?? []);
-  if (responses.length === 0) return absent('unresolved');
-  // Sag is judged over all steps of 3 mV or more: slow noise makes or hides some of it in a single one.
-  const large = usable.filter(({ sweep }) => (sweep.readings['largest_deflection_mv']?.value ?? 0) <= -3);
-  const share = median((large.length > 0 ? large : chosen).map((point) => responseOf(point)?.sag ?? 0))!;
-  if (share > largestSag)
-    return absent('sag-or-resonance', { note: `${Math.round(share * 100)} % of the deflection is gone by the end` });
-  const together = fitOnset(averaged(responses));
-  if (!together) return absent('fit-failed');
-  const alone = responses.flatMap((one) => fitOnset(one)?.tau ?? []);
-  const sd = alone.length >= 2 ? standardDeviation(alone) : null;
-  const first = chosen[0]!;
-  return measured(together.tau, {
-    n: responses.length,
-    ...(sd === null ? {} : { sd }),
-    se: sd !== null && alone.length >= 3 ? Math.max(together.se_tau, sd / Math.sqrt(alone.length)) : together.se_tau,
-    at: {
-      sweep: first.sweep.sweep,
-      from_s: first.sweep.stimulus.onset_s!,
-      to_s: first.sweep.stimulus.onset_s! + together.to_ms / 1000,
-    },
-    ...(small.length === 0 ? { note: `from the smallest step, ${(-first.value).toFixed(0)} mV` } : {}),
-  });
-}
-
-function responseOf({ sweep, value }: Point): Response | null {
-  const { start_s, rate_hz, mv } = sweep.step_response!;
-  const pa = stepPa(sweep)!;
-  const ms = mv.map((_, k) => (start_s + k / rate_hz - sweep.stimulus.onset_s!) * 1000);
-  const before = mean(mv.filter((_, k) => ms[k]! < 0)) ?? sweep.readings['baseline_mv']?.value ?? null;
-  if (before === null) return null;
-  const largest = sweep.readings['largest_deflection_mv']?.value ?? null;
-  const from = ms.findIndex((time) => time >= 0);
-  if (from < 0) return null;
-  return {
-    sweep,
-    ms: ms.slice(from),
-    perPa: mv.slice(from).map((level) => (level - before) / pa),
-    steadyPerPa: value / pa,
-    largestPerPa: Math.max(value / pa, largest === null ? 0 : largest / pa),
-    sag: largest === null || largest >= 0 ? 0 : Math.max(0, (largest - value) / largest),
-  };
-}
-
-/** Mean of responses on the time grid of the first, as far as all of them reach. */
-function averaged(responses: readonly Response[]): Response {
-  const [first, ...rest] = responses as [Response, ...Response[]];
-  const perPa = first.perPa.flatMap((value, k) => {
-    const time = first.ms[k]!;
-    const others = rest.map((one) => interpolated(one, time));
-    return others.every((other) => other !== null)
-      ? [(value + others.reduce((sum, other) => sum + other!, 0)!) / responses.length]
-      : [];
-  });
-  return {
-    ...first,
-    perPa,
-    ms: first.ms.slice(0, perPa.length),
-    steadyPerPa: mean(responses.map((one) => one.steadyPerPa))!,
-    largestPerPa: mean(responses.map((one) => one.largestPerPa))!,
-  };
-}
-
-function interpolated({ ms, perPa }: Response, time: number): number | null {
-  const spacing = ms[1]! - ms[0]!;
-  const position = (time - ms[0]!) / spacing;
-  const below = Math.floor(position + 1e-9);
-  if (below < 0) return perPa[0]!;
-  if (below >= perPa.length - 1) return below === perPa.length - 1 ? perPa[below]! : null;
-  return perPa[below]! + (perPa[below + 1]! - perPa[below]!) * (position - below);
-}
-
-function fitOnset(response: Response): { tau: number; se_tau: number; to_ms: number } | null {
-  const { ms, perPa, steadyPerPa } = response;
-  const reached = (share: number, from: number): number => {
-    for (let k = from; k < perPa.length; k++) if (perPa[k]! >= share * steadyPerPa) return k;
-    return -1;
-  };
-  // Nothing before 0.5 ms: that is the electrode's.
-  const electrode = ms.findIndex((time) => time >= 0.5);
-  const from = reached(0.1, Math.max(0, electrode));
-  const to = from < 0 ? -1 : reached(0.9, from);
-  if (from < 0 || to - from < 5) return null;
-  const x = ms.slice(from, to + 1);
-  const y = perPa.slice(from, to + 1);
-  const fit = exponentialFit(x, y);
-  // The level it heads for is known: the steady one, or the largest where some of it sags away. A fit that heads
-  // elsewhere has followed noise or hum, and is led back to the nearer end of that range.
-  const allowed = [0.97 * response.steadyPerPa, 1.03 * response.largestPerPa] as const;
-  if (fit?.converged && fit.offset >= allowed[0] && fit.offset <= allowed[1])
-    return { tau: fit.tau, se_tau: fit.se_tau, to_ms: ms[to]! };
-  const offset = fit && fit.offset < allowed[0] ? allowed[0] : allowed[1];
-  const led = fitToLevel(x, y, offset);
-  return led && { ...led, to_ms: ms[to]! };
-}
-
-/** Time constant of an exponential that heads for a known level. */
-function fitToLevel(x: readonly number[], y: readonly number[], level: number): { tau: number; se_tau: number } | null {
-  const span = x.at(-1)! - x[0]!;
-  const fitted = (logTau: number): { amplitude: number; rss: number } => {
-    const decay = x.map((time) => Math.exp(-(time - x[0]!) / Math.exp(logTau)));
-    const squares = decay.reduce((sum, value) => sum + value * value, 0);
-    const amplitude = decay.reduce((sum, value, k) => sum + value * (y[k]! - level), 0) / squares;
-    return { amplitude, rss: decay.reduce((sum, value, k) => sum + (y[k]! - level - amplitude * value) ** 2, 0) };
-  };
-  const low = Math.log(span / 50);
-  const high = Math.log(span * 5);
-  const logTau = goldenMinimum((value) => fitted(value).rss, low, high);
-  if (logTau < low + 0.01 || logTau > high - 0.01) return null;
-  const tau = Math.exp(logTau);
-  const { amplitude, rss } = fitted(logTau);
-  const slope = x.reduce((sum, time) => {
-    const t = time - x[0]!;
-    return sum + ((amplitude * t * Math.exp(-t / tau)) / tau ** 2) ** 2;
-  }, 0);
-  return { tau, se_tau: Math.sqrt(rss / Math.max(1, x.length - 2) / slope) };
-}
-
 /** ms/MΩ is nF. */
 function capacitance(resistance: Reading, timeConstant: Reading): Reading {
   if (timeConstant.value === null) return { ...timeConstant };
   if (resistance.value === null) return { ...resistance };
   if (!(resistance.value > 0)) return absent('unresolved');
   const value = (timeConstant.value / resistance.value) * 1000;
-  const relative = Math.hypot((timeConstant.se ?? 0) / timeConstant.value, (resistance.se ?? 0) / resistance.value);
+  const part = (reading: Reading) => ({
+    se: (value * (reading.se ?? 0)) / Math.abs(reading.value!),
+    ...(reading.freedom === undefined ? {} : { freedom: reading.freedom }),
+  });
   return measured(value, {
     n: timeConstant.n ?? 1,
-    se: value * relative,
+    ...combinedError([part(timeConstant), part(resistance)]),
     ...(timeConstant.at ? { at: timeConstant.at } : {}),
   });
 }
 
 const sagAt_mv = 15;
 
-/** Sag on the hyperpolarizing step whose largest deflection is nearest to 15 mV; below 3 mV noise would decide. */
-function sag(sweeps: readonly NumberedSweep[], down: readonly Point[]): Reading {
+/**
+ * Sag and rebound of the hyperpolarizing step whose largest deflection is nearest to 15 mV; below 3 mV noise would
+ * decide. What the bridge left over is in both deflections: their difference is free of it, the largest is freed.
+ */
+function sagAndRebound(sweeps: readonly NumberedSweep[], down: readonly Point[], bridge: Reading): Readings {
   const points = pointsOf(
     down.map(({ sweep }) => sweep),
     'largest_deflection_mv',
   );
-  if (points.length === 0) return withoutHyperpolarizing(sweeps);
+  const every = (reading: Reading): Readings => ({
+    sag_fraction: reading,
+    sag_mv: reading,
+    rebound_mv: reading,
+    rebound_spikes: reading,
+  });
+  if (points.length === 0) return every(withoutHyperpolarizing(sweeps));
   const nearest = points.reduce((best, one) =>
     Math.abs(-one.value - sagAt_mv) < Math.abs(-best.value - sagAt_mv) ? one : best,
   );
-  if (-nearest.value < 3) return absent('unresolved', { note: 'no step deflects by 3 mV' });
+  if (-nearest.value < 3) return every(absent('unresolved', { note: 'no step deflects by 3 mV' }));
+  const pa = stepPa(nearest.sweep)!;
   const steady = nearest.sweep.readings['steady_deflection_mv']!;
-  return measured((nearest.value - steady.value!) / nearest.value, {
-    n: 1,
-    se: Math.hypot(steady.se ?? 0, nearest.reading.se ?? 0) / -nearest.value,
-    at: placeOf(nearest),
-    note: `step of ${stepPa(nearest.sweep)!.toFixed(0)} pA, ${(-nearest.value).toFixed(1)} mV`,
+  const base = nearest.sweep.readings['baseline_mv']?.se ?? 0;
+  const own = (reading: Reading): { se: number; freedom?: number } => ({
+    // Both deflections are taken from one baseline, whose error cancels in their difference.
+    se: Math.sqrt(Math.max(0, (reading.se ?? 0) ** 2 - base ** 2)),
+    ...(reading.freedom === undefined ? {} : { freedom: reading.freedom }),
+  });
+  const difference = steady.value! - nearest.value;
+  const error = combinedError([own(steady), own(nearest.reading)]);
+  const whole = -nearest.value + ((bridge.value ?? 0) * pa) / mohmPer;
+  const wholeError = Math.hypot(nearest.reading.se ?? 0, ((bridge.se ?? 0) * pa) / mohmPer);
+  const extra = { n: 1, at: placeOf(nearest), note: `step of ${pa.toFixed(0)} pA, ${(-nearest.value).toFixed(1)} mV` };
+  const rebound = (id: string): Reading => {
+    const reading = nearest.sweep.readings[id] ?? absent('cut-off-by-sweep-end');
+    return reading.value === null
+      ? reading
+      : {
+          ...reading,
+          at: { ...reading.at, sweep: nearest.sweep.sweep },
+          note: [extra.note, reading.note].filter(Boolean).join('; '),
+        };
+  };
+  const share = difference / whole;
+  return {
+    sag_mv: measured(difference, { ...extra, ...error }),
+    sag_fraction:
+      whole > 1
+        ? measured(share, {
+            ...extra,
+            ...combinedError([{ ...error, se: error.se / whole }, { se: (share * wholeError) / whole }]),
+          })
+        : absent('unresolved', { note: 'the bridge error makes most of the deflection' }),
+    rebound_mv: rebound('rebound_mv'),
+    rebound_spikes: rebound('rebound_spikes'),
+  };
+}
+
+/** The half of the steps that deflects more must reach this, mV, and deflect this much more than the other half. */
+const rectifies = { from_mv: 10, apart: 1.5 };
+
+/**
+ * Slope resistance over the larger hyperpolarizations against that over the smaller: line with intercept through the
+ * steps of more than half the largest deflection, over the line through (0, 0) and the others, each without the bridge.
+ */
+function rectification(sweeps: readonly NumberedSweep[], down: readonly Point[], bridge: Reading): Reading {
+  if (down.length === 0) return withoutHyperpolarizing(sweeps);
+  const deepest = Math.min(...down.map(({ value }) => value));
+  if (-deepest < rectifies.from_mv)
+    return absent('unresolved', { note: `no step deflects by ${rectifies.from_mv} mV` });
+  const small = down.filter(({ value }) => value > 0.5 * deepest);
+  const large = down.filter(({ value }) => value <= 0.5 * deepest);
+  const currents = large.map(({ sweep }) => stepPa(sweep)!);
+  if (
+    small.length < 1 ||
+    large.length < 2 ||
+    Math.max(...currents) - Math.min(...currents) < 0.1 * -Math.min(...currents)
+  )
+    return absent('too-few-sweeps');
+  const left = bridge.value ?? 0;
+  const inner = smallSlope(small);
+  const outer = largeSlope(large);
+  const [r, R] = [inner.value * mohmPer - left, outer.value * mohmPer - left];
+  if (!(r > 0)) return absent('unresolved');
+  const ratio = R / r;
+  const bridged = ((bridge.se ?? 0) * Math.abs(1 - ratio)) / r;
+  return measured(ratio, {
+    n: down.length,
+    ...combinedError([
+      { ...outer, se: (outer.se * mohmPer) / r },
+      { ...inner, se: (inner.se * mohmPer * ratio) / r },
+      { se: bridged },
+    ]),
+    at: placeOf(large.reduce((best, one) => (one.value < best.value ? one : best))),
+    note: `${small.length} steps to ${(-Math.min(...small.map((one) => one.value))).toFixed(0)} mV, ${large.length} to ${(-deepest).toFixed(0)} mV`,
+  });
+}
+
+/** Slope of the line through the origin: Σ I·ΔV / Σ I². */
+function smallSlope(points: readonly Point[]): Slope {
+  const squares = points.reduce((sum, { sweep }) => sum + stepPa(sweep)! ** 2, 0);
+  const value = points.reduce((sum, one) => sum + one.value * stepPa(one.sweep)!, 0) / squares;
+  const se =
+    Math.sqrt(points.reduce((sum, { sweep, reading }) => sum + ((ownError(reading) ?? 0) * stepPa(sweep)!) ** 2, 0)) /
+    squares;
+  return { value, se, freedom: ownFreedom };
+}
+
+function largeSlope(points: readonly Point[]): Slope {
+  const x = points.map(({ sweep }) => stepPa(sweep)!);
+  const fit = linearFit(
+    x,
+    points.map(({ value }) => value),
+  )!;
+  const middle = mean(x)!;
+  const sxx = x.reduce((sum, value) => sum + (value - middle) ** 2, 0);
+  const within =
+    points.reduce((sum, { reading }, k) => sum + ((ownError(reading) ?? 0) * (x[k]! - middle)) ** 2, 0) / sxx ** 2;
+  return { value: fit.slope, se: Math.sqrt(within), freedom: ownFreedom };
+}
+
+/** Windows of the averaged response that the bridge error is read from, ms, the longest first. */
+const bridgeWindows_ms = [300, 100, 30, 12];
+
+/**
+ * From the averaged onset of all hyperpolarizing steps without spikes, where the sweeps kept it; else from the jumps of
+ * the single sweeps.
+ */
+function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null): Reading {
+  const single = bridgeFromSweeps(sweeps);
+  const kept = longSteps(sweeps).filter((sweep) => sweep.step_response !== null && (stepPa(sweep) ?? 0) < 0);
+  const responses = kept.flatMap((sweep) => responseOf(sweep) ?? []);
+  if (responses.length === 0) return single;
+  const together = averaged(responses);
+  const after = backToEdge(together.ms, together.perPa, { ...filterAtEdge(filter_khz), windows_ms: bridgeWindows_ms });
+  if (!after) return single;
+  // Positive: the response goes on in the direction of the current.
+  if (Math.abs(after.mv) > 3 * after.se && after.rise < 0.2 * Math.abs(after.mv)) return single;
+  const own = combinedError([
+    { se: after.se, freedom: after.freedom },
+    { se: together.beforePerPa_se, freedom: 20 },
+  ]);
+  return measured(after.mv * mohmPer, {
+    n: responses.length,
+    se: own.se * mohmPer,
+    ...(own.freedom === undefined ? {} : { freedom: own.freedom }),
+    at: { sweep: responses[0]!.sweep.sweep, from_s: responses[0]!.sweep.stimulus.onset_s! },
+    note: [
+      `averaged onset of ${responses.length} steps`,
+      ...(after.electrode_ms === null ? [] : [`electrode charging with ${after.electrode_ms.toFixed(2)} ms left out`]),
+    ].join('; '),
   });
 }
 
@@ -260,7 +328,7 @@ function sag(sweeps: readonly NumberedSweep[], down: readonly Point[]): Reading 
  * Slope through the origin of the instantaneous step on the stimulus: without current there is no jump. A membrane on
  * its way to a spike does not rise along an exponential: sweeps without spikes speak first, where there are two.
  */
-function bridgeError(sweeps: readonly NumberedSweep[]): Reading {
+function bridgeFromSweeps(sweeps: readonly NumberedSweep[]): Reading {
   const all = pointsOf(sweeps, 'bridge_step_mv').filter(({ sweep }) => Math.abs(stepPa(sweep) ?? 0) > 0);
   const quiet = all.filter(({ sweep }) => sweep.spikes.length === 0);
   // A step that makes the cell fire curves before it fires: one such edge alone cannot be told from a jump.
@@ -269,19 +337,29 @@ function bridgeError(sweeps: readonly NumberedSweep[]): Reading {
     return all.length > 0 ? absent('too-few-sweeps') : commonReason(sweeps, 'bridge_step_mv', 'no-stimulus');
   const squares = points.reduce((sum, { sweep }) => sum + stepPa(sweep)! ** 2, 0);
   const slope = points.reduce((sum, { sweep, value }) => sum + value * stepPa(sweep)!, 0) / squares;
-  const residual = Math.sqrt(
-    points.reduce((sum, { sweep, value }) => sum + (value - slope * stepPa(sweep)!) ** 2, 0) /
-      Math.max(1, points.length - 1),
-  );
-  const own =
-    Math.sqrt(points.reduce((sum, { sweep, reading }) => sum + ((reading.se ?? 0) * stepPa(sweep)!) ** 2, 0)) / squares;
+  const within =
+    points.reduce((sum, { sweep, reading }) => sum + ((ownError(reading) ?? 0) * stepPa(sweep)!) ** 2, 0) /
+    squares ** 2;
+  const scatter =
+    points.length < 2
+      ? null
+      : {
+          variance:
+            points.reduce((sum, { sweep, value }) => sum + (value - slope * stepPa(sweep)!) ** 2, 0) /
+            (points.length - 1) /
+            squares,
+          freedom: points.length - 1,
+        };
   const largest = points.reduce((best, one) =>
     Math.abs(stepPa(one.sweep)!) > Math.abs(stepPa(best.sweep)!) ? one : best,
   );
-  return measured(slope * 1000, {
+  const error = pooled(within, scatter, points.length);
+  return measured(slope * mohmPer, {
     n: points.length,
-    se: 1000 * Math.max(own, points.length > 1 ? residual / Math.sqrt(squares) : 0),
+    ...error,
+    se: error.se * mohmPer,
     at: placeOf(largest),
+    note: 'jumps of single sweeps',
   });
 }
 

@@ -35,7 +35,7 @@ function measureCondition(condition: string, sweeps: NumberedSweep[], context: C
   const clamped = sweeps.filter((sweep) => sweep.clamp === 'current');
   const vi = vOnI(clamped);
   const fi = rateOnI(clamped);
-  const passive = passiveReadings(clamped);
+  const passive = passiveReadings(clamped, context.filter_khz);
   const reference = referenceSpikeOf(clamped);
   const readings: Readings = {
     ...qualityReadings(sweeps),

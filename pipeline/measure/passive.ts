@@ -1,9 +1,8 @@
-import { type ExponentialFit, exponentialFit } from '../signal/exponential.ts';
-import { linearFit } from '../signal/line.ts';
-import { movingAverage } from '../signal/smoothing.ts';
+import { lineErrorAt, type SerialLine, serialLine, serialMean } from '../signal/serial.ts';
 import { countFinite, mean, median, standardDeviation } from '../signal/statistics.ts';
+import { backToEdge, type EdgeValue } from './edge.ts';
 import { stuckStretches } from './quality.ts';
-import { absent, measured } from './reading.ts';
+import { absent, combinedError, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
 import {
   filterDelayMs,
@@ -22,7 +21,12 @@ import type { Reading, Readings, Signal, Spike, Stimulus, SweepMeasure } from '.
 
 /** A current-clamp sweep as the functions of this file need it. */
 export interface PassiveInput {
+  /** The potential, freed of mains hum where there is some. */
   voltage: Signal;
+  /** The potential as recorded, for what hum belongs to; left out where it is the same. */
+  recorded?: Signal;
+  /** Step of the digitizer, mV; left out where it is not known. */
+  quantum_mv?: number | null;
   stimulus: Stimulus;
   /** Levels of the stimulus trace; empty where the stimulus is only stated. */
   levels: readonly Level[];
@@ -75,7 +79,13 @@ function isIn(spike: Spike, voltage: Signal, whole: Stretch): boolean {
   return peak !== null && peak >= timeAt(voltage, whole.from) && peak < timeAt(voltage, whole.to);
 }
 
-/** Level, spread and drift of the baseline. */
+/** Means over this long are the grain that levels and slopes are read from, s. */
+const grain_s = 0.002;
+
+/**
+ * Level, spread and drift of the baseline. The level is the median of means over 2 ms: a median of samples would stand
+ * on the digitizer's grid, a mean would follow whatever small event the stretch holds.
+ */
 export function measureBaseline(input: PassiveInput): Readings {
   const { voltage } = input;
   const { stretches, note } = baselineStretches(input);
@@ -84,26 +94,59 @@ export function measureBaseline(input: PassiveInput): Readings {
     baseline_sd_mv: reading,
     baseline_drift_mv_per_s: reading,
   });
-  const values = gathered(voltage.samples, stretches);
+  const values = gathered((input.recorded ?? voltage).samples, stretches);
   if (values.length < 3) return every(absent(voltage.samples.length < 3 ? 'sweep-too-short' : 'no-baseline'));
   const at = { from_s: timeAt(voltage, stretches[0]!.from), to_s: timeAt(voltage, stretches.at(-1)!.to) };
   const sd = standardDeviation(values)!;
-  // Neighbouring samples are not independent; means over 10 ms nearly are.
-  const blocks = blockMeans(voltage, stretches, 0.01);
-  const blockSd = blocks.mv.length >= 5 ? standardDeviation(blocks.mv)! : null;
+  const grains = grainsOf(voltage, stretches);
+  const line = serialLine(grains.s, grains.mv);
   const extra = { n: values.length, at, ...(note ? { note } : {}) };
-  const line = at.to_s - at.from_s >= 0.02 && blocks.mv.length >= 3 ? linearFit(blocks.s, blocks.mv) : null;
+  const level = grains.mv.length >= 5 ? median(grains.mv)! : mean(gathered(voltage.samples, stretches))!;
+  const own = line && line.se_mean !== null ? medianCost * line.se_mean : sd / Math.sqrt(Math.max(1, grains.mv.length));
+  const known = line && line.se_mean !== null ? { freedom: line.freedom } : {};
   return {
-    baseline_mv: measured(median(values)!, {
+    baseline_mv: measured(level, {
       ...extra,
       sd,
-      se: blockSd === null ? sd / Math.sqrt(Math.max(1, blocks.mv.length)) : blockSd / Math.sqrt(blocks.mv.length),
+      ...combinedError([{ se: own, ...known }, { se: quantizationError(input.quantum_mv ?? 0, sd) }]),
     }),
-    baseline_sd_mv: measured(sd, extra),
-    baseline_drift_mv_per_s: line
-      ? measured(line.slope, { ...extra, ...(line.se_slope === null ? {} : { se: line.se_slope }) })
-      : absent('sweep-too-short'),
+    baseline_sd_mv: measured(sd, {
+      ...extra,
+      // The slow part of the noise decides: as many independent values as its variance of the mean speaks of.
+      ...(line && line.se_mean !== null && sd > 0
+        ? { se: sd / Math.sqrt(2 * Math.max(4, Math.min(values.length, (sd / line.se_mean) ** 2))) }
+        : {}),
+    }),
+    baseline_drift_mv_per_s:
+      line && at.to_s - at.from_s >= 0.02 && grains.mv.length >= 10
+        ? measured(line.slope, {
+            ...extra,
+            ...(line.se_slope === null ? {} : { se: line.se_slope, freedom: line.freedom }),
+          })
+        : absent('sweep-too-short'),
   };
+}
+
+/** A median of normal numbers scatters √(π/2) times as much as their mean. */
+const medianCost = Math.sqrt(Math.PI / 2);
+
+/**
+ * What rounding to steps of `q` does to a mean of values that scatter by `sd`: noise well above a step averages it out,
+ * noise below a quarter of one does not. Root mean square over where the level lies on the grid, from the Fourier
+ * series of the rounding error (Widrow & Kollár 2008, Quantization Noise; from memory).
+ */
+export function quantizationError(q: number, sd: number): number {
+  if (!(q > 0)) return 0;
+  const noise = Math.sqrt(Math.max(0, sd * sd - (q * q) / 12)) / q;
+  let sum = 0;
+  for (let k = 1; k <= 20; k++) sum += Math.exp(-((2 * Math.PI * k * noise) ** 2)) / (k * k);
+  return (q * Math.sqrt(sum / 2)) / Math.PI;
+}
+
+/** Means over 2 ms of the stretches, finer where that would leave fewer than ten, and the times of their middles. */
+function grainsOf(voltage: Signal, stretches: readonly Stretch[]): { s: number[]; mv: number[] } {
+  const samples = stretches.reduce((sum, one) => sum + one.to - one.from, 0);
+  return blockMeans(voltage, stretches, Math.min(grain_s, samples / voltage.rate_hz / 10));
 }
 
 function blockMeans(voltage: Signal, stretches: readonly Stretch[], seconds: number): { s: number[]; mv: number[] } {
@@ -111,31 +154,107 @@ function blockMeans(voltage: Signal, stretches: readonly Stretch[], seconds: num
   const out = { s: [] as number[], mv: [] as number[] };
   for (const { from, to } of stretches)
     for (let i = from; i + block <= to; i += block) {
-      out.s.push(timeAt(voltage, i + block / 2));
-      out.mv.push(mean(voltage.samples.subarray(i, i + block))!);
+      const value = mean(voltage.samples.subarray(i, i + block));
+      if (value === null) continue;
+      out.s.push(timeAt(voltage, i + (block - 1) / 2));
+      out.mv.push(value);
     }
   return out;
+}
+
+/** Where the baseline is heading under the step: nothing, or a straight line. */
+interface Drift {
+  /** mV/s; 0 where none is resolved. */
+  slope: number;
+  se: number;
+  /** The time to which the baseline's level belongs, s. */
+  from_s: number;
+}
+
+const resolvedFrom = 3;
+
+/**
+ * The line that the baseline follows under the step. Where the potential comes back to it afterwards, the line through
+ * the levels before and after; otherwise the slope before, continued, a tenth of it taken as uncertain. A slope below
+ * three times its standard error counts as none.
+ */
+function driftUnder(input: PassiveInput, step: Step): Drift {
+  const { voltage, stimulus, spikes, slow } = input;
+  const before = lineIn(voltage, baselineStretches(input).stretches);
+  const none = { slope: 0, se: 0, from_s: before?.mean_x ?? step.from_s };
+  if (!before || before.se_slope === null) return none;
+  const next_s = Math.min(
+    timeAt(voltage, voltage.samples.length),
+    ...stimulus.edges_s.filter((s) => s > step.to_s + 1e-9),
+  );
+  const whole = {
+    from: indexAt(voltage, step.to_s + Math.max(0.06, 0.5 * (next_s - step.to_s))),
+    to: indexAt(voltage, next_s),
+  };
+  const quiet = without(whole, spikeHoles(voltage, spikes, slow)).flatMap((one) => readable(voltage.samples, one));
+  const after = whole.to - whole.from >= 0.03 * voltage.rate_hz ? lineIn(voltage, quiet) : null;
+  if (after && after.se_slope !== null) {
+    const reach = after.mean_x - before.mean_x;
+    const slope = (after.mean_y - before.mean_y) / reach;
+    const se = Math.hypot(after.se_mean!, before.se_mean!) / reach;
+    const alike = (one: SerialLine): boolean => Math.abs(one.slope - slope) <= 2.5 * Math.hypot(one.se_slope!, se);
+    if (alike(before) && alike(after))
+      return Math.abs(slope) > resolvedFrom * se ? { slope, se, from_s: before.mean_x } : none;
+  }
+  if (!(Math.abs(before.slope) > resolvedFrom * before.se_slope)) return none;
+  return { slope: before.slope, se: Math.hypot(before.se_slope, 0.1 * before.slope), from_s: before.mean_x };
+}
+
+function lineIn(voltage: Signal, stretches: readonly Stretch[]): SerialLine | null {
+  const grains = grainsOf(voltage, stretches);
+  const line = grains.mv.length >= 10 ? serialLine(grains.s, grains.mv) : null;
+  return line && (lineErrorAt(line, line.mean_x) ?? null) !== null ? line : null;
 }
 
 /** Steps shorter than this have no late part to speak of, s. */
 const shortestStep_s = 0.0125;
 
-/** `steady_deflection_mv` and `largest_deflection_mv` of a step. */
+/** `steady_deflection_mv`, `largest_deflection_mv`, `rebound_mv` and `rebound_spikes` of a step. */
 export function measureDeflections(input: PassiveInput, baseline: Reading): Readings {
   const { voltage, stimulus } = input;
-  const both = (reading: Reading): Readings => ({ steady_deflection_mv: reading, largest_deflection_mv: reading });
+  const every = (reading: Reading): Readings => ({
+    steady_deflection_mv: reading,
+    largest_deflection_mv: reading,
+    rebound_mv: reading,
+    rebound_spikes: reading,
+  });
   const step = stepOf(stimulus);
-  if (!step) return both(withoutStep(stimulus));
-  if (baseline.value === null) return both(absent(baseline.why ?? 'no-baseline'));
+  if (!step) return every(withoutStep(stimulus));
+  if (baseline.value === null) return every(absent(baseline.why ?? 'no-baseline'));
   if (step.to_s - step.from_s < shortestStep_s)
-    return both(absent('sweep-too-short', { note: 'the step is too short' }));
+    return every(absent('sweep-too-short', { note: 'the step is too short' }));
   const ends_s = timeAt(voltage, voltage.samples.length);
-  if (step.from_s >= ends_s) return both(absent('cut-off-by-sweep-end'));
+  if (step.from_s >= ends_s) return every(absent('cut-off-by-sweep-end'));
+  const drift = driftUnder(input, step);
   return {
-    steady_deflection_mv: steadyDeflection(input, baseline, step),
-    largest_deflection_mv: largestDeflection(input, baseline, step),
+    steady_deflection_mv: steadyDeflection(input, baseline, step, drift),
+    largest_deflection_mv: largestDeflection(input, baseline, step, drift),
+    ...reboundAfter(input, baseline, step, drift),
   };
 }
+
+/** Level of the baseline under a time, and its standard uncertainty with degrees of freedom. */
+function levelUnder(baseline: Reading, drift: Drift, time_s: number) {
+  const reach = time_s - drift.from_s;
+  return {
+    mv: baseline.value! + drift.slope * reach,
+    errors: [
+      { se: baseline.se ?? 0, ...(baseline.freedom === undefined ? {} : { freedom: baseline.freedom }) },
+      { se: drift.se * reach },
+    ],
+    ...(drift.slope === 0 ? {} : { note: `baseline drift of ${drift.slope.toFixed(2)} mV/s taken off` }),
+  };
+}
+
+const noteOf = (...notes: (string | undefined)[]): { note?: string } => {
+  const said = notes.filter((note) => note !== undefined);
+  return said.length > 0 ? { note: said.join('; ') } : {};
+};
 
 interface Step {
   from_s: number;
@@ -152,7 +271,7 @@ export const stepOf = (stimulus: Stimulus): Step | null =>
 export const withoutStep = (stimulus: Stimulus): Reading =>
   absent(stimulus.kind === 'none' || stimulus.from === 'absent' ? 'no-stimulus' : 'stimulus-not-a-step');
 
-function steadyDeflection(input: PassiveInput, baseline: Reading, step: Step): Reading {
+function steadyDeflection(input: PassiveInput, baseline: Reading, step: Step, drift: Drift): Reading {
   const { voltage, spikes, slow } = input;
   const length_s = step.to_s - step.from_s;
   const to_s = step.to_s - Math.min(0.005, 0.1 * length_s);
@@ -160,29 +279,40 @@ function steadyDeflection(input: PassiveInput, baseline: Reading, step: Step): R
   const window = { from: indexAt(voltage, from_s), to: indexAt(voltage, to_s) };
   const at = { from_s, to_s };
   if (timeAt(voltage, voltage.samples.length) < to_s) return absent('cut-off-by-sweep-end');
-  const disturbed = spikes.some((spike, k) => {
-    const span = spikeSpan(spike, spikes[k + 1], slow);
-    return span !== null && span.from_s < to_s && span.to_s > from_s;
-  });
-  if (disturbed) return absent('no-spike-free-stretch');
-  const part = voltage.samples.subarray(window.from, window.to);
-  if (countFinite(part) < 0.5 * part.length || part.length === 0) return absent('unreadable');
-  if (touchesLimit(voltage, window)) return absent('clipped');
+  const quiet = without(window, spikeHoles(voltage, spikes, slow));
+  const kept = quiet.reduce((sum, one) => sum + one.to - one.from, 0);
+  if (kept < 0.5 * (window.to - window.from)) return absent('no-spike-free-stretch');
+  const part = gathered(voltage.samples, quiet);
+  if (part.length < 0.5 * kept || part.length === 0) return absent('unreadable');
+  if (touchesLimit(input, window)) return absent('clipped');
   const sd = standardDeviation(part) ?? 0;
-  const blocks = blockMeans(voltage, [window], Math.min(0.005, (to_s - from_s) / 5)).mv;
-  const own = blocks.length >= 3 ? standardDeviation(blocks)! / Math.sqrt(blocks.length) : sd;
+  const grains = blockMeans(
+    voltage,
+    quiet.flatMap((one) => readable(voltage.samples, one)),
+    Math.min(0.001, kept / voltage.rate_hz / 10),
+  );
+  const own = serialMean(grains.mv);
+  const level = levelUnder(baseline, drift, (from_s + to_s) / 2);
   const during = spikes.some((spike) => isIn(spike, voltage, { from: indexAt(voltage, step.from_s), to: window.from }));
-  return measured(mean(part)! - baseline.value!, {
-    n: countFinite(part),
+  return measured(mean(part)! - level.mv, {
+    n: part.length,
     sd,
-    se: Math.hypot(own, baseline.se ?? 0),
+    ...combinedError([
+      ...level.errors,
+      own && own.se !== null ? { se: own.se, freedom: own.freedom } : { se: sd },
+      { se: quantizationError(input.quantum_mv ?? 0, sd) },
+    ]),
     at,
-    ...(during ? { note: 'spikes earlier in the step' } : {}),
+    ...noteOf(
+      kept < window.to - window.from ? 'between spikes' : during ? 'spikes earlier in the step' : undefined,
+      level.note,
+    ),
   });
 }
 
 /** Whether the window holds samples that stand at the recorder's limits. */
-function touchesLimit(voltage: Signal, window: Stretch): boolean {
+function touchesLimit(input: PassiveInput, window: Stretch): boolean {
+  const voltage = input.recorded ?? input.voltage;
   const part = voltage.samples.subarray(window.from, window.to);
   let low = Number.POSITIVE_INFINITY;
   let high = Number.NEGATIVE_INFINITY;
@@ -195,42 +325,121 @@ function touchesLimit(voltage: Signal, window: Stretch): boolean {
   return stuckStretches(voltage.samples).some((run) => run.from < window.to && run.to > window.from);
 }
 
-function largestDeflection(input: PassiveInput, baseline: Reading, step: Step): Reading {
+function largestDeflection(input: PassiveInput, baseline: Reading, step: Step, drift: Drift): Reading {
   const { voltage, spikes } = input;
   if (step.pa > 0) return absent('no-hyperpolarizing-steps');
   const window = { from: indexAt(voltage, step.from_s + 0.001), to: indexAt(voltage, step.to_s) };
   const part = voltage.samples.subarray(window.from, window.to);
   if (part.length === 0 || countFinite(part) < 0.5 * part.length) return absent('unreadable');
   if (spikes.some((spike) => isIn(spike, voltage, window))) return absent('no-spike-free-stretch');
-  if (touchesLimit(voltage, window)) return absent('clipped');
-  // Wide enough to average noise out, narrow against a sag, which takes tens of milliseconds. One period of the mains
-  // takes the hum out as well, where the step is long enough for it.
-  const length_s = step.to_s - step.from_s;
-  const period_s = 1 / (input.mains_hz ?? 50);
-  const width_s = length_s >= 15 * period_s ? period_s : Math.max(0.001, Math.min(0.01, length_s / 50));
-  const half = Math.max(1, Math.round((width_s * voltage.rate_hz) / 2));
-  const smooth = movingAverage(part, half);
-  let lowest = -1;
-  // At its ends the average runs over fewer samples: only whole windows count.
-  for (let i = half; i < smooth.length - half; i++)
-    if (Number.isFinite(smooth[i]!) && (lowest < 0 || smooth[i]! < smooth[lowest]!)) lowest = i;
-  if (lowest < 0) return absent('sweep-too-short');
-  return measured(smooth[lowest]! - baseline.value!, {
-    at: {
-      from_s: timeAt(voltage, window.from + lowest - half),
-      to_s: timeAt(voltage, window.from + lowest + half + 1),
-    },
-    ...(baseline.se === undefined ? {} : { se: baseline.se }),
+  if (touchesLimit(input, window)) return absent('clipped');
+  const found = extremeOf(voltage, [window], widthFor(step), -1);
+  if (!found) return absent('sweep-too-short');
+  const level = levelUnder(baseline, drift, found.at_s);
+  return measured(found.mv - level.mv, {
+    at: { from_s: found.at_s - found.width_s / 2, to_s: found.at_s + found.width_s / 2 },
+    ...combinedError([...level.errors, found, { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) }]),
+    ...noteOf(level.note),
   });
 }
 
-/** After an edge, samples this near to it belong to the electrode, s. */
-const electrodeTransient_s = 0.001;
+/** Wide enough to average noise out, narrow against a sag, which takes tens of milliseconds, s. */
+const widthFor = (step: Step): number => Math.max(0.001, Math.min(0.01, (step.to_s - step.from_s) / 50));
+
+interface Extreme {
+  mv: number;
+  at_s: number;
+  width_s: number;
+  se: number;
+  freedom: number;
+}
+
+/**
+ * Lowest (sign −1) or highest (+1) running mean of the width in the stretches, without the push that noise gives an
+ * extreme: the samples are dealt alternately, half a millisecond at a time, into two halves; where the one half's
+ * running mean is extreme the other's is read, and the two readings are averaged.
+ */
+function extremeOf(voltage: Signal, stretches: readonly Stretch[], width_s: number, sign: 1 | -1): Extreme | null {
+  const turn = Math.max(1, Math.round(Math.min(0.0005, width_s / 4) * voltage.rate_hz));
+  // A whole number of turns of both halves.
+  const pairs = Math.max(1, Math.round((width_s * voltage.rate_hz) / (2 * turn)));
+  const best = [0, 1].map((): { pick: number; read: number; index: number; values: number[] } | null => null);
+  for (const { from, to } of stretches) {
+    const turns = Math.floor((to - from) / turn);
+    const means = Array.from({ length: turns }, (_, k) =>
+      mean(voltage.samples.subarray(from + k * turn, from + (k + 1) * turn)),
+    );
+    for (let k = 0; k + 2 * pairs <= turns; k++) {
+      const own = means.slice(k, k + 2 * pairs);
+      if (own.some((value) => value === null)) continue;
+      const halves = [0, 1].map((parity) => mean(own.filter((_, j) => (k + j) % 2 === parity) as number[])!);
+      for (const half of [0, 1]) {
+        const known = best[half];
+        if (!known || sign * halves[half]! > sign * known.pick)
+          best[half] = {
+            pick: halves[half]!,
+            read: halves[1 - half]!,
+            index: from + k * turn + pairs * turn,
+            values: own as number[],
+          };
+      }
+    }
+  }
+  const [a, b] = best;
+  if (!a || !b) return null;
+  const noise = [a, b].map((one) => serialMean(one.values)!);
+  const se = Math.max(...noise.map((one) => one.se ?? 0));
+  const width = (2 * pairs * turn) / voltage.rate_hz;
+  return {
+    mv: (a.read + b.read) / 2,
+    at_s: timeAt(voltage, (a.index + b.index) / 2),
+    width_s: width,
+    se,
+    freedom: Math.max(1, noise[0]!.freedom),
+  };
+}
+
+/** How long after the end of a step a rebound is looked for, s. */
+const reboundSpan_s = 0.3;
+
+/** Rebound after a hyperpolarizing step: how far above the baseline the potential rises, and spikes fired. */
+function reboundAfter(input: PassiveInput, baseline: Reading, step: Step, drift: Drift): Readings {
+  const { voltage, stimulus, spikes, slow } = input;
+  const both = (reading: Reading): Readings => ({ rebound_mv: reading, rebound_spikes: reading });
+  if (step.pa >= 0) return both(absent('no-hyperpolarizing-steps'));
+  const next_s = Math.min(
+    timeAt(voltage, voltage.samples.length),
+    ...stimulus.edges_s.filter((s) => s > step.to_s + 1e-9),
+  );
+  const to_s = Math.min(step.to_s + reboundSpan_s, next_s);
+  if (to_s - step.to_s < 0.03) return both(absent('cut-off-by-sweep-end'));
+  const window = { from: indexAt(voltage, step.to_s + 0.001), to: indexAt(voltage, to_s) };
+  const fired = spikes.filter((spike) => isIn(spike, voltage, window));
+  const cut =
+    to_s < step.to_s + reboundSpan_s - 1e-9 ? { note: `over ${Math.round((to_s - step.to_s) * 1000)} ms` } : {};
+  const counted = measured(fired.length, { at: { from_s: step.to_s, to_s }, ...cut });
+  // Up to the foot of the first spike: what rises higher is the spike's.
+  const first = fired[0] ? spikeSpan(fired[0], undefined, slow) : null;
+  if (first && first.from_s - step.to_s < 0.03)
+    return { rebound_mv: absent('no-spike-free-stretch'), rebound_spikes: counted };
+  const quiet = { from: window.from, to: first ? indexAt(voltage, first.from_s) : window.to };
+  const found = extremeOf(voltage, readable(voltage.samples, quiet), widthFor(step), 1);
+  if (!found) return { rebound_mv: absent('unreadable'), rebound_spikes: counted };
+  const level = levelUnder(baseline, drift, found.at_s);
+  return {
+    rebound_mv: measured(found.mv - level.mv, {
+      at: { from_s: found.at_s - found.width_s / 2, to_s: found.at_s + found.width_s / 2 },
+      ...combinedError([...level.errors, found, { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) }]),
+      ...noteOf(cut.note, fired.length > 0 ? 'up to the first rebound spike' : undefined, level.note),
+    }),
+    rebound_spikes: counted,
+  };
+}
 
 /**
  * Jump of the potential at the edges of a step that no membrane can make. Before the edge a straight line over 10 ms
- * is continued to it; after it, beyond the electrode's own transient of 1 ms, a single exponential over at most 15 ms
- * is continued back to it. Mean over onset and end, each with the sign that a resistance left over would give it.
+ * is continued to it; after it, once filter and electrode have settled, the response is carried back to it (`edge.ts`).
+ * Mean over onset and end, each with the sign that a resistance left over would give it.
  */
 export function measureBridgeStep(input: PassiveInput): Reading {
   const step = stepOf(input.stimulus);
@@ -239,25 +448,28 @@ export function measureBridgeStep(input: PassiveInput): Reading {
     jumpAt(input, step.from_s, step.to_s, Math.sign(step.pa)),
     jumpAt(input, step.to_s, Number.POSITIVE_INFINITY, -Math.sign(step.pa)),
   ];
-  const found = jumps.flatMap((jump, k) => (jump === null ? [] : [{ mv: k === 0 ? jump.mv : -jump.mv, se: jump.se }]));
+  const found = jumps.flatMap((jump, k) => (jump === null ? [] : [{ ...jump, mv: k === 0 ? jump.mv : -jump.mv }]));
   if (found.length === 0)
     return absent('no-electrode-transient', {
       note: 'no quiet stretch around an edge, or a response too fast to tell from a jump',
     });
   return measured(mean(found.map((jump) => jump.mv))!, {
     n: found.length,
-    se: Math.sqrt(found.reduce((sum, jump) => sum + jump.se ** 2, 0)) / found.length,
+    ...combinedError(found.map((jump) => ({ se: jump.se / found.length, freedom: jump.freedom }))),
     at: { from_s: step.from_s, to_s: step.to_s },
     note: found.length === 2 ? 'onset and end' : jumps[0] ? 'onset only' : 'end only',
   });
 }
+
+/** Windows after the edge, ms, the longest first. */
+const windows_ms = [16, 9, 5];
 
 function jumpAt(
   input: PassiveInput,
   edge_s: number,
   next_s: number,
   direction: number,
-): { mv: number; se: number } | null {
+): { mv: number; se: number; freedom: number } | null {
   const { voltage, stimulus, spikes, slow } = input;
   const rate = voltage.rate_hz;
   const edges = stimulus.edges_s;
@@ -266,110 +478,55 @@ function jumpAt(
   const spans = spikes.flatMap((spike, k) => spikeSpan(spike, spikes[k + 1], slow) ?? []);
   const before_s = Math.max(edge_s - 0.01, previous + 0.4 * (edge_s - previous));
   const nextSpike = Math.min(...spans.map((span) => span.from_s - 0.001).filter((from) => from > edge_s - 0.001));
-  const from_s = edge_s + electrodeTransient_s;
-  const to_s = Math.min(from_s + 0.015, following - 0.0002, nextSpike);
-  if (to_s - from_s < 0.002) return null;
+  const settle_ms = settledAfter_ms(input.filter_khz);
+  const to_s = Math.min(edge_s + 0.017, following - 0.0002, nextSpike);
+  if (to_s - edge_s - settle_ms / 1000 < 0.002) return null;
   if (spans.some((span) => span.from_s < edge_s && span.to_s > before_s)) return null;
 
   const edge = (edge_s - voltage.start_s) * rate;
   const earlier = { from: indexAt(voltage, before_s), to: Math.round(edge) };
-  const later = { from: indexAt(voltage, from_s), to: indexAt(voltage, to_s) };
+  const later = { from: Math.max(0, Math.round(edge)), to: indexAt(voltage, to_s) };
   if (earlier.to - earlier.from < 4 || later.to - later.from < 8 || later.to >= voltage.samples.length) return null;
-  // What the filter shows came a little earlier: time runs from when it shows the edge.
-  const delay_ms = filterDelayMs(input.filter_khz);
-  const take = (part: Stretch): { ms: Float64Array; mv: Float64Array } => ({
-    ms: Float64Array.from({ length: part.to - part.from }, (_, i) => ((part.from + i - edge) * 1000) / rate - delay_ms),
-    mv: voltage.samples.subarray(part.from, part.to),
-  });
-  const first = take(earlier);
-  const line = linearFit(first.ms, first.mv);
-  const second = take(later);
-  if (!line || countFinite(second.mv) < 8) return null;
-  const after = backToEdge(second.ms, second.mv, line.residual_sd ?? 0);
-  if (!after) return null;
-  const jump = { mv: after.mv - line.intercept, se: Math.hypot(after.se, line.se_intercept ?? 0) };
-  // A jump without a response in the current's direction after it: the membrane has answered within the electrode's
-  // time, or there is none.
-  return Math.abs(jump.mv) > 3 * jump.se && after.rise_mv * direction < 0.2 * Math.abs(jump.mv) ? null : jump;
+  const first = blockMeans(voltage, [earlier], Math.min(0.0005, (edge_s - before_s) / 8));
+  const before = serialLine(
+    first.s.map((time) => (time - edge_s) * 1000),
+    first.mv,
+  );
+  if (!before || before.se_intercept === null) return null;
+  const second = blockMeans(voltage, [later], 0.0001);
+  const after = backToEdge(
+    second.s.map((time) => (time - edge_s) * 1000),
+    second.mv,
+    { ...filterAtEdge(input.filter_khz), windows_ms },
+  );
+  if (!after || isNoResponse(after, before.intercept, direction)) return null;
+  const error = combinedError([
+    { se: after.se, freedom: after.freedom },
+    { se: before.se_intercept, freedom: before.freedom },
+  ]);
+  return { mv: after.mv - before.intercept, se: error.se, freedom: error.freedom ?? 1e6 };
 }
 
-/** Windows after the edge, ms, the longest first: a response of more than one exponential fits only a shorter one. */
-const windows_ms = [16, 9, 5];
-
-/**
- * Value at 0 ms of the response after it, and how far the response goes on from there. Null where the response is too fast, or too far from an exponential, to be
- * told from a jump: a squid axon answers within the millisecond that the electrode needs.
- */
-function backToEdge(
-  ms: Float64Array,
-  mv: Float64Array,
-  noise: number,
-): { mv: number; se: number; rise_mv: number } | null {
-  for (const window of windows_ms) {
-    const beyond = ms.findIndex((value) => value > window);
-    const n = beyond < 0 ? ms.length : beyond;
-    if (n < 8) continue;
-    const [x, y] = [ms.subarray(0, n), mv.subarray(0, n)];
-    const span = Math.abs(y[n - 1]! - y[0]!);
-    const fits = (residual: number): boolean => residual <= 1.5 * noise + 0.005 * span + 1e-9;
-    const line = linearFit(x, y);
-    const fit = exponentialFit(x, y);
-    // A straight line where it does as well: then the exponential's three parameters are not determined.
-    const curved = fit?.converged && line && fit.residual_sd < 0.95 * (line.residual_sd ?? 0);
-    if (!curved && line && fits(line.residual_sd ?? 0))
-      return { mv: line.intercept, se: line.se_intercept ?? 0, rise_mv: line.slope * (x[n - 1]! - x[0]!) };
-    if (!fit?.converged || !fits(fit.residual_sd)) continue;
-    // A membrane this fast has answered before the electrode is done.
-    if (fit.tau < 2) return null;
-    const value = fit.offset + fit.amplitude * Math.exp(fit.x0 / fit.tau);
-    return { mv: value, se: errorAtEdge(x, y, fit), rise_mv: -fit.amplitude };
-  }
-  return null;
+/** A jump without a response in the current's direction after it: the membrane has answered within the electrode's
+ * time, or there is none. */
+function isNoResponse(after: EdgeValue, before: number, direction: number): boolean {
+  const jump = after.mv - before;
+  return Math.abs(jump) > 3 * after.se && after.rise * direction < 0.2 * Math.abs(jump);
 }
+
+/** A four-pole Bessel filter has settled to a thousandth after about 1.2 over its corner; 1 ms where it is not known. */
+const settledAfter_ms = (filter_khz: number | null): number =>
+  filter_khz === null ? 1 : Math.max(0.3, 1.3 / filter_khz);
 
 /**
- * Standard error of an exponential carried back to 0: from the Jacobian at the fit, made larger by what neighbouring
- * residuals have in common (slow noise counts as fewer values).
+ * What the recorder's filter does at an edge: its delay, and when it has settled. A corner that is not known is taken
+ * to lie at 2 kHz or above: the delay then is anything up to 0.17 ms.
  */
-function errorAtEdge(ms: Float64Array, mv: Float64Array, fit: ExponentialFit): number {
-  const { offset, amplitude, tau, x0 } = fit;
-  const gradient = (time: number): [number, number, number] => {
-    const decay = Math.exp(-(time - x0) / tau);
-    return [1, decay, (amplitude * (time - x0) * decay) / tau ** 2];
-  };
-  const m = [0, 0, 0, 0, 0, 0];
-  const residuals: number[] = [];
-  ms.forEach((time, i) => {
-    if (!Number.isFinite(mv[i]!)) return;
-    const [a, b, c] = gradient(time);
-    [a * a, a * b, a * c, b * b, b * c, c * c].forEach((value, k) => {
-      m[k]! += value;
-    });
-    residuals.push(mv[i]! - offset - amplitude * b);
-  });
-  const [aa, ab, ac, bb, bc, cc] = m as [number, number, number, number, number, number];
-  const [ia, ib, ic] = [bb * cc - bc * bc, ac * bc - ab * cc, ab * bc - ac * bb];
-  const [jb, jc, kc] = [aa * cc - ac * ac, ab * ac - aa * bc, aa * bb - ab * ab];
-  const determinant = aa * ia + ab * ib + ac * ic;
-  const [g, h, k] = gradient(0);
-  const form = g * (g * ia + h * ib + k * ic) + h * (g * ib + h * jb + k * jc) + k * (g * ic + h * jc + k * kc);
-  if (!(determinant > 0 && form >= 0)) return fit.residual_sd;
-  return fit.residual_sd * Math.sqrt((form / determinant) * correlationFactor(residuals));
-}
-
-/** 1 + 2·Σ of the autocorrelations up to the first that is not positive. */
-function correlationFactor(values: readonly number[]): number {
-  const power = values.reduce((sum, value) => sum + value * value, 0);
-  if (!(power > 0)) return 1;
-  let factor = 1;
-  for (let lag = 1; lag < values.length / 3; lag++) {
-    let product = 0;
-    for (let i = lag; i < values.length; i++) product += values[i]! * values[i - lag]!;
-    if (product <= 0) break;
-    factor += (2 * product) / power;
-  }
-  return factor;
-}
+export const filterAtEdge = (filter_khz: number | null) => ({
+  delay_ms: filterDelayMs(filter_khz),
+  delay_se_ms: filter_khz === null ? 0.08 : 0.05 * filterDelayMs(filter_khz),
+  from_ms: settledAfter_ms(filter_khz),
+});
 
 /** Length kept of the response to a step and the finest bin, s; together at most about 1600 numbers. */
 const responseSpan_s = 0.3;
@@ -391,11 +548,13 @@ export function stepResponse(input: PassiveInput): SweepMeasure['step_response']
   const lead = Math.floor(Math.min(onset, responseLead_s * rate) / block);
   const bins = lead + Math.floor((end - onset) / block);
   const first = onset - lead * block;
+  const { slope } = driftUnder(input, step);
   const mv: number[] = [];
   for (let k = 0; k < bins; k++) {
     const value = mean(voltage.samples.subarray(first + k * block, first + (k + 1) * block));
     if (value === null) return null;
-    mv.push(Math.round(value * 1e4) / 1e4);
+    const drifted = slope * ((k + 0.5) * (block / rate) - lead * (block / rate));
+    mv.push(Math.round((value - drifted) * 1e4) / 1e4);
   }
   if (bins - lead < 10) return null;
   // The centre of the first bin.

@@ -536,10 +536,14 @@ export const quantities: readonly Quantity[] = list([
     ...mv,
     decimals: 1,
     absolute_potential: true,
-    definition: 'Potential before the stimulus, over at most 500 ms.',
-    formula: 'median V before onset, spikes excluded',
+    definition: 'Potential before the stimulus, over at most 500 ms, spikes, test pulses and mains hum excluded.',
+    formula:
+      'median of the means over 2 ms before onset; hum: the least-squares sine and its harmonics, where resolved, are taken off first',
     source: practice,
+    uncertainty:
+      'Student’s t times the root of (√(π/2) times the serial standard error of the 2 ms means about their line)² and of the rounding left by the digitizer, q²/(2π²)·Σ exp(−(2πkσ/q)²)/k², q its step and σ the noise. For the cell: from the scatter over sweeps, pooled with the sweeps’ own where it does not exceed them.',
   },
+
   {
     id: 'baseline_sd_mv',
     levels: ['sweep', 'cell'],
@@ -547,10 +551,13 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'SD_base',
     ...mv,
     decimals: 2,
-    definition: 'Standard deviation of the potential before the stimulus.',
+    definition: 'Standard deviation of the potential before the stimulus, hum included.',
     formula: 'SD of V over the same stretch',
     source: practice,
+    uncertainty:
+      '1.96·SD/√(2n), n the number of independent values: (SD over the serial standard error of the mean)², at least 4.',
   },
+
   {
     id: 'baseline_drift_mv_per_s',
     levels: ['sweep', 'cell'],
@@ -560,9 +567,12 @@ export const quantities: readonly Quantity[] = list([
     ucum: 'mV/s',
     decimals: 2,
     definition: 'Slope of the potential before the stimulus.',
-    formula: 'least-squares slope over the same stretch',
+    formula: 'least-squares slope of the 2 ms means over the same stretch, hum taken off',
     source: practice,
+    uncertainty:
+      'Student’s t times the serial standard error of the slope: the residual variance is read from the slowest cosines that the residuals show beside the line.',
   },
+
   {
     id: 'spikes',
     levels: ['sweep', 'cell'],
@@ -711,10 +721,15 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'ΔV_ss',
     ...mv,
     decimals: 2,
-    definition: 'Potential late in the step relative to baseline.',
-    formula: 'mean V of the last tenth of the step (at most 50 ms, ending 5 ms before its end) − V_base',
+    definition:
+      'Potential late in the step relative to baseline, spikes left out where at least half of the window is free of them.',
+    formula:
+      'mean V of the last tenth of the step (at most 50 ms, ending 5 ms before its end) − V_base; where the baseline drifts by more than three standard errors, its line is taken off instead of its level: through the levels before the step and after it where the potential comes back to it, else the slope before',
     source: 'Nagaeva et al. 2020, eLife (last 50 ms); window: ours',
+    uncertainty:
+      'Student’s t times, in squares, the serial standard errors of both levels, that of the drift times the distance (a slope known from before only: a tenth of it besides), and the digitizer’s rounding.',
   },
+
   {
     id: 'largest_deflection_mv',
     levels: ['sweep'],
@@ -722,10 +737,40 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'ΔV_max',
     ...mv,
     decimals: 2,
-    definition: 'Largest excursion during a hyperpolarizing step relative to baseline, noise averaged out.',
-    formula: 'extremum of the smoothed V during the step − V_base',
+    definition:
+      'Largest excursion during a hyperpolarizing step relative to baseline, noise averaged out and its push on an extreme removed.',
+    formula:
+      'lowest running mean over a fiftieth of the step (1 to 10 ms), from 1 ms after onset, − V_base: the samples are dealt into two halves by turns of 0.5 ms, each half is read where the other is lowest, and the two readings are averaged',
+    source: 'common practice; the two halves: ours',
+    uncertainty: 'As for the steady deflection, with the serial standard error of that mean.',
+  },
+  {
+    id: 'rebound_mv',
+    levels: ['sweep', 'cell'],
+    label: 'Rebound',
+    symbol: 'ΔV_reb',
+    ...mv,
+    decimals: 2,
+    definition:
+      'How far the potential rises above the baseline after a hyperpolarizing step, before the first rebound spike; for the cell, after the step the sag is read from. 0 is no rebound.',
+    formula:
+      'highest running mean over a fiftieth of the step (1 to 10 ms), read half by half as the largest deflection, from 1 to 300 ms after the end of the step (at most to the next edge, at least 30 ms), − V_base',
+    source: 'common practice, no source',
+    uncertainty: 'As for the largest deflection.',
+  },
+  {
+    id: 'rebound_spikes',
+    levels: ['sweep', 'cell'],
+    label: 'Rebound spikes',
+    symbol: 'n_reb',
+    ...one,
+    decimals: 0,
+    definition:
+      'Spikes within 300 ms after the end of a hyperpolarizing step; for the cell, of the step the sag is read from.',
+    formula: 'count of peaks from 1 to 300 ms after the end of the step',
     source: practice,
   },
+
   {
     id: 'bridge_step_mv',
     levels: ['sweep'],
@@ -734,9 +779,13 @@ export const quantities: readonly Quantity[] = list([
     ...mv,
     decimals: 2,
     definition: 'Jump of the potential at the stimulus edges that no membrane can make: what the bridge left over.',
-    formula: 'V extrapolated back to the edge − V before it, mean over onset and end with sign of the step',
+    formula:
+      'V extrapolated back to the edge − V before it, mean over onset and end with sign of the step. Before: straight line over 10 ms. After: one exponential, or two where F > 7, or a line where no time constant is determined, from 1.3 ms·kHz over the filter’s corner (at least 0.3 ms; 1 ms where the corner is not known) to 16, 9 or 5 ms, the longest whose residuals look like noise; carried back to the filter’s delay of 0.336/corner. An exponential faster than 0.7 ms is the electrode’s and left out',
     source: circuit,
+    uncertainty:
+      'Student’s t times, in squares, the standard errors of both values from the fits’ covariance (scaled to the slow part of their residuals) and the slope there times 5 % of the delay (80 µs where the corner is not known).',
   },
+
   {
     id: 'pulse_response_mohm',
     levels: ['sweep', 'cell'],
@@ -973,6 +1022,8 @@ export const quantities: readonly Quantity[] = list([
       'Potential without injected current: median over the sweeps of the baseline at zero total current, bias included.',
     formula: 'median V_base over sweeps with |I_total| ≤ noise',
     source: practice,
+    uncertainty:
+      'From the scatter over sweeps (√(π/2) times that of a mean, Student’s t with n − 1 degrees of freedom), pooled with the sweeps’ own uncertainty where it does not exceed it.',
   },
   {
     id: 'maximum_diastolic_potential_mv',
@@ -993,10 +1044,14 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'R_in',
     ...mohm,
     decimals: 0,
-    definition: 'Slope of the steady deflection against injected current for hyperpolarizing steps without spikes.',
-    formula: 'least-squares line with intercept through (I, ΔV_ss) and (0, 0)',
-    source: 'Nagaeva et al. 2020, eLife; Ekins et al. 2020, eLife 9:e62373',
+    definition:
+      'Slope of the steady deflection against injected current for hyperpolarizing steps without spikes, without what the bridge left over, where that was measured.',
+    formula: 'least-squares line with intercept through (I, ΔV_ss) and (0, 0) − ΔR_b',
+    source: 'Nagaeva et al. 2020, eLife; Ekins et al. 2020, eLife 9:e62373; taking I·R_s off: linear circuit theory',
+    uncertainty:
+      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b. The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points (about the line where they are fewer than five); the scatter alone where it exceeds chance.',
   },
+
   {
     id: 'membrane_time_constant_ms',
     levels: ['cell'],
@@ -1004,10 +1059,42 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'τ_m',
     ...ms,
     decimals: 1,
-    definition: 'Time constant of the response to small hyperpolarizing steps.',
-    formula: 'single exponential from 10 to 90 % of the onset of the averaged response',
+    definition:
+      'Time constant of the response to small hyperpolarizing steps: of one exponential, or the slow one of two where two are warranted. It is that of the cell with what hangs on it: pipette capacitance that was not neutralized lengthens it by R_in times that capacitance.',
+    formula:
+      'least-squares exponential with offset through the averaged response to steps of at most 10 mV (weights I²), from 10 % of the steady deflection (at least 0.7 ms, and 1.3 ms·kHz over the filter’s corner, after the onset) to 300 ms or the end of the step; where more than 2 % of the deflection sags away, to 90 % of it; not measured where more than 12 % does',
     source: 'Rall 1969, Biophys J 9:1483–1508 (from memory)',
+    uncertainty:
+      'Student’s t times the standard error from the fit’s covariance, scaled to the slow part of its residuals; the scatter of the single steps’ own time constants where that is more than half as large again. Where the fit ends at 90 %, half the sag’s share besides.',
   },
+  {
+    id: 'slow_time_constant_ms',
+    levels: ['cell'],
+    label: 'Slow time constant',
+    symbol: 'τ_0',
+    ...ms,
+    decimals: 1,
+    definition: 'Slower time constant of the same response where two exponentials describe it better than one.',
+    formula:
+      'A_0·exp(−t/τ_0) + A_1·exp(−t/τ_1) + offset by least squares from 0.7 ms on, where F = ((S_1 − S_2)/2)/(S_2/(n − 5)) > 7 (S_2 scaled to the slow part of the residuals), τ_0 > 2 τ_1, τ_1 > 0.7 ms (faster is the electrode’s) and A_1 more than 3 % of A_0 + A_1; sag at most 2 %',
+    source: 'Rall 1969, Biophys J 9:1483–1508 (from memory)',
+    uncertainty:
+      'Student’s t times the standard error from the fit’s covariance, scaled to the slow part of its residuals.',
+  },
+  {
+    id: 'fast_time_constant_ms',
+    levels: ['cell'],
+    label: 'Fast time constant',
+    symbol: 'τ_1',
+    ...ms,
+    decimals: 2,
+    definition:
+      'Faster time constant of the same response: current spreading from the soma into the dendrites. Not measured where one exponential does as well.',
+    formula: 'τ_1 of the same fit',
+    source: 'Rall 1969, Biophys J 9:1483–1508 (from memory)',
+    uncertainty: 'As for the slow one.',
+  },
+
   {
     id: 'membrane_capacitance_pf',
     levels: ['cell'],
@@ -1015,10 +1102,13 @@ export const quantities: readonly Quantity[] = list([
     symbol: 'C_m',
     ...pf,
     decimals: 0,
-    definition: 'Capacitance of the equivalent isopotential cell.',
+    definition:
+      'Capacitance of the equivalent isopotential cell, with the pipette capacitance that was not neutralized.',
     formula: 'τ_m / R_in',
     source: circuit,
+    uncertainty: 'The relative uncertainties of τ_m and R_in in squares, times Student’s t.',
   },
+
   {
     id: 'sag_fraction',
     levels: ['cell'],
@@ -1027,10 +1117,40 @@ export const quantities: readonly Quantity[] = list([
     ...one,
     decimals: 2,
     definition:
-      'Share of the largest deflection that is gone at the end of the step, on the hyperpolarizing step nearest to 15 mV: 0 is no sag.',
-    formula: '(ΔV_max − ΔV_ss)/ΔV_max',
+      'Share of the largest deflection that is gone at the end of the step, on the hyperpolarizing step nearest to 15 mV: 0 is no sag. Other conventions follow from it: sag index (steady over largest deflection) = 1 − sag; ratio of largest to steady deflection = 1/(1 − sag); ratio of the potentials themselves = (V_base + ΔV_ss)/(V_base + ΔV_max).',
+    formula: '(ΔV_max − ΔV_ss)/(ΔV_max − ΔR_b·I)',
     source: 'common practice; 1 − the sag index of Ekins et al. 2020, eLife 9:e62373',
+    uncertainty:
+      'Student’s t times, in squares, the standard errors of the two means (their common baseline cancels) over the largest deflection, and the share times that deflection’s own relative uncertainty.',
   },
+  {
+    id: 'sag_mv',
+    levels: ['cell'],
+    label: 'Sag in millivolts',
+    symbol: 'ΔV_sag',
+    ...mv,
+    decimals: 2,
+    definition: 'How far the potential comes back from its largest deflection by the end of the same step.',
+    formula: 'ΔV_ss − ΔV_max',
+    source: practice,
+    uncertainty: 'Student’s t times the standard errors of the two means in squares; their common baseline cancels.',
+  },
+  {
+    id: 'rectification_ratio',
+    levels: ['cell'],
+    label: 'Rectification',
+    symbol: 'R_large/R_small',
+    ...one,
+    decimals: 2,
+    definition:
+      'Slope resistance over the larger hyperpolarizations against that over the smaller: 1 for a linear membrane, below 1 where the cell rectifies inwardly. Steps without spikes; the deepest must reach 10 mV.',
+    formula:
+      '(slope of the line with intercept through the steps of at least half the deepest ΔV_ss − ΔR_b) / (slope of the line through (0, 0) and the others, Σ I·ΔV/Σ I², − ΔR_b)',
+    source: practice,
+    uncertainty:
+      'Student’s t times, in squares, what the deflections’ own uncertainties make of the two slopes, and that of ΔR_b.',
+  },
+
   {
     id: 'rheobase_pa',
     levels: ['cell'],
@@ -1110,9 +1230,13 @@ export const quantities: readonly Quantity[] = list([
     ...mohm,
     decimals: 1,
     definition: 'Resistance that the stated bridge left over: positive when under-compensated.',
-    formula: 'least-squares slope of the instantaneous step on the stimulus',
+    formula:
+      'averaged onset of the hyperpolarizing steps without spikes, ΔV/I with weights I², carried back to the edge as the instantaneous step is, over 300, 100, 30 or 12 ms; where no response was kept, slope through the origin of the instantaneous step on the stimulus',
     source: circuit,
+    uncertainty:
+      'Student’s t times the standard error at the edge from the fit’s covariance (scaled to the slow part of its residuals), in squares with those of the level before and of the filter’s delay; a fast part between 0.45 and 1 ms, which may be the electrode’s or the cell’s, counts with half its size. From single sweeps: their own and their scatter, pooled.',
   },
+
   {
     id: 'drift_mv_per_min',
     levels: ['cell'],

@@ -26,3 +26,16 @@ export function absent(why: AbsenceCode, extra: { missing?: string[]; note?: str
   if (extra.note) reading.note = extra.note;
   return reading;
 }
+
+/**
+ * Independent standard uncertainties added in squares, with the effective degrees of freedom of Welch and Satterthwaite
+ * (JCGM 100:2008, G.4.1). A part without `freedom` is taken as known well.
+ */
+export function combinedError(parts: readonly { se: number; freedom?: number }[]): { se: number; freedom?: number } {
+  const se = Math.hypot(...parts.map((part) => part.se));
+  const spent = parts.reduce(
+    (sum, part) => sum + (part.freedom === undefined ? 0 : part.se ** 4 / Math.max(1, part.freedom)),
+    0,
+  );
+  return spent > 0 ? { se, freedom: se ** 4 / spent } : { se };
+}

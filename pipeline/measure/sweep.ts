@@ -2,6 +2,7 @@ import { countFinite } from '../signal/statistics.ts';
 import { pulseResponse } from './artefact.ts';
 import { envelopeOf, excerptOf } from './envelope.ts';
 import { isBlocked, measureFiring, measureSpontaneous } from './firing.ts';
+import { withoutHum } from './mains.ts';
 import {
   measureBaseline,
   measureBridgeStep,
@@ -104,8 +105,12 @@ function currentClampSweep(
 
   const { stimulus, remarks } = alignedTo(voltage, current, command);
   const found = spikesAndBaseline(voltage, current, stimulus, command.levels, context);
-  const { spikes, passive, baseline } = found;
-  const quiet = quietStretches(passive);
+  const quiet = quietStretches(found.passive);
+  const quantum = digitizerStep(voltage);
+  const lines = hum(voltage, quiet, context.mains_hz);
+  const passive = freedOfHum({ ...found.passive, quantum_mv: quantum.value }, quiet, lines['mains_hum_hz']!);
+  const baseline = measureBaseline(passive);
+  const spikes = found.passive.spikes.map((spike) => withHeightFromRest(spike, baseline['baseline_mv']!.value));
   const bridgeStep = measureBridgeStep(passive);
   const blocked = isBlocked(spikes, stimulus, voltage, context.slow);
   const trains = measureTrains(spikes, stimulus, voltage, blocked, context.slow);
@@ -129,10 +134,10 @@ function currentClampSweep(
     bridge_step_mv: bridgeStep,
     access_resistance_mohm: accessFromBridge(input.bridge_mohm, bridgeStep, stimulus),
     noise_rms_mv: noise(voltage, quiet, context.filter_khz),
-    ...hum(voltage, quiet, context.mains_hz),
+    ...lines,
     clipped_fraction: clippedFraction(voltage),
     missing_fraction: missingFraction(voltage),
-    quantum_mv: digitizerStep(voltage),
+    quantum_mv: quantum,
     sample_interval_us: sampleInterval(voltage),
     rise_samples: fewestOnRise(spikes),
   };
@@ -163,9 +168,9 @@ function spikesAndBaseline(
   stimulus: Stimulus,
   levels: readonly Level[],
   context: MeasureContext,
-): { spikes: Spike[]; passive: PassiveInput; baseline: Readings; remarks: string[] } {
+): { passive: PassiveInput & { spikes: Spike[] }; remarks: string[] } {
   const { slow, mains_hz, filter_khz } = context;
-  const input = (spikes: readonly Spike[]): PassiveInput => ({
+  const input = <S extends readonly Spike[]>(spikes: S): PassiveInput & { spikes: S } => ({
     voltage,
     stimulus,
     levels,
@@ -176,11 +181,25 @@ function spikesAndBaseline(
   });
   const first = measureBaseline(input([]))['baseline_mv']!.value;
   const found = measureSpikes({ voltage, current, stimulus, baseline_mv: first, context });
-  const passive = input(found.spikes);
-  const baseline = measureBaseline(passive);
-  const level = baseline['baseline_mv']!.value;
-  const spikes = found.spikes.map((spike) => withHeightFromRest(spike, level));
-  return { spikes, passive: { ...passive, spikes }, baseline, remarks: found.remarks };
+  return { passive: input(found.spikes), remarks: found.remarks };
+}
+
+/**
+ * The sweep without its mains hum where the hum is resolved: fitted to the quiet stretches and to the later half of a
+ * step without spikes, so that its frequency holds over the whole of the sweep.
+ */
+function freedOfHum(passive: PassiveInput, quiet: readonly Stretch[], hum_hz: Reading): PassiveInput {
+  if (hum_hz.value === null) return passive;
+  const { voltage, stimulus, spikes, slow } = passive;
+  const step = stimulus.kind === 'step' && stimulus.onset_s !== null && stimulus.end_s !== null ? stimulus : null;
+  const late = step
+    ? without(
+        { from: indexAt(voltage, (step.onset_s! + step.end_s!) / 2), to: indexAt(voltage, step.end_s!) },
+        spikeHoles(voltage, spikes, slow),
+      )
+    : [];
+  const parts = [...quiet, ...late];
+  return { ...passive, voltage: withoutHum(voltage, parts, hum_hz.value), recorded: voltage };
 }
 
 function withHeightFromRest(spike: Spike, baseline: number | null): Spike {

@@ -1,0 +1,140 @@
+import { type ExponentialSum, type ExponentialTerm, exponentialSum, valueAt } from '../signal/exponentials.ts';
+import { serialLine } from '../signal/serial.ts';
+
+/** The response after an edge of the stimulus, carried back to the edge. */
+export interface EdgeValue {
+  mv: number;
+  se: number;
+  freedom: number;
+  /** How far the response goes on from there, in the unit of the response. */
+  rise: number;
+  /** What was fitted: 0 a line, else the number of exponentials. */
+  terms: number;
+  /** Time constant of the electrode's own charging, where the response shows it. */
+  electrode_ms: number | null;
+}
+
+export interface EdgeOptions {
+  /** Delay of the recorder's filter and its standard uncertainty, ms. */
+  delay_ms: number;
+  delay_se_ms: number;
+  /** Nothing before this is looked at: the filter is still on its way, ms. */
+  from_ms: number;
+  /** Lengths of the fitted stretch, the longest first: a response that is no sum of exponentials fits only a short one. */
+  windows_ms: readonly number[];
+}
+
+/** A charging faster than this is the electrode's, ms; a membrane with its nearest dendrites takes longer. */
+const electrodeLimit_ms = 0.7;
+/** Time constants this near the limit may be either's: the fast part then counts as uncertainty. */
+const doubtful_ms = [0.45, 1] as const;
+/** A second exponential is taken where F exceeds this: about 1 in 1000 by chance. */
+const secondTermF = 7;
+
+/**
+ * Value at the edge of the response that follows it: one exponential with an offset, or two where the second makes the
+ * fit better (F > 7 on slow-noise terms), or a straight line where no time constant can be told. The longest of the
+ * windows in which the residuals look like noise is taken. An exponential faster than 0.7 ms is the electrode's own
+ * charging: it is left out, and the rest carried back to the edge plus that time, which is when the membrane's current
+ * began. Null where none of this fits.
+ * @param ms times from the edge, ascending. @param mv the response there (mV, or mV/pA)
+ */
+export function backToEdge(ms: ArrayLike<number>, mv: ArrayLike<number>, options: EdgeOptions): EdgeValue | null {
+  for (const [k, window] of options.windows_ms.entries()) {
+    const x: number[] = [];
+    const y: number[] = [];
+    for (let i = 0; i < ms.length; i++) {
+      const time = ms[i]! - options.delay_ms;
+      if (ms[i]! >= options.from_ms && time <= window && Number.isFinite(mv[i]!)) {
+        x.push(time);
+        y.push(mv[i]!);
+      }
+    }
+    // The response is shorter than the next window: that one sees the same.
+    if (k + 1 < options.windows_ms.length && (x.at(-1) ?? 0) <= options.windows_ms[k + 1]!) continue;
+    const found = fitted(x, y, options.delay_se_ms);
+    if (found) return found;
+  }
+  return null;
+}
+
+function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null {
+  if (x.length < 10) return null;
+  const span = x.at(-1)! - x[0]!;
+  const slow = [1.2, 6 * span] as const;
+  const one = exponentialSum(x, y, { slow });
+  const two = exponentialSum(x, y, { slow: [1.2, 3 * span], fast: [0.08, Math.min(12, span / 2)] });
+  if (two?.converged && isSecondTermReal(one, two) && looksLikeNoise(x, two.residuals)) return ofTwo(two, delay_se_ms);
+  if (one?.converged && looksLikeNoise(x, one.residuals)) {
+    const { value, se } = valueAt(one, 0);
+    const { amplitude, tau } = one.terms[0]!;
+    return {
+      mv: value,
+      se: Math.hypot(se, (amplitude / tau) * delay_se_ms),
+      freedom: one.freedom,
+      rise: -amplitude,
+      terms: 1,
+      electrode_ms: null,
+    };
+  }
+  const line = serialLine(x, y);
+  if (!line || line.se_intercept === null) return null;
+  const residuals = Float64Array.from(x, (time, i) => y[i]! - line.intercept - line.slope * time);
+  if (!looksLikeNoise(x, residuals)) return null;
+  return {
+    mv: line.intercept,
+    se: Math.hypot(line.se_intercept, line.slope * delay_se_ms),
+    freedom: line.freedom,
+    rise: line.slope * x.at(-1)!,
+    terms: 0,
+    electrode_ms: null,
+  };
+}
+
+function isSecondTermReal(one: ExponentialSum | null, two: ExponentialSum): boolean {
+  if (!one) return true;
+  const [slow, fast] = two.terms as [ExponentialTerm, ExponentialTerm];
+  if (slow.tau < 1.8 * fast.tau) return false;
+  const f = (one.rss - two.rss) / 2 / ((two.rss / (two.n - 5)) * two.correlation);
+  return f > secondTermF || (two.rss === 0 && one.rss > 0);
+}
+
+function ofTwo(fit: ExponentialSum, delay_se_ms: number): EdgeValue {
+  const [slow, fast] = fit.terms as [ExponentialTerm, ExponentialTerm];
+  const electrodes = fast.tau < electrodeLimit_ms;
+  const { value, se } = electrodes ? valueAt(fit, fast.tau, 1) : valueAt(fit, 0);
+  const slope = slow.amplitude / slow.tau + (electrodes ? 0 : fast.amplitude / fast.tau);
+  const doubt = fast.tau > doubtful_ms[0] && fast.tau < doubtful_ms[1] ? fast.amplitude / 2 : 0;
+  return {
+    mv: value,
+    se: Math.hypot(se, slope * delay_se_ms, doubt),
+    freedom: fit.freedom,
+    rise: -slow.amplitude - (electrodes ? 0 : fast.amplitude),
+    terms: 2,
+    electrode_ms: electrodes ? fast.tau : null,
+  };
+}
+
+/**
+ * Whether residuals show no shape that the fit has missed: their variance against that of their differences two samples
+ * apart (von Neumann 1941, Ann Math Stat 12:367–395; from memory), and their means over the first 2 and 6 ms.
+ */
+function looksLikeNoise(x: readonly number[], residuals: Float64Array): boolean {
+  const n = residuals.length;
+  let power = 0;
+  let differences = 0;
+  for (let i = 0; i < n; i++) power += residuals[i]! ** 2;
+  for (let i = 2; i < n; i++) differences += (residuals[i]! - residuals[i - 2]!) ** 2;
+  const fast = differences / (2 * (n - 2));
+  const size = Math.sqrt(power / n);
+  // Rounding to ten-thousandths of a millivolt is no shape.
+  if (size < 2e-4) return true;
+  if (power / n > fast * (1 + 4 / Math.sqrt(n)) * 1.5) return false;
+  return [2, 6].every((reach) => {
+    const count = x.filter((time) => time - x[0]! < reach).length;
+    if (count < 3 || count > n / 2) return true;
+    let sum = 0;
+    for (let i = 0; i < count; i++) sum += residuals[i]!;
+    return Math.abs(sum / count) <= (3.5 * size) / Math.sqrt(count);
+  });
+}

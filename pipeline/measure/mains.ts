@@ -1,0 +1,97 @@
+import { type Piece, type PiecesFit, sineInPieces, sineInPiecesNear, withoutSine } from '../signal/sine-pieces.ts';
+import { mean } from '../signal/statistics.ts';
+import { readable, type Stretch } from './stretches.ts';
+import type { Signal } from './types.ts';
+
+/** Multiples of the mains frequency that transformers and rectifiers make. */
+const harmonics = [2, 3, 4, 5];
+
+/** Rate of the means that the hum is fitted to, Hz: plenty for its fifth harmonic. */
+const fitRate_hz = 3000;
+
+/** Longest part of the sweep looked at, s: by then the hum's frequency is known to some thousandths of a hertz. */
+const longest_s = 4;
+
+/** A harmonic counts where its amplitude is so many times what noise gives one quadrature at frequencies round about. */
+const standsOut = 5;
+
+/**
+ * The potential without the mains hum: the sine near `hum_hz`, fitted to quiet pieces of three periods beside a straight
+ * line in each, and those of its harmonics that stand out five times above the noise at frequencies round about, are
+ * taken off everywhere. The signal itself where the quiet stretches are shorter than three periods together.
+ * @param quiet stretches without spikes and without edges of the stimulus; the cell may still be on its way in them
+ */
+export function withoutHum(voltage: Signal, quiet: readonly Stretch[], hum_hz: number): Signal {
+  const { samples, rate_hz } = voltage;
+  const block = Math.max(1, Math.floor(rate_hz / fitRate_hz));
+  const rate = rate_hz / block;
+  let pieces = piecesOf(voltage, quiet, block, Math.round((3 * rate) / hum_hz));
+  if (pieces.length === 0) return voltage;
+  const fundamental = sineInPiecesNear(pieces, rate, hum_hz, 0.02 * hum_hz);
+  if (!fundamental) return voltage;
+  pieces = withoutSine(pieces, rate, fundamental);
+  const sines = [fundamental];
+  for (const multiple of harmonics) {
+    const found = harmonicIn(pieces, rate, multiple * fundamental.frequency_hz);
+    if (found) sines.push(found);
+  }
+  const all = sines.map((sine) => ofSamples(sine, rate_hz, block));
+  return {
+    ...voltage,
+    samples: samples.map((value, i) => {
+      let hum = 0;
+      for (const { omega, amplitude, phase } of all) hum += amplitude * Math.sin(omega * i + phase);
+      return value - hum;
+    }),
+  };
+}
+
+/** Means over `block` samples on one grid, in pieces of `length` means; what is left at the end of a stretch goes. */
+function piecesOf({ samples, rate_hz }: Signal, quiet: readonly Stretch[], block: number, length: number): Piece[] {
+  const limit = Math.round(longest_s * rate_hz);
+  let taken = 0;
+  return quiet
+    .toSorted((a, b) => a.from - b.from)
+    .map((one) => {
+      const own = { from: Math.max(one.from, taken), to: one.to };
+      taken = Math.max(taken, one.to);
+      return own;
+    })
+    .filter((one) => one.to > one.from)
+    .flatMap((one) => readable(samples, { from: one.from, to: Math.min(one.to, limit) }))
+    .flatMap((one) => {
+      const first = Math.ceil(one.from / block);
+      const count = Math.max(0, Math.floor((Math.floor(one.to / block) - first) / length));
+      return Array.from({ length: count }, (_, k): Piece => {
+        const from = first + k * length;
+        return {
+          from,
+          samples: Float64Array.from(
+            { length },
+            (_, j) => mean(samples.subarray((from + j) * block, (from + j + 1) * block))!,
+          ),
+        };
+      });
+    });
+}
+
+function harmonicIn(pieces: readonly Piece[], rate: number, hz: number): PiecesFit | null {
+  if (hz >= 0.45 * rate) return null;
+  const fit = sineInPieces(pieces, rate, hz);
+  if (!fit) return null;
+  const last = pieces.at(-1)!;
+  const duration = (last.from + last.samples.length - pieces[0]!.from) / rate;
+  const beside = [-5, -4, -3, 3, 4, 5]
+    .map((steps) => hz + steps / duration)
+    .filter((frequency) => frequency > 0 && frequency < 0.49 * rate)
+    .flatMap((frequency) => sineInPieces(pieces, rate, frequency)?.amplitude ?? []);
+  const noise = Math.sqrt(beside.reduce((sum, amplitude) => sum + amplitude ** 2, 0) / (2 * beside.length));
+  return beside.length > 0 && fit.amplitude > standsOut * noise ? fit : null;
+}
+
+/** A sine fitted to means over `block` samples as it stands in the samples: larger, and half a block earlier. */
+function ofSamples({ frequency_hz, amplitude, phase_rad }: PiecesFit, rate_hz: number, block: number) {
+  const omega = (2 * Math.PI * frequency_hz) / rate_hz;
+  const kept = block === 1 ? 1 : Math.sin((block * omega) / 2) / (block * Math.sin(omega / 2));
+  return { omega, amplitude: amplitude / kept, phase: phase_rad - (omega * (block - 1)) / 2 };
+}
