@@ -79,13 +79,12 @@ function slopeThrough(points: readonly Point[]): Slope | null {
   return { value: fit.slope, ...pooled(within, scatter, n) };
 }
 
-/** Variance of the points about their parabola, or about their line where they are too few for one. */
+/** Variance of the points about their parabola; null where they are too few for one. */
 function bendFreeScatter(x: readonly number[], y: readonly number[]): { variance: number; freedom: number } | null {
   const line = linearFit(x, y);
-  if (!line || x.length < 3) return null;
+  if (!line || x.length < 4) return null;
   const fromLine = (values: readonly number[], fit: { slope: number; intercept: number }): number[] =>
     values.map((value, k) => value - fit.intercept - fit.slope * x[k]!);
-  if (x.length < 5) return { variance: (line.residual_sd ?? 0) ** 2, freedom: x.length - 2 };
   // The parabola beside the line: residuals of y on those of x² (Frisch & Waugh 1933, Econometrica 1:387–401).
   const squares = x.map((value) => value * value);
   const rest = fromLine(squares, linearFit(x, squares)!);
@@ -312,7 +311,7 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
     { se: after.se, freedom: after.freedom },
     { se: together.beforePerPa_se, freedom: 20 },
   ]);
-  return measured(after.mv * mohmPer, {
+  const both = measured(after.mv * mohmPer, {
     n: responses.length,
     se: own.se * mohmPer,
     ...(own.freedom === undefined ? {} : { freedom: own.freedom }),
@@ -322,6 +321,9 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
       ...(after.electrode_ms === null ? [] : [`electrode charging with ${after.electrode_ms.toFixed(2)} ms left out`]),
     ].join('; '),
   });
+  // Large depolarizing steps and ends of steps may say more than small onsets.
+  const better = single.value !== null && single.n! >= 3 && (single.u95 ?? Number.POSITIVE_INFINITY) < 0.7 * both.u95!;
+  return better ? single : both;
 }
 
 /**

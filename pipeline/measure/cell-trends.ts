@@ -11,7 +11,8 @@ import {
   stimulusReason,
 } from './cell-numbers.ts';
 import { spikesDuring } from './firing.ts';
-import { absent, measured } from './reading.ts';
+import { quantizationError } from './passive.ts';
+import { absent, combinedError, measured } from './reading.ts';
 import type { CellContext, NumberedSweep, Reading, Readings } from './types.ts';
 
 /** Baseline, noise, hum and what the recorder did, over all sweeps of the condition. */
@@ -99,7 +100,18 @@ export function restingReadings(sweeps: readonly NumberedSweep[], context: CellC
     // A cell that fires by itself never rests: beside this stands its maximum diastolic potential.
     ...(free.some(({ reading }) => reading.note?.includes('between spikes')) ? ['read between spikes'] : []),
   ];
-  return { resting_potential_mv: medianOver(free, none, notes.join('; ') || undefined) };
+  const over = medianOver(free, none, notes.join('; ') || undefined);
+  if (over.value === null || over.se === undefined) return { resting_potential_mv: over };
+  // The digitizer rounds all sweeps alike: averaging does not help.
+  const rounding = Math.max(
+    ...free.map(({ sweep, reading }) => quantizationError(sweep.readings['quantum_mv']?.value ?? 0, reading.sd ?? 0)),
+  );
+  const error = combinedError([
+    { se: over.se, ...(over.freedom === undefined ? {} : { freedom: over.freedom }) },
+    { se: rounding },
+  ]);
+  const { u95: _, freedom: __, ...kept } = over;
+  return { resting_potential_mv: measured(over.value, { ...kept, ...error }) };
 }
 
 /** Slope of the baseline on time, among the sweeps held at the same current as most. */

@@ -28,6 +28,11 @@ export interface EdgeOptions {
 const electrodeLimit_ms = 0.7;
 /** Time constants this near the limit may be either's: the fast part then counts as uncertainty. */
 const doubtful_ms = [0.45, 1] as const;
+/**
+ * An electrode's charging too fast to be seen still delays the membrane's current by its own time constant: 1 pF behind
+ * 12 MΩ, common values, make 12 µs, ms.
+ */
+const unseenElectrode_ms = 0.012;
 /** A second exponential is taken where F exceeds this: about 1 in 1000 by chance. */
 const secondTermF = 7;
 
@@ -52,7 +57,7 @@ export function backToEdge(ms: ArrayLike<number>, mv: ArrayLike<number>, options
     }
     // The response is shorter than the next window: that one sees the same.
     if (k + 1 < options.windows_ms.length && (x.at(-1) ?? 0) <= options.windows_ms[k + 1]!) continue;
-    const found = fitted(x, y, options.delay_se_ms);
+    const found = fitted(x, y, Math.hypot(options.delay_se_ms, unseenElectrode_ms));
     if (found) return found;
   }
   return null;
@@ -63,9 +68,16 @@ function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null
   const span = x.at(-1)! - x[0]!;
   const slow = [1.2, 6 * span] as const;
   const one = exponentialSum(x, y, { slow });
+  // A membrane this fast has answered most of the way before anything can be seen of it.
+  const seen = (fit: ExponentialSum): boolean => {
+    const own = fit.terms.filter((term) => term.tau >= electrodeLimit_ms);
+    return Math.min(...own.map((term) => term.tau)) >= 1.6 * x[0]!;
+  };
   const two = exponentialSum(x, y, { slow: [1.2, 3 * span], fast: [0.08, Math.min(12, span / 2)] });
-  if (two?.converged && isSecondTermReal(one, two) && looksLikeNoise(x, two.residuals)) return ofTwo(two, delay_se_ms);
+  if (two?.converged && isSecondTermReal(one, two) && looksLikeNoise(x, two.residuals))
+    return seen(two) ? ofTwo(two, delay_se_ms) : null;
   if (one?.converged && looksLikeNoise(x, one.residuals)) {
+    if (!seen(one)) return null;
     const { value, se } = valueAt(one, 0);
     const { amplitude, tau } = one.terms[0]!;
     return {

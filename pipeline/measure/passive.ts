@@ -101,7 +101,11 @@ export function measureBaseline(input: PassiveInput): Readings {
   const grains = grainsOf(voltage, stretches);
   const line = serialLine(grains.s, grains.mv);
   const extra = { n: values.length, at, ...(note ? { note } : {}) };
-  const level = grains.mv.length >= 5 ? median(grains.mv)! : mean(gathered(voltage.samples, stretches))!;
+  // About the line: a drifting level scatters by its drift.
+  const level =
+    line && grains.mv.length >= 5
+      ? median(grains.mv.map((value, k) => value - line.slope * (grains.s[k]! - line.mean_x)))!
+      : mean(gathered(voltage.samples, stretches))!;
   const own = line && line.se_mean !== null ? medianCost * line.se_mean : sd / Math.sqrt(Math.max(1, grains.mv.length));
   const known = line && line.se_mean !== null ? { freedom: line.freedom } : {};
   return {
@@ -137,7 +141,8 @@ const medianCost = Math.sqrt(Math.PI / 2);
  */
 export function quantizationError(q: number, sd: number): number {
   if (!(q > 0)) return 0;
-  const noise = Math.sqrt(Math.max(0, sd * sd - (q * q) / 12)) / q;
+  // A tenth less than Sheppard's correction gives: with steps this coarse it is rough itself.
+  const noise = (0.9 * Math.sqrt(Math.max(0, sd * sd - (q * q) / 12))) / q;
   let sum = 0;
   for (let k = 1; k <= 20; k++) sum += Math.exp(-((2 * Math.PI * k * noise) ** 2)) / (k * k);
   return (q * Math.sqrt(sum / 2)) / Math.PI;
@@ -335,10 +340,16 @@ function largestDeflection(input: PassiveInput, baseline: Reading, step: Step, d
   if (touchesLimit(input, window)) return absent('clipped');
   const found = extremeOf(voltage, [window], widthFor(step), -1);
   if (!found) return absent('sweep-too-short');
+  const push = slowPush(input, found.width_s, step.to_s - step.from_s);
   const level = levelUnder(baseline, drift, found.at_s);
   return measured(found.mv - level.mv, {
     at: { from_s: found.at_s - found.width_s / 2, to_s: found.at_s + found.width_s / 2 },
-    ...combinedError([...level.errors, found, { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) }]),
+    ...combinedError([
+      ...level.errors,
+      found,
+      { se: push },
+      { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) },
+    ]),
     ...noteOf(level.note),
   });
 }
@@ -399,6 +410,22 @@ function extremeOf(voltage: Signal, stretches: readonly Stretch[], width_s: numb
   };
 }
 
+/**
+ * How far slow noise may push an extreme of running means over `span_s`, which the two halves share and so do not see:
+ * its standard deviation in the baseline, times √ln of how many independent means the span holds.
+ */
+function slowPush(input: PassiveInput, width_s: number, span_s: number): number {
+  const { stretches } = baselineStretches(input);
+  const means = blockMeans(input.voltage, stretches, width_s);
+  const grains = grainsOf(input.voltage, stretches);
+  const line = serialLine(means.s, means.mv);
+  if (!line || line.residual_sd === null || means.mv.length < 5 || grains.mv.length < 10) return 0;
+  let fast = 0;
+  for (let k = 1; k < grains.mv.length; k++) fast += (grains.mv[k]! - grains.mv[k - 1]!) ** 2;
+  const white = ((fast / (2 * (grains.mv.length - 1))) * (grains.s[1]! - grains.s[0]!)) / width_s;
+  return Math.sqrt(Math.max(0, line.residual_sd ** 2 - 1.5 * white) * Math.log(Math.max(2, span_s / width_s)));
+}
+
 /** How long after the end of a step a rebound is looked for, s. */
 const reboundSpan_s = 0.3;
 
@@ -426,10 +453,16 @@ function reboundAfter(input: PassiveInput, baseline: Reading, step: Step, drift:
   const found = extremeOf(voltage, readable(voltage.samples, quiet), widthFor(step), 1);
   if (!found) return { rebound_mv: absent('unreadable'), rebound_spikes: counted };
   const level = levelUnder(baseline, drift, found.at_s);
+  const push = slowPush(input, found.width_s, (quiet.to - quiet.from) / voltage.rate_hz);
   return {
     rebound_mv: measured(found.mv - level.mv, {
       at: { from_s: found.at_s - found.width_s / 2, to_s: found.at_s + found.width_s / 2 },
-      ...combinedError([...level.errors, found, { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) }]),
+      ...combinedError([
+        ...level.errors,
+        found,
+        { se: push },
+        { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) },
+      ]),
       ...noteOf(cut.note, fired.length > 0 ? 'up to the first rebound spike' : undefined, level.note),
     }),
     rebound_spikes: counted,

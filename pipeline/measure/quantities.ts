@@ -538,7 +538,7 @@ export const quantities: readonly Quantity[] = list([
     absolute_potential: true,
     definition: 'Potential before the stimulus, over at most 500 ms, spikes, test pulses and mains hum excluded.',
     formula:
-      'median of the means over 2 ms before onset; hum: the least-squares sine and its harmonics, where resolved, are taken off first',
+      'median of the means over 2 ms before onset, about their line; hum: the least-squares sine and its harmonics, where resolved, are taken off first',
     source: practice,
     uncertainty:
       'Student’s t times the root of (√(π/2) times the serial standard error of the 2 ms means about their line)² and of the rounding left by the digitizer, q²/(2π²)·Σ exp(−(2πkσ/q)²)/k², q its step and σ the noise. For the cell: from the scatter over sweeps, pooled with the sweeps’ own where it does not exceed them.',
@@ -742,7 +742,8 @@ export const quantities: readonly Quantity[] = list([
     formula:
       'lowest running mean over a fiftieth of the step (1 to 10 ms), from 1 ms after onset, − V_base: the samples are dealt into two halves by turns of 0.5 ms, each half is read where the other is lowest, and the two readings are averaged',
     source: 'common practice; the two halves: ours',
-    uncertainty: 'As for the steady deflection, with the serial standard error of that mean.',
+    uncertainty:
+      'As for the steady deflection, with the serial standard error of that mean, and the push that slow noise may give an extreme: its standard deviation in the baseline times √ln(length of the step / width).',
   },
   {
     id: 'rebound_mv',
@@ -783,7 +784,7 @@ export const quantities: readonly Quantity[] = list([
       'V extrapolated back to the edge − V before it, mean over onset and end with sign of the step. Before: straight line over 10 ms. After: one exponential, or two where F > 7, or a line where no time constant is determined, from 1.3 ms·kHz over the filter’s corner (at least 0.3 ms; 1 ms where the corner is not known) to 16, 9 or 5 ms, the longest whose residuals look like noise; carried back to the filter’s delay of 0.336/corner. An exponential faster than 0.7 ms is the electrode’s and left out',
     source: circuit,
     uncertainty:
-      'Student’s t times, in squares, the standard errors of both values from the fits’ covariance (scaled to the slow part of their residuals) and the slope there times 5 % of the delay (80 µs where the corner is not known).',
+      'Student’s t times, in squares, the standard errors of both values from the fits’ covariance (scaled to the slow part of their residuals) and the slope there times the uncertainty of the delay: 5 % of the filter’s (80 µs where the corner is not known) and 12 µs for an electrode too fast to be seen.',
   },
 
   {
@@ -1049,7 +1050,7 @@ export const quantities: readonly Quantity[] = list([
     formula: 'least-squares line with intercept through (I, ΔV_ss) and (0, 0) − ΔR_b',
     source: 'Nagaeva et al. 2020, eLife; Ekins et al. 2020, eLife 9:e62373; taking I·R_s off: linear circuit theory',
     uncertainty:
-      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b. The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points (about the line where they are fewer than five); the scatter alone where it exceeds chance.',
+      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b. The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points, where there are four or more with the origin; the scatter alone where it exceeds chance.',
   },
 
   {
@@ -1231,10 +1232,10 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     definition: 'Resistance that the stated bridge left over: positive when under-compensated.',
     formula:
-      'averaged onset of the hyperpolarizing steps without spikes, ΔV/I with weights I², carried back to the edge as the instantaneous step is, over 300, 100, 30 or 12 ms; where no response was kept, slope through the origin of the instantaneous step on the stimulus',
+      'averaged onset of the hyperpolarizing steps without spikes, ΔV/I with weights I², carried back to the edge as the instantaneous step is, over 300, 100, 30 or 12 ms; where no response was kept, or where it is known a third better, slope through the origin of the instantaneous step on the stimulus',
     source: circuit,
     uncertainty:
-      'Student’s t times the standard error at the edge from the fit’s covariance (scaled to the slow part of its residuals), in squares with those of the level before and of the filter’s delay; a fast part between 0.45 and 1 ms, which may be the electrode’s or the cell’s, counts with half its size. From single sweeps: their own and their scatter, pooled.',
+      'Student’s t times the standard error at the edge from the fit’s covariance (scaled to the slow part of its residuals), in squares with those of the level before and of the delay of filter and electrode (5 % of 0.336/corner, 80 µs where the corner is not known, and 12 µs: 1 pF behind 12 MΩ); a fast part between 0.45 and 1 ms, which may be the electrode’s or the cell’s, counts with half its size. From single sweeps: their own and their scatter, pooled.',
   },
 
   {

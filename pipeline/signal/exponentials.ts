@@ -61,30 +61,36 @@ const logSpaced = ([from, to]: readonly [number, number], count: number): number
   Array.from({ length: count }, (_, k) => from * (to / from) ** (k / (count - 1)));
 
 function bestOnGrid(x: ArrayLike<number>, y: ArrayLike<number>, { slow, fast }: TauRanges): Parameters | null {
-  const decays = (taus: readonly number[]): { tau: number; values: Float64Array }[] =>
-    taus.map((tau) => ({ tau, values: Float64Array.from(x, (value) => Math.exp(-value / tau)) }));
-  const ones = new Float64Array(x.length).fill(1);
-  const slows = decays(logSpaced(slow, fast ? 16 : 32));
-  const pairs = fast
-    ? decays(logSpaced(fast, 14)).flatMap((quick) =>
-        slows.filter((one) => one.tau > 1.5 * quick.tau).map((one) => [one, quick]),
-      )
-    : slows.map((one) => [one]);
+  // Every product of two columns once: offset, slow decays, fast decays.
+  const taus = [...logSpaced(slow, fast ? 12 : 24), ...(fast ? logSpaced(fast, 10) : [])];
+  const columns = [
+    new Float64Array(x.length).fill(1),
+    ...taus.map((tau) => Float64Array.from(x, (value) => Math.exp(-value / tau))),
+  ];
+  const count = fast ? 12 : 24;
+  const slows = Array.from({ length: count }, (_, k) => k + 1);
+  const quicks = Array.from({ length: taus.length - count }, (_, k) => count + k + 1);
+  const gram = columns.map(() => new Float64Array(columns.length));
+  const needed = (r: number, c: number): boolean => r === c || r === 0 || (r <= slows.length && c > slows.length);
+  for (let r = 0; r < columns.length; r++)
+    for (let c = r; c < columns.length; c++) if (needed(r, c)) gram[r]![c] = dot(columns[r]!, columns[c]!);
+  const right = columns.map((column) => dot(column, y));
   let best: Parameters | null = null;
   let least = Number.POSITIVE_INFINITY;
-  for (const terms of pairs) {
-    const columns = [ones, ...terms.map((term) => term.values)];
-    const matrix = columns.map((a) => columns.map((b) => dot(a, b)));
-    const right = columns.map((a) => dot(a, y));
-    const solved = solveSymmetric(matrix, right);
-    if (!solved) continue;
+  const tried = (picked: readonly number[]): void => {
+    const matrix = picked.map((r) => picked.map((c) => gram[Math.min(r, c)]![Math.max(r, c)]!));
+    const own = picked.map((r) => right[r]!);
+    const solved = solveSymmetric(matrix, own);
+    if (!solved) return;
     // Less what the columns explain; the constant Σy² is the same everywhere.
-    const gained = -solved.reduce((sum, value, k) => sum + value * right[k]!, 0);
-    if (gained < least) {
-      least = gained;
-      best = [solved[0]!, ...terms.flatMap((term, k) => [solved[k + 1]!, Math.log(term.tau)])];
-    }
-  }
+    const gained = -solved.reduce((sum, value, k) => sum + value * own[k]!, 0);
+    if (gained >= least) return;
+    least = gained;
+    best = [solved[0]!, ...picked.slice(1).flatMap((column, k) => [solved[k + 1]!, Math.log(taus[column - 1]!)])];
+  };
+  for (const one of slows)
+    if (!fast) tried([0, one]);
+    else for (const quick of quicks) if (taus[one - 1]! > 1.5 * taus[quick - 1]!) tried([0, one, quick]);
   return best;
 }
 
@@ -105,11 +111,12 @@ function normalEquations(x: ArrayLike<number>, y: ArrayLike<number>, p: Paramete
   const matrix = Array.from({ length: size }, () => new Array<number>(size).fill(0));
   const right = new Array<number>(size).fill(0);
   const gradient = new Array<number>(size).fill(1);
+  const taus = p.map((value) => Math.exp(value));
   let rss = 0;
   for (let i = 0; i < x.length; i++) {
     let residual = y[i]! - p[0]!;
     for (let k = 1; k < size; k += 2) {
-      const scaled = x[i]! / Math.exp(p[k + 1]!);
+      const scaled = x[i]! / taus[k + 1]!;
       const decay = Math.exp(-scaled);
       gradient[k] = decay;
       gradient[k + 1] = p[k]! * decay * scaled;
@@ -141,7 +148,7 @@ function refined(
   let p = start;
   let here = normalEquations(x, y, p);
   let damping = 1e-3;
-  for (let step = 0; step < 60; step++) {
+  for (let step = 0; step < 40; step++) {
     const matrix = here.matrix.map((row, r) => row.map((value, c) => (r === c ? value * (1 + damping) : value)));
     const move = solveSymmetric(matrix, here.right);
     if (!move) break;
@@ -152,7 +159,7 @@ function refined(
       p = next;
       here = there;
       damping = Math.max(1e-12, damping / 8);
-      if (gain <= 1e-13 * here.rss) break;
+      if (gain <= 1e-10 * here.rss || here.rss < 1e-24 * x.length) break;
     } else {
       damping *= 6;
       if (damping > 1e8) break;
