@@ -21,7 +21,7 @@ import {
 } from './recorder.ts';
 import type { Trial, TrialOptions } from './score.ts';
 
-interface Cell extends Subject {
+export interface Cell extends Subject {
   electrode: Electrode;
   /** Step currents, pA. */
   steps: readonly number[];
@@ -30,12 +30,16 @@ interface Cell extends Subject {
   seconds: number;
   /** Analytic truth of a passive cell. */
   passive?: { resistance_mohm: number; tau_ms: number };
+  /** Further truths of the cell by quantity, from its clean sweeps. */
+  truths?: (clean: readonly Clean[]) => Record<string, number>;
+  /** Times at which a spike is added to the recording and to nothing else, s. */
+  disturbed_s?: readonly number[];
   /** Spikes fast enough for the figures that are promised of them; false for a squid axon's broad ones too. */
   spikes: boolean;
 }
 
 /** Two passive compartments: a soma and a dendrite behind a coupling conductance (Rall 1969, Biophys J 9:1483–1508; from memory). */
-function twoCompartments(tau_ms: number, soma_share: number, coupling_per_ms: number): Model {
+export function twoCompartments(tau_ms: number, soma_share: number, coupling_per_ms: number): Model {
   return {
     start: [-70, -70],
     slope(state, current, into) {
@@ -46,8 +50,13 @@ function twoCompartments(tau_ms: number, soma_share: number, coupling_per_ms: nu
   };
 }
 
-const usual = { onset_s: 0.2, end_s: 0.6, seconds: 0.75, spikes: false };
-const passiveCell = (resistance_mohm: number, tau_ms: number, access_mohm: number, pipette_pf: number): Cell => ({
+export const usual = { onset_s: 0.2, end_s: 0.6, seconds: 0.75, spikes: false };
+export const passiveCell = (
+  resistance_mohm: number,
+  tau_ms: number,
+  access_mohm: number,
+  pipette_pf: number,
+): Cell => ({
   ...usual,
   name: `passive ${resistance_mohm} MΩ ${tau_ms} ms`,
   model: passive(tau_ms),
@@ -161,17 +170,30 @@ const quickConditions = [
   'bridge 6 MΩ short',
 ];
 
+/** A spike for the recording alone: 80 mV high, 0.9 ms wide at half of it. */
+function disturbed(clean: Clean, times_s: readonly number[]): Clean {
+  const pipette_mv = clean.pipette_mv.slice();
+  for (const at of times_s) {
+    const [from, to] = [Math.round((at - 0.003) * fineHz), Math.round((at + 0.003) * fineHz)];
+    for (let i = from; i < to; i++) pipette_mv[i]! += 80 * Math.exp(-(((i / fineHz - at) / 0.00054) ** 2));
+  }
+  return { ...clean, pipette_mv };
+}
+
 export function cleanSweeps(cell: Cell): Clean[] {
   return cell.steps.map((pa) =>
-    run(
-      cell,
-      cell.electrode,
-      [
-        { from_s: 0, pa: 0 },
-        { from_s: cell.onset_s, pa },
-        { from_s: cell.end_s, pa: 0 },
-      ],
-      cell.seconds,
+    disturbed(
+      run(
+        cell,
+        cell.electrode,
+        [
+          { from_s: 0, pa: 0 },
+          { from_s: cell.onset_s, pa },
+          { from_s: cell.end_s, pa: 0 },
+        ],
+        cell.seconds,
+      ),
+      cell.disturbed_s ?? [],
     ),
   );
 }
@@ -186,8 +208,10 @@ export function ownSeed(...names: readonly (string | number)[]): number {
 export function* trialsOf(cell: Cell, clean: readonly Clean[], under: Conditions, seed: number): Generator<Trial> {
   const context: MeasureContext = { ...neuron, filter_khz: under.filter_stated ? under.filter_khz : null };
   const stated = cell.electrode.access_mohm - under.bridge_left_mohm;
+  const wanders: Float64Array[] = [];
   const sweeps = clean.map((one, k): NumberedSweep => {
-    const { mv, pa, rate_hz } = record(one, under, cell.electrode, ownSeed(cell.name, under.name, seed, k));
+    const { mv, wander_mv, pa, rate_hz } = record(one, under, cell.electrode, ownSeed(cell.name, under.name, seed, k));
+    wanders.push(wander_mv);
     const measure = measureSweep(
       input(
         {
@@ -231,14 +255,18 @@ export function* trialsOf(cell: Cell, clean: readonly Clean[], under: Conditions
     const { membrane_mv } = clean[k]!;
     const drifted = (from_s: number, to_s: number): number => (under.drift_mv_per_s * (from_s + to_s)) / 2;
     const before = meanOf(membrane_mv, 0, cell.onset_s, fineHz);
-    yield ofReading('sweeps', 'baseline_mv', before + drifted(0, cell.onset_s), sweep.readings['baseline_mv']);
+    // The potential itself wanders: its level and slope are those of this stretch. At most 500 ms are looked at.
+    const from_s = Math.max(0, cell.onset_s - 0.5);
+    const wander = wanders[k]!.subarray(Math.round(from_s * under.rate_hz), Math.round(cell.onset_s * under.rate_hz));
+    const level = before + drifted(from_s, cell.onset_s) + wander.reduce((sum, one) => sum + one, 0) / wander.length;
+    yield ofReading('sweeps', 'baseline_mv', level, sweep.readings['baseline_mv']);
     yield ofReading('sweeps', 'noise_rms_mv', noiseTruth(under), sweep.readings['noise_rms_mv']);
     yield ofReading('sweeps', 'mains_hum_mv', humTruth(under), sweep.readings['mains_hum_mv']);
     if (under.hum_mv > 0) yield ofReading('sweeps', 'mains_hum_hz', under.hum_hz, sweep.readings['mains_hum_hz']);
     yield ofReading(
       'sweeps',
       'baseline_drift_mv_per_s',
-      under.drift_mv_per_s,
+      under.drift_mv_per_s + slopeOfLine([...wander.keys()], [...wander]) * under.rate_hz,
       sweep.readings['baseline_drift_mv_per_s'],
     );
   }
@@ -346,6 +374,17 @@ function* spikeTrials(clean: Clean, sweep: NumberedSweep, cell: Cell, under: Con
   }
 }
 
+/**
+ * Slow time constant of membrane and pipette together, whose capacitance hangs on the cell: roots of
+ * s²·R_m·C_m·R_a·C_p + s·(R_m·C_m + R_a·C_p + R_m·C_p) + 1 (linear circuit theory).
+ */
+function chargingTime_ms({ passive: own, capacitance_pf, electrode }: Cell): number {
+  const { access_mohm, pipette_pf } = electrode;
+  const sum = own!.tau_ms + (access_mohm * pipette_pf + own!.resistance_mohm * pipette_pf) / 1000;
+  const product = (own!.resistance_mohm * capacitance_pf * access_mohm * pipette_pf) / 1e6;
+  return (sum + Math.sqrt(sum * sum - 4 * product)) / 2;
+}
+
 function* cellTrials(
   cell: Cell,
   clean: readonly Clean[],
@@ -361,12 +400,17 @@ function* cellTrials(
   yield put('noise_rms_mv', noiseTruth(under), readings['noise_rms_mv']);
   yield put('mains_hum_mv', humTruth(under), readings['mains_hum_mv']);
   const down = cell.steps.flatMap((pa, k) => (pa < 0 ? [{ pa, clean: clean[k]! }] : []));
+  for (const [quantity, truth] of Object.entries(cell.truths?.(clean) ?? {}))
+    yield put(quantity, truth, readings[quantity]);
   if (cell.passive) {
-    const { resistance_mohm, tau_ms } = cell.passive;
+    const { resistance_mohm } = cell.passive;
+    const tau_ms = chargingTime_ms(cell);
     yield put('input_resistance_mohm', resistance_mohm, readings['input_resistance_mohm']);
     yield put('membrane_time_constant_ms', tau_ms, readings['membrane_time_constant_ms']);
-    yield put('membrane_capacitance_pf', cell.capacitance_pf, readings['membrane_capacitance_pf']);
+    yield put('membrane_capacitance_pf', (1000 * tau_ms) / resistance_mohm, readings['membrane_capacitance_pf']);
     yield put('sag_fraction', 0, readings['sag_fraction']);
+    yield put('sag_mv', 0, readings['sag_mv']);
+    yield put('rectification_ratio', 1, readings['rectification_ratio']);
     return;
   }
   // The definition's line through the clean membrane: the last tenth of the step, at most 50 ms, ending 5 ms early.

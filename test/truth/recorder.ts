@@ -159,6 +159,8 @@ function throughput(corner_hz: number): number {
 
 export interface Recorded {
   mv: Float64Array;
+  /** The slow noise in it: the potential itself wanders so. */
+  wander_mv: Float64Array;
   pa: Float64Array;
   rate_hz: number;
 }
@@ -191,13 +193,15 @@ export function record(clean: Clean, conditions: Conditions, electrode: Electrod
   const count = Math.floor(n / every);
   const mv = new Float64Array(count);
   const pa = new Float64Array(count);
+  const wander = new Float64Array(count);
   for (let k = 0; k < count; k++) {
     slow.forEach((decay, j) => {
       levels[j] = decay * levels[j]! + (wander_mv / Math.sqrt(3)) * Math.sqrt(1 - decay * decay) * next();
     });
-    const value = filtered[k * every]! + (wander_mv > 0 ? levels.reduce((sum, one) => sum + one, 0) : 0);
+    wander[k] = wander_mv > 0 ? levels.reduce((sum, one) => sum + one, 0) : 0;
+    const value = filtered[k * every]! + wander[k]!;
     mv[k] = Math.round(value / quantum_mv) * quantum_mv;
     pa[k] = clean.pa[k * every]!;
   }
-  return { mv, pa, rate_hz };
+  return { mv, wander_mv: wander, pa, rate_hz };
 }
