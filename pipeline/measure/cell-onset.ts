@@ -3,6 +3,7 @@ import { type ExponentialSum, type ExponentialTerm, exponentialSum, tauError } f
 import { mean, median } from '../signal/statistics.ts';
 import { type Point, stepPa, uncertaintyOver } from './cell-numbers.ts';
 import { withoutHyperpolarizing } from './cell-passive.ts';
+import { backToEdge, electrodeLimit_ms } from './edge.ts';
 import { filterAtEdge } from './passive.ts';
 import { absent, combinedError, measured } from './reading.ts';
 import type { NumberedSweep, Reading } from './types.ts';
@@ -135,7 +136,9 @@ export function timeConstants(
     );
   const together = averaged(responses);
   const whole = share <= slightSag;
-  const from_ms = Math.max(0.7, filterAtEdge(filter_khz).from_ms);
+  const filter = filterAtEdge(filter_khz);
+  const electrode_ms = backToEdge(together.ms, together.perPa, { ...filter, windows_ms: [100, 30] })?.electrode_ms ?? 0;
+  const from_ms = Math.max(0.7, filter.from_ms, 6 * electrode_ms);
   const one = single(together, from_ms, whole);
   const two = whole ? double(together, from_ms) : null;
   if (!one && !two) return every(absent('fit-failed'));
@@ -224,8 +227,7 @@ function single(response: Response, from_ms: number, whole: boolean): Single | n
 
 /** A second exponential is taken where F exceeds this: about 1 in 1000 by chance. */
 const secondTermF = 7;
-/** What is faster than this, ms, is the electrode's; a fast part below this share of the response is not told from noise. */
-const electrodeLimit_ms = 0.7;
+/** A fast part below this share of the response is not told from noise. */
 const leastShare = 0.03;
 
 /** Two exponentials of one sign over the whole of the response, where they describe it better than one. */

@@ -122,12 +122,14 @@ function inputResistance(sweeps: readonly NumberedSweep[], down: readonly Point[
   const fit = slopeThrough(down);
   if (!fit) return absent('too-few-points');
   const left = bridge.value;
-  const error = combinedError([
-    { ...fit, se: fit.se * mohmPer },
-    ...(left === null
-      ? []
-      : [{ se: bridge.se ?? 0, ...(bridge.freedom === undefined ? {} : { freedom: bridge.freedom }) }]),
-  ]);
+  // Whatever the bridge left over stands in the slope: where it is not known, neither is the uncertainty.
+  const error =
+    left === null
+      ? {}
+      : combinedError([
+          { ...fit, se: fit.se * mohmPer },
+          { se: bridge.se ?? 0, ...(bridge.freedom === undefined ? {} : { freedom: bridge.freedom }) },
+        ]);
   return measured(fit.value * mohmPer - (left ?? 0), {
     n: down.length,
     ...error,
@@ -322,7 +324,11 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
     ].join('; '),
   });
   // Large depolarizing steps and ends of steps may say more than small onsets.
-  const better = single.value !== null && single.n! >= 3 && (single.u95 ?? Number.POSITIVE_INFINITY) < 0.7 * both.u95!;
+  const better =
+    !after.doubtful &&
+    single.value !== null &&
+    single.n! >= 3 &&
+    (single.u95 ?? Number.POSITIVE_INFINITY) < 0.7 * both.u95!;
   return better ? single : both;
 }
 

@@ -1,4 +1,10 @@
-import { type ExponentialSum, type ExponentialTerm, exponentialSum, valueAt } from '../signal/exponentials.ts';
+import {
+  type ExponentialSum,
+  type ExponentialTerm,
+  exponentialSum,
+  tauError,
+  valueAt,
+} from '../signal/exponentials.ts';
 import { serialLine } from '../signal/serial.ts';
 
 /** The response after an edge of the stimulus, carried back to the edge. */
@@ -12,6 +18,8 @@ export interface EdgeValue {
   terms: number;
   /** Time constant of the electrode's own charging, where the response shows it. */
   electrode_ms: number | null;
+  /** A fast part may be the electrode's or the cell's; half of it counts as uncertainty. */
+  doubtful: boolean;
 }
 
 export interface EdgeOptions {
@@ -24,24 +32,26 @@ export interface EdgeOptions {
   windows_ms: readonly number[];
 }
 
-/** A charging faster than this is the electrode's, ms; a membrane with its nearest dendrites takes longer. */
-const electrodeLimit_ms = 0.7;
-/** Time constants this near the limit may be either's: the fast part then counts as uncertainty. */
-const doubtful_ms = [0.45, 1] as const;
+/** A charging faster than this is the electrode's (100 MΩ and 6 pF), ms; a membrane with its nearest dendrites takes longer. */
+export const electrodeLimit_ms = 0.6;
+/** Time constants within this factor of the limit may be either's: the fast part then counts as uncertainty. */
+const doubtfulFactor = 1.2;
 /**
- * An electrode's charging too fast to be seen still delays the membrane's current by its own time constant: 1 pF behind
- * 12 MΩ, common values, make 12 µs, ms.
+ * The electrode's own charging with τ_e = R_a·C_p makes the slow part of the response late by 2 τ_e: the membrane's
+ * current begins τ_e late, and the drop over R_a lacks the current that goes on charging C_p, I·C_p/C, which is as much
+ * again (linear circuit theory, to first order in τ_e/τ_m).
  */
-const unseenElectrode_ms = 0.012;
+const lateBy = 2;
+/** Where it is too fast to be seen: 1 pF behind 12 MΩ, common values, ms. */
+const unseenElectrode_ms = 0.012 * lateBy;
 /** A second exponential is taken where F exceeds this: about 1 in 1000 by chance. */
 const secondTermF = 7;
 
 /**
  * Value at the edge of the response that follows it: one exponential with an offset, or two where the second makes the
  * fit better (F > 7 on slow-noise terms), or a straight line where no time constant can be told. The longest of the
- * windows in which the residuals look like noise is taken. An exponential faster than 0.7 ms is the electrode's own
- * charging: it is left out, and the rest carried back to the edge plus that time, which is when the membrane's current
- * began. Null where none of this fits.
+ * windows in which the residuals look like noise is taken. An exponential faster than 0.6 ms is the electrode's own
+ * charging: it is left out, and the rest carried back to the edge plus twice that time. Null where none of this fits.
  * @param ms times from the edge, ascending. @param mv the response there (mV, or mV/pA)
  */
 export function backToEdge(ms: ArrayLike<number>, mv: ArrayLike<number>, options: EdgeOptions): EdgeValue | null {
@@ -87,6 +97,7 @@ function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null
       rise: -amplitude,
       terms: 1,
       electrode_ms: null,
+      doubtful: false,
     };
   }
   const line = serialLine(x, y);
@@ -100,6 +111,7 @@ function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null
     rise: line.slope * x.at(-1)!,
     terms: 0,
     electrode_ms: null,
+    doubtful: false,
   };
 }
 
@@ -107,16 +119,20 @@ function isSecondTermReal(one: ExponentialSum | null, two: ExponentialSum): bool
   if (!one) return true;
   const [slow, fast] = two.terms as [ExponentialTerm, ExponentialTerm];
   if (slow.tau < 1.8 * fast.tau) return false;
+  // What one exponential leaves of a clean trace is rounding.
+  if (Math.sqrt(one.rss / one.n) < 1e-6 * Math.abs(one.terms[0]!.amplitude)) return false;
   const f = (one.rss - two.rss) / 2 / ((two.rss / (two.n - 5)) * two.correlation);
-  return f > secondTermF || (two.rss === 0 && one.rss > 0);
+  return f > secondTermF;
 }
 
 function ofTwo(fit: ExponentialSum, delay_se_ms: number): EdgeValue {
   const [slow, fast] = fit.terms as [ExponentialTerm, ExponentialTerm];
   const electrodes = fast.tau < electrodeLimit_ms;
-  const { value, se } = electrodes ? valueAt(fit, fast.tau, 1) : valueAt(fit, 0);
+  const { value, se } = electrodes ? valueAt(fit, lateBy * fast.tau, 1) : valueAt(fit, 0);
   const slope = slow.amplitude / slow.tau + (electrodes ? 0 : fast.amplitude / fast.tau);
-  const doubt = fast.tau > doubtful_ms[0] && fast.tau < doubtful_ms[1] ? fast.amplitude / 2 : 0;
+  const apart = Math.abs(Math.log(fast.tau / electrodeLimit_ms));
+  const doubtful = apart < Math.log(doubtfulFactor) || apart < (2 * tauError(fit, 1)) / fast.tau;
+  const doubt = doubtful ? fast.amplitude / 2 : 0;
   return {
     mv: value,
     se: Math.hypot(se, slope * delay_se_ms, doubt),
@@ -124,6 +140,7 @@ function ofTwo(fit: ExponentialSum, delay_se_ms: number): EdgeValue {
     rise: -slow.amplitude - (electrodes ? 0 : fast.amplitude),
     terms: 2,
     electrode_ms: electrodes ? fast.tau : null,
+    doubtful,
   };
 }
 

@@ -20,19 +20,20 @@ const standsOut = 5;
  * line in each, and those of its harmonics that stand out five times above the noise at frequencies round about, are
  * taken off everywhere. The signal itself where the quiet stretches are shorter than three periods together.
  * @param quiet stretches without spikes and without edges of the stimulus; the cell may still be on its way in them
+ * @param proven whether the hum is known to be there; otherwise it must stand out itself
  */
-export function withoutHum(voltage: Signal, quiet: readonly Stretch[], hum_hz: number): Signal {
+export function withoutHum(voltage: Signal, quiet: readonly Stretch[], hum_hz: number, proven = true): Signal {
   const { samples, rate_hz } = voltage;
   const block = Math.max(1, Math.floor(rate_hz / fitRate_hz));
   const rate = rate_hz / block;
   let pieces = piecesOf(voltage, quiet, block, Math.round((3 * rate) / hum_hz));
   if (pieces.length === 0) return voltage;
   const fundamental = sineInPiecesNear(pieces, rate, hum_hz, 0.02 * hum_hz);
-  if (!fundamental) return voltage;
+  if (!fundamental || (!proven && !standingOut(pieces, rate, fundamental.frequency_hz))) return voltage;
   pieces = withoutSine(pieces, rate, fundamental);
   const sines = [fundamental];
   for (const multiple of harmonics) {
-    const found = harmonicIn(pieces, rate, multiple * fundamental.frequency_hz);
+    const found = standingOut(pieces, rate, multiple * fundamental.frequency_hz);
     if (found) sines.push(found);
   }
   const all = sines.map((sine) => ofSamples(sine, rate_hz, block));
@@ -75,16 +76,18 @@ function piecesOf({ samples, rate_hz }: Signal, quiet: readonly Stretch[], block
     });
 }
 
-function harmonicIn(pieces: readonly Piece[], rate: number, hz: number): PiecesFit | null {
+function standingOut(pieces: readonly Piece[], rate: number, hz: number): PiecesFit | null {
   if (hz >= 0.45 * rate) return null;
   const fit = sineInPieces(pieces, rate, hz);
   if (!fit) return null;
   const last = pieces.at(-1)!;
   const duration = (last.from + last.samples.length - pieces[0]!.from) / rate;
+  // Pieces with gaps let a sine leak far: it is taken out first.
+  const rest = withoutSine(pieces, rate, fit);
   const beside = [-5, -4, -3, 3, 4, 5]
     .map((steps) => hz + steps / duration)
     .filter((frequency) => frequency > 0 && frequency < 0.49 * rate)
-    .flatMap((frequency) => sineInPieces(pieces, rate, frequency)?.amplitude ?? []);
+    .flatMap((frequency) => sineInPieces(rest, rate, frequency)?.amplitude ?? []);
   const noise = Math.sqrt(beside.reduce((sum, amplitude) => sum + amplitude ** 2, 0) / (2 * beside.length));
   return beside.length > 0 && fit.amplitude > standsOut * noise ? fit : null;
 }

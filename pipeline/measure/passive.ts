@@ -399,7 +399,7 @@ function extremeOf(voltage: Signal, stretches: readonly Stretch[], width_s: numb
   const [a, b] = best;
   if (!a || !b) return null;
   const noise = [a, b].map((one) => serialMean(one.values)!);
-  const se = Math.max(...noise.map((one) => one.se ?? 0));
+  const se = Math.max(...noise.map((one) => one.se ?? 0), Math.abs(a.read - b.read) / 2);
   const width = (2 * pairs * turn) / voltage.rate_hz;
   return {
     mv: (a.read + b.read) / 2,

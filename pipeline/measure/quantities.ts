@@ -781,10 +781,10 @@ export const quantities: readonly Quantity[] = list([
     decimals: 2,
     definition: 'Jump of the potential at the stimulus edges that no membrane can make: what the bridge left over.',
     formula:
-      'V extrapolated back to the edge − V before it, mean over onset and end with sign of the step. Before: straight line over 10 ms. After: one exponential, or two where F > 7, or a line where no time constant is determined, from 1.3 ms·kHz over the filter’s corner (at least 0.3 ms; 1 ms where the corner is not known) to 16, 9 or 5 ms, the longest whose residuals look like noise; carried back to the filter’s delay of 0.336/corner. An exponential faster than 0.7 ms is the electrode’s and left out',
+      'V extrapolated back to the edge − V before it, mean over onset and end with sign of the step. Before: straight line over 10 ms. After: one exponential, or two where F > 7, or a line where no time constant is determined, from 1.3 ms·kHz over the filter’s corner (at least 0.3 ms; 1 ms where the corner is not known) to 16, 9 or 5 ms, the longest whose residuals look like noise; carried back to the filter’s delay of 0.336/corner. An exponential faster than 0.6 ms is the electrode’s own charging: it is left out and the rest carried back to twice its time constant after the edge',
     source: circuit,
     uncertainty:
-      'Student’s t times, in squares, the standard errors of both values from the fits’ covariance (scaled to the slow part of their residuals) and the slope there times the uncertainty of the delay: 5 % of the filter’s (80 µs where the corner is not known) and 12 µs for an electrode too fast to be seen.',
+      'Student’s t times, in squares, the standard errors of both values from the fits’ covariance (scaled to the slow part of their residuals) and the slope there times the uncertainty of the delay: 5 % of the filter’s (80 µs where the corner is not known) and 24 µs, twice the time constant of 1 pF behind 12 MΩ, for an electrode too fast to be seen.',
   },
 
   {
@@ -1050,7 +1050,7 @@ export const quantities: readonly Quantity[] = list([
     formula: 'least-squares line with intercept through (I, ΔV_ss) and (0, 0) − ΔR_b',
     source: 'Nagaeva et al. 2020, eLife; Ekins et al. 2020, eLife 9:e62373; taking I·R_s off: linear circuit theory',
     uncertainty:
-      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b. The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points, where there are four or more with the origin; the scatter alone where it exceeds chance.',
+      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b (none is given where ΔR_b could not be measured). The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points, where there are four or more with the origin; the scatter alone where it exceeds chance.',
   },
 
   {
@@ -1063,7 +1063,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'Time constant of the response to small hyperpolarizing steps: of one exponential, or the slow one of two where two are warranted. It is that of the cell with what hangs on it: pipette capacitance that was not neutralized lengthens it by R_in times that capacitance.',
     formula:
-      'least-squares exponential with offset through the averaged response to steps of at most 10 mV (weights I²), from 10 % of the steady deflection (at least 0.7 ms, and 1.3 ms·kHz over the filter’s corner, after the onset) to 300 ms or the end of the step; where more than 2 % of the deflection sags away, to 90 % of it; not measured where more than 12 % does',
+      'least-squares exponential with offset through the averaged response to steps of at most 10 mV (weights I²), from 10 % of the steady deflection (at least 0.7 ms, 1.3 ms·kHz over the filter’s corner, and six times the electrode’s own charging where it is seen, after the onset) to 300 ms or the end of the step; where more than 2 % of the deflection sags away, to 90 % of it; not measured where more than 12 % does',
     source: 'Rall 1969, Biophys J 9:1483–1508 (from memory)',
     uncertainty:
       'Student’s t times the standard error from the fit’s covariance, scaled to the slow part of its residuals; the scatter of the single steps’ own time constants where that is more than half as large again. Where the fit ends at 90 %, half the sag’s share besides.',
@@ -1077,7 +1077,7 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     definition: 'Slower time constant of the same response where two exponentials describe it better than one.',
     formula:
-      'A_0·exp(−t/τ_0) + A_1·exp(−t/τ_1) + offset by least squares from 0.7 ms on, where F = ((S_1 − S_2)/2)/(S_2/(n − 5)) > 7 (S_2 scaled to the slow part of the residuals), τ_0 > 2 τ_1, τ_1 > 0.7 ms (faster is the electrode’s) and A_1 more than 3 % of A_0 + A_1; sag at most 2 %',
+      'A_0·exp(−t/τ_0) + A_1·exp(−t/τ_1) + offset by least squares from 0.7 ms on, where F = ((S_1 − S_2)/2)/(S_2/(n − 5)) > 7 (S_2 scaled to the slow part of the residuals), τ_0 > 2 τ_1, τ_1 > 0.6 ms (faster is the electrode’s) and A_1 more than 3 % of A_0 + A_1; sag at most 2 %',
     source: 'Rall 1969, Biophys J 9:1483–1508 (from memory)',
     uncertainty:
       'Student’s t times the standard error from the fit’s covariance, scaled to the slow part of its residuals.',
@@ -1235,7 +1235,7 @@ export const quantities: readonly Quantity[] = list([
       'averaged onset of the hyperpolarizing steps without spikes, ΔV/I with weights I², carried back to the edge as the instantaneous step is, over 300, 100, 30 or 12 ms; where no response was kept, or where it is known a third better, slope through the origin of the instantaneous step on the stimulus',
     source: circuit,
     uncertainty:
-      'Student’s t times the standard error at the edge from the fit’s covariance (scaled to the slow part of its residuals), in squares with those of the level before and of the delay of filter and electrode (5 % of 0.336/corner, 80 µs where the corner is not known, and 12 µs: 1 pF behind 12 MΩ); a fast part between 0.45 and 1 ms, which may be the electrode’s or the cell’s, counts with half its size. From single sweeps: their own and their scatter, pooled.',
+      'Student’s t times the standard error at the edge from the fit’s covariance (scaled to the slow part of its residuals), in squares with those of the level before and of the delay of filter and electrode (5 % of 0.336/corner, 80 µs where the corner is not known, and 24 µs: twice 1 pF times 12 MΩ); a fast part within a factor of 1.2, or two standard errors, of 0.6 ms, which may be the electrode’s or the cell’s, counts with half its size. From single sweeps: their own and their scatter, pooled.',
   },
 
   {

@@ -189,7 +189,9 @@ function spikesAndBaseline(
  * step without spikes, so that its frequency holds over the whole of the sweep.
  */
 function freedOfHum(passive: PassiveInput, quiet: readonly Stretch[], hum_hz: Reading): PassiveInput {
-  if (hum_hz.value === null) return passive;
+  // Too little quiet for the hum to be measured need not be too little for it to be seen together with the step.
+  const tried: number | null = hum_hz.value ?? (hum_hz.why === 'no-spike-free-stretch' ? passive.mains_hz : null);
+  if (tried === null) return passive;
   const { voltage, stimulus, spikes, slow } = passive;
   const step = stimulus.kind === 'step' && stimulus.onset_s !== null && stimulus.end_s !== null ? stimulus : null;
   const late = step
@@ -199,7 +201,7 @@ function freedOfHum(passive: PassiveInput, quiet: readonly Stretch[], hum_hz: Re
       )
     : [];
   const parts = [...quiet, ...late];
-  return { ...passive, voltage: withoutHum(voltage, parts, hum_hz.value), recorded: voltage };
+  return { ...passive, voltage: withoutHum(voltage, parts, tried, hum_hz.value !== null), recorded: voltage };
 }
 
 function withHeightFromRest(spike: Spike, baseline: number | null): Spike {

@@ -49,9 +49,8 @@ export function exponentialSum(x: ArrayLike<number>, y: ArrayLike<number>, range
   if (x.length !== y.length) throw new RangeError(`x and y must be of one length, got ${x.length} and ${y.length}`);
   const wanted = ranges.fast ? 2 : 1;
   if (x.length < 2 * wanted + 4) return null;
-  const start = bestOnGrid(x, y, ranges);
-  if (!start) return null;
-  return refined(x, y, start, ranges);
+  const fits = startsOnGrid(x, y, ranges).map((start) => refined(x, y, start, ranges));
+  return fits.length === 0 ? null : fits.reduce((best, one) => (one.rss < best.rss ? one : best));
 }
 
 /** Parameters in the order of the covariance. */
@@ -60,7 +59,11 @@ type Parameters = number[];
 const logSpaced = ([from, to]: readonly [number, number], count: number): number[] =>
   Array.from({ length: count }, (_, k) => from * (to / from) ** (k / (count - 1)));
 
-function bestOnGrid(x: ArrayLike<number>, y: ArrayLike<number>, { slow, fast }: TauRanges): Parameters | null {
+/**
+ * The best node; with two terms the best in each third of the fast range, since the steps may end in a side valley
+ * where both time constants are one.
+ */
+function startsOnGrid(x: ArrayLike<number>, y: ArrayLike<number>, { slow, fast }: TauRanges): Parameters[] {
   // Every product of two columns once: offset, slow decays, fast decays.
   const taus = [...logSpaced(slow, fast ? 12 : 24), ...(fast ? logSpaced(fast, 10) : [])];
   const columns = [
@@ -75,23 +78,28 @@ function bestOnGrid(x: ArrayLike<number>, y: ArrayLike<number>, { slow, fast }: 
   for (let r = 0; r < columns.length; r++)
     for (let c = r; c < columns.length; c++) if (needed(r, c)) gram[r]![c] = dot(columns[r]!, columns[c]!);
   const right = columns.map((column) => dot(column, y));
-  let best: Parameters | null = null;
-  let least = Number.POSITIVE_INFINITY;
-  const tried = (picked: readonly number[]): void => {
+  const best = new Map<number, { gained: number; start: Parameters }>();
+  const tried = (picked: readonly number[], group: number): void => {
     const matrix = picked.map((r) => picked.map((c) => gram[Math.min(r, c)]![Math.max(r, c)]!));
     const own = picked.map((r) => right[r]!);
     const solved = solveSymmetric(matrix, own);
     if (!solved) return;
     // Less what the columns explain; the constant Σy² is the same everywhere.
     const gained = -solved.reduce((sum, value, k) => sum + value * own[k]!, 0);
-    if (gained >= least) return;
-    least = gained;
-    best = [solved[0]!, ...picked.slice(1).flatMap((column, k) => [solved[k + 1]!, Math.log(taus[column - 1]!)])];
+    if (gained >= (best.get(group)?.gained ?? Number.POSITIVE_INFINITY)) return;
+    const start = [
+      solved[0]!,
+      ...picked.slice(1).flatMap((column, k) => [solved[k + 1]!, Math.log(taus[column - 1]!)]),
+    ];
+    best.set(group, { gained, start });
   };
   for (const one of slows)
-    if (!fast) tried([0, one]);
-    else for (const quick of quicks) if (taus[one - 1]! > 1.5 * taus[quick - 1]!) tried([0, one, quick]);
-  return best;
+    if (!fast) tried([0, one], 0);
+    else
+      for (const quick of quicks)
+        if (taus[one - 1]! > 1.5 * taus[quick - 1]!)
+          tried([0, one, quick], Math.floor((3 * (quick - count - 1)) / quicks.length));
+  return [...best.values()].map(({ start }) => start);
 }
 
 function dot(a: ArrayLike<number>, b: ArrayLike<number>): number {
@@ -137,7 +145,7 @@ function refined(
   y: ArrayLike<number>,
   start: Parameters,
   { slow, fast }: TauRanges,
-): ExponentialSum | null {
+): ExponentialSum {
   const bounds = [slow, ...(fast ? [fast] : [])].map(([from, to]) => [Math.log(from), Math.log(to)] as const);
   const held = (p: Parameters): Parameters =>
     p.map((value, k) => {

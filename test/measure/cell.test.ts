@@ -65,13 +65,14 @@ describe('a passive cell', () => {
   // Linear circuit theory: 100 MΩ and 20 ms are 200 pF.
   it('gives back resistance, time constant and capacitance', () => {
     const readings = measure(ofCircuit(circuit, [-90, -60, -30, 0, 30]));
-    expect(numberIn(readings, 'input_resistance_mohm')).toBeCloseTo(100, 4);
+    // The onset is kept in means over 0.2 ms, which moves what is carried back to the edge by some 10⁻⁶ of it.
+    expect(numberIn(readings, 'input_resistance_mohm')).toBeCloseTo(100, 2);
     expect(readings['input_resistance_mohm']!.n).toBe(3);
     expect(numberIn(readings, 'membrane_time_constant_ms')).toBeCloseTo(20, 2);
     expect(numberIn(readings, 'membrane_capacitance_pf')).toBeCloseTo(200, 1);
     expect(Math.abs(numberIn(readings, 'sag_fraction'))).toBeLessThan(1e-6);
     expect(numberIn(readings, 'resting_potential_mv')).toBeCloseTo(-70, 6);
-    expect(Math.abs(numberIn(readings, 'bridge_error_mohm'))).toBeLessThan(1e-4);
+    expect(Math.abs(numberIn(readings, 'bridge_error_mohm'))).toBeLessThan(1e-3);
     expect(readings['rheobase_pa']!.why).toBe('never-fired');
     expectComplete(readings);
   });
@@ -92,10 +93,10 @@ describe('a passive cell', () => {
     expect(Math.abs(numberIn(readings, 'sag_fraction'))).toBeLessThan(0.02);
   });
 
-  it('says so when a bridge error stands in its resistance', () => {
+  it('takes a bridge error out of its resistance and says so', () => {
     const readings = measure(ofCircuit({ ...circuit, bridge_left_mohm: 10 }, [-90, -60, -30]));
     expect(numberIn(readings, 'bridge_error_mohm')).toBeCloseTo(10, 3);
-    expect(numberIn(readings, 'input_resistance_mohm')).toBeCloseTo(110, 3);
+    expect(numberIn(readings, 'input_resistance_mohm')).toBeCloseTo(100, 2);
     expect(readings['input_resistance_mohm']!.note).toContain('bridge error of 10.0 MΩ');
     expect(
       numberIn(measure(ofCircuit({ ...circuit, bridge_left_mohm: -7 }, [-90, -60, -30])), 'bridge_error_mohm'),

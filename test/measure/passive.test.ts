@@ -130,7 +130,8 @@ describe('bridge step', () => {
   it('adds to a known bridge as access resistance', () => {
     const made = passiveSweep({ ...cell, bridge_left_mohm: 4 }, step);
     const { readings } = measureSweep(input(made, { bridge_mohm: 14 }), neuron);
-    expect(numberIn(readings, 'access_resistance_mohm')).toBeCloseTo(18, 4);
+    // Read from means over 0.1 ms.
+    expect(numberIn(readings, 'access_resistance_mohm')).toBeCloseTo(18, 3);
     expect(measureSweep(input(made), neuron).readings['access_resistance_mohm']).toMatchObject({
       value: null,
       why: 'fact-missing',
