@@ -167,11 +167,26 @@ export const tableSchema = block({
           by_pa: anyNumber.optional(),
           pa: someOf(anyNumber, 'a list of numbers, one a sweep').optional(),
         }),
+        block({
+          kind: z.literal('levels'),
+          at_s: someOf(numberIn(-1e6, 1e6, 's'), 'a list of times in s, from which on each level holds'),
+          mv: someOf(anyNumber, 'a list of command potentials in mV, one for each time'),
+        }),
         block({ kind: z.literal('none') }),
       ],
-      { error: 'a block with kind: step or kind: none' },
+      { error: 'a block with kind: step, kind: levels or kind: none' },
     )
     .superRefine((stimulus, context) => {
+      if (stimulus.kind === 'levels') {
+        if (stimulus.at_s.length !== stimulus.mv.length)
+          context.addIssue({
+            code: 'custom',
+            path: ['mv'],
+            message: `As many potentials as times: ${stimulus.at_s.length} times and ${stimulus.mv.length} potentials are listed`,
+          });
+        if (stimulus.at_s.some((time, k) => k > 0 && !(time > stimulus.at_s[k - 1]!)))
+          context.addIssue({ code: 'custom', path: ['at_s'], message: 'Times in ascending order' });
+      }
       if (stimulus.kind !== 'step') return;
       const stairs = stimulus.from_pa !== undefined && stimulus.by_pa !== undefined;
       const part = stimulus.from_pa !== undefined || stimulus.by_pa !== undefined;
@@ -191,8 +206,12 @@ export const tableSchema = block({
     error: 'State time or rate_hz, never both',
     path: ['rate_hz'],
   })
-  .refine((table) => table.current === undefined || table.stimulus === undefined, {
+  .refine((table) => table.current === undefined || table.stimulus === undefined || table.stimulus.kind === 'levels', {
     error: 'State current or stimulus, never both',
+    path: ['stimulus'],
+  })
+  .refine((table) => table.voltage === undefined || table.stimulus?.kind !== 'levels', {
+    error: 'State voltage or the levels of the command, never both',
     path: ['stimulus'],
   });
 

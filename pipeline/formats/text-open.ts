@@ -159,6 +159,7 @@ function statedStimulus(mapping: TableMapping | undefined, sweep: number): Sweep
   const stimulus = mapping?.stimulus;
   if (!stimulus) return null;
   if (stimulus.kind === 'none') return { kind: 'none' };
+  if (stimulus.kind === 'levels') return { kind: 'levels', at_s: stimulus.at_s, mv: stimulus.mv };
   const { start_s, end_s } = stimulus;
   if ('pa' in stimulus) {
     const pa = stimulus.pa[sweep];

@@ -85,7 +85,11 @@ export interface SweepSamples {
   clamp: 'current' | 'voltage';
   voltage: Samples | null;
   current: Samples | null;
-  stated_stimulus: { kind: 'step'; start_s: number; end_s: number; pa: number } | { kind: 'none' } | null;
+  stated_stimulus:
+    | { kind: 'step'; start_s: number; end_s: number; pa: number }
+    | { kind: 'levels'; at_s: number[]; mv: number[] }
+    | { kind: 'none' }
+    | null;
   bridge_mohm: number | null;
   /** Voltage clamp: what the file says the amplifier compensated. */
   compensation?: {
@@ -117,6 +121,7 @@ export interface TableMapping {
   stimulus?:
     | { kind: 'step'; start_s: number; end_s: number; from_pa: number; by_pa: number }
     | { kind: 'step'; start_s: number; end_s: number; pa: number[] }
+    | { kind: 'levels'; at_s: number[]; mv: number[] }
     | { kind: 'none' };
   clamp?: 'current' | 'voltage';
   capacitance_pf?: number;

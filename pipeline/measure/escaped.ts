@@ -2,7 +2,7 @@
 import { median, quantile } from '../signal/statistics.ts';
 import type { CommandEdge } from './clamp-fit.ts';
 import { absent, measured } from './reading.ts';
-import { indexAt, timeAt } from './stretches.ts';
+import { indexAt, type Stretch, timeAt } from './stretches.ts';
 import type { Reading, Signal } from './types.ts';
 
 /** Smallest action current, pA, and as a multiple of the noise: a synaptic current is smaller. Ours. */
@@ -26,14 +26,18 @@ const block_ms = 20;
  */
 export function escapedCurrents(current: Signal, edges: readonly CommandEdge[]): Reading {
   const rate = current.rate_hz;
-  const inward = aboveLocalMedian(current);
-  if (!inward) return absent('sweep-too-short');
-  const noise = 1.4826 * (quantile(Float64Array.from(inward.filter(Number.isFinite), Math.abs), 0.5) ?? 0);
+  // From the end of each answer to the command up to the next step: a level of its own each.
+  const starts = [0, ...edges.map(({ at_s }) => indexAt(current, at_s))];
+  const calm = starts.map((start, k): Stretch => {
+    const dead_ms = k === 0 ? 0 : Math.abs(edges[k - 1]!.mv) > small_mv * 1.001 ? afterLarge_ms : afterSmall_ms;
+    const next = starts[k + 1] ?? current.samples.length + 2;
+    return { from: start + Math.round((dead_ms * rate) / 1000), to: next - 2 };
+  });
+  const inward = aboveLocalMedian(current, calm);
+  const sizes = inward.filter(Number.isFinite);
+  if (sizes.length < 8) return absent('sweep-too-short');
+  const noise = 1.4826 * (quantile(sizes.map(Math.abs), 0.5) ?? 0);
   const least = Math.max(leastEscaped_pa, timesNoise * noise);
-  for (const { at_s, mv } of edges) {
-    const dead_ms = Math.abs(mv) > small_mv * 1.001 ? afterLarge_ms : afterSmall_ms;
-    inward.fill(0, Math.max(0, indexAt(current, at_s) - 2), indexAt(current, at_s + dead_ms / 1000));
-  }
   const found: number[] = [];
   for (let i = 1; i + 1 < inward.length; i++) {
     const size = inward[i]!;
@@ -60,17 +64,24 @@ export function escapedCurrents(current: Signal, edges: readonly CommandEdge[]):
   });
 }
 
-/** The current turned over, less the median of its surroundings; null where the sweep is shorter than two blocks. */
-function aboveLocalMedian(current: Signal): Float64Array | null {
-  const { samples, rate_hz } = current;
-  const width = Math.round((block_ms * rate_hz) / 1000);
-  const blocks = Math.floor(samples.length / width);
-  if (blocks < 2 || width < 8) return null;
-  const levels = Array.from({ length: blocks }, (_, k) => median(samples.subarray(k * width, (k + 1) * width)) ?? 0);
-  return samples.map((value, i) => {
-    const place = Math.min(blocks - 1, Math.max(0, i / width - 0.5));
-    const below = Math.min(blocks - 2, Math.floor(place));
-    const level = levels[below]! + (levels[below + 1]! - levels[below]!) * (place - below);
-    return Number.isFinite(value) ? level - value : 0;
-  });
+/**
+ * The current turned over, less the median of its surroundings in the same stretch; infinite outside the stretches, so
+ * that nothing there, and no flank that comes from there, is a peak.
+ */
+function aboveLocalMedian({ samples, rate_hz }: Signal, stretches: readonly Stretch[]): Float64Array {
+  const out = new Float64Array(samples.length).fill(Number.POSITIVE_INFINITY);
+  const width = Math.max(8, Math.round((block_ms * rate_hz) / 1000));
+  for (const { from, to } of stretches) {
+    if (to - from < 8) continue;
+    const blocks = Math.max(1, Math.round((to - from) / width));
+    const edge = (k: number): number => from + Math.round((k * (to - from)) / blocks);
+    const levels = Array.from({ length: blocks }, (_, k) => median(samples.subarray(edge(k), edge(k + 1))) ?? 0);
+    for (let i = from; i < to; i++) {
+      const place = Math.min(blocks - 1, Math.max(0, ((i - from) * blocks) / (to - from) - 0.5));
+      const below = Math.max(0, Math.min(blocks - 2, Math.floor(place)));
+      const level = levels[below]! + ((levels[below + 1] ?? levels[below]!) - levels[below]!) * (place - below);
+      out[i] = Number.isFinite(samples[i]!) ? level - samples[i]! : 0;
+    }
+  }
+  return out;
 }

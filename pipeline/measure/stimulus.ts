@@ -66,7 +66,7 @@ function fromStatement(stated: StatedStimulus | null): Stimulus {
       holding: 0,
       edges_s: [stated.start_s, stated.end_s],
     };
-  const none = stated !== null;
+  const none = stated?.kind === 'none' || stated?.kind === 'step';
   return {
     kind: none ? 'none' : 'unknown',
     from: none ? 'stated' : 'absent',

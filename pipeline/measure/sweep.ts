@@ -326,14 +326,24 @@ function alignedTo(
 
 const seconds = (value: number): string => `${Number(value.toPrecision(6))} s`;
 
+/** A stated command on the samples of the current, mV; null where none is stated. Before its first time: that level. */
+function statedCommand(stated: SweepInput['stated_stimulus'], current: Signal | null): Signal | null {
+  if (stated?.kind !== 'levels' || stated.mv.length === 0 || !current) return null;
+  const samples = new Float64Array(current.samples.length).fill(stated.mv[0]!);
+  for (const [k, time] of stated.at_s.entries()) samples.fill(stated.mv[k]!, indexAt(current, time));
+  return { samples, rate_hz: current.rate_hz, start_s: current.start_s };
+}
+
 function voltageClampSweep(
   input: SweepInput,
   voltage: Signal | null,
   current: Signal | null,
   context: MeasureContext,
 ): SweepMeasure {
-  const command = readCommand(voltage, null, 'voltage');
-  const { stimulus, levels } = command;
+  const said = voltage ? null : statedCommand(input.stated_stimulus, current);
+  const command = readCommand(voltage ?? said, null, 'voltage');
+  const { levels } = command;
+  const stimulus: Stimulus = said ? { ...command.stimulus, from: 'stated' } : command.stimulus;
   const recorded: Readings = current
     ? {
         clipped_fraction: clippedFraction(current),
@@ -350,14 +360,14 @@ function voltageClampSweep(
     readings: {
       ...recorded,
       ...setAsideCompensated(
-        measureVoltageClamp(current, voltage, stimulus, levels, context.filter_khz, context.mains_hz),
+        measureVoltageClamp(current, voltage ?? said, stimulus, levels, context.filter_khz, context.mains_hz),
         context.capacitance_pf,
         input.compensation ?? null,
       ),
     },
     spikes: [],
     depolarization_block: false,
-    remarks: command.remarks,
+    remarks: said ? [...command.remarks, 'the command is the one stated; none was recorded'] : command.remarks,
     voltage_envelope: voltage && envelopeOf(voltage, outlineColumns),
     current_envelope: current && envelopeOf(current, outlineColumns),
     first_spike: null,

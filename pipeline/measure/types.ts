@@ -82,7 +82,11 @@ export interface Signal {
 }
 
 /** A stimulus that is known from a statement (sidecar, file attribute) and not from a recorded channel. */
-export type StatedStimulus = { kind: 'step'; start_s: number; end_s: number; pa: number } | { kind: 'none' };
+export type StatedStimulus =
+  | { kind: 'step'; start_s: number; end_s: number; pa: number }
+  /** Voltage clamp: the command holds each level, mV, from its time, s from the start of the sweep, to the next. */
+  | { kind: 'levels'; at_s: number[]; mv: number[] }
+  | { kind: 'none' };
 
 /** What the amplifier is said to have done to a voltage-clamp recording. Null: not said. */
 export interface Compensation {

@@ -285,6 +285,21 @@ describe('folder.yaml and sidecars', () => {
         table.stimulus.end_s must be later than start_s (1 s), got 0.5.
         The whole table block was not used, and the recording is not read until it is corrected."
     `));
+  test('a command of as many potentials as times, or none', () =>
+    expect(
+      complaints({
+        ...recording,
+        'recordings/c1.csv.yaml':
+          'table:\n  clamp: voltage\n  stimulus: { kind: levels, at_s: [0, 0.2, 0.1], mv: [-70, -65] }\n',
+      }),
+    ).toMatchInlineSnapshot(`
+      "recordings/c1.csv.yaml:3 VALUE_IMPOSSIBLE (blocks)
+        table.stimulus.at_s: Times in ascending order.
+        The whole table block was not used, and the recording is not read until it is corrected.
+      recordings/c1.csv.yaml:3 VALUE_IMPOSSIBLE (blocks)
+        table.stimulus.mv: As many potentials as times: 3 times and 2 potentials are listed.
+        The whole table block was not used, and the recording is not read until it is corrected."
+    `));
   test('a sidecar alone, one under another spelling, electrodes in a folder', () =>
     expect(
       complaints({

@@ -307,6 +307,12 @@ describe('stated stimulus', () => {
     expect(stimuli).toEqual([-100, -50, 0].map((amplitude) => ({ ...step, pa: amplitude })));
   });
 
+  test('a command in voltage clamp, the same in every sweep', async () => {
+    const command = { kind: 'levels' as const, at_s: [0, 0.001], mv: [-70, -65] };
+    const { stimuli } = await stated(command);
+    expect(stimuli).toEqual([command, command, command]);
+  });
+
   test('a list, too short and too long', async () => {
     const short = await stated({ ...step, pa: [-100, -50] });
     expect(short.stimuli).toEqual([{ ...step, pa: -100 }, { ...step, pa: -50 }, null]);

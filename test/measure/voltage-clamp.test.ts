@@ -153,6 +153,21 @@ describe('what the pulse ran into', () => {
     expect(measure(clampedSweep(cell, pulse)).readings['seal_resistance_gohm']!.why).toBe('membrane-charged'));
 });
 
+it('takes a command that is stated, where none was recorded', () => {
+  const made = clampedSweep(cell, pulse);
+  const stated_stimulus = { kind: 'levels' as const, at_s: [0, 0.05, 0.1], mv: [-70, -65, -70] };
+  const stated = measureSweep(
+    input({ voltage: null, current: made.current }, { clamp: 'voltage', stated_stimulus }),
+    neuron,
+  );
+  expect(stated.readings).toEqual(measure(made).readings);
+  expect(stated.stimulus.from).toBe('stated');
+  expect(stated.remarks).toContain('the command is the one stated; none was recorded');
+  // In current clamp it says nothing of the current.
+  const elsewhere = measureSweep(input({ voltage: made.voltage, current: null }, { stated_stimulus }), neuron);
+  expect(elsewhere.stimulus).toMatchObject({ kind: 'unknown', from: 'absent' });
+});
+
 describe('what the file says of the amplifier', () => {
   const with_ = (compensation: NonNullable<Parameters<typeof measureSweep>[0]['compensation']>) =>
     measureSweep(input(clampedSweep(cell, pulse), { clamp: 'voltage', compensation }), neuron).readings;
@@ -200,6 +215,15 @@ describe('escaped action currents', () => {
     expect(escaping([2000], [0.0512]).value).toBe(0);
     expect(escaping([600], [0.1], 12).value).toBe(0);
     expect(escaping([3000], [0.1], 0.04).value).toBe(0);
+  });
+
+  it('are not what a current does that settles slowly after a large step', () => {
+    const made = clampedSweep({ ...cell, noise_pa: 8 }, [{ from_s: 0.05, to_s: 0.15, mv: -60 }]);
+    made.current.samples.forEach((_, i) => {
+      const t = i / 50000 - 0.05;
+      if (t >= 0 && t < 0.1) made.current.samples[i]! -= 1500 * Math.exp(-t / 0.008);
+    });
+    expect(measure(made).readings['escaped_currents']!.value).toBe(0);
   });
 
   it('cannot be told from the command’s own answer without a command', () => {
