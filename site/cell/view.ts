@@ -82,7 +82,8 @@ export function quantityRows(cell: CellRow): QuantityRow[] {
   const first = cell.measure.conditions[0]?.condition;
   return quantitiesOf('cell').flatMap(({ id, label, symbol, unit }) => {
     const readings = cell.measure.conditions.map((one) => one.readings[id] ?? null);
-    if (readings.every((reading) => reading === null)) return [];
+    // What is not given for this kind of cell is no gap in its numbers.
+    if (readings.every((reading) => reading === null || reading.why === 'not-this-class')) return [];
     const findings = cell.judgement.findings
       .filter(
         (one) => one.quantity === id && one.sweep === null && one.condition === first && one.outcome !== 'not measured',
@@ -129,11 +130,11 @@ export interface SpikeValue {
   why: string;
 }
 
-/** Every quantity of one spike, in the registry's order. */
+/** Every quantity of one spike that is given for its kind of cell, in the registry's order. */
 export const spikeValues = (spike: Spike): SpikeValue[] =>
   quantitiesOf('spike').flatMap(({ id, label, unit }) => {
     const value = spike.values[id];
-    if (value === undefined) return [];
+    if (value === undefined || spike.why[id] === 'not-this-class') return [];
     const reading: Reading = value === null ? { value: null } : { value, ...halfWidth(spike.u95?.[id]) };
     const why = spike.why[id];
     return [

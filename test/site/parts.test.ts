@@ -169,8 +169,8 @@ describe('numbers and dates as printed', () => {
     expect(
       spikeValues({
         spike: 0,
-        values: { threshold_mv: -45.23, peak_mv: null },
-        why: { peak_mv: 'clipped' },
+        values: { threshold_mv: -45.23, peak_mv: null, apd50_ms: null },
+        why: { peak_mv: 'clipped', apd50_ms: 'not-this-class' },
         phases: [],
       }).map((one) => [one.id, one.printed?.value ?? one.why]),
     ).toEqual([
