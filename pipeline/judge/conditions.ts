@@ -265,8 +265,8 @@ const accessTimesCurrent: CellQuestion = (setting) => {
     setting.circumstances.bridge_mohm !== null || isPresent(setting.measure.readings['bridge_error_mohm']);
   // A pulse of a few milliseconds is over before the spike that it starts.
   const step = hasVoltage(setting) && !compensated ? largestStimulusPa(setting, 0.02) : null;
-  const held = isPresent(inClamp) ? Math.abs(inClamp.value) : 0;
-  const current = Math.max(held, step ?? 0);
+  // What flowed is known well within a sweep; that it differs from sweep to sweep is no doubt about it.
+  const current = Math.max(isPresent(inClamp) ? Math.abs(inClamp.value) : 0, step ?? 0);
   // Nothing flows, or the bridge is accounted for by its own check.
   if (current === 0) return null;
   const high = (limits.accessErrorMv * 1000) / current;
@@ -276,8 +276,6 @@ const accessTimesCurrent: CellQuestion = (setting) => {
     high,
     name: `the ${amount('access_resistance_mohm', high)} across which ${amount('holding_pa', current)} drops ${limits.accessErrorMv} mV`,
     meaning: 'the potential read at the amplifier is not the potential of the cell',
-    // The limit is as well known as the current it is taken from; a stimulus is set, a holding current is measured.
-    uncertainty: isPresent(inClamp) && current === held ? (high * measuredUncertainty(inClamp)) / current : 0,
   });
 };
 

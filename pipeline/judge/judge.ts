@@ -35,7 +35,7 @@ interface Place {
  */
 function unknownHalfWidth(quantityId: string, answer: Held): string {
   if (answer.reading.u95 !== undefined || quantity(quantityId).uncertainty === undefined) return '';
-  return answer.standIn ?? 'How well the number itself is known is not known, and was not counted.';
+  return answer.standIn ?? 'The number’s own uncertainty is not known and was not counted.';
 }
 
 /** An answer held against its limits. */

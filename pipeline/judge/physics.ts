@@ -27,8 +27,7 @@ function potentialUncertainty(setting: Setting, reading: Reading): number {
   return isPresent(noise) ? 1.96 * noise.value : 0;
 }
 
-const noiseStandsIn =
-  'How well the number itself is known is not known; 1.96 times the noise was counted in its place.';
+const noiseStandsIn = 'The number’s own uncertainty is not known; 1.96 times the noise was counted in its place.';
 
 const standIn = (setting: Setting): { standIn?: string } =>
   isPresent(setting.measure.readings['noise_rms_mv']) ? { standIn: noiseStandsIn } : {};
