@@ -194,7 +194,7 @@ describe('the lab’s own limits', () => {
       source: 'almanac.yaml, line 12',
     });
     expect(found.sentence).toBe(
-      'The access resistance, 14.0 MΩ, lies 2.0 MΩ above the lab’s limit of 12.0 MΩ; the lab does not accept that. How well the number itself is known is not known, and was not counted.',
+      'The access resistance, 14.0 MΩ, lies 2.0 MΩ above the lab’s limit of 12.0 MΩ; the lab does not accept that. The number’s own uncertainty is not known and was not counted.',
     );
   });
   test('a lower limit, inside the uncertainty', () =>
