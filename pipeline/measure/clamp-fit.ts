@@ -149,11 +149,17 @@ export function fitClamp(
   const misfit = top.chi2 / freedom;
   const scale = Math.max(1, misfit);
   const weighted = evaluated(problem, top.parameters, best.filtered, false).residuals;
-  const excess = kept.flatMap((bin, k) =>
-    bin.since_ms > 0 && bin.since_ms < 3
-      ? [(weighted[k]! * problem.sds[k]!) ** 2 - (noise.sd ** 2 * Math.min(1, noise.correlated)) / bin.count]
-      : [],
-  );
+  // What noise alone leaves there, and three standard errors of it, are taken off.
+  let [early, squares, byNoise, spread] = [0, 0, 0, 0];
+  kept.forEach((bin, k) => {
+    if (!(bin.since_ms > 0 && bin.since_ms < 3)) return;
+    const own = (noise.sd ** 2 * Math.max(1, noise.correlated)) / bin.count;
+    early++;
+    squares += (weighted[k]! * problem.sds[k]!) ** 2;
+    byNoise += own;
+    spread += 2 * own ** 2;
+  });
+  const excess = early === 0 ? 0 : (squares - byNoise - 3 * Math.sqrt(spread)) / early;
   const over = (f: (p: readonly number[]) => number): Estimate => averaged(solid, f, scale);
   return {
     access_mohm: over(access),
@@ -168,7 +174,7 @@ export function fitClamp(
     noise_pa: noise.sd,
     correlated: noise.correlated,
     misfit,
-    left_over: size > 0 ? Math.sqrt(Math.max(0, mean(excess) ?? 0)) / size : 0,
+    left_over: size > 0 ? Math.sqrt(Math.max(0, excess)) / size : 0,
     corner_khz: best.filtered ? Math.exp(top.parameters[5]!) : null,
     hum_pa: hums.length > 0 ? Math.hypot(top.parameters[6]!, top.parameters[7]!) : null,
     from_s: spans[0]!.from_s,

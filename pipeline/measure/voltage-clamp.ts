@@ -252,7 +252,12 @@ function circuitReadings(fit: ClampFit): Readings {
     return {
       ...without(what),
       membrane_resistance_mohm: totalReading(`total resistance: the access could not be told apart; ${what}`),
-      seal_resistance_gohm: absent('unresolved', { note: `less than ${leastSeal_mohm / 1000} GΩ: no seal` }),
+      seal_resistance_gohm: absent('unresolved', {
+        note:
+          steady.value * leastSeal_mohm < 1000
+            ? 'whether a membrane or only the pipette was charged is not resolved'
+            : `less than ${leastSeal_mohm / 1000} GΩ: no seal`,
+      }),
     };
   }
   const tau_ms = fit.tau_ms.value;
@@ -267,7 +272,7 @@ function circuitReadings(fit: ClampFit): Readings {
       access_resistance_mohm: absent('unresolved', { note: single }),
       cell_capacitance_pf: absent('unresolved', { note: single }),
       transient_capacitance_pf: transientReading,
-      membrane_resistance_mohm: totalReading(totalNote),
+      membrane_resistance_mohm: absent('unresolved', { note: single }),
       seal_resistance_gohm: absent('membrane-charged'),
     };
   const noted = (reading: Reading): Reading =>
@@ -290,8 +295,8 @@ function circuitReadings(fit: ClampFit): Readings {
 }
 
 /** Shares of the largest current that the circuit may leave unexplained: worth a word, and too much. Ours. */
-const mostLeftOver = 0.03;
-const tooMuchLeftOver = 0.1;
+const mostLeftOver = 0.02;
+const tooMuchLeftOver = 0.04;
 
 /** What a resistance without a membrane behind it usually is. */
 const bareWords = (mohm: number): string =>

@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest';
 import { broken, type Limit, score } from './score.ts';
-import { trials } from './voltage-clamp.ts';
+import { readingsOf, rigs, trials } from './voltage-clamp.ts';
 
 const all = trials({ seeds: 1, quick: true });
 
@@ -24,5 +24,28 @@ describe('voltage clamp of known truth', () => {
     // And they are no wider than they must be to say something.
     const access = all.filter(({ quantity }) => quantity === 'access_resistance_mohm');
     for (const { u95, truth } of access) expect(u95! / truth).toBeLessThan(0.08);
+  });
+});
+
+describe('a transient that the amplifier took away', () => {
+  const circuit = { name: 'compensated', access_mohm: 10, membrane_mohm: 200, pf: 100 };
+  const rig = { ...rigs[0]!, pulses: 4 };
+  const read = (transient_taken: number, taken_tau: number) =>
+    readingsOf(circuit, { ...rig, transient_taken, taken_tau }, 3).readings;
+
+  it('gives no access and no capacitance, and the resistance in all', () => {
+    for (const [share, tau] of [
+      [0.7, 1.5],
+      [0.7, 0.6],
+      [1, 1],
+      [1, 1.3],
+      [1.1, 1],
+    ] as const) {
+      const readings = read(share, tau);
+      for (const id of ['access_resistance_mohm', 'cell_capacitance_pf']) expect(readings[id]!.value).toBeNull();
+      expect(readings['access_resistance_mohm']!.note).toMatch(/compensated|takes more away/);
+      const total = readings['membrane_resistance_mohm']!;
+      if (total.value !== null) expect(total.note).toContain('total');
+    }
   });
 });
