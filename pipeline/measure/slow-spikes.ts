@@ -240,13 +240,17 @@ function peakOf(spike: FoundSpike, { trace, pulses }: Around): Known {
   const during = pulses.find(({ on_s, off_s }) => on_s <= timeOf(trace, plain.at) && timeOf(trace, plain.at) <= off_s);
   const top = during?.u95_mv ? { ...plain, se: Math.hypot(plain.se, during.u95_mv / coverage95()) } : plain;
   const { before, after } = trace.guard;
-  const edge = trace.edges.find(({ index }) => top.at >= index - before - 1 && top.at <= index + after + 1);
+  const edge = trace.edges.find(({ index }) => top.at >= index - before - 1 && top.at <= index + after + 3);
   if (!edge) return top;
   // Under a stimulus edge the electrode's own settling may stand on the top: what is seen outside is as good a reading.
   let outside = Number.NEGATIVE_INFINITY;
   for (const i of [edge.index - before - 2, edge.index + after + 2])
     if (i > spike.base && i < trace.mv.length) outside = Math.max(outside, trace.mv[i]!);
-  return { ...top, se: Math.hypot(top.se, Number.isFinite(outside) ? top.value - outside : 0) };
+  // A top between the two may stand as much higher as the trace falls in as long a time after.
+  const zone = before + after + 3;
+  const falls = (trace.mv[edge.index + after + 2] ?? 0) - (trace.mv[edge.index + after + 2 + zone] ?? 0);
+  const doubt = Number.isFinite(outside) ? Math.hypot(top.value - outside, falls / 2) : 0;
+  return { ...top, se: Math.hypot(top.se, doubt) };
 }
 
 /** Peak of a slow spike, for `measureSpikes`. */

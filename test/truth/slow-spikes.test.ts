@@ -79,7 +79,7 @@ describe('slow spikes through electrode, filter, noise and sampling', () => {
   test('half-widths hold the truth about as often as they say', () => {
     for (const quantity of ['apd50_ms', 'apd90_ms', 'cycle_length_ms', 'diastolic_potential_mv', 'plateau_mv']) {
       const { held, withWidth } = score(all.filter((trial) => trial.quantity === quantity));
-      expect(withWidth).toBeGreaterThan(50);
+      expect(withWidth).toBeGreaterThan(40);
       expect([quantity, held! >= 0.85]).toEqual([quantity, true]);
     }
   });
