@@ -323,13 +323,15 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
       ...(after.electrode_ms === null ? [] : [`electrode charging with ${after.electrode_ms.toFixed(2)} ms left out`]),
     ].join('; '),
   });
-  // Large depolarizing steps and ends of steps may say more than small onsets.
-  const better =
-    !after.doubtful &&
-    single.value !== null &&
-    single.n! >= 3 &&
-    (single.u95 ?? Number.POSITIVE_INFINITY) < 0.7 * both.u95!;
-  return better ? single : both;
+  // Large depolarizing steps and ends of steps may say more than small onsets; the delays are common to all of them.
+  if (after.doubtful || single.value === null || single.n! < 3) return both;
+  const shared = combinedError([
+    { se: single.se ?? 0, ...(single.freedom === undefined ? {} : { freedom: single.freedom }) },
+    { se: after.lag_se * mohmPer },
+  ]);
+  const { u95: _, freedom: __, ...rest } = single;
+  const other = measured(single.value, { ...rest, ...shared });
+  return other.u95! < 0.7 * both.u95! ? other : both;
 }
 
 /**

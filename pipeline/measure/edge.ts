@@ -18,6 +18,8 @@ export interface EdgeValue {
   terms: number;
   /** Time constant of the electrode's own charging, where the response shows it. */
   electrode_ms: number | null;
+  /** The part of `se` that all edges of a cell share: what the delays of filter and electrode may do. */
+  lag_se: number;
   /** A fast part may be the electrode's or the cell's; half of it counts as uncertainty. */
   doubtful: boolean;
 }
@@ -90,9 +92,11 @@ function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null
     if (!seen(one)) return null;
     const { value, se } = valueAt(one, 0);
     const { amplitude, tau } = one.terms[0]!;
+    const lag_se = Math.abs(amplitude / tau) * delay_se_ms;
     return {
       mv: value,
-      se: Math.hypot(se, (amplitude / tau) * delay_se_ms),
+      se: Math.hypot(se, lag_se),
+      lag_se,
       freedom: one.freedom,
       rise: -amplitude,
       terms: 1,
@@ -107,6 +111,7 @@ function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null
   return {
     mv: line.intercept,
     se: Math.hypot(line.se_intercept, line.slope * delay_se_ms),
+    lag_se: Math.abs(line.slope * delay_se_ms),
     freedom: line.freedom,
     rise: line.slope * x.at(-1)!,
     terms: 0,
@@ -136,6 +141,7 @@ function ofTwo(fit: ExponentialSum, delay_se_ms: number): EdgeValue {
   return {
     mv: value,
     se: Math.hypot(se, slope * delay_se_ms, doubt),
+    lag_se: Math.abs(slope * delay_se_ms),
     freedom: fit.freedom,
     rise: -slow.amplitude - (electrodes ? 0 : fast.amplitude),
     terms: 2,

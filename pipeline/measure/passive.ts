@@ -423,7 +423,10 @@ function slowPush(input: PassiveInput, width_s: number, span_s: number): number 
   let fast = 0;
   for (let k = 1; k < grains.mv.length; k++) fast += (grains.mv[k]! - grains.mv[k - 1]!) ** 2;
   const white = ((fast / (2 * (grains.mv.length - 1))) * (grains.s[1]! - grains.s[0]!)) / width_s;
-  return Math.sqrt(Math.max(0, line.residual_sd ** 2 - 1.5 * white) * Math.log(Math.max(2, span_s / width_s)));
+  return Math.sqrt(
+    Math.max(0, line.residual_sd ** 2 - (1 + 4 / Math.sqrt(means.mv.length)) * white) *
+      Math.log(Math.max(2, span_s / width_s)),
+  );
 }
 
 /** How long after the end of a step a rebound is looked for, s. */
