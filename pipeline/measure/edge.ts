@@ -1,10 +1,4 @@
-import {
-  type ExponentialSum,
-  type ExponentialTerm,
-  exponentialSum,
-  tauError,
-  valueAt,
-} from '../signal/exponentials.ts';
+import { type ExponentialSum, type ExponentialTerm, exponentialSum, sumAt, tauError } from '../signal/exponentials.ts';
 import { serialLine } from '../signal/serial.ts';
 
 /** The response after an edge of the stimulus, carried back to the edge. */
@@ -90,7 +84,7 @@ function fitted(x: number[], y: number[], delay_se_ms: number): EdgeValue | null
     return seen(two) ? ofTwo(two, delay_se_ms) : null;
   if (one?.converged && looksLikeNoise(x, one.residuals)) {
     if (!seen(one)) return null;
-    const { value, se } = valueAt(one, 0);
+    const { value, se } = sumAt(one, 0);
     const { amplitude, tau } = one.terms[0]!;
     const lag_se = Math.abs(amplitude / tau) * delay_se_ms;
     return {
@@ -133,7 +127,7 @@ function isSecondTermReal(one: ExponentialSum | null, two: ExponentialSum): bool
 function ofTwo(fit: ExponentialSum, delay_se_ms: number): EdgeValue {
   const [slow, fast] = fit.terms as [ExponentialTerm, ExponentialTerm];
   const electrodes = fast.tau < electrodeLimit_ms;
-  const { value, se } = electrodes ? valueAt(fit, lateBy * fast.tau, 1) : valueAt(fit, 0);
+  const { value, se } = electrodes ? sumAt(fit, lateBy * fast.tau, 1) : sumAt(fit, 0);
   const slope = slow.amplitude / slow.tau + (electrodes ? 0 : fast.amplitude / fast.tau);
   const apart = Math.abs(Math.log(fast.tau / electrodeLimit_ms));
   const doubtful = apart < Math.log(doubtfulFactor) || apart < (2 * tauError(fit, 1)) / fast.tau;

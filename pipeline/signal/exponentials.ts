@@ -229,7 +229,7 @@ function designOf(x: ArrayLike<number>, p: Parameters): number[][] {
  * Value at an x, and its standard error, of the offset and the first `terms` terms (all where left out).
  * @returns an infinite standard error where the fit has no covariance
  */
-export function valueAt(fit: ExponentialSum, x: number, terms = fit.terms.length): { value: number; se: number } {
+export function sumAt(fit: ExponentialSum, x: number, terms = fit.terms.length): { value: number; se: number } {
   const gradient = new Array<number>(1 + 2 * fit.terms.length).fill(0);
   gradient[0] = 1;
   let value = fit.offset;

@@ -5,6 +5,7 @@ export * from './derivative.ts';
 export * from './envelope.ts';
 export * from './excursions.ts';
 export * from './exponential.ts';
+export * from './exponentials.ts';
 export * from './line.ts';
 export * from './parabola.ts';
 export * from './runs.ts';

@@ -11,7 +11,9 @@ import {
   butterworth,
   coverage95,
   derivativeVPerS,
+  type ExponentialTerm,
   exponentialFit,
+  exponentialSum,
   finiteStretches,
   linearFit,
   localMaxima,
@@ -133,6 +135,28 @@ describe.skipIf(!python)('kernels', () => {
       theirs.forEach((value, k) => {
         expect(mine[k]! / value).toBeCloseTo(1, 4);
       });
+    });
+  }
+
+  for (const [slow, fast] of [
+    [30, 3],
+    [12, 0.8],
+  ] as const) {
+    const next = normalNoise(41 + slow);
+    const x = Array.from({ length: 600 }, (_, i) => 0.5 + i * 0.2);
+    const y = x.map((t) => 100 - 80 * Math.exp(-t / slow) - 20 * Math.exp(-t / fast) + 0.1 * next());
+    const fitted = scipy<{ rss: number; best: number[]; se: number[] }>('two_exponentials', { x, y });
+    test(`two exponentials of ${slow} and ${fast} ms in noise: parameters and standard errors of curve_fit`, () => {
+      const ours = exponentialSum(x, y, { slow: [1, 400], fast: [0.1, 40] })!;
+      const { rss, best, se } = fitted();
+      expect(ours.rss / rss).toBeCloseTo(1, 6);
+      const [one, two] = ours.terms as [ExponentialTerm, ExponentialTerm];
+      const mine = [ours.offset, one.amplitude, Math.log(one.tau), two.amplitude, Math.log(two.tau)];
+      for (const [k, value] of mine.entries()) {
+        expect(Math.abs(value - best[k]!)).toBeLessThan(0.01 * se[k]!);
+        // Ours are scaled to the slow part of the residuals.
+        expect(Math.sqrt(ours.covariance[k]![k]! / ours.correlation) / se[k]!).toBeCloseTo(1, 3);
+      }
     });
   }
 

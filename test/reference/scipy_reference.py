@@ -99,6 +99,24 @@ def exponential(x, y):
     return {"best": best.tolist(), "se": np.sqrt(np.diag(covariance)).tolist()}
 
 
+def two_exponentials(x, y):
+    def model(t, offset, a, log_slow, b, log_fast):
+        return offset + a * np.exp(-t / np.exp(log_slow)) + b * np.exp(-t / np.exp(log_fast))
+
+    x, y = np.asarray(x), np.asarray(y)
+    span = x[-1] - x[0]
+    fits = []
+    for ratio in (4, 15, 60):
+        start = (y[-1], (y[0] - y[-1]) / 2, np.log(span / 5), (y[0] - y[-1]) / 2, np.log(span / 5 / ratio))
+        try:
+            best, covariance = optimize.curve_fit(model, x, y, p0=start, xtol=1e-14, ftol=1e-14, maxfev=20000)
+        except RuntimeError:
+            continue
+        fits.append((float(np.sum((y - model(x, *best)) ** 2)), best, covariance))
+    rss, best, covariance = min(fits, key=lambda fit: fit[0])
+    return {"rss": rss, "best": best.tolist(), "se": np.sqrt(np.diag(covariance)).tolist()}
+
+
 def line(x, y):
     fit = stats.linregress(x, y)
     return {
