@@ -1,3 +1,4 @@
+import { coverage95 } from '../signal/coverage.ts';
 import { linearFit } from '../signal/line.ts';
 import { mean, median } from '../signal/statistics.ts';
 import {
@@ -274,7 +275,10 @@ function over(
   const nearest = held.reduce((best, one) => (Math.abs(one.value - value) < Math.abs(best.value - value) ? one : best));
   return measured(value, {
     ...spreadOf(values),
-    ...(values.length > 1 ? { freedom: values.length - 1 } : widthOf(nearest.spike, id)),
+    ...pooledWidth(
+      values,
+      held.flatMap(({ spike }) => spike.u95?.[id] ?? []),
+    ),
     at: placeOfSpike(nearest.sweep.sweep, nearest.spike),
     ...(note ? { note } : {}),
   });
@@ -309,4 +313,18 @@ export function trainReadings(sweeps: readonly NumberedSweep[]): Readings {
         })
       : commonReason(sweeps, 'largest_instantaneous_rate_hz', 'not-this-clamp'),
   };
+}
+
+/** Standard error of a median over that of a mean, for normal values and many of them. */
+const medianOverMean = 1.2533;
+
+/**
+ * Half-width of a median over spikes: their spread over √n by Student's t, and in quadrature the middle one of their own
+ * half-widths, because filter and interpolation do to all of them alike.
+ */
+function pooledWidth(values: readonly number[], own: readonly number[]): Pick<Reading, 'u95'> {
+  const { n, sd } = spreadOf(values);
+  const shared = median(own);
+  if (sd === undefined || n === undefined) return shared === null ? {} : { u95: shared };
+  return { u95: Math.hypot((coverage95(n - 1) * medianOverMean * sd) / Math.sqrt(n), shared ?? 0) };
 }

@@ -27,6 +27,7 @@ export function qualityReadings(sweeps: readonly NumberedSweep[]): Readings {
         'baseline_sd_mv',
         'baseline_drift_mv_per_s',
         'noise_rms_mv',
+        'filter_corner_khz',
         'mains_hum_mv',
         'mains_hum_hz',
         'quantum_mv',

@@ -32,6 +32,7 @@ export function withDerived(spikes: readonly Spike[], known: KnownForSpikes): Sp
   return spikes.map((spike) => {
     const values = { ...spike.values };
     const why = { ...spike.why };
+    const u95 = { ...spike.u95 };
     const derive = (id: string, from: string, fact: number | null, formula: (fact: number, own: number) => number) => {
       const own = values[from] ?? null;
       const reason: AbsenceCode | null =
@@ -39,6 +40,8 @@ export function withDerived(spikes: readonly Spike[], known: KnownForSpikes): Sp
       if (reason === null) {
         values[id] = formula(fact!, own!);
         delete why[id];
+        // Differences carry the half-width of the measured number; products are scaled below.
+        if (u95[from] !== undefined) u95[id] = u95[from];
       } else {
         values[id] = null;
         why[id] = reason;
@@ -54,6 +57,11 @@ export function withDerived(spikes: readonly Spike[], known: KnownForSpikes): Sp
       known.capacitance_pf,
       (pf, heightMv) => (pf * heightMv * 1e-15) / elementaryChargeC / 1e6,
     );
-    return withIonic({ ...spike, values, why }, known);
+    const height = spike.values['spike_height_mv'];
+    for (const id of ['minimum_charge_pc', 'minimum_ions_millions'])
+      if (values[id] != null && u95[id] !== undefined && height && known.capacitance_pf)
+        u95[id] =
+          Math.abs(values[id]) * Math.hypot(u95[id] / height, (known.capacitance_u95_pf ?? 0) / known.capacitance_pf);
+    return withIonic({ ...spike, values, why, u95 }, known);
   });
 }

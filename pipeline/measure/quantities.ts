@@ -53,11 +53,26 @@ const density = { unit: 'pA/pF', ucum: 'pA/pF' } as const;
 const ionicUncertainty =
   'Half-widths of dV/dt times C, of C times dV/dt (not where C is stated) and of the mean injected current (1.96 standard errors), in squares; per pF, divided by C, with C’s own times I/C² in place of the second.';
 const apdUncertainty =
-  'Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
+  'Fast spikes: 1.96 times, in squares, 1.5 times the noise over the slope at the crossing and 0.3 samples at the rise. Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
 const pulseFit =
   'The fit: to the current from 50 ms before to 100 ms after every command step of 0.2 to 20 mV (at most 16 in a sweep), each pulse on a straight line of its own, least squares of ΔV·(g_ss·s(t) + g_tr·e(t) + C_p·h(t)) with s, e and h the answers of a four-pole Bessel low-pass (declared corner ± 10 %, undeclared: found) to a step, to exp(−t/τ) and to an impulse; t counts from the moment of the command, known to within a sample (mean 8 µs − 0.2 of the interval, SD 0.3 of it and 12 µs combined); C_p = 0 ± 2.5 pF is what is left of the pipette; a sine at the mains frequency is added where it stands out';
 const pulseError =
   '1.96 × the standard error: the fit is made at nine moments of the command across what is known of it, each weighted by its likelihood (Laplace); variance within (covariance of the fit, GUM 5.2, noise with its autocorrelation, 1.5 % of the peak for what filter and command may differ from the model while the edge passes, all × χ² over its freedom where above 1) plus variance among them. For the cell: t(0.975, n − 1)·√(SD²/n + what the sweeps’ errors have in common), the latter their mean square less SD². A half-width above half the number is not reported as a number';
+
+/** How the trace is read between its samples, for the formulas. */
+const between =
+  'V between samples is the band-limited interpolation of the recorded ones (sinc under a Kaiser window, 8 zero crossings, β = 8), or the local cubic by least squares (weights (1 − (d/h)²)² within h samples, h = 3·1.25^k up to half the rise or width) where the widest such cubic reads value and slope there as all narrower ones do, within 3 standard deviations of the noise in the difference';
+const placed =
+  '±u that holds 95 % of a normal error with the expected bias and standard deviation: noise (covariance of quiet stretches) through the weights of the samples that were used; 0.6 of what the next narrower window would change; what the filter is expected to have taken (restored − measured, by van Cittert’s restoration), known within 15 %, more of it by an electrode of 12 µs and by what restoring cannot reach (14 times the restored share of the rise); for potentials also hum and up to 0.2 mV of slow wander';
+/** How the filter is undone, for the formulas. */
+const restoration = (what: string): string =>
+  `${what} on V + (V − gV) + (V − gV) − g(V − gV), where g is the trace smoothed once more by the filter’s own gain without delay: a four-pole Bessel low-pass at the corner that is stated, or else seen in the noise`;
+const restorationSource =
+  'van Cittert 1931, Z Phys 69:298–308; Bessel low-pass: Thomson 1949, Proc IEE 96:487–490 (both from memory)';
+const correctedUncertainty =
+  'from noise through the restored trace’s weights, 15 % of the correction (with an estimated corner that of the corner twice besides), what restoring cannot reach (14 times the restored share of the rise), and an electrode of 12 µs (12 MΩ · 1 pF, common practice, no source) that no filter statement covers';
+const lossUncertainty =
+  '1.96 standard deviations: 15 % of the loss (with an estimated corner that of the corner twice besides), an electrode of 12 µs and half of the measured number’s noise';
 
 type Draft = Omit<Quantity, 'absolute_potential' | 'clamp'> & Partial<Pick<Quantity, 'absolute_potential' | 'clamp'>>;
 const list = (drafts: Draft[]): Quantity[] =>
@@ -74,9 +89,9 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     absolute_potential: true,
     definition: 'Potential at the last upward crossing of the dV/dt criterion before the steepest point of the rise.',
-    formula:
-      'V where dV/dt = 20 V/s, or the class’s own criterion (slow classes: 5 % of the spike’s maximum rise), interpolated between samples; where the stimulus edge alone exceeds the criterion, the crossing after the edge’s own response',
+    formula: `V where dV/dt = 20 V/s, or the class’s own criterion (slow classes: 5 % of the spike’s maximum rise); where the stimulus edge alone exceeds the criterion, the crossing after the edge’s own response. ${between}`,
     source: bean,
+    uncertainty: placed,
   },
   {
     id: 'threshold_at_s',
@@ -86,8 +101,10 @@ export const quantities: readonly Quantity[] = list([
     ...s,
     decimals: 5,
     definition: 'Time of threshold from the start of the sweep.',
-    formula: 'time of the crossing that gives the threshold',
+    formula:
+      'time of the crossing that gives the threshold, as recorded: later than the membrane’s by the delay of the filter (0.336/corner for a four-pole Bessel filter) and by the electrode’s lag',
     source: bean,
+    uncertainty: placed,
   },
   {
     id: 'peak_mv',
@@ -98,8 +115,9 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     absolute_potential: true,
     definition: 'Highest potential of the spike.',
-    formula: 'vertex of the parabola through the highest sample and its two neighbours',
+    formula: `V at the top, where dV/dt = 0 next to the highest sample. ${between}`,
     source: practice,
+    uncertainty: placed,
   },
   {
     id: 'peak_at_s',
@@ -109,8 +127,9 @@ export const quantities: readonly Quantity[] = list([
     ...s,
     decimals: 5,
     definition: 'Time of the peak from the start of the sweep.',
-    formula: 'abscissa of the same parabola’s vertex',
+    formula: 'time of that top, as recorded: delays of the filter and the electrode are not taken off',
     source: practice,
+    uncertainty: placed,
   },
   {
     id: 'overshoot_mv',
@@ -123,6 +142,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'How far the peak rises above 0 mV; negative where it stays below.',
     formula: 'V_peak − 0 mV',
     source: practice,
+    uncertainty: placed,
   },
   {
     id: 'spike_height_mv',
@@ -134,6 +154,8 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Height of the spike from threshold to peak.',
     formula: 'V_peak − V_thr',
     source: 'Ekins et al. 2020, eLife 9:e62373; Nagaeva et al. 2020, eLife',
+    uncertainty:
+      'of threshold and peak in quadrature; what the filter is expected to have taken of the height; hum as far as it changes from threshold to peak',
   },
   {
     id: 'height_from_rest_mv',
@@ -145,6 +167,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Height of the spike from the sweep’s baseline to its peak.',
     formula: 'V_peak − V_baseline',
     source: practice,
+    uncertainty: 'of the peak and of the baseline in quadrature',
   },
   {
     id: 'half_width_ms',
@@ -154,8 +177,10 @@ export const quantities: readonly Quantity[] = list([
     ...ms,
     decimals: 3,
     definition: 'Width of the spike at half its height above threshold.',
-    formula: 't_down − t_up at V_thr + H/2, each crossing interpolated',
+    formula: `t_down − t_up at V_thr + H/2. ${between}`,
     source: 'Ekins et al. 2020, eLife 9:e62373; Nagaeva et al. 2020, eLife',
+    uncertainty:
+      'of both crossings (noise over slope), of the level at half height through both slopes, and what the filter is expected to have added; combined as for the threshold',
   },
   {
     id: 'max_rise_v_per_s',
@@ -165,8 +190,9 @@ export const quantities: readonly Quantity[] = list([
     ...rise,
     decimals: 0,
     definition: 'Steepest rise between threshold and peak.',
-    formula: 'max dV/dt, central difference over two samples',
+    formula: `max dV/dt between threshold and peak. ${between} Not given with fewer than 3.5 samples from threshold to peak.`,
     source: practice,
+    uncertainty: placed,
   },
   {
     id: 'max_fall_v_per_s',
@@ -176,8 +202,9 @@ export const quantities: readonly Quantity[] = list([
     ...rise,
     decimals: 0,
     definition: 'Steepest fall after the peak, as a negative rate.',
-    formula: 'min dV/dt from the peak to the afterhyperpolarization minimum, without one to the return to threshold',
+    formula: `min dV/dt from the peak to the afterhyperpolarization minimum, without one to the return to threshold. ${between}`,
     source: practice,
+    uncertainty: placed,
   },
   {
     id: 'depolarization_ms',
@@ -189,6 +216,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Time from threshold to peak.',
     formula: 't_peak − t_thr',
     source: practice,
+    uncertainty: 'of threshold time and peak time in quadrature, and what the filter changes of their distance',
   },
   {
     id: 'repolarization_ms',
@@ -200,6 +228,8 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Time from the peak back to the threshold potential.',
     formula: 't(V = V_thr, falling) − t_peak',
     source: practice,
+    uncertainty:
+      'of peak time, of the return’s crossing and of the threshold’s level over the slope there in quadrature, and what the filter changes',
   },
   {
     id: 'ahp_minimum_mv',
@@ -211,8 +241,10 @@ export const quantities: readonly Quantity[] = list([
     absolute_potential: true,
     definition:
       'Lowest potential between the peak and the next threshold, the next stimulus edge or the end of the class’s window.',
-    formula: 'min V over that stretch',
+    formula:
+      'lowest point of the local cubic (weights (1 − (d/h)²)² within h samples of the place) about the lowest sample of that stretch; h the widest of 3·1.6^k, within the stretch, at most 330 samples and 20 ms, whose value all narrower ones have within 3 standard deviations of the noise in their difference',
     source: practice,
+    uncertainty: placed,
   },
   {
     id: 'ahp_below_threshold_mv',
@@ -224,6 +256,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Depth of the afterhyperpolarization below threshold.',
     formula: 'V_thr − V_ahp',
     source: 'Ekins et al. 2020, eLife 9:e62373; Nagaeva et al. 2020, eLife',
+    uncertainty: 'of threshold and minimum in quadrature; hum and wander as far as they change between them',
   },
   {
     id: 'cycle_length_ms',
@@ -237,7 +270,7 @@ export const quantities: readonly Quantity[] = list([
     formula: 't_peak(k+1) − t_peak(k); slow classes: t(dV/dt max)(k+1) − t(dV/dt max)(k)',
     source: practice,
     uncertainty:
-      'Slow classes: each time of steepest rise is uncertain by w/√12, w the stretch whose slope lies within two standard deviations of slope noise of the steepest (at least 0.3 samples); the two are added in squares, times 1.96. For the cell: Student’s t times SD/√n.',
+      'Both peak times in quadrature. Slow classes: each time of steepest rise is uncertain by w/√12, w the stretch whose slope lies within two standard deviations of slope noise of the steepest (at least 0.3 samples); the two are added in squares, times 1.96. For the cell: Student’s t times SD/√n.',
   },
   {
     id: 'upstroke_at_s',
@@ -361,6 +394,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'How far the peak stays below the sodium equilibrium potential of the stated solutions.',
     formula: 'E_Na − V_peak',
     source: 'Nernst equation; Hodgkin & Katz 1949, J Physiol 108:37–77',
+    uncertainty: 'that of the peak; what is uncertain of E_Na is weighed in judging',
   },
   {
     id: 'potassium_margin_mv',
@@ -373,6 +407,7 @@ export const quantities: readonly Quantity[] = list([
       'How far the afterhyperpolarization minimum stays above the potassium equilibrium potential of the stated solutions.',
     formula: 'V_ahp − E_K',
     source: 'Nernst equation; Hodgkin & Katz 1949, J Physiol 108:37–77',
+    uncertainty: 'that of the minimum; what is uncertain of E_K is weighed in judging',
   },
   {
     id: 'minimum_charge_pc',
@@ -385,6 +420,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'The least charge that can carry the spike: what the membrane capacitance needs for its height.',
     formula: 'C·H',
     source: 'Carter & Bean 2009, Neuron 64:898–909',
+    uncertainty: 'relative half-widths of height and, where it was measured, of the capacitance in quadrature',
   },
   {
     id: 'minimum_ions_millions',
@@ -397,6 +433,99 @@ export const quantities: readonly Quantity[] = list([
     definition: 'How many monovalent ions carry the least charge, in millions.',
     formula: 'C·H / e',
     source: 'Carter & Bean 2009, Neuron 64:898–909; elementary charge exact in the 2019 SI',
+    uncertainty: 'as for the least charge',
+  },
+  {
+    id: 'max_rise_corrected_v_per_s',
+    levels: ['spike', 'cell'],
+    label: 'Maximum rise without the filter',
+    symbol: 'dV/dt max₀',
+    ...rise,
+    decimals: 0,
+    definition:
+      'Steepest rise with the recorder’s filter undone, where that is sound: the filter is stated or seen in the noise, and took no more than a quarter of the rise.',
+    formula: restoration('max dV/dt'),
+    source: restorationSource,
+    uncertainty: correctedUncertainty,
+  },
+  {
+    id: 'peak_corrected_mv',
+    levels: ['spike', 'cell'],
+    label: 'Peak without the filter',
+    symbol: 'V_peak₀',
+    ...mv,
+    decimals: 1,
+    absolute_potential: true,
+    definition:
+      'Highest potential with the recorder’s filter undone, where the filter took no more than two fifths of the rise.',
+    formula: restoration('V_peak'),
+    source: restorationSource,
+    uncertainty: correctedUncertainty,
+  },
+  {
+    id: 'spike_height_corrected_mv',
+    levels: ['spike', 'cell'],
+    label: 'Spike height without the filter',
+    symbol: 'H₀',
+    ...mv,
+    decimals: 1,
+    definition:
+      'Height from threshold to peak with the recorder’s filter undone, where the filter took no more than two fifths of the rise.',
+    formula: restoration('V_peak − V_thr'),
+    source: restorationSource,
+    uncertainty: correctedUncertainty,
+  },
+  {
+    id: 'half_width_corrected_ms',
+    levels: ['spike', 'cell'],
+    label: 'Half-width without the filter',
+    symbol: 'w½₀',
+    ...ms,
+    decimals: 3,
+    definition:
+      'Width at half height with the recorder’s filter undone, where the filter took no more than two fifths of the rise.',
+    formula: restoration('t_down − t_up at half the height'),
+    source: restorationSource,
+    uncertainty: correctedUncertainty,
+  },
+  {
+    id: 'rise_lost_percent',
+    levels: ['spike', 'cell'],
+    label: 'Rise lost to the filter',
+    symbol: 'Δ(dV/dt max)',
+    unit: '%',
+    ucum: '%',
+    decimals: 1,
+    definition:
+      'Share of the maximum rise that the recorder’s filter is expected to have taken; a lower bound above 25 %, where the correction stops being sound.',
+    formula: '100·(1 − measured/restored maximum rise), restored as the corrected maximum rise is',
+    source: restorationSource,
+    uncertainty: lossUncertainty,
+  },
+  {
+    id: 'height_lost_mv',
+    levels: ['spike', 'cell'],
+    label: 'Height lost to the filter',
+    symbol: 'ΔH',
+    ...mv,
+    decimals: 2,
+    definition: 'How much lower the recorder’s filter is expected to have made the spike.',
+    formula: 'restored − measured spike height',
+    source: restorationSource,
+    uncertainty: lossUncertainty,
+  },
+  {
+    id: 'width_gained_percent',
+    levels: ['spike', 'cell'],
+    label: 'Width gained by the filter',
+    symbol: 'Δw½',
+    unit: '%',
+    ucum: '%',
+    decimals: 1,
+    definition: 'How much wider the recorder’s filter is expected to have made the spike at half height.',
+    formula: '100·(measured/restored half-width − 1)',
+    source: restorationSource,
+    uncertainty: lossUncertainty,
   },
   {
     id: 'peak_inward_current_pa',
@@ -815,6 +944,22 @@ export const quantities: readonly Quantity[] = list([
     uncertainty:
       '1.96·V_rms/√(4·B·T), B the bandwidth and T the time, with 1 % for the shape of the band; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
     source: practice,
+  },
+  {
+    id: 'filter_corner_khz',
+    levels: ['sweep', 'cell'],
+    label: 'Filter corner in the noise',
+    symbol: 'f_c',
+    unit: 'kHz',
+    ucum: 'kHz',
+    decimals: 1,
+    definition:
+      'Corner of the recorder’s low-pass filter as the spectrum of the noise in quiet stretches shows it; for the cell, the median.',
+    formula:
+      'corner of the four-pole Bessel low-pass for which filtered white noise over an unfiltered floor best explains the mean spectrum (Hann-windowed pieces of 128 samples, half overlapping) from 1 kHz to half the rate, folded lines included; only where it explains it and the roll-off lies below half the rate',
+    source: 'Welch 1967, IEEE Trans Audio Electroacoust 15:70–73; Whittle 1953, Ark Mat 2:423–434 (from memory)',
+    uncertainty:
+      'where twice the logarithm of the likelihood ratio reaches 3.84, the spread of neighbouring lines allowed for, and 5 % of the corner in quadrature',
   },
   {
     id: 'mains_hum_mv',

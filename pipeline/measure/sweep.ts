@@ -1,6 +1,7 @@
 import { countFinite } from '../signal/statistics.ts';
 import { pulseResponse } from './artefact.ts';
 import { envelopeOf, excerptOf } from './envelope.ts';
+import { filterCorner } from './filter.ts';
 import { isBlocked, measureFiring, measureSpontaneous } from './firing.ts';
 import { withoutHum } from './mains.ts';
 import {
@@ -14,6 +15,7 @@ import {
 import { clippedFraction, digitizerStep, hum, missingFraction, noise, sampleInterval } from './quality.ts';
 import { quantitiesOf } from './quantities.ts';
 import { absent, measured } from './reading.ts';
+import { type Errors, type SlowNoise, withHalfWidths } from './spike-numbers.ts';
 import { fastNoise } from './spike-trace.ts';
 import { measureSpikes } from './spikes.ts';
 import { type CommandReading, type Level, readCommand } from './stimulus.ts';
@@ -110,7 +112,11 @@ function currentClampSweep(
   const lines = hum(voltage, quiet, context.mains_hz);
   const passive = freedOfHum({ ...found.passive, quantum_mv: quantum.value }, quiet, lines['mains_hum_hz']!);
   const baseline = measureBaseline(passive);
-  const spikes = found.passive.spikes.map((spike) => withHeightFromRest(spike, baseline['baseline_mv']!.value));
+  const level = baseline['baseline_mv']!;
+  const riding = slowNoise(lines, baseline, found.noise_mv);
+  const spikes = found.passive.spikes.map((spike, index) =>
+    withHalfWidths(withHeightFromRest(spike, level.value), found.errors[index]!, riding, level.u95 ?? null),
+  );
   const bridgeStep = measureBridgeStep(passive);
   const blocked = isBlocked(spikes, stimulus, voltage, context.slow);
   const trains = measureTrains(spikes, stimulus, voltage, blocked, context.slow);
@@ -135,6 +141,7 @@ function currentClampSweep(
     access_resistance_mohm: accessFromBridge(input.bridge_mohm, bridgeStep, stimulus),
     noise_rms_mv: noise(voltage, quiet, context.filter_khz),
     ...lines,
+    filter_corner_khz: filterCorner(voltage, quiet, quantum.value),
     clipped_fraction: clippedFraction(voltage),
     missing_fraction: missingFraction(voltage),
     quantum_mv: quantum,
@@ -168,7 +175,7 @@ function spikesAndBaseline(
   stimulus: Stimulus,
   levels: readonly Level[],
   context: MeasureContext,
-): { passive: PassiveInput & { spikes: Spike[] }; remarks: string[] } {
+): { passive: PassiveInput & { spikes: Spike[] }; errors: Errors[]; noise_mv: number; remarks: string[] } {
   const { slow, mains_hz, filter_khz } = context;
   const input = <S extends readonly Spike[]>(spikes: S): PassiveInput & { spikes: S } => ({
     voltage,
@@ -181,7 +188,8 @@ function spikesAndBaseline(
   });
   const first = measureBaseline(input([]))['baseline_mv']!.value;
   const found = measureSpikes({ voltage, current, stimulus, baseline_mv: first, context });
-  return { passive: input(found.spikes), remarks: found.remarks };
+  const { errors, noise_mv, remarks } = found;
+  return { passive: input(found.spikes), errors, noise_mv, remarks };
 }
 
 /**
@@ -202,6 +210,18 @@ function freedOfHum(passive: PassiveInput, quiet: readonly Stretch[], hum_hz: Re
     : [];
   const parts = [...quiet, ...late];
   return { ...passive, voltage: withoutHum(voltage, parts, tried, hum_hz.value !== null), recorded: voltage };
+}
+
+/** Wander of the baseline up to this counts as the recorder's, mV; what is more is the cell's own (common practice, no source). */
+const mostWander_mv = 0.2;
+
+/** Hum and wander that ride on a spike's potentials. Hum that does not stand out has no frequency and is noise. */
+function slowNoise(humming: Readings, baseline: Readings, noise_mv: number): SlowNoise {
+  const hum_hz = humming['mains_hum_hz']?.value ?? null;
+  const hum_mv = hum_hz === null ? 0 : (humming['mains_hum_mv']?.value ?? 0);
+  const spread = baseline['baseline_sd_mv']?.value ?? 0;
+  const rest = Math.sqrt(Math.max(0, spread ** 2 - hum_mv ** 2 / 2 - noise_mv ** 2));
+  return { hum_mv, hum_hz: hum_hz ?? 0, wander_mv: Math.min(mostWander_mv, rest) };
 }
 
 function withHeightFromRest(spike: Spike, baseline: number | null): Spike {

@@ -1,3 +1,4 @@
+export * from './band-limited.ts';
 export * from './butterworth.ts';
 export * from './coverage.ts';
 export * from './crossing.ts';
@@ -8,6 +9,7 @@ export * from './exponential.ts';
 export * from './exponentials.ts';
 export * from './line.ts';
 export * from './parabola.ts';
+export * from './restoration.ts';
 export * from './runs.ts';
 export * from './serial.ts';
 export * from './sine.ts';

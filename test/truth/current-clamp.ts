@@ -322,7 +322,8 @@ type Put = (quantity: string, truth: number, value: number | null, u95?: number 
 
 function* spikeTrials(clean: Clean, sweep: NumberedSweep, cell: Cell, under: Conditions, put: Put): Generator<Trial> {
   const truths = spikesOf(clean.membrane_mv, fineHz, clean.edges_s);
-  const delay = besselDelay_s(under.filter_khz * 1000);
+  // Times are the recording's own: later than the membrane's by the delay of the filter and by the electrode's lag.
+  const delay = besselDelay_s(under.filter_khz * 1000) + cell.electrode.access_mohm * cell.electrode.pipette_pf * 1e-6;
   yield put('spikes', truths.length, sweep.spikes.length, 0);
   const taken = new Set<number>();
   for (const truth of truths) {
@@ -364,6 +365,7 @@ function* spikeTrials(clean: Clean, sweep: NumberedSweep, cell: Cell, under: Con
     ])
       if (trial) yield trial;
     const corrected: [string, number | null][] = [
+      ['peak_corrected_mv', truth.peak_mv + offset],
       ['max_rise_corrected_v_per_s', truth.max_rise_v_per_s],
       ['spike_height_corrected_mv', truth.rise_from_edge ? null : truth.spike_height_mv],
       ['half_width_corrected_ms', truth.rise_from_edge ? null : truth.half_width_ms],

@@ -23,7 +23,7 @@ const slopeAt = (mv: Float64Array, i: number, hz: number): number => ((mv[i + 1]
 
 /**
  * Spikes of a clean trace.
- * @param edges_s stimulus edges; samples within `guard_s` after one are the electrode's and no part of a threshold
+ * @param edges_s stimulus edges; a threshold within 60 µs after one is the stimulus's and not the cell's
  */
 export function spikesOf(
   mv: Float64Array,
@@ -35,6 +35,7 @@ export function spikesOf(
 ): TrueSpike[] {
   const spans = excursions(mv, prominence_mv);
   const found: TrueSpike[] = [];
+  const guard = Math.round(0.00006 * hz);
   const edges = edges_s.map((edge) => Math.round(edge * hz));
   const thresholds = spans.map(({ base, peak }) => {
     let steepest = base + 1;
@@ -45,7 +46,8 @@ export function spikesOf(
     let edge = -1;
     while (i > base + 1 && slopeAt(mv, i - 1, hz) >= criterion_v_per_s) {
       i--;
-      if (edges.some((at) => at >= i - 1 && at <= i + 1)) edge = i;
+      // The electrode brings the current in within about five of its time constants.
+      if (edges.some((at) => at >= i - guard && at <= i + 1)) edge = i;
     }
     if (edge >= 0) {
       // Driven past the criterion by the stimulus: from the lowest dV/dt since the edge, by the criterion.
@@ -67,6 +69,12 @@ export function spikesOf(
       return mv[i]! + (x - i) * ((mv[i + 1] ?? mv[i]!) - mv[i]!);
     };
     const thresholdMv = at(threshold.at);
+    // Vertex of the parabola through the top three samples: the grid alone is 5 µs coarse.
+    const [left, top, right] = [mv[peak - 1]!, mv[peak]!, mv[peak + 1] ?? mv[peak]!];
+    const bend = left - 2 * top + right;
+    const shift = bend < 0 ? (0.5 * (left - right)) / bend : 0;
+    const peakAt = peak + shift;
+    const peakMv = top - 0.25 * (left - right) * shift;
     const nextThreshold = thresholds[k + 1]?.at ?? mv.length - 1;
     const nextEdge = edges.find((edge) => edge > peak) ?? Number.POSITIVE_INFINITY;
     const down = (level: number): number | null => {
@@ -79,7 +87,7 @@ export function spikesOf(
       while (mv[i]! > level) i--;
       return i + (level - mv[i]!) / (mv[i + 1]! - mv[i]!);
     };
-    const half = thresholdMv + (mv[peak]! - thresholdMv) / 2;
+    const half = thresholdMv + (peakMv - thresholdMv) / 2;
     const fallAt = down(half);
     const back = down(thresholdMv);
     const end = Math.floor(Math.min(nextThreshold, nextEdge - 1, peak + (window_ms / 1000) * hz, mv.length - 1));
@@ -91,14 +99,14 @@ export function spikesOf(
     found.push({
       threshold_mv: thresholdMv,
       threshold_at_s: threshold.at / hz,
-      peak_mv: mv[peak]!,
-      peak_at_s: peak / hz,
-      spike_height_mv: mv[peak]! - thresholdMv,
+      peak_mv: peakMv,
+      peak_at_s: peakAt / hz,
+      spike_height_mv: peakMv - thresholdMv,
       half_width_ms: fallAt === null ? null : ((fallAt - up(half)) * 1000) / hz,
       max_rise_v_per_s: threshold.rise,
       max_fall_v_per_s: steepestFall,
-      depolarization_ms: ((peak - threshold.at) * 1000) / hz,
-      repolarization_ms: back === null ? null : ((back - peak) * 1000) / hz,
+      depolarization_ms: ((peakAt - threshold.at) * 1000) / hz,
+      repolarization_ms: back === null ? null : ((back - peakAt) * 1000) / hz,
       // Where the lowest is the last sample looked at, the trace is still falling.
       ahp_minimum_mv: lowest >= end - 1 ? null : mv[lowest]!,
       rise_from_edge: threshold.edge,
