@@ -323,8 +323,9 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
       ...(after.electrode_ms === null ? [] : [`electrode charging with ${after.electrode_ms.toFixed(2)} ms left out`]),
     ].join('; '),
   });
-  // Large depolarizing steps and ends of steps may say more than small onsets; the delays are common to all of them.
-  if (after.doubtful || single.value === null || single.n! < 3) return both;
+  // Large depolarizing steps and ends of steps may say more than small onsets; the delays are common to all of them. A
+  // second exponential that the average shows is lost in the noise of single sweeps, and they would be wrong by it.
+  if (after.terms > 1 || single.value === null || single.n! < 3) return both;
   const shared = combinedError([
     { se: single.se ?? 0, ...(single.freedom === undefined ? {} : { freedom: single.freedom }) },
     { se: after.lag_se * mohmPer },

@@ -412,7 +412,8 @@ function extremeOf(voltage: Signal, stretches: readonly Stretch[], width_s: numb
 
 /**
  * How far slow noise may push an extreme of running means over `span_s`, which the two halves share and so do not see:
- * its standard deviation in the baseline, times √ln of how many independent means the span holds.
+ * 1.25 times its standard deviation in the baseline, times √ln of how many independent means the span holds (the largest
+ * of N normal numbers lies at √(2 ln N) of theirs).
  */
 function slowPush(input: PassiveInput, width_s: number, span_s: number): number {
   const { stretches } = baselineStretches(input);
@@ -423,9 +424,12 @@ function slowPush(input: PassiveInput, width_s: number, span_s: number): number 
   let fast = 0;
   for (let k = 1; k < grains.mv.length; k++) fast += (grains.mv[k]! - grains.mv[k - 1]!) ** 2;
   const white = ((fast / (2 * (grains.mv.length - 1))) * (grains.s[1]! - grains.s[0]!)) / width_s;
-  return Math.sqrt(
-    Math.max(0, line.residual_sd ** 2 - (1 + 4 / Math.sqrt(means.mv.length)) * white) *
-      Math.log(Math.max(2, span_s / width_s)),
+  return (
+    1.25 *
+    Math.sqrt(
+      Math.max(0, line.residual_sd ** 2 - (1 + 4 / Math.sqrt(means.mv.length)) * white) *
+        Math.log(Math.max(2, span_s / width_s)),
+    )
   );
 }
 

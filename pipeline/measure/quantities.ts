@@ -872,7 +872,7 @@ export const quantities: readonly Quantity[] = list([
       'lowest running mean over a fiftieth of the step (1 to 10 ms), from 1 ms after onset, − V_base: the samples are dealt into two halves by turns of 0.5 ms, each half is read where the other is lowest, and the two readings are averaged',
     source: 'common practice; the two halves: ours',
     uncertainty:
-      'As for the steady deflection, with the serial standard error of that mean, and the push that slow noise may give an extreme: its standard deviation in the baseline times √ln(length of the step / width).',
+      'As for the steady deflection, with the serial standard error of that mean, and the push that slow noise may give an extreme: 1.25 times its standard deviation in the baseline times √ln(length of the step / width).',
   },
   {
     id: 'rebound_mv',
@@ -1377,7 +1377,7 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     definition: 'Resistance that the stated bridge left over: positive when under-compensated.',
     formula:
-      'averaged onset of the hyperpolarizing steps without spikes, ΔV/I with weights I², carried back to the edge as the instantaneous step is, over 300, 100, 30 or 12 ms; where no response was kept, or where it is known a third better, slope through the origin of the instantaneous step on the stimulus',
+      'averaged onset of the hyperpolarizing steps without spikes, ΔV/I with weights I², carried back to the edge as the instantaneous step is, over 300, 100, 30 or 12 ms; where no response was kept, or where one exponential does and it is known a third better, slope through the origin of the instantaneous step on the stimulus',
     source: circuit,
     uncertainty:
       'Student’s t times the standard error at the edge from the fit’s covariance (scaled to the slow part of its residuals), in squares with those of the level before and of the delay of filter and electrode (5 % of 0.336/corner, 80 µs where the corner is not known, and 24 µs: twice 1 pF times 12 MΩ); a fast part within a factor of 1.2, or two standard errors, of 0.6 ms, which may be the electrode’s or the cell’s, counts with half its size. From single sweeps: their own and their scatter, pooled.',
