@@ -266,6 +266,24 @@ const conditions: CheckEntry[] = [
     level: 'cell',
   },
   {
+    id: 'filter-as-stated',
+    quantity: 'filter_corner_khz',
+    ground: 'conditions',
+    asks: 'Is the filter the one that is stated?',
+    limit:
+      'the corner that the spectrum of the noise shows, at most 1.33 times the stated one and at least 1/1.33 of it; not asked where the noise shows no corner',
+    causes: [
+      'filter stated wrongly',
+      'filter changed after the statement was written',
+      'traces filtered again on export',
+      'a second filter in the recorder',
+    ],
+    bench:
+      'Read the corner off the amplifier, or record its noise with the electrode in the bath and look at the spectrum.',
+    source: `${practice}; spectrum: Welch 1967, IEEE Trans Audio Electroacoust 15:70–73 (from memory)`,
+    level: 'cell',
+  },
+  {
     id: 'access-resistance',
     quantity: 'access_resistance_mohm',
     ground: 'conditions',

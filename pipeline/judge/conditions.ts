@@ -23,6 +23,8 @@ export const conditionLimits = {
   /** Least product of filter corner (kHz) and rise time (height over measured maximum rise, ms). */
   filterTimesRise: 0.66,
   filterOverRate: 0.4,
+  /** How many times the stated corner, or which part of it, the noise may show. */
+  filterMismatch: 1.33,
   accessMohm: 35,
   accessChangePercent: 30,
   accessErrorMv: 10,
@@ -187,6 +189,7 @@ const filterPassesRise: CellQuestion = (setting) => {
   const corner = setting.circumstances.filter_khz;
   if (corner === null) return unheld(subject, 'the filter corner is not known', ['filter_khz']);
   const high = (corner * height.value) / limits.filterTimesRise;
+  const cost = costOfFilter(setting);
   return hold(rise.reading, {
     quantity: 'max_rise_v_per_s',
     subject,
@@ -196,6 +199,7 @@ const filterPassesRise: CellQuestion = (setting) => {
     // Corners are nominal, to about a tenth; the limit is as well known as the height it is taken from.
     uncertainty: high * Math.hypot(0.1, measuredUncertainty(height) / height.value),
     withoutOwn: true,
+    ...(cost ? { remark: cost } : {}),
   });
 };
 
@@ -214,6 +218,32 @@ const filterBelowSampling: CellQuestion = (setting) => {
     meaning: 'what the filter lets through folds back into the trace as noise',
     // Corners are nominal: about a tenth.
     uncertainty: 0.1 * high,
+  });
+};
+
+/** What the filter is expected to have taken, in words; empty where it is not known. */
+function costOfFilter(setting: Setting): string {
+  const of = (id: string): number | null => firstSpike(setting, id).reading?.value ?? null;
+  const [rise, height, width] = [of('rise_lost_percent'), of('height_lost_mv'), of('width_gained_percent')];
+  if (rise === null || height === null || width === null) return '';
+  const least = rise > 25 ? 'at least ' : '';
+  return `The filter is expected to have taken ${least}${amount('rise_lost_percent', rise)} of the rise and ${amount('height_lost_mv', height)} of the height, and to have added ${amount('width_gained_percent', width)} to the width.`;
+}
+
+const filterAsStated: CellQuestion = (setting) => {
+  const reading = cellReading(setting, 'filter_corner_khz');
+  const corner = setting.circumstances.filter_khz;
+  const subject = 'the filter corner that the noise shows';
+  if (corner === null || !hasVoltage(setting)) return null;
+  // Noise that shows no corner contradicts none.
+  if (!isPresent(reading)) return unheldReading(subject, reading);
+  return hold(reading, {
+    quantity: 'filter_corner_khz',
+    subject,
+    low: corner / limits.filterMismatch,
+    high: corner * limits.filterMismatch,
+    name: `a third away from the stated ${corner} kHz`,
+    meaning: 'the stated filter is not the one the trace went through, and what is said of its cost is wrong',
   });
 };
 
@@ -467,6 +497,7 @@ export const conditionQuestions: Record<string, CellQuestion> = {
   'rise-samples': riseSamples,
   'filter-passes-rise': filterPassesRise,
   'filter-below-sampling': filterBelowSampling,
+  'filter-as-stated': filterAsStated,
   'access-resistance': accessResistance,
   'access-change': accessChange,
   'access-times-current': accessTimesCurrent,

@@ -31,6 +31,17 @@ const ladders: [string, string, [number, string][], Made?][] = [
       [1130, 'outside'],
     ],
   ],
+  // The stated corner is 8 kHz; a third above and below, 10.64 and 6.02 kHz.
+  [
+    'filter-as-stated',
+    'filter_corner_khz',
+    [
+      [5, 'outside'],
+      [8, 'within'],
+      [10, 'within'],
+      [12, 'outside'],
+    ],
+  ],
   // 400 µs/8 = 50 µs ± 10 %.
   [
     'filter-below-sampling',

@@ -45,6 +45,7 @@ const failing: Record<string, Made> = {
   'rise-samples': { readings: { rise_samples: read(3) } },
   'filter-passes-rise': { circumstances: { filter_khz: 1 } },
   'filter-below-sampling': { readings: { sample_interval_us: read(100) } },
+  'filter-as-stated': { readings: { filter_corner_khz: read(3) } },
   'access-resistance': { readings: { access_resistance_mohm: read(48) } },
   'access-change': { readings: { access_change_percent: read(70) } },
   'access-times-current': {
