@@ -242,7 +242,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'Lowest potential between the peak and the next threshold, the next stimulus edge or the end of the class’s window.',
     formula:
-      'lowest point of the local cubic (weights (1 − (d/h)²)² within h samples of the place) about the lowest sample of that stretch; h the widest of 3·1.6^k, within the stretch, at most 330 samples and 20 ms, whose value all narrower ones have within 3 standard deviations of the noise in their difference',
+      'lowest point of the local cubic (weights (1 − (d/h)²)² within h samples of the place) about the lowest sample of that stretch; h the widest of 3·1.8^k, within the stretch, at most 330 samples and 20 ms, whose value all narrower ones have within 3 standard deviations of the noise in their difference',
     source: practice,
     uncertainty: placed,
   },

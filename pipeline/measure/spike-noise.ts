@@ -4,7 +4,7 @@ import { type SpikeTrace, unreadable } from './spike-trace.ts';
 import type { Stretch } from './stretches.ts';
 
 export interface FastNoise {
-  /** Covariance, mV², at lags of 0, 1, 2 … samples up to about 1 ms. */
+  /** Covariance, mV², at lags of 0, 1, 2 … samples up to about 0.5 ms. */
   covariance: Float64Array;
   /** Samples it was read from; 0 where only the trace's third differences speak. */
   n: number;
@@ -84,7 +84,7 @@ export function fastNoiseOf(trace: SpikeTrace, samples: Float64Array, quiet: rea
   const own = pieces.filter((piece) => power(piece) <= 4 * usual!);
   if (own.length < 2) return { covariance: Float64Array.of(trace.noiseMv ** 2), n: 0 };
   const length = own[0]!.length;
-  const lags = Math.min(Math.max(4, Math.round(0.001 * trace.rateHz)), Math.floor(length / 4));
+  const lags = Math.min(Math.max(4, Math.round(0.0005 * trace.rateHz)), Math.floor(length / 4));
   const covariance = new Float64Array(lags + 1);
   for (let lag = 0; lag <= lags; lag++) {
     let sum = 0;

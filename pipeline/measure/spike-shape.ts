@@ -128,15 +128,24 @@ function root(f: (x: number) => number, near: number, reach: number, step: numbe
   }
   if (!bracket) return null;
   let [a, fa, b, fb] = bracket;
-  // The bracket is a small share of the kernel, where the function is nearly straight: false position, halved in turn.
-  for (let k = 0; k < 12 && b - a > 1e-5; k++) {
-    const x = k % 2 === 0 && fb > fa ? a - (fa * (b - a)) / (fb - fa) : (a + b) / 2;
+  // False position, the end that stays halved (Illinois): the function is nearly straight within the bracket.
+  const enough = 1e-7 * (fb - fa);
+  let stayed = 0;
+  for (let k = 0; k < 20; k++) {
+    const x = fb > fa ? a - (fa * (b - a)) / (fb - fa) : (a + b) / 2;
     const fx = g(x);
-    if (Math.abs(fx) < 1e-12) return x;
-    if (fx >= 0) [b, fb] = [x, fx];
-    else [a, fa] = [x, fx];
+    if (Math.abs(fx) <= enough) return x;
+    if (fx > 0) {
+      [b, fb] = [x, fx];
+      if (stayed === -1) fa /= 2;
+      stayed = -1;
+    } else {
+      [a, fa] = [x, fx];
+      if (stayed === 1) fb /= 2;
+      stayed = 1;
+    }
   }
-  return fb > fa ? a - (fa * (b - a)) / (fb - fa) : (a + b) / 2;
+  return (a + b) / 2;
 }
 
 /** Step of the search, samples: an eighth of what the smoother answers over. */
@@ -256,12 +265,12 @@ export function fineSlope(trace: Trace, near: number, rises: boolean, widest: nu
 
 /** Widest window of the local cubic for a minimum, samples on either side, and the windows that are tried. */
 const widestMinimum = 330;
-const forMinimum: Smoother[] = Array.from({ length: 11 }, (_, k) => ({ half: 3 * 1.6 ** k }));
+const forMinimum: Smoother[] = Array.from({ length: 9 }, (_, k) => ({ half: 3 * 1.8 ** k }));
 
 function bottomAt(trace: Trace, near: number, by: Smoother): One | null {
-  const step = spanOf(by) / 6;
+  const step = spanOf(by) / 4;
   let [at, lowest] = [near, Number.POSITIVE_INFINITY];
-  for (let k = -6; k <= 6; k++) {
+  for (let k = -4; k <= 4; k++) {
     const value = potentialAt(trace, near + k * step, by);
     if (value < lowest) [at, lowest] = [near + k * step, value];
   }

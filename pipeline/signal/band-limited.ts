@@ -105,66 +105,62 @@ export function localCubic(position: number, half: number, first: number, last: 
   const to = Math.min(last, Math.floor(position + half));
   const n = to - from + 1;
   if (n < 5) return null;
-  const moments = new Float64Array(7);
+  // Columns of the inverse of the normal equations that belong to the cubic's value and slope at the place.
+  let [m0, m1, m2, m3, m4, m5, m6] = [0, 0, 0, 0, 0, 0, 0];
   for (let j = 0; j < n; j++) {
     const d = (from + j - position) / half;
-    let term = (1 - d * d) ** 2;
-    for (let k = 0; k < 7; k++) {
-      moments[k]! += term;
-      term *= d;
-    }
+    const d2 = d * d;
+    const w = (1 - d2) * (1 - d2);
+    const wd = w * d;
+    const d4 = d2 * d2;
+    m0 += w;
+    m1 += wd;
+    m2 += w * d2;
+    m3 += wd * d2;
+    m4 += w * d4;
+    m5 += wd * d4;
+    m6 += w * d2 * d4;
   }
-  // Columns of the inverse of the normal equations that belong to the cubic's value and slope at the place.
-  const solved = solveTwo(moments);
+  const solved = solveTwo(Float64Array.of(m0, m1, m2, m3, m4, m5, m6));
   if (!solved) return null;
-  const [a, b] = solved;
+  const [v0, v1, v2, v3, s0, s1, s2, s3] = solved as unknown as readonly number[];
   const value = new Float64Array(n);
   const slope = new Float64Array(n);
   for (let j = 0; j < n; j++) {
     const d = (from + j - position) / half;
-    const weight = (1 - d * d) ** 2;
-    value[j] = weight * (a[0]! + d * (a[1]! + d * (a[2]! + d * a[3]!)));
-    slope[j] = (weight * (b[0]! + d * (b[1]! + d * (b[2]! + d * b[3]!)))) / half;
+    const weight = (1 - d * d) * (1 - d * d);
+    value[j] = weight * (v0! + d * (v1! + d * (v2! + d * v3!)));
+    slope[j] = (weight * (s0! + d * (s1! + d * (s2! + d * s3!)))) / half;
   }
   return { value: { first: from, weights: value }, slope: { first: from, weights: slope } };
 }
 
 /**
- * First two columns of the inverse of the 4 × 4 matrix of moments, by Cholesky's decomposition, written out: a spike
- * asks for some hundreds of them. Null where the matrix is not positive definite.
+ * First two columns of the inverse of the 4 × 4 matrix of moments, value's four and slope's four one after the other, by
+ * Gauss–Jordan elimination without pivots, which a positive definite matrix does not need; null where it is not.
  */
-function solveTwo(m: Float64Array): [Float64Array, Float64Array] | null {
-  const [m0, m1, m2, m3, m4, m5, m6] = m as unknown as [number, number, number, number, number, number, number];
-  const least = 1e-12 * m0;
-  if (!(m0 > 0)) return null;
-  const l00 = Math.sqrt(m0);
-  const l10 = m1 / l00;
-  const l20 = m2 / l00;
-  const l30 = m3 / l00;
-  const d1 = m2 - l10 * l10;
-  if (!(d1 > least)) return null;
-  const l11 = Math.sqrt(d1);
-  const l21 = (m3 - l20 * l10) / l11;
-  const l31 = (m4 - l30 * l10) / l11;
-  const d2 = m4 - l20 * l20 - l21 * l21;
-  if (!(d2 > least)) return null;
-  const l22 = Math.sqrt(d2);
-  const l32 = (m5 - l30 * l20 - l31 * l21) / l22;
-  const d3 = m6 - l30 * l30 - l31 * l31 - l32 * l32;
-  if (!(d3 > least)) return null;
-  const l33 = Math.sqrt(d3);
-  const column = (b0: number, b1: number): Float64Array => {
-    const y0 = b0 / l00;
-    const y1 = (b1 - l10 * y0) / l11;
-    const y2 = (-l20 * y0 - l21 * y1) / l22;
-    const y3 = (-l30 * y0 - l31 * y1 - l32 * y2) / l33;
-    const x3 = y3 / l33;
-    const x2 = (y2 - l32 * x3) / l22;
-    const x1 = (y1 - l21 * x2 - l31 * x3) / l11;
-    const x0 = (y0 - l10 * x1 - l20 * x2 - l30 * x3) / l00;
-    return Float64Array.of(x0, x1, x2, x3);
-  };
-  return [column(1, 0), column(0, 1)];
+function solveTwo(moments: Float64Array): Float64Array | null {
+  const rows = new Float64Array(24);
+  for (let r = 0; r < 4; r++) {
+    for (let c = 0; c < 4; c++) rows[6 * r + c] = moments[r + c]!;
+    if (r < 2) rows[6 * r + 4 + r] = 1;
+  }
+  for (let c = 0; c < 4; c++) {
+    const pivot = rows[7 * c]!;
+    if (!(pivot > 1e-12)) return null;
+    for (let k = c; k < 6; k++) rows[6 * c + k]! /= pivot;
+    for (let r = 0; r < 4; r++) {
+      if (r === c) continue;
+      const share = rows[6 * r + c]!;
+      for (let k = c; k < 6; k++) rows[6 * r + k]! -= share * rows[6 * c + k]!;
+    }
+  }
+  const out = new Float64Array(8);
+  for (let r = 0; r < 4; r++) {
+    out[r] = rows[6 * r + 4]!;
+    out[4 + r] = rows[6 * r + 5]!;
+  }
+  return out;
 }
 
 /** Weighted sum of samples. */
