@@ -72,7 +72,7 @@ const restorationSource =
 const correctedUncertainty =
   'from noise through the restored trace’s weights, 15 % of the correction (with an estimated corner that of the corner twice besides), what restoring cannot reach (14 times the restored share of the rise), and an electrode of 12 µs (12 MΩ · 1 pF, common practice, no source) that no filter statement covers';
 const lossUncertainty =
-  '1.96 standard deviations: 15 % of the loss (with an estimated corner that of the corner twice besides), an electrode of 12 µs and half of the measured number’s noise';
+  'as for the threshold, of what was restored: expected to be short by what an electrode of 12 µs takes and restoring cannot reach, known within 15 % (with an estimated corner that of the corner twice besides), and half of the measured number’s noise';
 
 type Draft = Omit<Quantity, 'absolute_potential' | 'clamp'> & Partial<Pick<Quantity, 'absolute_potential' | 'clamp'>>;
 const list = (drafts: Draft[]): Quantity[] =>
