@@ -8,8 +8,8 @@ import {
   type Point,
   placeOf,
   pointsOf,
-  spreadOf,
   stepPa,
+  uncertaintyOver,
 } from './cell-numbers.ts';
 import { averaged, responseOf, timeConstants } from './cell-onset.ts';
 import { backToEdge } from './edge.ts';
@@ -461,11 +461,17 @@ function accessChange(points: readonly Point[], least: number): Reading {
   const before = median(first!)!;
   const after = median(last!)!;
   if (!(before > 0)) return absent('unresolved');
-  const error = (part: readonly Point[]): number =>
-    spreadOf(part.map((point) => point.value)).se ?? part[0]!.reading.se ?? 0;
+  const error = (part: readonly Point[]): { se: number; freedom?: number } => {
+    const { se, freedom } = uncertaintyOver(
+      part.map((point) => point.value),
+      part.map(({ reading }) => ownError(reading)),
+    );
+    return { se: se ?? 0, ...(freedom === undefined ? {} : { freedom }) };
+  };
+  const both = combinedError([error(points.slice(0, tenth)), error(points.slice(-tenth))]);
   return measured((100 * (after - before)) / before, {
     n: points.length,
-    se: (100 * Math.hypot(error(points.slice(0, tenth)), error(points.slice(-tenth)))) / before,
+    ...(both.se > 0 ? { ...both, se: (100 * both.se) / before } : {}),
     at: placeOf(points.at(-1)!),
   });
 }

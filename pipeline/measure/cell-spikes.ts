@@ -12,6 +12,7 @@ import {
   stepLength_s,
   stepPa,
   stimulusReason,
+  uncertaintyOver,
 } from './cell-numbers.ts';
 import { spikesDuring } from './firing.ts';
 import { ionicIds } from './ionic.ts';
@@ -62,7 +63,7 @@ export function firingReadings(sweeps: readonly NumberedSweep[], fi: readonly Ra
   return {
     spikes: sweeps.length === 0 ? absent('not-this-clamp') : measured(total, { n: sweeps.length }),
     rheobase_pa: rheobase,
-    rate_gain_hz_per_na: first ? gain(fi, stepPa(first)!) : absent(whyNone),
+    rate_gain_hz_per_na: first ? gain(fi, stepPa(first)!, stepLength_s(first)) : absent(whyNone),
     max_rate_hz: largestRate(sweeps, whyNone),
     first_spike_latency_ms: first ? latencyAt(first) : absent(whyNone),
     spontaneous_rate_hz: spontaneousRate(sweeps, own),
@@ -88,13 +89,14 @@ function rheobaseOf(sweeps: readonly NumberedSweep[], firing: readonly NumberedS
     n: tried.length,
     // The true one lies anywhere between the last step that failed and this one.
     se: (value - below) / Math.sqrt(12),
+    u95: 0.95 * (value - below),
     at: { sweep: first.sweep, from_s: first.stimulus.onset_s!, to_s: first.stimulus.end_s! },
     note: `${below > 0 ? `${Number(below.toPrecision(4))} pA did not fire it` : 'the smallest step tried'}${brief}`,
   });
 }
 
 /** Slope from rheobase to half the largest rate, repeats averaged; the next point is taken in where two are too few. */
-function gain(fi: readonly RatePoint[], rheobase: number): Reading {
+function gain(fi: readonly RatePoint[], rheobase: number, length_s: number): Reading {
   const rounded = (pa: number): number => Number(pa.toPrecision(6));
   const levels = [...Map.groupBy(fi, (point) => rounded(point.pa))]
     .map(([pa, points]) => ({ pa, hz: mean(points.map((point) => point.hz))!, sweep: points[0]!.sweep }))
@@ -108,9 +110,15 @@ function gain(fi: readonly RatePoint[], rheobase: number): Reading {
     chosen.map((one) => one.hz),
   );
   if (!fit) return absent('too-few-points');
+  // A count over a step of T is a rate to within half of 1/T either way, whatever the line's scatter shows.
+  const middle = mean(chosen.map((one) => one.pa))!;
+  const squares = chosen.reduce((sum, one) => sum + (one.pa - middle) ** 2, 0);
+  const counted = 1 / (length_s * Math.sqrt(12 * squares));
+  const scattered = fit.se_slope ?? 0;
+  const se = scattered > counted ? { se: scattered * 1000, freedom: fit.n - 2 } : { se: counted * 1000 };
   return measured(fit.slope * 1000, {
     n: fit.n,
-    ...(fit.se_slope === null ? {} : { se: fit.se_slope * 1000 }),
+    ...se,
     at: { sweep: chosen.at(-1)!.sweep },
     note: `from ${chosen[0]!.pa.toFixed(0)} to ${chosen.at(-1)!.pa.toFixed(0)} pA`,
   });
@@ -131,7 +139,11 @@ function largestRate(sweeps: readonly NumberedSweep[], whyNone: AbsenceCode): Re
 function latencyAt(sweep: NumberedSweep): Reading {
   const reading = sweep.readings['first_spike_latency_ms'];
   if (!reading || reading.value === null) return absent(reading?.why ?? 'unresolved');
-  return measured(reading.value, { n: 1, at: placeOf({ sweep, reading }) });
+  return measured(reading.value, {
+    n: 1,
+    ...(reading.u95 === undefined ? {} : { u95: reading.u95 }),
+    at: placeOf({ sweep, reading }),
+  });
 }
 
 function spontaneousRate(sweeps: readonly NumberedSweep[], own: ReturnType<typeof ownFiring>): Reading {
@@ -148,7 +160,13 @@ function diastolic(sweeps: readonly NumberedSweep[], own: ReturnType<typeof ownF
   const value = median(own.minima);
   if (value === null) return absent('too-few-spikes');
   const where = sweeps.find((sweep) => (sweep.spontaneous?.minima_mv.length ?? 0) > 0);
-  return measured(value, { ...spreadOf(own.minima), ...(where ? { at: { sweep: where.sweep } } : {}) });
+  return measured(value, {
+    ...uncertaintyOver(
+      own.minima,
+      own.minima.map(() => null),
+    ),
+    ...(where ? { at: { sweep: where.sweep } } : {}),
+  });
 }
 
 export interface Reference {

@@ -221,6 +221,7 @@ function rundown(firsts: readonly First[]): Reading {
   return measured(slope * percent, {
     n: within.length,
     se: Math.abs((residual / Math.sqrt(squares)) * percent),
+    freedom,
     at: { sweep: within.at(-1)!.one.sweep.sweep },
   });
 }
@@ -232,5 +233,8 @@ function slopeOnStimulus(firsts: readonly First[]): Reading {
     firsts.map((one) => one.height),
   );
   if (!fit) return absent('too-few-points');
-  return measured(fit.slope * 1000, { n: fit.n, ...(fit.se_slope === null ? {} : { se: fit.se_slope * 1000 }) });
+  return measured(fit.slope * 1000, {
+    n: fit.n,
+    ...(fit.se_slope === null ? {} : { se: fit.se_slope * 1000, freedom: fit.n - 2 }),
+  });
 }

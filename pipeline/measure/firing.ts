@@ -1,11 +1,14 @@
 import { mean, standardDeviation } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
-import { indexAt, timeAt } from './stretches.ts';
+import { filterDelayMs, indexAt, timeAt } from './stretches.ts';
 import type { MeasureContext, Reading, Readings, Signal, Spike, Stimulus, SweepMeasure } from './types.ts';
 
 const peakOf = (spike: Spike): number => spike.values['peak_at_s'] ?? Number.NaN;
 /** When a spike fired: a slow one by its steepest rise, for its top is flat. */
 const firedAt = (spike: Spike): number => spike.values['upstroke_at_s'] ?? peakOf(spike);
+/** 95 % half-width of that time, s; null where it is not known. */
+const firedWithin = (spike: Spike): number | null =>
+  spike.u95?.[spike.values['upstroke_at_s'] == null ? 'peak_at_s' : 'upstroke_at_s'] ?? null;
 const startOf = (spike: Spike): number => spike.values['threshold_at_s'] ?? peakOf(spike);
 
 /** Stimuli shorter than this have no rate, s: one spike would already count as tens of hertz. */
@@ -23,13 +26,18 @@ export function spikesDuring(spikes: readonly Spike[], stimulus: Stimulus): Spik
 }
 
 /** Rate, latency and the three measures of intervals of a current-clamp sweep. */
-export function measureFiring(spikes: readonly Spike[], stimulus: Stimulus, voltage: Signal): Readings {
-  const during = spikesDuring(spikes, stimulus);
+export function measureFiring(
+  spikes: readonly Spike[],
+  stimulus: Stimulus,
+  voltage: Signal,
+  filterKhz: number | null = null,
+): Readings {
+  const during = spikesDuring(spikes, stimulus).filter((spike) => Number.isFinite(firedAt(spike)));
   return {
     spikes: measured(spikes.length),
-    mean_rate_hz: meanRate(during, stimulus, voltage),
-    first_spike_latency_ms: latency(during, stimulus),
-    ...measureIntervals(during.map(firedAt).filter(Number.isFinite)),
+    mean_rate_hz: meanRate(spikesDuring(spikes, stimulus), stimulus, voltage),
+    first_spike_latency_ms: latency(spikesDuring(spikes, stimulus), stimulus, voltage, filterKhz),
+    ...measureIntervals(during.map(firedAt), during.map(firedWithin)),
   };
 }
 
@@ -42,13 +50,17 @@ function meanRate(during: readonly Spike[], stimulus: Stimulus, voltage: Signal)
   return measured(during.length / (to_s - from_s), { n: during.length, at: { from_s, to_s }, ...note });
 }
 
-function latency(during: readonly Spike[], stimulus: Stimulus): Reading {
+/** Its half-width: that of the threshold's time, half a sample of the stimulus edge, and the filter's delay, which only the potential has. */
+function latency(during: readonly Spike[], stimulus: Stimulus, voltage: Signal, filterKhz: number | null): Reading {
   if (stimulus.onset_s === null) return absent('no-stimulus');
   const first = during[0];
   if (!first) return absent('no-spikes');
   const threshold = first.values['threshold_at_s'] ?? null;
   if (threshold === null) return absent(first.why['threshold_at_s'] ?? 'unresolved');
+  const own = first.u95?.['threshold_at_s'];
+  const edge_ms = 500 / voltage.rate_hz;
   return measured((threshold - stimulus.onset_s) * 1000, {
+    ...(own === undefined ? {} : { u95: Math.hypot(own * 1000, edge_ms, filterDelayMs(filterKhz)) }),
     at: { spike: first.spike, from_s: stimulus.onset_s, to_s: threshold },
   });
 }
@@ -56,26 +68,62 @@ function latency(during: readonly Spike[], stimulus: Stimulus): Reading {
 /**
  * Coefficient of variation (sample SD), local variation and mean relative lengthening of the intervals.
  * @param times_s peak times in order. Three spikes, hence two intervals, are the least for each of them
+ * @param widths_s 95 % half-widths of those times; with all of them known, each measure gets the half-width that they
+ * carry into it (first-order propagation, JCGM 100:2008, 5.1.2)
  * @see Shinomoto, Shima & Tanji 2003, Neural Comput 15:2823–2842 for Lv
  */
-export function measureIntervals(times_s: readonly number[]): Readings {
-  const intervals = times_s.slice(1).map((time, k) => time - times_s[k]!);
-  const ids = ['interval_cv', 'interval_lv', 'interval_adaptation'];
-  if (intervals.length < 2) {
+export function measureIntervals(times_s: readonly number[], widths_s: readonly (number | null)[] = []): Readings {
+  if (times_s.length < 3) {
     const why = absent(times_s.length === 0 ? 'no-spikes' : 'too-few-spikes');
-    return Object.fromEntries(ids.map((id) => [id, why]));
+    return Object.fromEntries(Object.keys(intervalMeasures).map((id) => [id, why]));
   }
-  const n = intervals.length;
-  const lengthening = intervals.slice(1).map((own, k) => (own - intervals[k]!) / (own + intervals[k]!));
+  const n = times_s.length - 1;
+  const lengthening = lengthenings(intervalsOf(times_s));
   const spread = standardDeviation(lengthening);
-  return {
-    interval_cv: measured(standardDeviation(intervals)! / mean(intervals)!, { n }),
-    interval_lv: measured((3 / (n - 1)) * lengthening.reduce((sum, value) => sum + value * value, 0), { n }),
-    interval_adaptation: measured(mean(lengthening)!, {
-      n: lengthening.length,
-      ...(spread === null ? {} : { sd: spread, se: spread / Math.sqrt(lengthening.length) }),
-    }),
+  const more: Record<string, Omit<Reading, 'value' | 'why'>> = {
+    interval_cv: { n },
+    interval_lv: { n },
+    interval_adaptation: { n: lengthening.length, ...(spread === null ? {} : { sd: spread }) },
   };
+  return Object.fromEntries(
+    Object.entries(intervalMeasures).map(([id, measure]) => [
+      id,
+      measured(measure(times_s), { ...more[id], ...carried(measure, times_s, widths_s) }),
+    ]),
+  );
+}
+
+const intervalsOf = (times: readonly number[]): number[] => times.slice(1).map((time, k) => time - times[k]!);
+const lengthenings = (intervals: readonly number[]): number[] =>
+  intervals.slice(1).map((own, k) => (own - intervals[k]!) / (own + intervals[k]!));
+
+const intervalMeasures: Record<string, (times: readonly number[]) => number> = {
+  interval_cv: (times) => standardDeviation(intervalsOf(times))! / mean(intervalsOf(times))!,
+  interval_lv: (times) => 3 * mean(lengthenings(intervalsOf(times)).map((value) => value * value))!,
+  interval_adaptation: (times) => mean(lengthenings(intervalsOf(times)))!,
+};
+
+/**
+ * What the half-widths of the times carry into a measure of them. A time moves two intervals and so only the terms
+ * around it, but a few spikes are as quickly done by moving each time by its own half-width.
+ */
+function carried(
+  measure: (times: readonly number[]) => number,
+  times: readonly number[],
+  widths: readonly (number | null)[],
+): Pick<Reading, 'u95'> {
+  if (widths.length !== times.length || widths.includes(null)) return {};
+  const moved = times.slice();
+  let squares = 0;
+  for (const [k, width] of widths.entries()) {
+    const time = times[k]!;
+    moved[k] = time + width!;
+    const later = measure(moved);
+    moved[k] = time - width!;
+    squares += ((later - measure(moved)) / 2) ** 2;
+    moved[k] = time;
+  }
+  return { u95: Math.sqrt(squares) };
 }
 
 /** Height of the last spike against the first, below which firing died away and did not merely pause. */

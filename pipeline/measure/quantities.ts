@@ -733,6 +733,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 2,
     definition: 'Time from stimulus onset to the first spike’s threshold; for the cell, at rheobase.',
     formula: 't_thr(1) − t_onset',
+    uncertainty:
+      '√(u² + (Δt/2)² + d²): u the half-width of the threshold’s time, Δt the sampling interval (where within it the stimulus began), d the delay of the stated filter, 0.336/f_c, which the potential has and a copied command has not',
     source: practice,
   },
   {
@@ -744,6 +746,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 3,
     definition: 'Coefficient of variation of the interspike intervals during the stimulus.',
     formula: 'SD(I) / mean(I), sample SD',
+    uncertainty:
+      'the half-widths u of the spike times carried through: √Σ((CV(t_k + u) − CV(t_k − u))/2)² over the spikes',
     source: practice,
   },
   {
@@ -755,6 +759,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 3,
     definition: 'Local variation of the interspike intervals: 0 regular, 1 for a Poisson process.',
     formula: '3/(n−1) · Σ ((I_k − I_{k+1})/(I_k + I_{k+1}))²',
+    uncertainty:
+      'the half-widths u of the spike times carried through: √Σ((Lv(t_k + u) − Lv(t_k − u))/2)² over the spikes',
     source: 'Shinomoto, Shima & Tanji 2003, Neural Comput 15:2823–2842',
   },
   {
@@ -766,6 +772,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 3,
     definition: 'Mean relative lengthening from each interspike interval to the next.',
     formula: 'mean of (I_{k+1} − I_k)/(I_{k+1} + I_k)',
+    uncertainty:
+      'the half-widths u of the spike times carried through: √Σ((A(t_k + u) − A(t_k − u))/2)² over the spikes',
     source: practice,
   },
   {
@@ -829,6 +837,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Time from stimulus onset to the last spike of a step that drives the cell into depolarization block.',
     formula:
       't_peak(last spike of the step) − t_onset, where the potential then stays above the first threshold (or within 15 mV of it, the spikes having shrunk below 60 %) for the rest of the step, at least a quarter of it',
+    uncertainty: '√(u² + (Δt/2)²): u the half-width of the peak’s time, Δt the sampling interval',
     source: practice,
   },
   {
@@ -841,6 +850,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'Time from the end of a step that blocked firing to the next spike of at least 80 % of the step’s first spike’s height.',
     formula: 't_peak − t_end',
+    uncertainty: '√(u² + (Δt/2)²): u the half-width of the peak’s time, Δt the sampling interval',
     source: practice,
   },
   {
@@ -1064,6 +1074,8 @@ export const quantities: readonly Quantity[] = list([
     clamp: 'both',
     definition: 'Change of the access resistance from the first to the last tenth of the recording.',
     formula: '100·(R_last − R_first)/R_first, medians',
+    uncertainty:
+      'Student’s t times 100·√(u_first² + u_last²)/R_first; u of each median from the scatter of its sweeps and their own uncertainties, see noise',
     source: practice,
   },
   {
@@ -1181,6 +1193,7 @@ export const quantities: readonly Quantity[] = list([
     absolute_potential: true,
     definition: 'Most negative potential between the spikes of a cell that fires by itself; median over cycles.',
     formula: 'median of the minima between peaks',
+    uncertainty: 'Student’s t times √(1 + (π/2 − 1)(1 − 2/n))·s/√n, s the spread of the n lowest potentials',
     source: practice,
   },
   {
@@ -1306,6 +1319,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 0,
     definition: 'Smallest step that makes the cell fire.',
     formula: 'min I_stim over steps with a spike',
+    uncertainty:
+      '0.95 of the distance to the largest step below it that did not fire the cell, or to 0: the true one lies between the two',
     source: practice,
   },
   {
@@ -1318,6 +1333,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 0,
     definition: 'Slope of the mean rate on current from rheobase to half the largest rate.',
     formula: 'least-squares slope',
+    uncertainty:
+      'Student’s t times the line’s standard error from its residuals, or 1.96/(T·√(12·Σ(I − mean I)²)) where that is more: a count over a step of T tells the rate to within 1/T',
     source: practice,
   },
   {
@@ -1340,6 +1357,7 @@ export const quantities: readonly Quantity[] = list([
     decimals: 2,
     definition: 'Spikes outside any stimulus over the time outside any stimulus, for cells that fire by themselves.',
     formula: 'n / t',
+    uncertainty: '1.96·√n/t (counts of independent events; a regular cell is known better)',
     source: practice,
   },
   {
@@ -1408,6 +1426,8 @@ export const quantities: readonly Quantity[] = list([
     decimals: 2,
     definition: 'Change of the first spike’s height per 100 spikes fired, at matched stimulus; negative when it falls.',
     formula: 'least-squares slope of H on spikes fired before, pooled within stimulus, ÷ mean H · 100 · 100',
+    uncertainty:
+      'Student’s t times the slope’s standard error from the residuals, degrees of freedom: spikes − groups of matched steps − 1',
     source: 'ours',
   },
   {
@@ -1501,6 +1521,7 @@ export const quantities: readonly Quantity[] = list([
     decimals: 1,
     definition: 'Slope of the first spike’s height on the stimulus current; descriptive.',
     formula: 'least-squares slope',
+    uncertainty: 'Student’s t times the line’s standard error from its residuals',
     source: 'ours',
   },
   {

@@ -123,7 +123,7 @@ function currentClampSweep(
   const readings: Readings = {
     ...stimulusReadings({ ...command, stimulus }, current, bias),
     ...baseline,
-    ...measureFiring(spikes, stimulus, voltage),
+    ...measureFiring(spikes, stimulus, voltage, context.filter_khz),
     ...trains,
     pulse_response_mohm: pulseResponse(voltage, stimulus, current, spikes, fastNoise(voltage.samples, voltage.rate_hz)),
     spikelets: context.slow

@@ -73,7 +73,7 @@ export function measureTrains(
     largest_instantaneous_rate_hz: largestRate(times, voltage),
     doublets: count((group) => group.count === 2),
     bursts: count((group) => group.count > 2),
-    ...blockReadings(spikes, times, stimulus, blocked),
+    ...blockReadings(spikes, times, stimulus, blocked, voltage.rate_hz),
   };
 }
 
@@ -97,8 +97,14 @@ function blockReadings(
   times: readonly number[],
   stimulus: Stimulus,
   blocked: boolean,
+  rateHz: number,
 ): Readings {
   const { onset_s, end_s } = stimulus;
+  // The peak's own half-width and half a sample of the stimulus edge.
+  const width = (spike: Spike): Pick<Reading, 'u95'> => {
+    const own = spike.u95?.['peak_at_s'];
+    return own === undefined ? {} : { u95: 1000 * Math.hypot(own, 0.5 / rateHz) };
+  };
   if (!blocked || onset_s === null || end_s === null)
     return { block_onset_ms: absent('not-blocked'), block_recovery_ms: absent('not-blocked') };
   const last = times.findLastIndex((time) => time < end_s);
@@ -107,12 +113,16 @@ function blockReadings(
   const back = spikes.findIndex((spike, k) => times[k]! > end_s && height(spike) >= recovered * full);
   return {
     block_onset_ms: measured((times[last]! - onset_s) * 1000, {
+      ...width(spikes[last]!),
       at: { spike: last, from_s: times[last]!, to_s: end_s },
     }),
     block_recovery_ms:
       back < 0
         ? absent('no-spikes', { note: 'no spike of 80 % of the first one’s height after the step' })
-        : measured((times[back]! - end_s) * 1000, { at: { spike: back, from_s: end_s, to_s: times[back]! } }),
+        : measured((times[back]! - end_s) * 1000, {
+            ...width(spikes[back]!),
+            at: { spike: back, from_s: end_s, to_s: times[back]! },
+          }),
   };
 }
 

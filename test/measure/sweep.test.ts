@@ -3,6 +3,7 @@ import { measureIntervals } from '../../pipeline/measure/firing.ts';
 import { quantitiesOf } from '../../pipeline/measure/quantities.ts';
 import { measureSweep } from '../../pipeline/measure/sweep.ts';
 import type { Signal, SweepInput, SweepMeasure } from '../../pipeline/measure/types.ts';
+import { standardDeviation } from '../../pipeline/signal/statistics.ts';
 import { hodgkinHuxley, pospischil, simulate } from '../helpers/models.ts';
 import { addSpike, heart, input, neuron, normalNoise, numberIn, passiveSweep, signalOf } from './made.ts';
 
@@ -105,6 +106,24 @@ describe('firing', () => {
     expect(numberIn(readings, 'interval_adaptation')).toBeCloseTo(0.1111111111, 9);
     expect(measureIntervals([])['interval_cv']!.why).toBe('no-spikes');
     expect(measureIntervals([1, 2])['interval_lv']!.why).toBe('too-few-spikes');
+  });
+
+  it('carries the half-widths of the times into the measures of intervals', () => {
+    const times = [0.011, 0.024, 0.041, 0.059, 0.083, 0.104, 0.131, 0.15];
+    const sd = 0.0002;
+    const ids = ['interval_cv', 'interval_lv', 'interval_adaptation'];
+    const stated = measureIntervals(
+      times,
+      times.map(() => 1.96 * sd),
+    );
+    const next = normalNoise(11);
+    const seen = Array.from({ length: 2000 }, () => measureIntervals(times.map((time) => time + sd * next())));
+    for (const id of ids) {
+      const spread = standardDeviation(seen.map((readings) => numberIn(readings, id)))!;
+      expect(stated[id]!.u95! / (1.96 * spread)).toBeGreaterThan(0.9);
+      expect(stated[id]!.u95! / (1.96 * spread)).toBeLessThan(1.1);
+    }
+    expect(measureIntervals(times)['interval_cv']).not.toHaveProperty('u95');
   });
 
   it('counts spikes of the step for the rate and all for the sweep', () => {
