@@ -1,3 +1,4 @@
+import { coverage95 } from '../signal/coverage.ts';
 import { lineErrorAt, type SerialLine, serialLine, serialMean } from '../signal/serial.ts';
 import { countFinite, mean, median, standardDeviation } from '../signal/statistics.ts';
 import { backToEdge, type EdgeValue } from './edge.ts';
@@ -180,8 +181,10 @@ const resolvedFrom = 3;
 
 /**
  * The line that the baseline follows under the step. Where the potential comes back to it afterwards, the line through
- * the levels before and after; otherwise the slope before, continued, a tenth of it taken as uncertain. A slope below
- * three times its standard error counts as none.
+ * the levels before and after (a slope below three times its standard error counts as none); otherwise the slope
+ * before, continued, a tenth of it taken as uncertain. Slow noise has a slope over any short stretch and none beyond it:
+ * the slope before is continued only where it exceeds twice its 95 % half-width and the level after the step, if there
+ * is one, lies nearer to the line than to the level before.
  */
 function driftUnder(input: PassiveInput, step: Step): Drift {
   const { voltage, stimulus, spikes, slow } = input;
@@ -205,8 +208,9 @@ function driftUnder(input: PassiveInput, step: Step): Drift {
     const alike = (one: SerialLine): boolean => Math.abs(one.slope - slope) <= 2.5 * Math.hypot(one.se_slope!, se);
     if (alike(before) && alike(after))
       return Math.abs(slope) > resolvedFrom * se ? { slope, se, from_s: before.mean_x } : none;
+    if (Math.abs(before.slope - slope) > Math.abs(slope)) return none;
   }
-  if (!(Math.abs(before.slope) > resolvedFrom * before.se_slope)) return none;
+  if (!(Math.abs(before.slope) > 2 * coverage95(before.freedom) * before.se_slope)) return none;
   return { slope: before.slope, se: Math.hypot(before.se_slope, 0.1 * before.slope), from_s: before.mean_x };
 }
 

@@ -863,7 +863,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'Potential late in the step relative to baseline, spikes left out where at least half of the window is free of them.',
     formula:
-      'mean V of the last tenth of the step (at most 50 ms, ending 5 ms before its end) − V_base; where the baseline drifts by more than three standard errors, its line is taken off instead of its level: through the levels before the step and after it where the potential comes back to it, else the slope before',
+      'mean V of the last tenth of the step (at most 50 ms, ending 5 ms before its end) − V_base; where the baseline drifts, its line is taken off instead of its level: through the levels before the step and after it where the potential comes back to it and they differ by more than three standard errors, else the slope before, where that exceeds twice its 95 % half-width and the level after the step lies nearer to that line than to V_base',
     source: 'Nagaeva et al. 2020, eLife (last 50 ms); window: ours',
     uncertainty:
       'Student’s t times, in squares, the serial standard errors of both levels, that of the drift times the distance (a slope known from before only: a tenth of it besides), and the digitizer’s rounding.',

@@ -156,3 +156,38 @@ describe('uncertainties', () => {
     expect(combinedError([{ se: 3 }, { se: 4 }])).toEqual({ se: 5 });
   });
 });
+
+describe('slow noise about a step', () => {
+  // Slow noise of correlation times 10 ms, 100 ms and 1 s (0.08 mV together) has a slope of some mV/s over any 100 ms and
+  // none over a second; after the step the potential is still coming back. Truth: −5 mV of a passive cell.
+  const wander = (seed: number, pa: number, drift_mv_per_s = 0) => {
+    const next = normalNoise(seed);
+    const taus = [0.01, 0.1, 1];
+    const level = taus.map(() => (0.08 / Math.sqrt(3)) * next());
+    const response = (t: number): number => {
+      if (t < 0.1) return 0;
+      const on = 1 - Math.exp(-(t - 0.1) / 0.016);
+      return t < 0.6 ? -5 * on : -5 * Math.exp(-(t - 0.6) / 0.016) - 0.8 * Math.exp(-(t - 0.6) / 0.1);
+    };
+    const voltage = signalOf(0.8, 20000, (t) => {
+      taus.forEach((tau, k) => {
+        const decay = Math.exp(-1 / (20000 * tau));
+        level[k] = decay * level[k]! + (0.08 / Math.sqrt(3)) * Math.sqrt(1 - decay * decay) * next();
+      });
+      return -70 + response(t) + drift_mv_per_s * (t - 0.05) + level[0]! + level[1]! + level[2]! + 0.05 * next();
+    });
+    const current = signalOf(0.8, 20000, (t) => (t >= 0.1 - 1e-9 && t < 0.6 - 1e-9 ? pa : 0));
+    return measureSweep(input({ voltage, current }), neuron).readings;
+  };
+  const errors = Array.from({ length: 24 }, (_, seed) => numberIn(wander(seed, -50), 'steady_deflection_mv') + 5);
+  it('is not taken for a drift that goes on under it', () => {
+    // Levels half a second apart differ by about 0.1 mV (0.08 mV · √2, the slowest part less): no error above 4 of that.
+    expect(Math.max(...errors.map(Math.abs))).toBeLessThan(0.4);
+    expect(Math.sqrt(errors.reduce((sum, one) => sum + one * one, 0) / errors.length)).toBeLessThan(0.15);
+  });
+  it('and does not hide a drift that does', () => {
+    const drifting = wander(3, -50, 20);
+    expect(Math.abs(numberIn(drifting, 'steady_deflection_mv') + 5)).toBeLessThan(1.5);
+    expect(drifting['steady_deflection_mv']!.note).toContain('drift');
+  });
+});
