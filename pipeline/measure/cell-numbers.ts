@@ -45,7 +45,9 @@ export const spreadOf = (values: readonly number[]): Pick<Reading, 'n' | 'sd' | 
  * Standard uncertainty of the mean or median of numbers that carry uncertainties of their own. Their scatter holds those
  * uncertainties already; where it does not exceed them by more than chance would (95 %), the two are pooled, which keeps
  * two or three sweeps from giving an absurd interval; where it does, the scatter alone speaks, with n − 1 degrees of
- * freedom. The median of many normal numbers is √(π/2) times less certain than their mean.
+ * freedom and two more for uncertainties of their own: the factor of 12.7 for two sweeps stands for scatter a hundred
+ * times larger than seen, which those uncertainties deny. (Where they are too small by a factor of 2 to 3, leaving the
+ * two out would hold the truth in a hundredth of the cases more.) The median of many normal numbers is √(π/2) times less certain than their mean.
  * @param each standard uncertainty of each number; null where it has none
  */
 export function uncertaintyOver(
@@ -60,7 +62,7 @@ export function uncertaintyOver(
   const sd = standardDeviation(values)!;
   const medianCosts = of === 'mean' || n < 3 ? 1 : Math.sqrt(1 + (Math.PI / 2 - 1) * (1 - 2 / n));
   if (within === null || sd * sd > within * chiSquareShare(n - 1))
-    return { n, sd, se: (medianCosts * sd) / Math.sqrt(n), freedom: n - 1 };
+    return { n, sd, se: (medianCosts * sd) / Math.sqrt(n), freedom: n - 1 + (within === null ? 0 : scatterFreedom) };
   const freedom = n - 1 + ownFreedom;
   const pooled = ((n - 1) * sd * sd + ownFreedom * within) / freedom;
   return { n, sd, se: medianCosts * Math.sqrt(pooled / n), freedom };
@@ -68,6 +70,8 @@ export function uncertaintyOver(
 
 /** What the numbers' own uncertainties count for against their scatter: as much as so many degrees of freedom. */
 const ownFreedom = 10;
+/** And to the size of a scatter that exceeds them. */
+export const scatterFreedom = 2;
 
 /** 95 % point of χ² over its degrees of freedom (Wilson & Hilferty 1931, PNAS 17:684–688; from memory). */
 const chiSquareShare = (freedom: number): number =>

@@ -8,6 +8,7 @@ import {
   type Point,
   placeOf,
   pointsOf,
+  scatterFreedom,
   stepPa,
   uncertaintyOver,
 } from './cell-numbers.ts';
@@ -100,7 +101,7 @@ const ownFreedom = 10;
 
 /**
  * Uncertainty of a slope from the points' own and from their scatter (both variances of the slope): pooled where the
- * scatter is no more than chance makes of the points' own (F at 95 %), else the scatter alone.
+ * scatter is no more than chance makes of the points' own (F at 95 %), else the scatter alone, as over sweeps.
  */
 function pooled(
   within: number,
@@ -109,7 +110,8 @@ function pooled(
 ): { se: number; freedom?: number } {
   if (!scatter) return { se: Math.sqrt(within), freedom: ownFreedom };
   const excess = 1 + 2.2 / Math.sqrt(scatter.freedom) + 1.2 / scatter.freedom;
-  if (scatter.variance > excess * within) return { se: Math.sqrt(scatter.variance), freedom: scatter.freedom };
+  if (scatter.variance > excess * within)
+    return { se: Math.sqrt(scatter.variance), freedom: scatter.freedom + scatterFreedom };
   const freedom = scatter.freedom + ownFreedom;
   return {
     se: Math.sqrt((scatter.freedom * scatter.variance + ownFreedom * within) / freedom),
@@ -429,7 +431,7 @@ function overSweeps(points: readonly Point[], whenNone: Reading, note?: string):
     ...rest,
     se: Math.sqrt(scatter / points.length + common),
     // Scatter known from few sweeps, common errors from the fits.
-    ...(common > scatter / points.length ? {} : { freedom: points.length - 1 }),
+    ...(common > scatter / points.length ? {} : { freedom: points.length - 1 + scatterFreedom }),
   });
 }
 

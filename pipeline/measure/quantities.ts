@@ -57,7 +57,7 @@ const apdUncertainty =
 const pulseFit =
   'The fit: to the current from 50 ms before to 100 ms after every command step of 0.2 to 20 mV (at most 16 in a sweep), each pulse on a straight line of its own, least squares of ΔV·(g_ss·s(t) + g_tr·e(t) + C_p·h(t)) with s, e and h the answers of a four-pole Bessel low-pass (declared corner ± 10 %, undeclared: found) to a step, to exp(−t/τ) and to an impulse; t counts from the moment of the command, known to within a sample (mean 8 µs − 0.2 of the interval, SD 0.3 of it and 12 µs combined); C_p = 0 ± 2.5 pF is what is left of the pipette; a sine at the mains frequency is added where it stands out';
 const pulseError =
-  '1.96 × the standard error: the fit is made at nine moments of the command across what is known of it, each weighted by its likelihood (Laplace); variance within (covariance of the fit, GUM 5.2, noise with its autocorrelation, 1.5 % of the peak for what filter and command may differ from the model while the edge passes, all × χ² over its freedom where above 1) plus variance among them. For the cell: t(0.975, n − 1)·√(SD²/n + what the sweeps’ errors have in common), the latter their mean square less SD². A half-width above half the number is not reported as a number';
+  '1.96 × the standard error: the fit is made at nine moments of the command across what is known of it, each weighted by its likelihood (Laplace); variance within (covariance of the fit, GUM 5.2, noise with its autocorrelation, 1.5 % of the peak for what filter and command may differ from the model while the edge passes, all × χ² over its freedom where above 1) plus variance among them. For the cell: t(0.975, n + 1)·√(SD²/n + what the sweeps’ errors have in common), the latter their mean square less SD². A half-width above half the number is not reported as a number';
 
 /** How the trace is read between its samples, for the formulas. */
 const between =
@@ -952,7 +952,7 @@ export const quantities: readonly Quantity[] = list([
     formula:
       '√mean(x²), x the quiet stretches (outside spikes and stimuli, at least 10 ms each, at most 2 s in all) after a fourth-order Butterworth band-pass run forwards and backwards; for a cell the median over sweeps',
     uncertainty:
-      '1.96·V_rms/√(4·B·T), B the bandwidth and T the time, with 1 % for the shape of the band; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
+      '1.96·V_rms/√(4·B·T), B the bandwidth and T the time, with 1 % for the shape of the band; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n + 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
     source: practice,
   },
   {
@@ -982,7 +982,7 @@ export const quantities: readonly Quantity[] = list([
     formula:
       'A of the least-squares A·sin(2πft + φ) fitted with a straight line in each quiet stretch to means at about 3 kHz (at most 2 s); V_hum = √(A² − 2u²), u the noise of one quadrature; at the nominal frequency where A < 5u; for a cell the median over sweeps',
     uncertainty:
-      't·u; u² = half the mean square of the amplitudes fitted at ±3, ±4, ±5 times 1/duration beside the line, the line taken out, with two degrees of freedom for each; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
+      't·u; u² = half the mean square of the amplitudes fitted at ±3, ±4, ±5 times 1/duration beside the line, the line taken out, with two degrees of freedom for each; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n + 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
     source: 'least-squares sine fit; Gudbjartsson & Patz 1995, Magn Reson Med 34:910–914 for 2u² (from memory)',
   },
   {
@@ -996,7 +996,7 @@ export const quantities: readonly Quantity[] = list([
     formula:
       'f within ±10 % of the mains frequency (50 and 60 Hz where it is not known) that leaves the smallest squared residual of that fit; not given where A < 5u; a line 15u high elsewhere between 20 and 150 Hz is reported with a remark',
     uncertainty:
-      't·u/(2π·A·s_t), s_t the standard deviation of the sampled times; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n − 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
+      't·u/(2π·A·s_t), s_t the standard deviation of the sampled times; for a cell: of the median over sweeps, from their scatter s and their own uncertainties w: s/√n with n + 1 degrees of freedom where s² exceeds the mean w² by more than chance (95 % point of χ²), else the two variances pooled, w counting for 10 degrees of freedom; × √(1 + (π/2 − 1)(1 − 2/n)) for a median of three or more; times Student’s t',
     source: 'Rife & Boorstyn 1974, IEEE Trans Inf Theory 20:591–598 (from memory)',
   },
   {
@@ -1181,7 +1181,7 @@ export const quantities: readonly Quantity[] = list([
     formula: 'median V_base over sweeps with |I_total| ≤ noise',
     source: practice,
     uncertainty:
-      'From the scatter over sweeps (√(π/2) times that of a mean, Student’s t with n − 1 degrees of freedom), pooled with the sweeps’ own uncertainty where it does not exceed it.',
+      'From the scatter over sweeps (√(π/2) times that of a mean, Student’s t with n + 1 degrees of freedom: two for the sweeps’ own), pooled with the sweeps’ own uncertainty where it does not exceed it.',
   },
   {
     id: 'maximum_diastolic_potential_mv',
@@ -1208,7 +1208,7 @@ export const quantities: readonly Quantity[] = list([
     formula: 'least-squares line with intercept through (I, ΔV_ss) and (0, 0) − ΔR_b',
     source: 'Nagaeva et al. 2020, eLife; Ekins et al. 2020, eLife 9:e62373; taking I·R_s off: linear circuit theory',
     uncertainty:
-      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b (none is given where ΔR_b could not be measured). The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points, where there are four or more with the origin; the scatter alone where it exceeds chance.',
+      'Student’s t times, in squares, the uncertainty of the slope and of ΔR_b (none is given where ΔR_b could not be measured). The slope’s: the deflections’ own, pooled (as 10 degrees of freedom) with the scatter about the parabola through the points, where there are four or more with the origin; the scatter alone, two degrees of freedom added, where it exceeds chance.',
   },
 
   {

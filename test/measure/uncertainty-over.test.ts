@@ -32,6 +32,17 @@ describe('uncertainty of a number over sweeps', () => {
     const { se, freedom } = uncertaintyOver([10, 10.5], [1, 1]);
     expect(coverage95(freedom) * se!).toBeLessThan(2);
   });
+  test('two sweeps that disagree: no more than a few times their distance, and that at least', () => {
+    // Student's t of one degree of freedom would give 12.7/2 of it.
+    const { se, freedom } = uncertaintyOver([10, 20], [0.1, 0.1]);
+    expect(coverage95(freedom) * se!).toBeLessThan(20);
+    expect(coverage95(freedom) * se!).toBeGreaterThan(10);
+  });
+  // 76 % (SciPy 1.10: 0.773 in 400 000 trials, 0.776 with one degree of freedom): not the few sweeps' t, but the single
+  // sweeps' uncertainties are what falls short there.
+  test('two sweeps whose own uncertainties are three times too small lose little by it', () => {
+    expect(held(2, 1, Math.sqrt(8), 20000)).toBeGreaterThan(0.76);
+  });
   test('without uncertainties of their own: the scatter alone', () => {
     const values = [1, 2, 4];
     const { se, freedom, sd } = uncertaintyOver(values, [null, null, null], 'mean');
