@@ -6,7 +6,7 @@ import { judgeCell } from '../judge/judge.ts';
 import type { Circumstances, Contradiction, PolicyRule } from '../judge/types.ts';
 import type { CellRow, SweepRow } from '../ledger/types.ts';
 import { measureCell } from '../measure/cell.ts';
-import { withDerived } from '../measure/derive.ts';
+import { measuredCapacitance, withDerived } from '../measure/derive.ts';
 import { correctPotentials } from '../measure/junction.ts';
 import type { CellContext, NumberedSweep, SweepMeasure } from '../measure/types.ts';
 import { cellContext, circumstancesOf } from './circumstances.ts';
@@ -183,16 +183,11 @@ function numberSweeps(
 function deriveSpikes(sweeps: SweepRow[], contextOf: (condition: string) => CellContext): SweepRow[] {
   const measured = measureCell(sweeps, contextOf);
   const capacitance = new Map(
-    measured.conditions.map(({ condition, readings }) => [
-      condition,
-      [readings['membrane_capacitance_pf'], readings['cell_capacitance_pf']].find(
-        (one) => (one?.value ?? null) !== null,
-      ),
-    ]),
+    measured.conditions.map(({ condition, readings }) => [condition, measuredCapacitance(readings)]),
   );
   return sweeps.map((sweep) => {
     const context = contextOf(sweep.condition);
-    const own = context.stated_capacitance_pf === null ? capacitance.get(sweep.condition) : undefined;
+    const own = context.stated_capacitance_pf === null ? capacitance.get(sweep.condition) : null;
     return {
       ...sweep,
       spikes: withDerived(sweep.spikes, {

@@ -7,6 +7,7 @@ import {
   type Sides,
   shareRetained,
 } from '../membrane/gradients.ts';
+import { measuredCapacitance } from './derive.ts';
 import { absent, measured } from './reading.ts';
 import type { CellContext, NumberedSweep, Reading, Readings } from './types.ts';
 
@@ -54,9 +55,9 @@ export function gradientReadings(sweeps: readonly NumberedSweep[], done: Reading
   const capacitance: Reading =
     context.stated_capacitance_pf !== null
       ? { value: context.stated_capacitance_pf }
-      : (((done['membrane_capacitance_pf']?.value ?? null) !== null
-          ? done['membrane_capacitance_pf']
-          : done['cell_capacitance_pf']) ?? absent('fact-missing', { missing: ['capacitance_pf'] }));
+      : (measuredCapacitance(done) ??
+        done['cell_capacitance_pf'] ??
+        absent('fact-missing', { missing: ['capacitance_pf'] }));
   const access = done['access_resistance_mohm'] ?? absent('fact-missing', { missing: ['access_mohm'] });
 
   const noVolume = volume === null ? absent('fact-missing', { missing: ['volume_pl'] }) : null;

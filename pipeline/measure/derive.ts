@@ -1,5 +1,5 @@
 import { withIonic } from './ionic.ts';
-import type { AbsenceCode, Spike } from './types.ts';
+import type { AbsenceCode, Reading, Readings, Spike } from './types.ts';
 
 /** Elementary charge, C. Exact in the 2019 SI. */
 const elementaryChargeC = 1.602176634e-19;
@@ -14,6 +14,19 @@ export interface KnownForSpikes {
   capacitance_pf: number | null;
   /** Its 95 % half-width where it was measured, pF. */
   capacitance_u95_pf?: number | null;
+}
+
+/**
+ * The cell's measured capacitance that charges and currents are computed with: of that from current clamp (τ/R_in) and
+ * that from voltage-clamp test pulses the one with the smaller half-width; one without a half-width only where it is
+ * alone. Null where neither was measured.
+ */
+export function measuredCapacitance(readings: Readings): Reading | null {
+  const found = [readings['membrane_capacitance_pf'], readings['cell_capacitance_pf']].filter(
+    (one) => one !== undefined && one.value !== null,
+  ) as Reading[];
+  const width = (one: Reading): number => one.u95 ?? Number.POSITIVE_INFINITY;
+  return found.reduce<Reading | null>((best, one) => (best === null || width(one) < width(best) ? one : best), null);
 }
 
 /**

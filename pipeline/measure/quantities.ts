@@ -418,7 +418,8 @@ export const quantities: readonly Quantity[] = list([
     ucum: 'pC',
     decimals: 2,
     definition: 'The least charge that can carry the spike: what the membrane capacitance needs for its height.',
-    formula: 'C·H',
+    formula:
+      'C·H: C the stated capacitance, or else that one of membrane capacitance (current clamp) and cell capacitance (voltage clamp) whose half-width is smaller',
     source: 'Carter & Bean 2009, Neuron 64:898–909',
     uncertainty: 'relative half-widths of height and, where it was measured, of the capacitance in quadrature',
   },
@@ -536,8 +537,7 @@ export const quantities: readonly Quantity[] = list([
     decimals: 0,
     definition:
       'Net ionic current at the steepest rise, where it is largest inward (negative; outward is positive). Assumes an isopotential cell and a current that is steady over the phase.',
-    formula:
-      'I − C·(dV/dt max): I the mean injected current over the depolarization, C the stated or else the measured capacitance',
+    formula: 'I − C·(dV/dt max): I the mean injected current over the depolarization, C as for the least charge',
     source: ionic,
     uncertainty: ionicUncertainty,
   },
@@ -562,8 +562,7 @@ export const quantities: readonly Quantity[] = list([
     decimals: 0,
     definition:
       'Net ionic current at the steepest fall, where it is largest outward (positive; outward is positive). Assumes an isopotential cell and a current that is steady over the phase.',
-    formula:
-      'I − C·(dV/dt min): I the mean injected current over the repolarization, C the stated or else the measured capacitance',
+    formula: 'I − C·(dV/dt min): I the mean injected current over the repolarization, C as for the least charge',
     source: ionic,
     uncertainty: ionicUncertainty,
   },
@@ -1440,7 +1439,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'How much sodium 100 spikes bring into the stated volume, and how much potassium they take, without pump or pipette.',
     formula:
-      '100·κ·C·H/(F·V): κ = 2, sodium that enters over the least that could; C the stated or measured capacitance; H the first spike’s height; V the stated volume (volume_pl); pF·mV/(C/mol)/pL is mM',
+      '100·κ·C·H/(F·V): κ = 2, sodium that enters over the least that could; C as for the least charge; H the first spike’s height; V the stated volume (volume_pl); pF·mV/(C/mol)/pL is mM',
     source: excess,
     uncertainty: `${overKappa}; the half-widths of C and H in quadrature`,
   },

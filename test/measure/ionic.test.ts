@@ -1,8 +1,8 @@
 import { describe, expect, test } from 'vitest';
-import { withDerived } from '../../pipeline/measure/derive.ts';
+import { measuredCapacitance, withDerived } from '../../pipeline/measure/derive.ts';
 import { ionicNumbers } from '../../pipeline/measure/ionic.ts';
 import { measureSweep } from '../../pipeline/measure/sweep.ts';
-import type { Phase, Spike } from '../../pipeline/measure/types.ts';
+import type { Phase, Reading, Spike } from '../../pipeline/measure/types.ts';
 import { normalNoise } from '../helpers/models.ts';
 import { input, neuron } from './made.ts';
 
@@ -206,5 +206,23 @@ describe('against the ionic current of a Hodgkin–Huxley membrane', () => {
     expect(phases).toBeGreaterThan(300);
     expect(resolved / phases).toBeGreaterThan(0.7);
     expect(wrong / resolved).toBeLessThan(0.01);
+  });
+});
+
+describe('the capacitance that charges are computed with', () => {
+  const of = (membrane: [number, number?] | null, cell: [number, number?] | null) => {
+    const reading = (one: [number, number?] | null): Reading =>
+      one === null ? { value: null, why: 'unresolved' } : { value: one[0], ...(one[1] ? { u95: one[1] } : {}) };
+    return measuredCapacitance({ membrane_capacitance_pf: reading(membrane), cell_capacitance_pf: reading(cell) });
+  };
+  test('is the better known of the two', () => {
+    expect(of([152, 77], [151, 1.5])!.value).toBe(151);
+    expect(of([152, 2], [151, 15])!.value).toBe(152);
+  });
+  test('is the only one, whether its half-width is known or not', () => {
+    expect(of([152], null)!.value).toBe(152);
+    expect(of(null, [151])!.value).toBe(151);
+    expect(of([152], [151, 15])!.value).toBe(151);
+    expect(of(null, null)).toBeNull();
   });
 });
