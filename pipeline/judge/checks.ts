@@ -204,6 +204,18 @@ const conditions: CheckEntry[] = [
     level: 'cell',
   },
   {
+    id: 'holding-leak',
+    quantity: 'holding_current_pa',
+    ground: 'conditions',
+    asks: 'Is the current that holds the cell in voltage clamp small enough to be a cell’s?',
+    limit:
+      '±1000 pA, where the holding potential lies between −100 and −40 mV; not asked of muscle fibres and giant axons',
+    causes: ['the seal was lost or never formed', 'there is no cell: an open pipette or a leak', 'the cell is dying'],
+    bench: 'What was the seal before break-in? How much current flows at 0 mV?',
+    source: `${practice}: single laboratories exclude from 50 to 200 pA, the limit here is wide enough for large cells`,
+    level: 'cell',
+  },
+  {
     id: 'escaped-currents',
     quantity: 'escaped_currents',
     ground: 'conditions',

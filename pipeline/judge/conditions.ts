@@ -43,6 +43,9 @@ export const conditionLimits = {
   baselineDriftMv: 2,
   emptyPipetteMv: -15,
   leastChargePf: 3,
+  /** Most current that may hold a cell at rest, pA without sign, and the command potentials that count as such, mV. */
+  holdingPa: 1000,
+  restfulMv: [-100, -40],
 } as const;
 const limits = conditionLimits;
 
@@ -130,6 +133,28 @@ const noMembrane: CellQuestion = (setting) => {
     name: `the ${amount('transient_capacitance_pf', limits.leastChargePf)} that a membrane takes up at least`,
     meaning: 'there is no cell behind the pipette, or its transient is compensated and nothing says so',
     ...(empty && remark ? { remark } : {}),
+  });
+};
+
+/** Cells whose membrane is so large that a nanoampere is little. */
+const giants: readonly string[] = ['skeletal-muscle', 'squid-axon'];
+
+const holdingLeak: CellQuestion = (setting) => {
+  if (giants.includes(setting.circumstances.like)) return null;
+  const [lowest, highest] = limits.restfulMv;
+  const held = setting.sweeps.filter(
+    ({ clamp, stimulus }) =>
+      clamp === 'voltage' && stimulus.holding !== null && stimulus.holding >= lowest && stimulus.holding <= highest,
+  );
+  const reading = medianReading(held, 'holding_current_pa');
+  if (reading === null) return null;
+  return hold(reading, {
+    quantity: 'holding_current_pa',
+    subject: 'the holding current',
+    low: -limits.holdingPa,
+    high: limits.holdingPa,
+    name: `the ±${amount('holding_current_pa', limits.holdingPa)} that hold a cell near rest at most`,
+    meaning: 'most of it is a leak: the seal was lost, or there is no cell',
   });
 };
 
@@ -491,6 +516,7 @@ export const conditionQuestions: Record<string, CellQuestion> = {
   'no-cell': noCell,
   'pulse-sign': pulseSign,
   'no-membrane': noMembrane,
+  'holding-leak': holdingLeak,
   'escaped-currents': (setting) =>
     escapedOf(setting.measure.readings['escaped_currents'], 'the number of escaped action currents'),
   'baseline-negative': baselineNegative,

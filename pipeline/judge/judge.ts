@@ -235,6 +235,9 @@ const incidental: ReadonlySet<string> = new Set([
   'quantum_mv',
   'spikes',
   'minutes_since_break_in',
+  // What was asked of the cell, not what it answered.
+  'command_mv',
+  'stimulus_pa',
 ]);
 
 function nothingMeasured(input: JudgeInput): boolean {
@@ -318,6 +321,11 @@ export const unreadAbove = conditionLimits.missingFraction;
 function nothingSentence({ sweeps }: JudgeInput): string {
   const withoutCommand =
     sweeps.length > 0 && sweeps.every((sweep) => sweep.clamp === 'voltage' && sweep.voltage_envelope === null);
+  const withoutCurrent =
+    sweeps.length > 0 &&
+    sweeps.every((sweep) => sweep.clamp === 'voltage' && sweep.readings['holding_current_pa']?.why === 'no-current');
+  if (withoutCurrent)
+    return 'Recorded in voltage clamp, and its current could not be read: nothing can be said of the cell. See what the file is missing.';
   return withoutCommand
     ? 'Recorded in voltage clamp without its command: nothing fires there, and no resistance or capacitance can be read. State or record the command potential.'
     : 'Nothing could be measured in this recording.';

@@ -308,7 +308,8 @@ const baselineAbovePotassium: CellQuestion = (setting) => {
   const subject = 'the baseline under zero or positive holding current';
   const limit = potassium(setting, subject);
   const quiet = quietBaseline(setting, (holding) => holding >= -negligiblePa(setting));
-  if (limit.ok && !quiet.reading)
+  const recorded = isPresent(setting.measure.readings['baseline_mv']);
+  if (!quiet.reading && (limit.ok || recorded))
     return quiet.candidates.length > 0
       ? unheld(subject, 'every such sweep starts within 5 s after a train')
       : unheld(subject, 'no sweep is known to have been held with zero or positive current', ['bias_pa']);

@@ -11,6 +11,8 @@ const largestTestPulse_mv = 20;
 const shortestTestPulse_s = 0.002;
 /** After a larger step channels may still be open for this long, s. */
 const afterLargeStep_s = 0.03;
+/** Steps the same way closer than this, s, are the stairs that a ramp was written down or put out as. Ours. */
+const rampStair_s = 0.03;
 /** As many edges as a sweep is measured at; more say nothing new. */
 const mostEdges = 16;
 /** A half-width above this share of the number makes it unresolved. */
@@ -58,7 +60,7 @@ export function measureVoltageClamp(
   }
   readings['holding_current_pa'] = holdingCurrent(current, command, levels);
   if (!command) return { ...readings, ...all(absent('no-voltage')) };
-  const edges = commandEdges(levels);
+  const edges = commandEdges(levels, stimulus.holding ?? levels[0]?.level ?? 0);
   const escaped = { escaped_currents: escapedCurrents(current, edges) };
   if (!edges.some((edge) => edge.used)) return { ...readings, ...all(absent('no-test-pulse')), ...escaped };
   const fit = fitClamp(current, edges, filterKhz, mainsHz);
@@ -179,8 +181,15 @@ function blockError(values: Float64Array): { se?: number; freedom?: number } {
   return { se: standardDeviation(medians)! / Math.sqrt(blocks), freedom: blocks - 1 };
 }
 
-/** Every step of the command, and which of them are small, long and undisturbed enough to be measured at. */
-function commandEdges(levels: readonly Level[]): CommandEdge[] {
+/**
+ * Every step of the command, and which of them are small, long and undisturbed enough to be measured at. A small step from
+ * one depolarized level to another is none of them: the current through the channels that are open there moves with it.
+ * Nor is the stair of a ramp.
+ */
+function commandEdges(levels: readonly Level[], holding_mv: number): CommandEdge[] {
+  const stepAt = (k: number): number => (levels[k] && levels[k - 1] ? levels[k]!.level - levels[k - 1]!.level : 0);
+  const goesOn = (between: Level | undefined, one: number, other: number): boolean =>
+    between !== undefined && one * other > 0 && between.to_s - between.from_s < rampStair_s;
   let used = 0;
   return levels.slice(1).map((level, k) => {
     const previous = levels[k]!;
@@ -194,7 +203,9 @@ function commandEdges(levels: readonly Level[]): CommandEdge[] {
           Math.abs(one.level - levels[j]!.level) > largestTestPulse_mv * 1.001 &&
           level.from_s - one.from_s < afterLargeStep_s,
       );
-    const use = long && small && !disturbed && used < mostEdges;
+    const open = Math.max(previous.level, level.level) > holding_mv + largestTestPulse_mv * 1.001;
+    const stair = goesOn(previous, stepAt(k), mv) || goesOn(level, mv, stepAt(k + 2));
+    const use = long && small && !disturbed && !open && !stair && used < mostEdges;
     if (use) used++;
     return { at_s: level.from_s, mv, used: use };
   });

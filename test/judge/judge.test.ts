@@ -11,6 +11,13 @@ const six = (change: (number: number) => Parameters<typeof sweep>[1]) =>
   [0, 1, 2, 3, 4, 5].map((number) => sweep(number, change(number)));
 const silent = six(() => ({ spikes: [] }));
 const inClamp = six(() => ({ clamp: 'voltage', spikes: [] }));
+const heldWith = (pa: number): NumberedSweep[] =>
+  six((number) => ({
+    clamp: 'voltage',
+    spikes: [],
+    stimulus: { ...sweep(number).stimulus, holding: -80 },
+    readings: { holding_current_pa: read(pa) },
+  }));
 
 const contradiction = (kind: Contradiction['kind']): Contradiction => ({
   kind,
@@ -40,6 +47,7 @@ const failing: Record<string, Made> = {
   'no-cell': { sweeps: silent, readings: { resting_potential_mv: read(-1) } },
   'pulse-sign': { readings: { pulse_response_mohm: read(-15) } },
   'no-membrane': { sweeps: inClamp, readings: { transient_capacitance_pf: read(0.4, { u95: 0.3 }) } },
+  'holding-leak': { sweeps: heldWith(-1561), readings: {} },
   'escaped-currents': { sweeps: inClamp, readings: { escaped_currents: read(3) } },
   'baseline-negative': { readings: { resting_potential_mv: read(12) } },
   'rise-samples': { readings: { rise_samples: read(3) } },
@@ -322,6 +330,19 @@ describe('a cell is judged on what it has', () => {
       usable: null,
     });
   });
+  test('voltage clamp without its current is unread: the command is no answer of a cell', () => {
+    const bare = [0, 1].map((number) => {
+      const one = sweep(number, { clamp: 'voltage', spikes: [] });
+      const none = { value: null, why: 'no-current' } as const;
+      return { ...one, readings: { command_mv: read(60), holding_current_pa: none, clipped_fraction: none } };
+    });
+    const input = made({ sweeps: bare });
+    input.measure.conditions[0]!.readings = {};
+    const { standing, reasons } = judgeCell(input);
+    expect(standing).toBe('unread');
+    expect(reasons[0]).toMatch(/current could not be read/);
+  });
+
   test('voltage clamp without its command is unread, and the reason says what is missing', () => {
     const bare = six(() => ({ spikes: [], clamp: 'voltage' as const })).map((one) => ({ ...one, readings: {} }));
     const input = made({ sweeps: bare });

@@ -68,6 +68,22 @@ describe('a test pulse in voltage clamp', () => {
     expect(numberIn(readings, 'command_mv')).toBeCloseTo(10, 9);
   });
 
+  it('is not looked for between depolarized levels, nor in the stairs of a ramp', () => {
+    const depolarized = clampedSweep(cell, [
+      { from_s: 0.02, to_s: 0.07, mv: 60 },
+      { from_s: 0.07, to_s: 0.12, mv: 45 },
+      { from_s: 0.12, to_s: 0.17, mv: 60 },
+    ]);
+    expect(measure(depolarized).readings['cell_capacitance_pf']).toMatchObject({ value: null, why: 'no-test-pulse' });
+    const stairs = Array.from({ length: 10 }, (_, k) => ({
+      from_s: 0.03 + 0.01 * k,
+      to_s: 0.04 + 0.01 * k,
+      mv: -40 + 4 * k,
+    }));
+    const ramp = clampedSweep(cell, stairs);
+    expect(measure(ramp).readings['cell_capacitance_pf']).toMatchObject({ value: null, why: 'no-test-pulse' });
+  });
+
   it('says why there is none', () => {
     const why = (readings: ReturnType<typeof measure>['readings']) =>
       ['access_resistance_mohm', 'membrane_resistance_mohm', 'cell_capacitance_pf'].map((id) => readings[id]!.why);
