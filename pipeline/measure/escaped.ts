@@ -21,7 +21,7 @@ const block_ms = 20;
 /**
  * Counts escaped action currents: inward peaks of at least 200 pA and eight times the noise above the median of the 20 ms
  * around, 0.15 to 4 ms wide at half their size, not within 3 ms of a step of the command (6 ms for one above 20 mV, where
- * the sodium current that the clamp does hold is expected).
+ * the sodium current that the clamp does hold is expected, and for the start of the recording, which may follow one).
  * @param current pA, inward negative
  */
 export function escapedCurrents(current: Signal, edges: readonly CommandEdge[]): Reading {
@@ -29,7 +29,8 @@ export function escapedCurrents(current: Signal, edges: readonly CommandEdge[]):
   // From the end of each answer to the command up to the next step: a level of its own each.
   const starts = [0, ...edges.map(({ at_s }) => indexAt(current, at_s))];
   const calm = starts.map((start, k): Stretch => {
-    const dead_ms = k === 0 ? 0 : Math.abs(edges[k - 1]!.mv) > small_mv * 1.001 ? afterLarge_ms : afterSmall_ms;
+    // A recording may begin in the answer to a step before it.
+    const dead_ms = k > 0 && Math.abs(edges[k - 1]!.mv) <= small_mv * 1.001 ? afterSmall_ms : afterLarge_ms;
     const next = starts[k + 1] ?? current.samples.length + 2;
     return { from: start + Math.round((dead_ms * rate) / 1000), to: next - 2 };
   });

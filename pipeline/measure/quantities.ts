@@ -55,7 +55,7 @@ const ionicUncertainty =
 const apdUncertainty =
   'Fast spikes: 1.96 times, in squares, 1.5 times the noise over the slope at the crossing and 0.3 samples at the rise. Slow classes: 1.96 times, in squares, the uncertainty of the steepest rise (see cycle length) and of the crossing; that is the level’s error over the slope there, the level’s error being the peak’s and the diastolic level’s in their shares, slow noise, and the standard error of the parabola. For the cell: Student’s t times SD/√n.';
 const pulseFit =
-  'The fit: to the current from 50 ms before to 100 ms after every command step of 0.2 to 20 mV (at most 16 in a sweep), each pulse on a straight line of its own, least squares of ΔV·(g_ss·s(t) + g_tr·e(t) + C_p·h(t)) with s, e and h the answers of a four-pole Bessel low-pass (declared corner ± 10 %, undeclared: found) to a step, to exp(−t/τ) and to an impulse; t counts from the moment of the command, known to within a sample (mean 8 µs − 0.2 of the interval, SD 0.3 of it and 12 µs combined); C_p = 0 ± 2.5 pF is what is left of the pipette; a sine at the mains frequency is added where it stands out';
+  'The fit: to the current from 50 ms before to 100 ms after every command step of 0.2 to 20 mV (at most 16 in a sweep; not between levels more than 20 mV above holding, within 30 ms of a larger step, or in a ramp’s stairs: steps the same way less than 50 ms apart), each pulse on a straight line of its own, least squares of ΔV·(g_ss·s(t) + g_tr·e(t) + C_p·h(t)) with s, e and h the answers of a four-pole Bessel low-pass (declared corner ± 10 %, undeclared: found) to a step, to exp(−t/τ) and to an impulse; t counts from the moment of the command, known to within a sample (mean 8 µs − 0.2 of the interval, SD 0.3 of it and 12 µs combined); C_p = 0 ± 2.5 pF is what is left of the pipette; a sine at the mains frequency is added where it stands out';
 const pulseError =
   '1.96 × the standard error: the fit is made at nine moments of the command across what is known of it, each weighted by its likelihood (Laplace); variance within (covariance of the fit, GUM 5.2, noise with its autocorrelation, 1.5 % of the peak for what filter and command may differ from the model while the edge passes, all × χ² over its freedom where above 1) plus variance among them. For the cell: t(0.975, n + 1)·√(SD²/n + what the sweeps’ errors have in common), the latter their mean square less SD². A half-width above half the number is not reported as a number';
 
@@ -1148,7 +1148,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'Inward action currents that the clamp did not hold: all or none, a millisecond wide, at times of their own; for the cell, in all its sweeps.',
     formula:
-      'inward peaks of at least 200 pA and 8 times the noise (1.4826 × median size) above the median of the 20 ms around, 0.15 to 4 ms wide at half their size, later than 3 ms after a step of the command (6 ms after one above 20 mV)',
+      'inward peaks of at least 200 pA and 8 times the noise (1.4826 × median size) above the median of the 20 ms around, 0.15 to 4 ms wide at half their size, later than 3 ms after a step of the command (6 ms after one above 20 mV, and after the start of the recording)',
     source: practice,
   },
   {

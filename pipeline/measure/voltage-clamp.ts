@@ -12,7 +12,7 @@ const shortestTestPulse_s = 0.002;
 /** After a larger step channels may still be open for this long, s. */
 const afterLargeStep_s = 0.03;
 /** Steps the same way closer than this, s, are the stairs that a ramp was written down or put out as. Ours. */
-const rampStair_s = 0.03;
+const rampStair_s = 0.05;
 /** As many edges as a sweep is measured at; more say nothing new. */
 const mostEdges = 16;
 /** A half-width above this share of the number makes it unresolved. */

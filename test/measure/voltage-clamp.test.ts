@@ -229,6 +229,7 @@ describe('escaped action currents', () => {
   it('are not synaptic currents, held sodium currents, slow currents or glitches', () => {
     expect(escaping([60, 45, 80], [0.02, 0.09, 0.17]).value).toBe(0);
     expect(escaping([2000], [0.0512]).value).toBe(0);
+    expect(escaping([2000], [0.0006]).value).toBe(0);
     expect(escaping([600], [0.1], 12).value).toBe(0);
     expect(escaping([3000], [0.1], 0.04).value).toBe(0);
   });
