@@ -60,12 +60,12 @@ export function uncertaintyOver(
   const within = own.length === n && n > 0 ? own.reduce((sum, se) => sum + se * se, 0) / n : null;
   if (n < 2) return { n, ...(within === null ? {} : { se: Math.sqrt(within) }) };
   const sd = standardDeviation(values)!;
-  const medianCosts = of === 'mean' || n < 3 ? 1 : Math.sqrt(1 + (Math.PI / 2 - 1) * (1 - 2 / n));
+  const costs = of === 'mean' ? 1 : medianCosts(n);
   if (within === null || sd * sd > within * chiSquareShare(n - 1))
-    return { n, sd, se: (medianCosts * sd) / Math.sqrt(n), freedom: n - 1 + (within === null ? 0 : scatterFreedom) };
+    return { n, sd, se: (costs * sd) / Math.sqrt(n), freedom: n - 1 + (within === null ? 0 : scatterFreedom) };
   const freedom = n - 1 + ownFreedom;
   const pooled = ((n - 1) * sd * sd + ownFreedom * within) / freedom;
-  return { n, sd, se: medianCosts * Math.sqrt(pooled / n), freedom };
+  return { n, sd, se: costs * Math.sqrt(pooled / n), freedom };
 }
 
 /** What the numbers' own uncertainties count for against their scatter: as much as so many degrees of freedom. */
@@ -73,8 +73,11 @@ const ownFreedom = 10;
 /** And to the size of a scatter that exceeds them. */
 export const scatterFreedom = 2;
 
+/** How many times less certain than their mean the median of n normal numbers is, near enough. */
+export const medianCosts = (n: number): number => (n < 3 ? 1 : Math.sqrt(1 + (Math.PI / 2 - 1) * (1 - 2 / n)));
+
 /** 95 % point of χ² over its degrees of freedom (Wilson & Hilferty 1931, PNAS 17:684–688; from memory). */
-const chiSquareShare = (freedom: number): number =>
+export const chiSquareShare = (freedom: number): number =>
   (1 - 2 / (9 * freedom) + 1.6449 * Math.sqrt(2 / (9 * freedom))) ** 3;
 
 /** A reading's own standard uncertainty; null where it has none. */
