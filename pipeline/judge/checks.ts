@@ -216,6 +216,21 @@ const conditions: CheckEntry[] = [
     level: 'cell',
   },
   {
+    id: 'beats-alike',
+    quantity: 'apd90_alternation_ms',
+    ground: 'conditions',
+    asks: 'Are a heart cell’s beats alike enough for one number to stand for them?',
+    limit:
+      'an alternation of a tenth of the median duration to 90 % repolarization; asked of heart cells with five beats or more',
+    causes: [
+      'the cell alternates: paced or firing faster than it recovers, or calcium handling that does',
+      'the cell is failing, or a leak through the seal disturbs its repolarization',
+    ],
+    bench: 'Do the beats alternate at a slower pace too? Read long and short beats apart.',
+    source: practice,
+    level: 'cell',
+  },
+  {
     id: 'escaped-currents',
     quantity: 'escaped_currents',
     ground: 'conditions',

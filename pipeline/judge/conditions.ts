@@ -46,6 +46,8 @@ export const conditionLimits = {
   /** Most current that may hold a cell at rest, pA without sign, and the command potentials that count as such, mV. */
   holdingPa: 1000,
   restfulMv: [-100, -40],
+  /** Largest alternation of a heart cell's beats as a share of their middle duration. */
+  alternationShare: 0.1,
 } as const;
 const limits = conditionLimits;
 
@@ -155,6 +157,22 @@ const holdingLeak: CellQuestion = (setting) => {
     high: limits.holdingPa,
     name: `the ±${amount('holding_current_pa', limits.holdingPa)} that hold a cell near rest at most`,
     meaning: 'most of it is a leak: the seal was lost, or there is no cell',
+  });
+};
+
+const heart: readonly string[] = ['ventricular-myocyte', 'stem-cell-cardiomyocyte', 'sinoatrial-node'];
+
+const beatsAlike: CellQuestion = (setting) => {
+  const reading = cellReading(setting, 'apd90_alternation_ms');
+  const duration = cellReading(setting, 'apd90_ms');
+  if (!heart.includes(setting.circumstances.like) || !isPresent(reading) || !isPresent(duration)) return null;
+  const high = limits.alternationShare * duration.value;
+  return hold(reading, {
+    quantity: 'apd90_alternation_ms',
+    subject: 'the alternation of the beats’ durations',
+    high,
+    name: `a tenth of the middle duration (${amount('apd90_ms', high)})`,
+    meaning: 'long and short beats alternate, and a median over them describes neither',
   });
 };
 
@@ -517,6 +535,7 @@ export const conditionQuestions: Record<string, CellQuestion> = {
   'pulse-sign': pulseSign,
   'no-membrane': noMembrane,
   'holding-leak': holdingLeak,
+  'beats-alike': beatsAlike,
   'escaped-currents': (setting) =>
     escapedOf(setting.measure.readings['escaped_currents'], 'the number of escaped action currents'),
   'baseline-negative': baselineNegative,

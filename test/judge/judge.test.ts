@@ -48,6 +48,10 @@ const failing: Record<string, Made> = {
   'pulse-sign': { readings: { pulse_response_mohm: read(-15) } },
   'no-membrane': { sweeps: inClamp, readings: { transient_capacitance_pf: read(0.4, { u95: 0.3 }) } },
   'holding-leak': { sweeps: heldWith(-1561), readings: {} },
+  'beats-alike': {
+    circumstances: { like: 'stem-cell-cardiomyocyte' },
+    readings: { apd90_ms: read(190), apd90_alternation_ms: read(745, { u95: 157 }) },
+  },
   'escaped-currents': { sweeps: inClamp, readings: { escaped_currents: read(3) } },
   'baseline-negative': { readings: { resting_potential_mv: read(12) } },
   'rise-samples': { readings: { rise_samples: read(3) } },
