@@ -190,7 +190,7 @@ export const quantities: readonly Quantity[] = list([
     ...rise,
     decimals: 0,
     definition: 'Steepest rise between threshold and peak.',
-    formula: `max dV/dt between threshold and peak. ${between} Not given with fewer than 4 samples from threshold to peak.`,
+    formula: `max dV/dt between threshold and peak. ${between} Not given with fewer than 6 samples from threshold to peak.`,
     source: practice,
     uncertainty: placed,
   },

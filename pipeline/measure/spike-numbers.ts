@@ -114,6 +114,9 @@ const lowestOfNoise = 0.6;
  * published membrane models show behind filters of 2 to 20 kHz (this project’s own comparison with known truth).
  */
 const beyondReach = 14;
+/** Standard uncertainty of that, and of what the electrode is expected to cost, as shares of them: electrodes of 4 to 20 µs are met. */
+const beyondDoubt = 0.4;
+const electrodeDoubt = 0.8;
 
 export interface FilterView {
   filter: KnownFilter;
@@ -169,7 +172,10 @@ export function uncertainties(
         lost * (1 + electrode + beyond) +
         (flattened[id] ?? 0) +
         (id === 'ahp_minimum_mv' ? lowestOfNoise * spreads[id]! : 0),
-      sd: Math.hypot(spreads[id]!, lost * Math.hypot(view ? view.filter.share : 0, 0.5 * electrode, 0.3 * beyond)),
+      sd: Math.hypot(
+        spreads[id]!,
+        lost * Math.hypot(view ? view.filter.share : 0, electrodeDoubt * electrode, beyondDoubt * beyond),
+      ),
     };
   }
   const put = (id: string, value: number | AbsenceCode): void => {
@@ -191,7 +197,7 @@ export function uncertainties(
         bias: (electrode + beyond) * own + (flattened[from] ?? 0),
         sd: Math.hypot(
           Math.max(fullSpreads![from]!, spreads[from]!),
-          own * Math.hypot(view.filter.share, 0.5 * electrode, 0.3 * beyond),
+          own * Math.hypot(view.filter.share, electrodeDoubt * electrode, beyondDoubt * beyond),
         ),
       };
     }
@@ -211,7 +217,12 @@ export function uncertainties(
       const unit = Math.abs(formula(1));
       errors[id] = {
         bias: unit * own * (electrode + beyond),
-        sd: unit * Math.hypot(0.5 * spreads[from]!, own * Math.hypot(view.filter.share, 0.5 * electrode, 0.3 * beyond)),
+        sd:
+          unit *
+          Math.hypot(
+            0.5 * spreads[from]!,
+            own * Math.hypot(view.filter.share, electrodeDoubt * electrode, beyondDoubt * beyond),
+          ),
       };
     }
   }

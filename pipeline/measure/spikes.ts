@@ -304,7 +304,7 @@ function measureOne(
 const featureShare = 0.5;
 
 /** Samples from threshold to peak below which there is no maximum rise. */
-const fewestOnRise = 4;
+const fewestOnRise = 6;
 
 /** The trace as one spike may use it: its own segment, between the stimulus edges before its rise and after its peak. */
 function fineTrace(spike: FoundSpike, { trace, covariance, first, last, clipped, context }: Surroundings): Trace {

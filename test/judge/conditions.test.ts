@@ -306,7 +306,7 @@ test('rundown: 10 % over the 600 spikes fired is 1.67 % per 100', () => {
     /sodium that firing brings in would explain −1\.20? %? ?± 0\.90? % of it, without pump/,
   );
   const both = { ...alone, dialysed_rundown_percent_per_100_spikes: read(-0.3, { u95: 0.3 }) };
-  expect(sentence(-2.5, both)).toMatch(/−0\.30? .* with the pipette’s exchange\.$/);
+  expect(sentence(-2.5, both)).toMatch(/−0\.30? .* with the pipette’s exchange\./);
   expect(sentence(2.5, both)).not.toMatch(/sodium/);
   expect(sentence(-2.5, {})).not.toMatch(/sodium/);
 });

@@ -8,7 +8,7 @@
 import { describe, expect, test } from 'vitest';
 import { measureCell } from '../../pipeline/measure/cell.ts';
 import { crossing } from '../../pipeline/signal/index.ts';
-import { type Model, pospischil, simulate, wangBuzsaki } from '../helpers/models.ts';
+import { type Model, pospischil, simulate, type Trace, wangBuzsaki } from '../helpers/models.ts';
 import { cellContext, numbered, numberIn } from '../measure/made.ts';
 import { measure, near, numberOf, pf } from './traces.ts';
 
@@ -125,6 +125,14 @@ const trains: Train[] = [
   },
 ];
 
+/** Largest central difference before a time, V/s. */
+function steepest(trace: Trace, before_ms: number): number {
+  let largest = 0;
+  for (let i = 1; i < Math.min(trace.mv.length - 1, (before_ms / 1000) * trace.rateHz); i++)
+    largest = Math.max(largest, ((trace.mv[i + 1]! - trace.mv[i - 1]!) * trace.rateHz) / 2000);
+  return largest;
+}
+
 describe('cortical models', () => {
   test.each(trains)('$name for 1 s', (train) => {
     const trace = simulate(train.model, 100_000, [
@@ -137,7 +145,14 @@ describe('cortical models', () => {
     expect(spikes).toHaveLength(train.spikes);
     near(numberOf(first, 'peak_mv'), peak, 0.05, 'peak');
     near(numberOf(first, 'peak_at_s') * 1000 - 100, at, 0.015, 'peak time');
-    near(numberOf(first, 'max_rise_v_per_s') / rise, 1, 0.015, 'rise');
+    // The reference's maximum is a central difference over 20 µs, which blunts the sharpest rises by 2 %: it is met by the
+    // same difference here. What is measured is held to the model's own slope.
+    near(steepest(trace, at + 100) / rise, 1, 0.002, 'rise as in the reference');
+    const sharp = simulate(train.model, 1_600_000, [
+      [1, 0],
+      [at + 0.5, train.density],
+    ]);
+    near(numberOf(first, 'max_rise_v_per_s') / steepest(sharp, at + 1), 1, 0.004, 'rise');
     near(numberOf(first, 'threshold_mv'), threshold, 0.03, 'threshold');
     near(numberOf(first, 'max_fall_v_per_s') / fall, 1, 0.003, 'fall');
     near(numberOf(first, 'half_width_ms'), width, 0.001, 'half-width');
