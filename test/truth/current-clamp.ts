@@ -260,7 +260,9 @@ export function* trialsOf(cell: Cell, clean: readonly Clean[], under: Conditions
     const wander = wanders[k]!.subarray(Math.round(from_s * under.rate_hz), Math.round(cell.onset_s * under.rate_hz));
     const level = before + drifted(from_s, cell.onset_s) + wander.reduce((sum, one) => sum + one, 0) / wander.length;
     yield ofReading('sweeps', 'baseline_mv', level, sweep.readings['baseline_mv']);
-    yield ofReading('sweeps', 'noise_rms_mv', noiseTruth(under), sweep.readings['noise_rms_mv']);
+    // Rounding to steps wider than twice the noise is no noise of a known size.
+    if (under.quantum_mv < 2 * under.noise_mv)
+      yield ofReading('sweeps', 'noise_rms_mv', noiseTruth(under), sweep.readings['noise_rms_mv']);
     yield ofReading('sweeps', 'mains_hum_mv', humTruth(under), sweep.readings['mains_hum_mv']);
     if (under.hum_mv > 0) yield ofReading('sweeps', 'mains_hum_hz', under.hum_hz, sweep.readings['mains_hum_hz']);
     yield ofReading(
@@ -289,7 +291,9 @@ function noiseTruth({ noise_mv, wander_mv, filter_khz, filter_stated, rate_hz, q
   let [all, inBand] = [0, 0];
   const step = 5;
   for (let hz = step / 2; hz < fineHz / 2; hz += step) {
-    const power = besselGain(hz, corner) ** 2;
+    // The bench's filter is the bilinear transform of the analog one: its frequencies are warped.
+    const analog = (corner * Math.tan((Math.PI * hz) / fineHz)) / Math.tan((Math.PI * corner) / fineHz);
+    const power = besselGain(analog, corner) ** 2;
     all += power;
     const folded = Math.abs(hz - rate_hz * Math.round(hz / rate_hz));
     inBand += power * bandGain(folded, low, high, rate_hz) ** 2;
@@ -399,7 +403,7 @@ function* cellTrials(
   yield put('resting_potential_mv', rest, readings['resting_potential_mv']);
   yield put('bridge_error_mohm', under.bridge_left_mohm, readings['bridge_error_mohm']);
   yield put('access_resistance_mohm', cell.electrode.access_mohm, readings['access_resistance_mohm']);
-  yield put('noise_rms_mv', noiseTruth(under), readings['noise_rms_mv']);
+  if (under.quantum_mv < 2 * under.noise_mv) yield put('noise_rms_mv', noiseTruth(under), readings['noise_rms_mv']);
   yield put('mains_hum_mv', humTruth(under), readings['mains_hum_mv']);
   const down = cell.steps.flatMap((pa, k) => (pa < 0 ? [{ pa, clean: clean[k]! }] : []));
   for (const [quantity, truth] of Object.entries(cell.truths?.(clean) ?? {}))
