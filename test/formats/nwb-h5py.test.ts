@@ -346,6 +346,13 @@ describe.skipIf(!python)('NWB written by h5py', () => {
       expect(entry.scaling).toContain('A × 1');
     });
 
+    test('what the amplifier compensated in voltage clamp, in pF and percent', () => {
+      const { compensation } = file.read('/acquisition/VoltageClampSeries007');
+      expect(compensation!.whole_cell_pf).toBeCloseTo(42.5, 9);
+      expect(compensation).toMatchObject({ correction_percent: 70, prediction_percent: null });
+      expect(file.read('/acquisition/data_00000_AD0').compensation ?? null).toBeNull();
+    });
+
     test('shorter than the response: both as they are, and said', () => {
       const { current, problems } = file.read('/acquisition/short_stimulus_8');
       expect(current!.samples.length).toBe(1500);

@@ -216,6 +216,10 @@ with start("stimuli.nwb") as f:
     series(f, "acquisition/VoltageClampSeries007", "VoltageClampSeries", command(3) * 2, "amperes", at=1.0)
     series(f, "stimulus/presentation/VoltageClampStimulusSeries007", "VoltageClampStimulusSeries", potential(1), "volts",
            at=1.0, label="to -70 mV and back")
+    # NWB core schema, VoltageClampSeries: farads and percent, each a scalar dataset with a fixed unit.
+    for name, value, unit in [("whole_cell_capacitance_comp", 42.5e-12, "farads"),
+                              ("resistance_comp_correction", 70.0, "percent")]:
+        f["acquisition/VoltageClampSeries007"].create_dataset(name, data=value).attrs["unit"] = unit
     series(f, "acquisition/short_stimulus_8", "CurrentClampSeries", potential(2), "volts", at=2.0)
     series(f, "stimulus/presentation/short_stimulus_8", "CurrentClampStimulusSeries", command(2)[:1500] + 1e-12, "A", at=2.0)
     series(f, "acquisition/slow_stimulus_9", "CurrentClampSeries", potential(2), "volts", at=3.0)
