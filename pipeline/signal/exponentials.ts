@@ -49,12 +49,51 @@ export function exponentialSum(x: ArrayLike<number>, y: ArrayLike<number>, range
   if (x.length !== y.length) throw new RangeError(`x and y must be of one length, got ${x.length} and ${y.length}`);
   const wanted = ranges.fast ? 2 : 1;
   if (x.length < 2 * wanted + 4) return null;
-  const fits = startsOnGrid(x, y, ranges).map((start) => refined(x, y, start, ranges));
-  return fits.length === 0 ? null : fits.reduce((best, one) => (one.rss < best.rss ? one : best));
+  const points = pointsOf(x, y);
+  const fits = startsOnGrid(points, ranges).map((start) => refined(points, start, ranges));
+  return fits.length === 0 ? null : described(points, fits.reduce((best, one) => (one.rss < best.rss ? one : best)));
 }
 
 /** Parameters in the order of the covariance. */
 type Parameters = number[];
+
+interface Points {
+  x: Float64Array;
+  y: Float64Array;
+  /** Distance of neighbouring x where all are the same, within rounding; null where they are not. */
+  spacing: number | null;
+}
+
+function pointsOf(x: ArrayLike<number>, y: ArrayLike<number>): Points {
+  const own = Float64Array.from(x);
+  const n = own.length;
+  const spacing = (own[n - 1]! - own[0]!) / (n - 1);
+  const slack = 1e-13 * (Math.abs(own[0]!) + Math.abs(own[n - 1]!)) + 1e-11 * spacing;
+  let even = spacing > 0;
+  for (let i = 1; i < n && even; i++) even = Math.abs(own[i]! - own[0]! - i * spacing) <= slack;
+  return { x: own, y: Float64Array.from(y), spacing: even ? spacing : null };
+}
+
+/** Evenly spaced points are carried on from the last exact exponential by a constant factor for so many points. */
+const carried = 16;
+
+/** exp(−x/tau) at every point. */
+function decaysOf({ x, spacing }: Points, tau: number, into: Float64Array): void {
+  const n = x.length;
+  if (spacing === null) {
+    for (let i = 0; i < n; i++) into[i] = Math.exp(-x[i]! / tau);
+    return;
+  }
+  const factor = Math.exp(-spacing / tau);
+  for (let from = 0; from < n; from += carried) {
+    let value = Math.exp(-x[from]! / tau);
+    const to = Math.min(n, from + carried);
+    for (let i = from; i < to; i++) {
+      into[i] = value;
+      value *= factor;
+    }
+  }
+}
 
 const logSpaced = ([from, to]: readonly [number, number], count: number): number[] =>
   Array.from({ length: count }, (_, k) => from * (to / from) ** (k / (count - 1)));
@@ -63,89 +102,161 @@ const logSpaced = ([from, to]: readonly [number, number], count: number): number
  * The best node; with two terms the best in each third of the fast range, since the steps may end in a side valley
  * where both time constants are one.
  */
-function startsOnGrid(x: ArrayLike<number>, y: ArrayLike<number>, { slow, fast }: TauRanges): Parameters[] {
+function startsOnGrid(points: Points, { slow, fast }: TauRanges): Parameters[] {
+  const n = points.x.length;
   // Every product of two columns once: offset, slow decays, fast decays.
-  const taus = [...logSpaced(slow, fast ? 12 : 24), ...(fast ? logSpaced(fast, 10) : [])];
-  const columns = [
-    new Float64Array(x.length).fill(1),
-    ...taus.map((tau) => Float64Array.from(x, (value) => Math.exp(-value / tau))),
-  ];
   const count = fast ? 12 : 24;
-  const slows = Array.from({ length: count }, (_, k) => k + 1);
-  const quicks = Array.from({ length: taus.length - count }, (_, k) => count + k + 1);
+  const taus = [...logSpaced(slow, count), ...(fast ? logSpaced(fast, 10) : [])];
+  const columns = [
+    new Float64Array(n).fill(1),
+    ...taus.map((tau) => {
+      const column = new Float64Array(n);
+      decaysOf(points, tau, column);
+      return column;
+    }),
+  ];
+  const quicks = taus.length - count;
   const gram = columns.map(() => new Float64Array(columns.length));
-  const needed = (r: number, c: number): boolean => r === c || r === 0 || (r <= slows.length && c > slows.length);
+  const needed = (r: number, c: number): boolean => r === c || r === 0 || (r <= count && c > count);
   for (let r = 0; r < columns.length; r++)
-    for (let c = r; c < columns.length; c++) if (needed(r, c)) gram[r]![c] = dot(columns[r]!, columns[c]!);
-  const right = columns.map((column) => dot(column, y));
+    for (let c = r; c < columns.length; c++)
+      if (needed(r, c)) {
+        const product = dot(columns[r]!, columns[c]!);
+        gram[r]![c] = product;
+        gram[c]![r] = product;
+      }
+  const right = columns.map((column) => dot(column, points.y));
   const best = new Map<number, { gained: number; start: Parameters }>();
   const tried = (picked: readonly number[], group: number): void => {
-    const matrix = picked.map((r) => picked.map((c) => gram[Math.min(r, c)]![Math.max(r, c)]!));
-    const own = picked.map((r) => right[r]!);
-    const solved = solveSymmetric(matrix, own);
-    if (!solved) return;
+    const size = picked.length;
+    const rows = new Float64Array(size * (size + 1));
+    for (let r = 0; r < size; r++) {
+      for (let c = 0; c < size; c++) rows[r * (size + 1) + c] = gram[picked[r]!]![picked[c]!]!;
+      rows[r * (size + 1) + size] = right[picked[r]!]!;
+    }
+    if (!eliminated(rows, size, size + 1)) return;
     // Less what the columns explain; the constant Σy² is the same everywhere.
-    const gained = -solved.reduce((sum, value, k) => sum + value * own[k]!, 0);
+    let gained = 0;
+    for (let r = 0; r < size; r++) gained -= rows[r * (size + 1) + size]! * right[picked[r]!]!;
     if (gained >= (best.get(group)?.gained ?? Number.POSITIVE_INFINITY)) return;
-    const start = [
-      solved[0]!,
-      ...picked.slice(1).flatMap((column, k) => [solved[k + 1]!, Math.log(taus[column - 1]!)]),
-    ];
+    const start = [rows[size]!];
+    for (let r = 1; r < size; r++) start.push(rows[r * (size + 1) + size]!, Math.log(taus[picked[r]! - 1]!));
     best.set(group, { gained, start });
   };
-  for (const one of slows)
+  for (let one = 1; one <= count; one++)
     if (!fast) tried([0, one], 0);
     else
-      for (const quick of quicks)
-        if (taus[one - 1]! > 1.5 * taus[quick - 1]!)
-          tried([0, one, quick], Math.floor((3 * (quick - count - 1)) / quicks.length));
+      for (let k = 0; k < quicks; k++)
+        if (taus[one - 1]! > 1.5 * taus[count + k]!) tried([0, one, count + 1 + k], Math.floor((3 * k) / quicks));
   return [...best.values()].map(({ start }) => start);
 }
 
-function dot(a: ArrayLike<number>, b: ArrayLike<number>): number {
+function dot(a: Float64Array, b: Float64Array): number {
   let sum = 0;
   for (let i = 0; i < a.length; i++) sum += a[i]! * b[i]!;
   return sum;
 }
 
-interface Normal {
-  matrix: number[][];
-  right: number[];
+/** The sum at some parameters: decays of each term, residuals and their squares. Buffers are kept and filled anew. */
+interface State {
+  decays: Float64Array[];
+  taus: number[];
+  residuals: Float64Array;
   rss: number;
 }
 
-function normalEquations(x: ArrayLike<number>, y: ArrayLike<number>, p: Parameters): Normal {
-  const size = p.length;
-  const matrix = Array.from({ length: size }, () => new Array<number>(size).fill(0));
-  const right = new Array<number>(size).fill(0);
-  const gradient = new Array<number>(size).fill(1);
-  const taus = p.map((value) => Math.exp(value));
-  let rss = 0;
-  for (let i = 0; i < x.length; i++) {
-    let residual = y[i]! - p[0]!;
-    for (let k = 1; k < size; k += 2) {
-      const scaled = x[i]! / taus[k + 1]!;
-      const decay = Math.exp(-scaled);
-      gradient[k] = decay;
-      gradient[k + 1] = p[k]! * decay * scaled;
-      residual -= p[k]! * decay;
-    }
-    rss += residual * residual;
-    for (let r = 0; r < size; r++) {
-      right[r]! += gradient[r]! * residual;
-      for (let c = 0; c <= r; c++) matrix[r]![c]! += gradient[r]! * gradient[c]!;
-    }
+const stateFor = (n: number, terms: number): State => ({
+  decays: Array.from({ length: terms }, () => new Float64Array(n)),
+  taus: [],
+  residuals: new Float64Array(n),
+  rss: 0,
+});
+
+function evaluate(points: Points, p: Parameters, state: State): void {
+  const { residuals, decays } = state;
+  const { y } = points;
+  const n = y.length;
+  state.taus = decays.map((_, k) => Math.exp(p[2 * k + 2]!));
+  for (let k = 0; k < decays.length; k++) decaysOf(points, state.taus[k]!, decays[k]!);
+  const offset = p[0]!;
+  for (let i = 0; i < n; i++) residuals[i] = y[i]! - offset;
+  for (let k = 0; k < decays.length; k++) {
+    const amplitude = p[2 * k + 1]!;
+    const own = decays[k]!;
+    for (let i = 0; i < n; i++) residuals[i]! -= amplitude * own[i]!;
   }
-  for (let r = 0; r < size; r++) for (let c = r + 1; c < size; c++) matrix[r]![c] = matrix[c]![r]!;
-  return { matrix, right, rss };
+  state.rss = dot(residuals, residuals);
 }
 
-function refined(
-  x: ArrayLike<number>,
-  y: ArrayLike<number>,
-  start: Parameters,
-  { slow, fast }: TauRanges,
-): ExponentialSum {
+interface Normal {
+  /** Row by row. */
+  matrix: Float64Array;
+  right: Float64Array;
+}
+
+function normalEquations({ x }: Points, p: Parameters, { decays, taus, residuals }: State): Normal {
+  const size = p.length;
+  const n = x.length;
+  const matrix = new Float64Array(size * size);
+  const right = new Float64Array(size);
+  const put = (r: number, c: number, sum: number): void => {
+    matrix[r * size + c] = sum;
+    matrix[c * size + r] = sum;
+  };
+  matrix[0] = n;
+  right[0] = residuals.reduce((sum, value) => sum + value, 0);
+  for (let k = 0; k < decays.length; k++) {
+    const a = decays[k]!;
+    const [scale, at] = [p[2 * k + 1]! / taus[k]!, 2 * k + 1];
+    let [s1, sx, s11, s1x, sxx, r1, rx] = [0, 0, 0, 0, 0, 0, 0];
+    for (let i = 0; i < n; i++) {
+      const own = a[i]!;
+      const timed = own * x[i]!;
+      const residual = residuals[i]!;
+      s1 += own;
+      sx += timed;
+      s11 += own * own;
+      s1x += own * timed;
+      sxx += timed * timed;
+      r1 += own * residual;
+      rx += timed * residual;
+    }
+    put(0, at, s1);
+    put(0, at + 1, scale * sx);
+    put(at, at, s11);
+    put(at, at + 1, scale * s1x);
+    put(at + 1, at + 1, scale * scale * sxx);
+    right[at] = r1;
+    right[at + 1] = scale * rx;
+  }
+  if (decays.length === 2) {
+    const [a, b] = decays as [Float64Array, Float64Array];
+    const [scaleA, scaleB] = [p[1]! / taus[0]!, p[3]! / taus[1]!];
+    let [s11, s1x, sxx] = [0, 0, 0];
+    for (let i = 0; i < n; i++) {
+      const product = a[i]! * b[i]!;
+      const time = x[i]!;
+      s11 += product;
+      s1x += product * time;
+      sxx += product * time * time;
+    }
+    put(1, 3, s11);
+    put(1, 4, scaleB * s1x);
+    put(2, 3, scaleA * s1x);
+    put(2, 4, scaleA * scaleB * sxx);
+  }
+  return { matrix, right };
+}
+
+/** Where the steps ended. */
+interface Refined extends Normal {
+  p: Parameters;
+  rss: number;
+  residuals: Float64Array;
+  bounds: readonly (readonly [number, number])[];
+}
+
+function refined(points: Points, start: Parameters, { slow, fast }: TauRanges): Refined {
   const bounds = [slow, ...(fast ? [fast] : [])].map(([from, to]) => [Math.log(from), Math.log(to)] as const);
   const held = (p: Parameters): Parameters =>
     p.map((value, k) => {
@@ -153,47 +264,46 @@ function refined(
       const [from, to] = bounds[k / 2 - 1]!;
       return Math.min(to, Math.max(from, value));
     });
+  const n = points.x.length;
+  const size = start.length;
   let p = start;
-  let here = normalEquations(x, y, p);
+  let here = stateFor(n, bounds.length);
+  let there = stateFor(n, bounds.length);
+  evaluate(points, p, here);
+  let normal = normalEquations(points, p, here);
   let damping = 1e-3;
+  const rows = new Float64Array(size * (size + 1));
   for (let step = 0; step < 40; step++) {
-    const matrix = here.matrix.map((row, r) => row.map((value, c) => (r === c ? value * (1 + damping) : value)));
-    const move = solveSymmetric(matrix, here.right);
-    if (!move) break;
-    const next = held(p.map((value, k) => value + move[k]!));
-    const there = normalEquations(x, y, next);
+    for (let r = 0; r < size; r++) {
+      for (let c = 0; c < size; c++) rows[r * (size + 1) + c] = normal.matrix[r * size + c]!;
+      rows[r * (size + 1) + r]! *= 1 + damping;
+      rows[r * (size + 1) + size] = normal.right[r]!;
+    }
+    if (!eliminated(rows, size, size + 1)) break;
+    const next = held(p.map((value, k) => value + rows[k * (size + 1) + size]!));
+    evaluate(points, next, there);
     if (there.rss < here.rss) {
       const gain = here.rss - there.rss;
       p = next;
-      here = there;
+      [here, there] = [there, here];
+      normal = normalEquations(points, p, here);
       damping = Math.max(1e-12, damping / 8);
-      if (gain <= 1e-10 * here.rss || here.rss < 1e-24 * x.length) break;
+      if (gain <= 1e-10 * here.rss || here.rss < 1e-24 * n) break;
     } else {
       damping *= 6;
       if (damping > 1e8) break;
     }
   }
-  return described(x, y, p, here, bounds);
+  return { ...normal, p, rss: here.rss, residuals: here.residuals, bounds };
 }
 
-function described(
-  x: ArrayLike<number>,
-  y: ArrayLike<number>,
-  p: Parameters,
-  { matrix, rss }: Normal,
-  bounds: readonly (readonly [number, number])[],
-): ExponentialSum {
-  const n = x.length;
+function described(points: Points, { p, rss, matrix, residuals, bounds }: Refined): ExponentialSum {
+  const n = points.x.length;
   const terms: ExponentialTerm[] = [];
   for (let k = 1; k < p.length; k += 2) terms.push({ amplitude: p[k]!, tau: Math.exp(p[k + 1]!) });
-  const residuals = Float64Array.from({ length: n }, (_, i) => {
-    let residual = y[i]! - p[0]!;
-    for (const { amplitude, tau } of terms) residual -= amplitude * Math.exp(-x[i]! / tau);
-    return residual;
-  });
-  const inverse = inverted(matrix);
+  const inverse = inverted(matrix, p.length);
   const white = rss / (n - p.length);
-  const slow = slowVariance([...residuals], designOf(x, p));
+  const slow = slowVariance(residuals, designOf(points, p));
   // Never better than white: the slowest wiggles of short stretches are few.
   const variance = Math.max(white, slow?.variance ?? 0);
   const inside = terms.every((_, k) => {
@@ -214,14 +324,15 @@ function described(
 }
 
 /** The Jacobian's columns. */
-function designOf(x: ArrayLike<number>, p: Parameters): number[][] {
-  const columns = p.map(() => new Array<number>(x.length).fill(1));
-  for (let k = 1; k < p.length; k += 2)
-    for (let i = 0; i < x.length; i++) {
-      const scaled = x[i]! / Math.exp(p[k + 1]!);
-      columns[k]![i] = Math.exp(-scaled);
-      columns[k + 1]![i] = p[k]! * Math.exp(-scaled) * scaled;
-    }
+function designOf(points: Points, p: Parameters): Float64Array[] {
+  const { x } = points;
+  const columns = p.map(() => new Float64Array(x.length).fill(1));
+  for (let k = 1; k < p.length; k += 2) {
+    const tau = Math.exp(p[k + 1]!);
+    const decays = columns[k]!;
+    decaysOf(points, tau, decays);
+    for (let i = 0; i < x.length; i++) columns[k + 1]![i] = (p[k]! * decays[i]! * x[i]!) / tau;
+  }
   return columns;
 }
 
@@ -255,34 +366,46 @@ export const tauError = (fit: ExponentialSum, term: number): number =>
     ? Number.POSITIVE_INFINITY
     : fit.terms[term]!.tau * Math.sqrt(Math.max(0, fit.covariance[2 * term + 2]![2 * term + 2]!));
 
-/** Gauss–Jordan elimination with partial pivoting; null where singular. */
-function solveSymmetric(matrix: readonly number[][], right: readonly number[]): number[] | null {
-  const size = right.length;
-  const rows = matrix.map((row, r) => [...row, right[r]!]);
-  return eliminated(rows, size) ? rows.map((row) => row[size]!) : null;
+/** Inverse of a square matrix given row by row; null where singular. */
+function inverted(matrix: Float64Array, size: number): number[][] | null {
+  const rows = new Float64Array(2 * size * size);
+  for (let r = 0; r < size; r++) {
+    for (let c = 0; c < size; c++) rows[2 * r * size + c] = matrix[r * size + c]!;
+    rows[2 * r * size + size + r] = 1;
+  }
+  if (!eliminated(rows, size, 2 * size)) return null;
+  return Array.from({ length: size }, (_, r) => [...rows.subarray((2 * r + 1) * size, (2 * r + 2) * size)]);
 }
 
-function inverted(matrix: readonly number[][]): number[][] | null {
-  const size = matrix.length;
-  const rows = matrix.map((row, r) => [...row, ...row.map((_, c) => (c === r ? 1 : 0))]);
-  return eliminated(rows, size) ? rows.map((row) => row.slice(size)) : null;
-}
-
-function eliminated(rows: number[][], size: number): boolean {
-  const scale = rows.map((row, r) => Math.abs(row[r]!));
+/**
+ * Gauss–Jordan elimination with partial pivoting of `size` rows of `width` numbers, in place; false where singular.
+ * Flat, since the grid solves hundreds of small systems for every fit.
+ */
+function eliminated(rows: Float64Array, size: number, width: number): boolean {
+  let scales = 0;
+  const scale = new Float64Array(size);
+  for (let r = 0; r < size; r++) {
+    scale[r] = Math.abs(rows[r * width + r]!);
+    scales += scale[r]!;
+  }
+  if (!Number.isFinite(scales)) return false;
   for (let column = 0; column < size; column++) {
     let pivot = column;
     for (let r = column + 1; r < size; r++)
-      if (Math.abs(rows[r]![column]!) > Math.abs(rows[pivot]![column]!)) pivot = r;
-    if (!(Math.abs(rows[pivot]![column]!) > 1e-13 * (scale[column]! || 1))) return false;
-    [rows[column], rows[pivot]] = [rows[pivot]!, rows[column]!];
-    const own = rows[column]!;
-    const by = own[column]!;
-    for (let c = column; c < own.length; c++) own[c]! /= by;
+      if (Math.abs(rows[r * width + column]!) > Math.abs(rows[pivot * width + column]!)) pivot = r;
+    if (!(Math.abs(rows[pivot * width + column]!) > 1e-13 * (scale[column]! || 1))) return false;
+    if (pivot !== column)
+      for (let c = 0; c < width; c++) {
+        const held = rows[column * width + c]!;
+        rows[column * width + c] = rows[pivot * width + c]!;
+        rows[pivot * width + c] = held;
+      }
+    const by = rows[column * width + column]!;
+    for (let c = column; c < width; c++) rows[column * width + c]! /= by;
     for (let r = 0; r < size; r++) {
-      const factor = rows[r]![column]!;
+      const factor = rows[r * width + column]!;
       if (r === column || factor === 0) continue;
-      for (let c = column; c < own.length; c++) rows[r]![c]! -= factor * own[c]!;
+      for (let c = column; c < width; c++) rows[r * width + c]! -= factor * rows[column * width + c]!;
     }
   }
   return true;

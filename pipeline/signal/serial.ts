@@ -138,8 +138,8 @@ export const lineErrorAt = (line: SerialLine, x: number): number | null =>
  * @returns null where no freedom is left
  */
 export function slowVariance(
-  residuals: readonly number[],
-  design: readonly (readonly number[])[],
+  residuals: ArrayLike<number>,
+  design: readonly ArrayLike<number>[],
 ): { variance: number; freedom: number } | null {
   const blocks = Math.min(mostBlocks, residuals.length);
   const own = blockSums(residuals, blocks);
@@ -149,10 +149,12 @@ export function slowVariance(
   if (free < 1) return null;
   const most = Math.min(mostCosines, free);
   const squares: number[] = [];
+  const turn = quarterTurns(blocks);
   let j = 0;
   const reachTo = (count: number): void => {
     while (squares.length < count && ++j < blocks) {
-      const cosine = Float64Array.from({ length: blocks }, (_, i) => Math.cos((Math.PI * j * (i + 0.5)) / blocks));
+      const cosine = new Float64Array(blocks);
+      for (let i = 0; i < blocks; i++) cosine[i] = turn[(j * (2 * i + 1)) % (4 * blocks)]!;
       const unit = orthonormal(cosine, taken);
       if (unit) squares.push(dot(unit, own) ** 2);
     }
@@ -178,16 +180,28 @@ export function slowVariance(
   return { variance: rise * average(0, freedom), freedom };
 }
 
+/** cos(πk/(2·blocks)) for k = 0 … 4·blocks − 1; kept, since nearly all calls are for one number of blocks. */
+const turns = new Map<number, Float64Array>();
+function quarterTurns(blocks: number): Float64Array {
+  const held = turns.get(blocks);
+  if (held) return held;
+  const all = Float64Array.from({ length: 4 * blocks }, (_, k) => Math.cos((Math.PI * k) / (2 * blocks)));
+  turns.set(blocks, all);
+  return all;
+}
+
 /** Sums over nearly equal blocks, each over the root of its length: white noise keeps its variance. */
-function blockSums(values: readonly number[], blocks: number): Float64Array {
+function blockSums(values: ArrayLike<number>, blocks: number): Float64Array {
   const n = values.length;
-  return Float64Array.from({ length: blocks }, (_, b) => {
+  const sums = new Float64Array(blocks);
+  for (let b = 0; b < blocks; b++) {
     const from = Math.floor((b * n) / blocks);
     const to = Math.floor(((b + 1) * n) / blocks);
     let sum = 0;
     for (let i = from; i < to; i++) sum += values[i]!;
-    return sum / Math.sqrt(to - from);
-  });
+    sums[b] = sum / Math.sqrt(to - from);
+  }
+  return sums;
 }
 
 const dot = (a: Float64Array, b: Float64Array): number => {
