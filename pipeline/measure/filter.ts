@@ -2,6 +2,7 @@
  * The recorder's low-pass filter: its corner as the noise shows it, and what it is expected to have cost a spike. The
  * filter is taken for a four-pole Bessel low-pass, as most amplifiers have.
  */
+import { fourier } from '../signal/fourier.ts';
 import { besselGain, besselKernel, besselSpread_s, unsmoothed } from '../signal/restoration.ts';
 import { absent, measured } from './reading.ts';
 import type { Stretch } from './stretches.ts';
@@ -23,13 +24,13 @@ function quietSpectrum(samples: Float64Array, quiet: readonly Stretch[]): { powe
   const power = new Float64Array(n / 2 + 1);
   const window = Float64Array.from({ length: n }, (_, i) => 0.5 - 0.5 * Math.cos((2 * Math.PI * (i + 0.5)) / n));
   const energy = window.reduce((sum, w) => sum + w * w, 0);
-  const cosines = Float64Array.from({ length: n }, (_, i) => Math.cos((2 * Math.PI * i) / n));
   const starts = quiet.flatMap(({ from, to }) =>
     Array.from({ length: Math.max(0, Math.floor((2 * (to - from)) / n) - 1) }, (_, k) => from + (k * n) / 2),
   );
   // Whole runs of neighbours are kept, so that overlap stays what it is.
   const used = starts.slice(0, mostPieces);
-  const piece = new Float64Array(n);
+  const re = new Float64Array(n);
+  const im = new Float64Array(n);
   for (const start of used) {
     let [level, slope] = [0, 0];
     for (let i = 0; i < n; i++) {
@@ -38,16 +39,10 @@ function quietSpectrum(samples: Float64Array, quiet: readonly Stretch[]): { powe
     }
     level /= n;
     slope /= (n * (n * n - 1)) / 12;
-    for (let i = 0; i < n; i++) piece[i] = window[i]! * (samples[start + i]! - level - slope * (i - (n - 1) / 2));
-    for (let k = 0; k <= n / 2; k++) {
-      let [re, im] = [0, 0];
-      for (let i = 0; i < n; i++) {
-        const angle = (i * k) % n;
-        re += piece[i]! * cosines[angle]!;
-        im += piece[i]! * cosines[(angle + (3 * n) / 4) % n]!;
-      }
-      power[k]! += (re * re + im * im) / energy / used.length;
-    }
+    for (let i = 0; i < n; i++) re[i] = window[i]! * (samples[start + i]! - level - slope * (i - (n - 1) / 2));
+    im.fill(0);
+    fourier(re, im);
+    for (let k = 0; k <= n / 2; k++) power[k]! += (re[k]! ** 2 + im[k]! ** 2) / energy / used.length;
   }
   return { power, pieces: used.length };
 }
@@ -60,6 +55,30 @@ function foldedPower(hz: number, cornerHz: number, rateHz: number): number {
   return sum;
 }
 
+/** Lines that are looked at, corners that are tried and the power that each leaves in those lines. */
+interface Corners {
+  lines: number[];
+  shapes: { corner: number; shape: Float64Array }[];
+}
+
+/** Kept for the last rate: sweeps of one rate come together. */
+let lastCorners: { rate: number; corners: Corners } | null = null;
+
+function cornersAt(rate: number): Corners {
+  if (lastCorners?.rate === rate) return lastCorners.corners;
+  const lines = Array.from({ length: pieceLength / 2 - 2 }, (_, k) => k + 2).filter(
+    (k) => (k * rate) / pieceLength >= lowest_hz,
+  );
+  const shapes: Corners['shapes'] = [];
+  for (let corner = 0.04 * rate; corner <= 0.9 * rate; corner *= 1.04)
+    shapes.push({
+      corner,
+      shape: Float64Array.from(lines, (k) => foldedPower((k * rate) / pieceLength, corner, rate)),
+    });
+  lastCorners = { rate, corners: { lines, shapes } };
+  return lastCorners.corners;
+}
+
 interface Fit {
   /** Twice the negative logarithm of the likelihood but for a constant. */
   misfit: number;
@@ -70,30 +89,35 @@ interface Fit {
 }
 
 /** Best amounts of filtered white noise and of a floor that is not filtered, for one corner. */
-function fitAt(power: readonly number[], shape: readonly number[], pieces: number, leastFloor: number): Fit {
+function fitAt(power: Float64Array, shape: Float64Array, pieces: number, leastFloor: number): Fit {
+  const n = power.length;
   let white = power.reduce((sum, p) => sum + p, 0) / shape.reduce((sum, g) => sum + g, 0);
   let floor = leastFloor;
   for (let round = 0; round < 12; round++) {
     let [gg, g1, one, gp, p1] = [0, 0, 0, 0, 0];
-    power.forEach((p, k) => {
-      const weight = 1 / (white * shape[k]! + floor) ** 2;
-      gg += weight * shape[k]! ** 2;
-      g1 += weight * shape[k]!;
+    for (let k = 0; k < n; k++) {
+      const p = power[k]!;
+      const g = shape[k]!;
+      const expected = white * g + floor;
+      const weight = 1 / (expected * expected);
+      gg += weight * g * g;
+      g1 += weight * g;
       one += weight;
-      gp += weight * shape[k]! * p;
+      gp += weight * g * p;
       p1 += weight * p;
-    });
+    }
     const det = gg * one - g1 * g1;
     floor = det > 1e-9 * gg * one ? (gg * p1 - g1 * gp) / det : leastFloor;
     if (!(floor > leastFloor)) floor = leastFloor;
     white = Math.max(1e-12, (gp - g1 * floor) / gg);
   }
   let [misfit, scatter] = [0, 0];
-  power.forEach((p, k) => {
+  for (let k = 0; k < n; k++) {
     const expected = white * shape[k]! + floor;
-    misfit += 2 * pieces * (p / expected + Math.log(expected));
-    scatter += (pieces * (p / expected - 1) ** 2) / power.length;
-  });
+    const relative = power[k]! / expected;
+    misfit += 2 * pieces * (relative + Math.log(expected));
+    scatter += (pieces * (relative - 1) ** 2) / n;
+  }
   return { misfit, white, floor, scatter };
 }
 
@@ -113,29 +137,14 @@ export function filterCorner(voltage: Signal, quiet: readonly Stretch[], quantum
   const rate = voltage.rate_hz;
   const { power, pieces } = quietSpectrum(voltage.samples, quiet);
   if (pieces < fewestPieces) return absent('no-spike-free-stretch');
-  const lines = Array.from(power.keys()).filter(
-    (k) => k >= 2 && k < power.length - 1 && (k * rate) / pieceLength >= lowest_hz,
-  );
+  const { lines, shapes } = cornersAt(rate);
   if (lines.length < 12) return absent('rate-too-low');
-  const own = lines.map((k) => power[k]!);
+  const own = Float64Array.from(lines, (k) => power[k]!);
   if (!(Math.min(...own) > 0)) return absent('unresolved');
   const least = Math.max((quantum_mv ?? 0) ** 2 / 12, 1e-6 * Math.min(...own));
   const count = pieces / 1.06;
-  const at = (corner: number): Fit =>
-    fitAt(
-      own,
-      lines.map((k) => foldedPower((k * rate) / pieceLength, corner, rate)),
-      count,
-      least,
-    );
-  const grid: { corner: number; fit: Fit }[] = [];
-  for (let corner = 0.04 * rate; corner <= 0.9 * rate; corner *= 1.04) grid.push({ corner, fit: at(corner) });
-  const flat = fitAt(
-    own,
-    own.map(() => 1),
-    count,
-    least,
-  );
+  const grid = shapes.map(({ corner, shape }) => ({ corner, fit: fitAt(own, shape, count, least) }));
+  const flat = fitAt(own, new Float64Array(own.length).fill(1), count, least);
   const best = grid.reduce((least_, one) => (one.fit.misfit < least_.fit.misfit ? one : least_));
   if (best.fit.scatter / shared > 2.5)
     return absent('unresolved', { note: 'the noise is not white before the filter' });

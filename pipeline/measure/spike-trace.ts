@@ -111,11 +111,8 @@ const mostLooks = 20_000;
 
 function quietSpread(count: number, differenceAt: (i: number) => number): number {
   const stride = Math.max(1, Math.floor(count / mostLooks));
-  const differences: number[] = [];
-  for (let i = 0; i < count; i += stride) {
-    const difference = Math.abs(differenceAt(i));
-    if (Number.isFinite(difference)) differences.push(difference);
-  }
+  const differences = new Float64Array(Math.ceil(count / stride));
+  for (let i = 0, k = 0; i < count; i += stride) differences[k++] = Math.abs(differenceAt(i));
   return (quantile(differences, 0.25) ?? 0) / lowerQuartile;
 }
 

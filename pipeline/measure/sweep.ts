@@ -114,6 +114,7 @@ function currentClampSweep(
   const baseline = measureBaseline(passive);
   const level = baseline['baseline_mv']!;
   const riding = slowNoise(lines, baseline, found.noise_mv);
+  const fast_mv = fastNoise(voltage.samples, voltage.rate_hz);
   const spikes = found.passive.spikes.map((spike, index) =>
     withHalfWidths(withHeightFromRest(spike, level.value), found.errors[index]!, riding, level.u95 ?? null),
   );
@@ -125,14 +126,14 @@ function currentClampSweep(
     ...baseline,
     ...measureFiring(spikes, stimulus, voltage, context.filter_khz),
     ...trains,
-    pulse_response_mohm: pulseResponse(voltage, stimulus, current, spikes, fastNoise(voltage.samples, voltage.rate_hz)),
+    pulse_response_mohm: pulseResponse(voltage, stimulus, current, spikes, fast_mv),
     spikelets: context.slow
       ? absent('not-this-class')
       : countSpikelets(
           voltage,
           spikes,
           stimulus,
-          fastNoise(voltage.samples, voltage.rate_hz),
+          fast_mv,
           context.prominence_mv,
           trains['block_onset_ms']?.at?.from_s ?? null,
         ),

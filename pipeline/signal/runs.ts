@@ -15,7 +15,12 @@ export function quantum(samples: Float64Array): number | null {
   const largest = Math.max(Math.abs(sorted[0]!), Math.abs(sorted.at(-1)!));
   const rounding = Math.max(largest * 4e-7, extent * 1e-7);
   const distinct: number[] = [sorted[0]!];
-  for (const value of sorted) if (value - distinct.at(-1)! > rounding) distinct.push(value);
+  let latest = sorted[0]!;
+  for (let i = 1; i < sorted.length; i++)
+    if (sorted[i]! - latest > rounding) {
+      latest = sorted[i]!;
+      distinct.push(latest);
+    }
   if (distinct.length < 3) return null;
   const gaps = distinct.slice(1).map((value, i) => value - distinct[i]!);
   const smallest = gaps.reduce((least, gap) => Math.min(least, gap), Number.POSITIVE_INFINITY);

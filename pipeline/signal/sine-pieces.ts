@@ -59,7 +59,9 @@ export function sineInPieces(pieces: readonly Piece[], rateHz: number, frequency
       SY += s * y;
       CY += c * y;
       YY += y * y;
-      [s, c] = [s * turnCos + c * turnSin, c * turnCos - s * turnSin];
+      const next = s * turnCos + c * turnSin;
+      c = c * turnCos - s * turnSin;
+      s = next;
     }
     const free = (product: number, a: number, b: number, ua: number, ub: number): number =>
       product - (a * b) / count - (ua * ub) / uu;
