@@ -2,7 +2,16 @@
  * Places and sizes of one spike between the samples: threshold, peak, flanks and steepest slopes from the band-limited
  * interpolation of the trace, low-passed as far as each number bears it, with the noise carried through the weights.
  */
-import { type BandLimited, bandLimited, localCubic, varianceOf, weighed } from '../signal/band-limited.ts';
+import {
+  type BandLimited,
+  bandLimited,
+  bandLimitedOf,
+  localCubic,
+  localCubicOf,
+  varianceOf,
+  type Weights,
+  weighed,
+} from '../signal/band-limited.ts';
 
 /** A number at a place; standard deviations are those of the noise. Places in samples, slopes per sample. */
 export interface Fine {
@@ -43,18 +52,12 @@ export interface Trace {
 type One = Omit<Fine, 'shift' | 'shiftAt' | 'smoother'>;
 
 /** Difference of what two smoothers read at one place, in standard deviations of the noise in it. */
-function apart(trace: Trace, x: number, wide: Smoother, narrow: Smoother, what: 'value' | 'slope'): number {
-  const [a, b] = [read(trace, x, wide)?.[what], read(trace, x, narrow)?.[what]];
-  if (!a || !b) return 0;
+function apart(trace: Trace, a: Weights, b: Weights): number {
   const first = Math.min(a.first, b.first);
   const last = Math.max(a.first + a.weights.length, b.first + b.weights.length);
   const weights = new Float64Array(last - first);
-  a.weights.forEach((weight, j) => {
-    weights[a.first - first + j]! += weight;
-  });
-  b.weights.forEach((weight, j) => {
-    weights[b.first - first + j]! -= weight;
-  });
+  for (let j = 0; j < a.weights.length; j++) weights[a.first - first + j]! += a.weights[j]!;
+  for (let j = 0; j < b.weights.length; j++) weights[b.first - first + j]! -= b.weights[j]!;
   const difference = Math.abs(weighed(trace.samples, { first, weights }));
   return difference / Math.max(1e-12, Math.sqrt(varianceOf(weights, trace.covariance)));
 }
@@ -79,14 +82,18 @@ function steadiest(
     const one = at(smoother);
     if (one === null) continue;
     const narrower = allowed.slice(0, k);
-    const agrees = narrower.every((narrow) =>
-      what.every((which) => apart(trace, one.at, smoother, narrow, which) <= bearable),
-    );
+    const own = read(trace, one.at, smoother);
+    const agrees = narrower.every((narrow) => {
+      const other = read(trace, one.at, narrow);
+      return !own || !other || what.every((which) => apart(trace, own[which], other[which]) <= bearable);
+    });
     if (!agrees) {
       refused = one;
       continue;
     }
-    const other = narrower.map(at).findLast((found) => found !== null) ?? refused ?? at(slack);
+    let other: One | null = null;
+    for (let j = k - 1; j >= 0 && !other; j--) other = at(allowed[j]!);
+    other ??= refused ?? at(slack);
     return {
       ...one,
       smoother,
@@ -97,14 +104,12 @@ function steadiest(
   return null;
 }
 
-const potentialAt = (trace: Trace, x: number, by: Smoother): number => {
-  const held = read(trace, x, by);
-  return held ? weighed(trace.samples, held.value) : Number.NaN;
-};
-const slopeHere = (trace: Trace, x: number, by: Smoother): number => {
-  const held = read(trace, x, by);
-  return held ? weighed(trace.samples, held.slope) : Number.NaN;
-};
+const readOff = ({ samples, first, last }: Trace, x: number, by: Smoother, what: 'value' | 'slope'): number =>
+  'half' in by
+    ? localCubicOf(samples, x, by.half, first, last, what)
+    : bandLimitedOf(samples, x, by.cutoff, first, last, what);
+const potentialAt = (trace: Trace, x: number, by: Smoother): number => readOff(trace, x, by, 'value');
+const slopeHere = (trace: Trace, x: number, by: Smoother): number => readOff(trace, x, by, 'slope');
 
 /**
  * Place nearest to `near` where a function rises (falls) through zero, within `reach`: brackets outwards, then narrows

@@ -34,13 +34,6 @@ const slopes = Float64Array.from({ length: lobes * fine + 2 }, (_, i) =>
   i === 0 || i >= lobes * fine ? 0 : ((table[i + 1]! - table[i - 1]!) * fine) / 2,
 );
 
-function lookUp(values: Float64Array, u: number): number {
-  const place = Math.abs(u) * fine;
-  const below = Math.floor(place);
-  if (below >= values.length - 1) return 0;
-  return values[below]! + (place - below) * (values[below + 1]! - values[below]!);
-}
-
 /** Weights of consecutive samples from `first` on. */
 export interface Weights {
   first: number;
@@ -74,10 +67,16 @@ export function bandLimited(position: number, cutoff: number, first: number, las
   let slopeSum = 0;
   for (let j = 0; j < n; j++) {
     const u = cutoff * (position - from - j);
-    value[j] = cutoff * lookUp(table, u);
-    slope[j] = cutoff * cutoff * lookUp(slopes, u) * Math.sign(u);
-    sum += value[j]!;
-    slopeSum += slope[j]!;
+    const place = Math.abs(u) * fine;
+    const below = Math.floor(place);
+    if (below >= table.length - 1) continue;
+    const share = place - below;
+    const weight = cutoff * (table[below]! + share * (table[below + 1]! - table[below]!));
+    const steep = cutoff * cutoff * (slopes[below]! + share * (slopes[below + 1]! - slopes[below]!)) * Math.sign(u);
+    value[j] = weight;
+    slope[j] = steep;
+    sum += weight;
+    slopeSum += steep;
   }
   let moment = 0;
   let slopeMoment = 0;
@@ -90,6 +89,47 @@ export function bandLimited(position: number, cutoff: number, first: number, las
   for (let j = 0; j < n; j++) slope[j]! /= slopeMoment;
   for (let j = 0; j < n; j++) value[j]! -= moment * slope[j]!;
   return { value: { first: from, weights: value }, slope: { first: from, weights: slope } };
+}
+
+/**
+ * What the weights of `bandLimited` give for a trace, without making them.
+ * @param what the value, or the slope per sample interval
+ * @returns NaN where `bandLimited` returns null
+ */
+export function bandLimitedOf(
+  samples: Float64Array,
+  position: number,
+  cutoff: number,
+  first: number,
+  last: number,
+  what: 'value' | 'slope',
+): number {
+  if (!(position >= first && position <= last)) return Number.NaN;
+  const reach = reachOf(cutoff);
+  const from = Math.max(first, Math.ceil(position - reach));
+  const to = Math.min(last, Math.floor(position + reach));
+  if (to - from + 1 < 3) return Number.NaN;
+  const level = samples[Math.round(position)]!;
+  let [sum, slopeSum, moment, slopeMoment, ofValue, ofSlope] = [0, 0, 0, 0, 0, 0];
+  for (let i = from; i <= to; i++) {
+    const u = cutoff * (position - i);
+    const place = Math.abs(u) * fine;
+    const below = Math.floor(place);
+    if (below >= table.length - 1) continue;
+    const share = place - below;
+    const weight = table[below]! + share * (table[below + 1]! - table[below]!);
+    const steep = (slopes[below]! + share * (slopes[below + 1]! - slopes[below]!)) * Math.sign(u);
+    const y = samples[i]! - level;
+    sum += weight;
+    slopeSum += steep;
+    moment += weight * (i - position);
+    slopeMoment += steep * (i - position);
+    ofValue += weight * y;
+    ofSlope += steep * y;
+  }
+  const value = ofValue / sum;
+  const slope = (ofSlope - slopeSum * value) / (slopeMoment - (slopeSum * moment) / sum);
+  return what === 'slope' ? slope : level + value - (moment / sum) * slope;
 }
 
 /**
@@ -121,33 +161,99 @@ export function localCubic(position: number, half: number, first: number, last: 
     m5 += wd * d4;
     m6 += w * d2 * d4;
   }
-  const solved = solveTwo(Float64Array.of(m0, m1, m2, m3, m4, m5, m6));
-  if (!solved) return null;
-  const [v0, v1, v2, v3, s0, s1, s2, s3] = solved as unknown as readonly number[];
+  if (!solveTwo(m0, m1, m2, m3, m4, m5, m6)) return null;
+  const [v0, v1, v2, v3] = [solved[0]!, solved[1]!, solved[2]!, solved[3]!];
+  const [s0, s1, s2, s3] = [solved[4]!, solved[5]!, solved[6]!, solved[7]!];
   const value = new Float64Array(n);
   const slope = new Float64Array(n);
   for (let j = 0; j < n; j++) {
     const d = (from + j - position) / half;
     const weight = (1 - d * d) * (1 - d * d);
-    value[j] = weight * (v0! + d * (v1! + d * (v2! + d * v3!)));
-    slope[j] = (weight * (s0! + d * (s1! + d * (s2! + d * s3!)))) / half;
+    value[j] = weight * (v0 + d * (v1 + d * (v2 + d * v3)));
+    slope[j] = (weight * (s0 + d * (s1 + d * (s2 + d * s3)))) / half;
   }
   return { value: { first: from, weights: value }, slope: { first: from, weights: slope } };
 }
 
 /**
- * First two columns of the inverse of the 4 × 4 matrix of moments, value's four and slope's four one after the other, by
- * Gauss–Jordan elimination without pivots, which a positive definite matrix does not need; null where it is not.
+ * What the weights of `localCubic` give for a trace, without making them: a search asks for hundreds of places.
+ * @param what the value, or the slope per sample interval
+ * @returns NaN where `localCubic` returns null
  */
-function solveTwo(moments: Float64Array): Float64Array | null {
-  const rows = new Float64Array(24);
+export function localCubicOf(
+  samples: Float64Array,
+  position: number,
+  half: number,
+  first: number,
+  last: number,
+  what: 'value' | 'slope',
+): number {
+  if (!(position >= first && position <= last)) return Number.NaN;
+  const from = Math.max(first, Math.ceil(position - half));
+  const to = Math.min(last, Math.floor(position + half));
+  if (to - from + 1 < 5) return Number.NaN;
+  // A level near the trace's own keeps rounding small.
+  const level = samples[Math.round(position)]!;
+  let [m0, m1, m2, m3, m4, m5, m6] = [0, 0, 0, 0, 0, 0, 0];
+  let [y0, y1, y2, y3] = [0, 0, 0, 0];
+  for (let i = from; i <= to; i++) {
+    const d = (i - position) / half;
+    const d2 = d * d;
+    const w = (1 - d2) * (1 - d2);
+    const wd = w * d;
+    const d4 = d2 * d2;
+    m0 += w;
+    m1 += wd;
+    m2 += w * d2;
+    m3 += wd * d2;
+    m4 += w * d4;
+    m5 += wd * d4;
+    m6 += w * d2 * d4;
+    const y = samples[i]! - level;
+    y0 += w * y;
+    y1 += wd * y;
+    y2 += w * d2 * y;
+    y3 += wd * d2 * y;
+  }
+  if (!solveTwo(m0, m1, m2, m3, m4, m5, m6)) return Number.NaN;
+  return what === 'value'
+    ? level + solved[0]! * y0 + solved[1]! * y1 + solved[2]! * y2 + solved[3]! * y3
+    : (solved[4]! * y0 + solved[5]! * y1 + solved[6]! * y2 + solved[7]! * y3) / half;
+}
+
+/** Where `solveTwo` works and leaves its answer: it is asked far too often for arrays of its own. */
+const rows = new Float64Array(24);
+const solved = new Float64Array(8);
+
+/**
+ * First two columns of the inverse of the 4 × 4 matrix of moments, value's four and slope's four one after the other in
+ * `solved`, by Gauss–Jordan elimination without pivots, which a positive definite matrix does not need; false where it
+ * is not.
+ */
+function solveTwo(m0: number, m1: number, m2: number, m3: number, m4: number, m5: number, m6: number): boolean {
+  rows[0] = m0;
+  rows[1] = m1;
+  rows[2] = m2;
+  rows[3] = m3;
+  rows[6] = m1;
+  rows[7] = m2;
+  rows[8] = m3;
+  rows[9] = m4;
+  rows[12] = m2;
+  rows[13] = m3;
+  rows[14] = m4;
+  rows[15] = m5;
+  rows[18] = m3;
+  rows[19] = m4;
+  rows[20] = m5;
+  rows[21] = m6;
   for (let r = 0; r < 4; r++) {
-    for (let c = 0; c < 4; c++) rows[6 * r + c] = moments[r + c]!;
-    if (r < 2) rows[6 * r + 4 + r] = 1;
+    rows[6 * r + 4] = r === 0 ? 1 : 0;
+    rows[6 * r + 5] = r === 1 ? 1 : 0;
   }
   for (let c = 0; c < 4; c++) {
     const pivot = rows[7 * c]!;
-    if (!(pivot > 1e-12)) return null;
+    if (!(pivot > 1e-12)) return false;
     for (let k = c; k < 6; k++) rows[6 * c + k]! /= pivot;
     for (let r = 0; r < 4; r++) {
       if (r === c) continue;
@@ -155,12 +261,11 @@ function solveTwo(moments: Float64Array): Float64Array | null {
       for (let k = c; k < 6; k++) rows[6 * r + k]! -= share * rows[6 * c + k]!;
     }
   }
-  const out = new Float64Array(8);
   for (let r = 0; r < 4; r++) {
-    out[r] = rows[6 * r + 4]!;
-    out[4 + r] = rows[6 * r + 5]!;
+    solved[r] = rows[6 * r + 4]!;
+    solved[4 + r] = rows[6 * r + 5]!;
   }
-  return out;
+  return true;
 }
 
 /** Weighted sum of samples. */

@@ -51,7 +51,12 @@ export function exponentialSum(x: ArrayLike<number>, y: ArrayLike<number>, range
   if (x.length < 2 * wanted + 4) return null;
   const points = pointsOf(x, y);
   const fits = startsOnGrid(points, ranges).map((start) => refined(points, start, ranges));
-  return fits.length === 0 ? null : described(points, fits.reduce((best, one) => (one.rss < best.rss ? one : best)));
+  return fits.length === 0
+    ? null
+    : described(
+        points,
+        fits.reduce((best, one) => (one.rss < best.rss ? one : best)),
+      );
 }
 
 /** Parameters in the order of the covariance. */

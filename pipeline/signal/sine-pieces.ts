@@ -33,44 +33,39 @@ export function sineInPieces(pieces: readonly Piece[], rateHz: number, frequency
     throw new RangeError(`frequencyHz must lie between 0 and ${rateHz / 2} Hz, half the rate, got ${frequencyHz}`);
   const omega = (2 * Math.PI * frequencyHz) / rateHz;
   const [turnSin, turnCos] = [Math.sin(omega), Math.cos(omega)];
+  const [halfSin, halfCos] = [Math.sin(omega / 2), Math.cos(omega / 2)];
   let [ss, cc, sc, sy, cy, yy, n] = [0, 0, 0, 0, 0, 0, 0];
-  for (const { from, samples } of pieces) {
-    const count = samples.length;
+  for (const piece of pieces) {
+    const count = piece.samples.length;
     if (count < 3) continue;
-    const middle = (count - 1) / 2;
-    let s = Math.sin(omega * from);
-    let c = Math.cos(omega * from);
-    let [S, C, Y, uS, uC, uY, uu] = [0, 0, 0, 0, 0, 0, 0];
-    let [SS, CC, SC, SY, CY, YY] = [0, 0, 0, 0, 0, 0];
-    const first = samples[0]!;
-    for (let i = 0; i < count; i++) {
-      const y = samples[i]! - first;
-      const u = i - middle;
-      S += s;
-      C += c;
-      Y += y;
-      uS += u * s;
-      uC += u * c;
-      uY += u * y;
-      uu += u * u;
-      SS += s * s;
-      CC += c * c;
-      SC += s * c;
-      SY += s * y;
-      CY += c * y;
-      YY += y * y;
+    const { even, odd, squares } = freedOf(piece);
+    // Sums over u = −middle … middle: cos ωu, u·sin ωu and cos 2ωu (a geometric series and its derivative).
+    const [endSin, endCos] = [Math.sin((count * omega) / 2), Math.cos((count * omega) / 2)];
+    const ofCos = endSin / halfSin;
+    const ofSin = (0.5 * (endSin * halfCos - count * endCos * halfSin)) / (halfSin * halfSin);
+    const ofDouble = (endSin * endCos) / (halfSin * halfCos);
+    const uu = (count * (count * count - 1)) / 12;
+    // The sine and cosine about the piece's middle; u begins at ½ where it has no middle sample.
+    const whole = count % 2 === 1;
+    let [s, c] = whole ? [0, 1] : [halfSin, halfCos];
+    let [withCos, withSin] = [0, 0];
+    for (let k = 0; k < even.length; k++) {
+      withCos += c * even[k]!;
+      withSin += s * odd[k]!;
       const next = s * turnCos + c * turnSin;
       c = c * turnCos - s * turnSin;
       s = next;
     }
-    const free = (product: number, a: number, b: number, ua: number, ub: number): number =>
-      product - (a * b) / count - (ua * ub) / uu;
-    ss += free(SS, S, S, uS, uS);
-    cc += free(CC, C, C, uC, uC);
-    sc += free(SC, S, C, uS, uC);
-    sy += free(SY, S, Y, uS, uY);
-    cy += free(CY, C, Y, uC, uY);
-    yy += free(YY, Y, Y, uY, uY);
+    const phase = omega * (piece.from + (count - 1) / 2);
+    const [p, q] = [Math.sin(phase), Math.cos(phase)];
+    const [even2, odd2] = [(ofCos * ofCos) / count, (ofSin * ofSin) / uu];
+    // Products of sine and cosine, less what the piece's own line takes of them.
+    ss += count / 2 - 0.5 * (q * q - p * p) * ofDouble - p * p * even2 - q * q * odd2;
+    cc += count / 2 + 0.5 * (q * q - p * p) * ofDouble - q * q * even2 - p * p * odd2;
+    sc += p * q * (ofDouble - even2 + odd2);
+    sy += p * withCos + q * withSin;
+    cy += q * withCos - p * withSin;
+    yy += squares;
     n += count;
   }
   const determinant = ss * cc - sc * sc;
@@ -84,6 +79,45 @@ export function sineInPieces(pieces: readonly Piece[], rateHz: number, frequency
     rss: Math.max(0, yy - sine * sy - cosine * cy),
     n,
   };
+}
+
+/** A piece freed of its own line, folded about its middle: sums and differences of the samples u before and after it. */
+interface Freed {
+  even: Float64Array;
+  odd: Float64Array;
+  /** Sum of squares. */
+  squares: number;
+}
+
+/** Kept as long as the piece is: a search looks at hundreds of frequencies in the same pieces, which nobody changes. */
+const freed = new WeakMap<Piece, Freed>();
+
+function freedOf(piece: Piece): Freed {
+  const held = freed.get(piece);
+  if (held) return held;
+  const { samples } = piece;
+  const count = samples.length;
+  const middle = (count - 1) / 2;
+  const first = samples[0]!;
+  let [level, slope] = [0, 0];
+  for (let i = 0; i < count; i++) {
+    level += samples[i]! - first;
+    slope += (i - middle) * (samples[i]! - first);
+  }
+  level /= count;
+  slope /= (count * (count * count - 1)) / 12;
+  const own = samples.map((value, i) => value - first - level - slope * (i - middle));
+  const half = Math.ceil(count / 2);
+  const even = new Float64Array(half);
+  const odd = new Float64Array(half);
+  for (let k = 0; k < half; k++) {
+    const [before, after] = [own[half - 1 - k]!, own[count - half + k]!];
+    even[k] = count % 2 === 1 && k === 0 ? before : after + before;
+    odd[k] = after - before;
+  }
+  const found = { even, odd, squares: own.reduce((sum, value) => sum + value * value, 0) };
+  freed.set(piece, found);
+  return found;
 }
 
 /**
