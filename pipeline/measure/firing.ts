@@ -1,4 +1,4 @@
-import { mean, standardDeviation } from '../signal/statistics.ts';
+import { mean, meanWithin, standardDeviation } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import { filterDelayMs, indexAt, timeAt } from './stretches.ts';
 import type { MeasureContext, Reading, Readings, Signal, Spike, Stimulus, SweepMeasure } from './types.ts';
@@ -197,7 +197,7 @@ function lowestMean(voltage: Signal, from_s: number, to_s: number, block: number
   let lowest: number | null = null;
   const to = indexAt(voltage, to_s);
   for (let i = indexAt(voltage, from_s); i + block <= to; i += block) {
-    const value = mean(voltage.samples.subarray(i, i + block));
+    const value = meanWithin(voltage.samples, i, i + block);
     if (value !== null && (lowest === null || value < lowest)) lowest = value;
   }
   return lowest;

@@ -1,5 +1,5 @@
 import { type Piece, type PiecesFit, sineInPieces, sineInPiecesNear, withoutSine } from '../signal/sine-pieces.ts';
-import { mean } from '../signal/statistics.ts';
+import { meanWithin } from '../signal/statistics.ts';
 import { readable, type Stretch } from './stretches.ts';
 import type { Signal } from './types.ts';
 
@@ -36,15 +36,27 @@ export function withoutHum(voltage: Signal, quiet: readonly Stretch[], hum_hz: n
     const found = standingOut(pieces, rate, multiple * fundamental.frequency_hz);
     if (found) sines.push(found);
   }
-  const all = sines.map((sine) => ofSamples(sine, rate_hz, block));
-  return {
-    ...voltage,
-    samples: samples.map((value, i) => {
-      let hum = 0;
-      for (const { omega, amplitude, phase } of all) hum += amplitude * Math.sin(omega * i + phase);
-      return value - hum;
-    }),
-  };
+  const out = samples.slice();
+  for (const sine of sines) takeOff(out, ofSamples(sine, rate_hz, block));
+  return { ...voltage, samples: out };
+}
+
+/** A sine is turned on from sample to sample for so many, then begun anew, so that rounding does not build up. */
+const turned = 64;
+
+function takeOff(samples: Float64Array, { omega, amplitude, phase }: ReturnType<typeof ofSamples>): void {
+  const [turnSin, turnCos] = [Math.sin(omega), Math.cos(omega)];
+  for (let from = 0; from < samples.length; from += turned) {
+    let s = amplitude * Math.sin(omega * from + phase);
+    let c = amplitude * Math.cos(omega * from + phase);
+    const to = Math.min(samples.length, from + turned);
+    for (let i = from; i < to; i++) {
+      samples[i]! -= s;
+      const next = s * turnCos + c * turnSin;
+      c = c * turnCos - s * turnSin;
+      s = next;
+    }
+  }
 }
 
 /** Means over `block` samples on one grid, in pieces of `length` means; what is left at the end of a stretch goes. */
@@ -69,7 +81,7 @@ function piecesOf({ samples, rate_hz }: Signal, quiet: readonly Stretch[], block
           from,
           samples: Float64Array.from(
             { length },
-            (_, j) => mean(samples.subarray((from + j) * block, (from + j + 1) * block))!,
+            (_, j) => meanWithin(samples, (from + j) * block, (from + j + 1) * block)!,
           ),
         };
       });

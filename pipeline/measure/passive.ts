@@ -1,6 +1,6 @@
 import { coverage95 } from '../signal/coverage.ts';
 import { lineErrorAt, type SerialLine, serialLine, serialMean } from '../signal/serial.ts';
-import { countFinite, mean, median, standardDeviation } from '../signal/statistics.ts';
+import { countFinite, mean, meanWithin, median, standardDeviation } from '../signal/statistics.ts';
 import { backToEdge, type EdgeValue } from './edge.ts';
 import { stuckStretches } from './quality.ts';
 import { absent, combinedError, measured } from './reading.ts';
@@ -160,7 +160,7 @@ function blockMeans(voltage: Signal, stretches: readonly Stretch[], seconds: num
   const out = { s: [] as number[], mv: [] as number[] };
   for (const { from, to } of stretches)
     for (let i = from; i + block <= to; i += block) {
-      const value = mean(voltage.samples.subarray(i, i + block));
+      const value = meanWithin(voltage.samples, i, i + block);
       if (value === null) continue;
       out.s.push(timeAt(voltage, i + (block - 1) / 2));
       out.mv.push(value);
@@ -322,15 +322,18 @@ function steadyDeflection(input: PassiveInput, baseline: Reading, step: Step, dr
 /** Whether the window holds samples that stand at the recorder's limits. */
 function touchesLimit(input: PassiveInput, window: Stretch): boolean {
   const voltage = input.recorded ?? input.voltage;
-  const part = voltage.samples.subarray(window.from, window.to);
   let low = Number.POSITIVE_INFINITY;
   let high = Number.NEGATIVE_INFINITY;
-  for (const value of voltage.samples) {
+  for (let i = 0; i < voltage.samples.length; i++) {
+    const value = voltage.samples[i]!;
     if (value < low) low = value;
     if (value > high) high = value;
   }
   // Looked at closely only where the window holds an extreme of the whole sweep.
-  if (!part.some((value) => value === low || value === high)) return false;
+  let touches = false;
+  for (let i = window.from; i < window.to && !touches; i++)
+    touches = voltage.samples[i] === low || voltage.samples[i] === high;
+  if (!touches) return false;
   return stuckStretches(voltage.samples).some((run) => run.from < window.to && run.to > window.from);
 }
 
@@ -382,7 +385,7 @@ function extremeOf(voltage: Signal, stretches: readonly Stretch[], width_s: numb
   for (const { from, to } of stretches) {
     const turns = Math.floor((to - from) / turn);
     const means = Array.from({ length: turns }, (_, k) =>
-      mean(voltage.samples.subarray(from + k * turn, from + (k + 1) * turn)),
+      meanWithin(voltage.samples, from + k * turn, from + (k + 1) * turn),
     );
     for (let k = 0; k + 2 * pairs <= turns; k++) {
       const own = means.slice(k, k + 2 * pairs);
@@ -595,7 +598,7 @@ export function stepResponse(input: PassiveInput): SweepMeasure['step_response']
   const { slope } = driftUnder(input, step);
   const mv: number[] = [];
   for (let k = 0; k < bins; k++) {
-    const value = mean(voltage.samples.subarray(first + k * block, first + (k + 1) * block));
+    const value = meanWithin(voltage.samples, first + k * block, first + (k + 1) * block);
     if (value === null) return null;
     const drifted = slope * ((k + 0.5) * (block / rate) - lead * (block / rate));
     mv.push(Math.round((value - drifted) * 1e4) / 1e4);

@@ -1,7 +1,7 @@
 import { bandPass } from '../signal/butterworth.ts';
 import { clippedRuns, quantum } from '../signal/runs.ts';
 import { type Piece, type PiecesFit, sineInPieces, sineInPiecesNear, withoutSine } from '../signal/sine-pieces.ts';
-import { countFinite, mean, median } from '../signal/statistics.ts';
+import { countFinite, meanWithin, median } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import { type Stretch, timeAt } from './stretches.ts';
 import type { Reading, Readings, Signal } from './types.ts';
@@ -271,7 +271,7 @@ function strayLine(trace: HumTrace): Line | null {
 function blockMeans(samples: Float64Array, block: number): Float64Array {
   return Float64Array.from(
     { length: Math.floor(samples.length / block) },
-    (_, b) => mean(samples.subarray(b * block, (b + 1) * block)) ?? Number.NaN,
+    (_, b) => meanWithin(samples, b * block, (b + 1) * block) ?? Number.NaN,
   );
 }
 

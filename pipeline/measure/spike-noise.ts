@@ -79,9 +79,9 @@ export function quietPieces(trace: SpikeTrace, samples: Float64Array, quiet: rea
  */
 export function fastNoiseOf(trace: SpikeTrace, samples: Float64Array, quiet: readonly Stretch[]): FastNoise {
   const pieces = quietPieces(trace, samples, quiet);
-  const power = (piece: Float64Array): number => piece.reduce((sum, value) => sum + value * value, 0) / piece.length;
-  const usual = pieces.map(power).sort((a, b) => a - b)[Math.floor(pieces.length / 2)];
-  const own = pieces.filter((piece) => power(piece) <= 4 * usual!);
+  const powers = pieces.map((piece) => piece.reduce((sum, value) => sum + value * value, 0) / piece.length);
+  const usual = powers.toSorted((a, b) => a - b)[Math.floor(pieces.length / 2)];
+  const own = pieces.filter((_, k) => powers[k]! <= 4 * usual!);
   if (own.length < 2) return { covariance: Float64Array.of(trace.noiseMv ** 2), n: 0 };
   const length = own[0]!.length;
   const lags = Math.min(Math.max(4, Math.round(0.0005 * trace.rateHz)), Math.floor(length / 4));

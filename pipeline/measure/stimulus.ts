@@ -1,5 +1,5 @@
 import { linearFit } from '../signal/line.ts';
-import { mean, median, quantile, standardDeviation } from '../signal/statistics.ts';
+import { mean, meanWithin, median, quantile, standardDeviation } from '../signal/statistics.ts';
 import type { Clamp, Signal, StatedStimulus, Stimulus, StimulusKind } from './types.ts';
 
 /** A stretch of the command at one level. Times are s from the start of the sweep; the last ends with the trace. */
@@ -256,7 +256,17 @@ function extent(x: Float64Array): number {
 function thinned(values: Float64Array): Float64Array {
   const stride = Math.ceil(values.length / 20000);
   if (stride <= 1) return values;
-  return Float64Array.from({ length: Math.floor(values.length / stride) }, (_, i) => values[i * stride]!);
+  const some = new Float64Array(Math.floor(values.length / stride));
+  for (let i = 0; i < some.length; i++) some[i] = values[i * stride]!;
+  return some;
+}
+
+/** Sizes of such values. */
+function thinnedSizes(values: Float64Array): Float64Array {
+  const stride = Math.max(1, Math.ceil(values.length / 20000));
+  const sizes = new Float64Array(Math.floor(values.length / stride));
+  for (let i = 0; i < sizes.length; i++) sizes[i] = Math.abs(values[i * stride]!);
+  return sizes;
 }
 
 /**
@@ -273,7 +283,7 @@ function findEdges(x: Float64Array, rate: number, range: number): number[] {
     const difference = differenceOfMeans(x, width);
     // What ordinary samples do: their 98th percentile for single samples (a clean trace has 0 there), the 75th for
     // means, whose edges spread over more samples. Both cutoffs lie near eight standard deviations of white noise.
-    const ordinary = Math.abs(quantile(thinned(difference).map(Math.abs), width === 1 ? 0.98 : 0.75) ?? 0);
+    const ordinary = quantile(thinnedSizes(difference), width === 1 ? 0.98 : 0.75) ?? 0;
     const cutoff = Math.max(tolerance, (width === 1 ? 3.5 : 7) * ordinary);
     // What a finer comparison has already found shows again in the coarser one.
     const known = [...edges];
@@ -404,7 +414,7 @@ function movingStretch(x: Float64Array, runs: Run[], range: number, clamp: Clamp
   const count = Math.min(400, Math.floor(x.length / 4));
   if (count < 8) return null;
   const startOf = (k: number): number => Math.floor((k * x.length) / count);
-  const blocks = Float64Array.from({ length: count }, (_, k) => mean(x.subarray(startOf(k), startOf(k + 1)))!);
+  const blocks = Float64Array.from({ length: count }, (_, k) => meanWithin(x, startOf(k), startOf(k + 1))!);
   const spreads = Float64Array.from(
     { length: count },
     (_, k) => standardDeviation(x.subarray(startOf(k), startOf(k + 1)))!,

@@ -184,13 +184,18 @@ function evaluate(points: Points, p: Parameters, state: State): void {
   state.taus = decays.map((_, k) => Math.exp(p[2 * k + 2]!));
   for (let k = 0; k < decays.length; k++) decaysOf(points, state.taus[k]!, decays[k]!);
   const offset = p[0]!;
-  for (let i = 0; i < n; i++) residuals[i] = y[i]! - offset;
-  for (let k = 0; k < decays.length; k++) {
-    const amplitude = p[2 * k + 1]!;
-    const own = decays[k]!;
-    for (let i = 0; i < n; i++) residuals[i]! -= amplitude * own[i]!;
+  const amplitude = p[1]!;
+  const first = decays[0]!;
+  const second = decays[1] ?? first;
+  // Without a second term nothing of the first is taken twice.
+  const other = decays.length > 1 ? p[3]! : 0;
+  let rss = 0;
+  for (let i = 0; i < n; i++) {
+    const residual = y[i]! - offset - amplitude * first[i]! - other * second[i]!;
+    residuals[i] = residual;
+    rss += residual * residual;
   }
-  state.rss = dot(residuals, residuals);
+  state.rss = rss;
 }
 
 interface Normal {

@@ -44,7 +44,8 @@ export function fourier(re: Float64Array, im: Float64Array): void {
   for (let i = 0; i < n; i++) {
     const j = order[i]!;
     if (j <= i) continue;
-    const [heldRe, heldIm] = [re[i]!, im[i]!];
+    const heldRe = re[i]!;
+    const heldIm = im[i]!;
     re[i] = re[j]!;
     im[i] = im[j]!;
     re[j] = heldRe;
@@ -54,7 +55,8 @@ export function fourier(re: Float64Array, im: Float64Array): void {
     const stride = n / (2 * half);
     for (let start = 0; start < n; start += 2 * half)
       for (let k = 0; k < half; k++) {
-        const [a, b] = [start + k, start + k + half];
+        const a = start + k;
+        const b = a + half;
         const c = cosines[k * stride]!;
         const s = sines[k * stride]!;
         const turnedRe = re[b]! * c - im[b]! * s;

@@ -54,13 +54,15 @@ export function leastSquares(
   let damping = 1e-3;
   const system = (): { normal: number[][]; gradient: number[] } => {
     const columns = evaluate(parameters, true).columns!;
-    const normal = columns.map((a, j) =>
-      columns.map((b, k) => {
+    const normal = columns.map(() => new Array<number>(columns.length).fill(0));
+    for (let j = 0; j < columns.length; j++)
+      for (let k = j; k < columns.length; k++) {
+        const [a, b] = [columns[j]!, columns[k]!];
         let sum = j === k ? precision[j]! : 0;
         for (let i = 0; i < a.length; i++) sum += a[i]! * b[i]!;
-        return sum;
-      }),
-    );
+        normal[j]![k] = sum;
+        normal[k]![j] = sum;
+      }
     const gradient = columns.map((a, k) => {
       let sum = precision[k]! * (parameters[k]! - priors[k]!.mean);
       for (let i = 0; i < a.length; i++) sum += a[i]! * r[i]!;
@@ -70,6 +72,7 @@ export function leastSquares(
   };
   let current = system();
   let slow = 0;
+  let stale = false;
   for (let round = 0; round < most; round++) {
     let improved = false;
     for (let trial = 0; trial < 14; trial++) {
@@ -88,6 +91,7 @@ export function leastSquares(
           chi2 = nextChi2;
           cost = nextCost;
           damping = Math.max(1e-9, damping / 4);
+          stale = true;
           break;
         }
       }
@@ -95,8 +99,9 @@ export function leastSquares(
     }
     if (!improved || slow >= 2) break;
     current = system();
+    stale = false;
   }
-  current = system();
+  if (stale) current = system();
   const inverse = invert(current.normal);
   return { parameters, covariance: size === 0 ? null : inverse, chi2, cost, n: r.length };
 }

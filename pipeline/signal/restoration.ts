@@ -49,9 +49,17 @@ export function smoothedBy(samples: Float64Array, kernel: Float64Array): Float64
   const out = new Float64Array(n);
   for (let i = 0; i < n; i++) {
     let sum = kernel[0]! * samples[i]!;
-    if (i >= lags && i < n - lags)
-      for (let lag = 1; lag <= lags; lag++) sum += kernel[lag]! * (samples[i - lag]! + samples[i + lag]!);
-    else
+    if (i >= lags && i < n - lags) {
+      // Two sums side by side do not wait for each other.
+      let odd = 0;
+      let lag = 1;
+      for (; lag < lags; lag += 2) {
+        odd += kernel[lag]! * (samples[i - lag]! + samples[i + lag]!);
+        sum += kernel[lag + 1]! * (samples[i - lag - 1]! + samples[i + lag + 1]!);
+      }
+      if (lag === lags) odd += kernel[lag]! * (samples[i - lag]! + samples[i + lag]!);
+      sum += odd;
+    } else
       for (let lag = 1; lag <= lags; lag++)
         sum += kernel[lag]! * (samples[Math.max(0, i - lag)]! + samples[Math.min(n - 1, i + lag)]!);
     out[i] = sum;
@@ -69,7 +77,8 @@ export function unsmoothed(samples: Float64Array, kernel: Float64Array, passes: 
   let rest = samples;
   for (let pass = 0; pass < passes; pass++) {
     const smooth = smoothedBy(rest, kernel);
-    rest = rest.map((value, i) => value - smooth[i]!);
+    for (let i = 0; i < out.length; i++) smooth[i] = rest[i]! - smooth[i]!;
+    rest = smooth;
     for (let i = 0; i < out.length; i++) out[i]! += rest[i]!;
   }
   return out;

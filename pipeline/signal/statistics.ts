@@ -43,7 +43,7 @@ function select(values: Float64Array, k: number): void {
   while (left < right) {
     // Median of three as the pivot: sorted and constant stretches are common in recordings.
     const [a, b, c] = [values[left]!, values[(left + right) >> 1]!, values[right]!];
-    const pivot = a < b ? (b < c ? b : a < c ? c : a) : a < c ? a : b < c ? c : b;
+    const pivot = Math.max(Math.min(a, b), Math.min(Math.max(a, b), c));
     let i = left;
     let j = right;
     while (i <= j) {
@@ -81,10 +81,13 @@ export const quantile = (values: Numbers, p: number): number | null => quantileI
 export const median = (values: Numbers): number | null => quantile(values, 0.5);
 
 /** Arithmetic mean of the finite values. @returns null where there is none */
-export function mean(values: Numbers): number | null {
+export const mean = (values: Numbers): number | null => meanWithin(values, 0, values.length);
+
+/** Arithmetic mean of the finite values of an index range `[from, to)`. @returns null where there is none */
+export function meanWithin(values: Numbers, from: number, to: number): number | null {
   let sum = 0;
   let count = 0;
-  for (let i = 0; i < values.length; i++) {
+  for (let i = from; i < to; i++) {
     const value = values[i]!;
     if (Number.isFinite(value)) {
       sum += value;
