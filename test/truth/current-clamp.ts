@@ -19,7 +19,7 @@ import {
   run,
   type Subject,
 } from './recorder.ts';
-import type { Trial, TrialOptions } from './score.ts';
+import { isWanted, type Trial, type TrialOptions } from './score.ts';
 
 export interface Cell extends Subject {
   electrode: Electrode;
@@ -284,7 +284,16 @@ const humTruth = ({ hum_mv, hum_hz, filter_khz }: Conditions): number => hum_mv 
  * White noise behind the filter, within the band that the quantity is defined over: from 1 kHz to the filter's corner,
  * at most 0.4 of the rate. What the sampling folds back into the band belongs to the recording and counts.
  */
-function noiseTruth({ noise_mv, wander_mv, filter_khz, filter_stated, rate_hz, quantum_mv }: Conditions): number {
+function noiseTruth(under: Conditions): number {
+  const held = noiseTruths.get(under);
+  if (held !== undefined) return held;
+  const value = integratedNoise(under);
+  noiseTruths.set(under, value);
+  return value;
+}
+const noiseTruths = new WeakMap<Conditions, number>();
+
+function integratedNoise({ noise_mv, wander_mv, filter_khz, filter_stated, rate_hz, quantum_mv }: Conditions): number {
   const corner = filter_khz * 1000;
   const high = Math.min(filter_stated ? corner : Number.POSITIVE_INFINITY, 0.4 * rate_hz);
   const low = 1000;
@@ -436,6 +445,7 @@ function* cellTrials(
 /** Every trial of the family. */
 export function* generate(options: TrialOptions): Generator<Trial> {
   for (const cell of cells()) {
+    if (!isWanted(options, cell.name)) continue;
     const clean = cleanSweeps(cell);
     for (const under of conditions) {
       if (options.quick && !quickConditions.includes(under.name)) continue;
@@ -445,3 +455,4 @@ export function* generate(options: TrialOptions): Generator<Trial> {
 }
 
 export const trials = (options: TrialOptions): Trial[] => [...generate(options)];
+export const subjectNames = (): string[] => cells().map(({ name }) => name);

@@ -1,11 +1,14 @@
 /**
- * `npm run bench:truth [-- --seeds N] [--quick] [--only FAMILY]`: recordings with known truth through the whole of
- * measuring; prints bias and spread for each quantity and condition, how often the 95 % half-widths hold the truth, and
- * the worst cases by name. A report: its limits are tests.
+ * `npm run bench:truth [-- --seeds N] [--quick] [--only FAMILY] [--jobs N]`: recordings with known truth through the
+ * whole of measuring; prints bias and spread for each quantity and condition, how often the 95 % half-widths hold the
+ * truth, and the worst cases by name. A report: its limits are tests. Progress goes to stderr.
  */
+import { once } from 'node:events';
 import { readdirSync } from 'node:fs';
-import path from 'node:path';
+import { availableParallelism } from 'node:os';
 import { parseArgs } from 'node:util';
+import { Worker } from 'node:worker_threads';
+import { familyIn, type Part } from './bench-worker.ts';
 import { by, errorOf, score, type Trial, type TrialOptions } from './score.ts';
 
 const { values: options } = parseArgs({
@@ -13,28 +16,50 @@ const { values: options } = parseArgs({
     seeds: { type: 'string', default: '6' },
     quick: { type: 'boolean', default: false },
     only: { type: 'string' },
+    jobs: { type: 'string', default: String(availableParallelism()) },
     /** Every condition apart, not only all together. */
     conditions: { type: 'boolean', default: true },
   },
 });
 
-interface Family {
-  trials?: (options: TrialOptions) => Trial[];
-}
-
-const here = import.meta.dirname;
 const wanted: TrialOptions = { seeds: Number(options.seeds), quick: options.quick };
-const all: Trial[] = [];
-for (const file of readdirSync(here).sort()) {
+const parts: Part[] = [];
+for (const file of readdirSync(import.meta.dirname).sort()) {
   if (!file.endsWith('.ts') || file.endsWith('.test.ts') || file === 'main.ts') continue;
   if (options.only && !file.startsWith(options.only)) continue;
-  const family = (await import(path.join(here, file))) as Family;
+  const family = await familyIn(file);
   if (!family.trials) continue;
-  const started = performance.now();
-  const own = family.trials(wanted);
-  for (const trial of own) all.push(trial);
-  console.error(`${file}: ${own.length} numbers, ${((performance.now() - started) / 1000).toFixed(0)} s`);
+  const names = family.subjectNames?.();
+  if (names) for (const subject of names) parts.push({ file, options: { ...wanted, subject } });
+  else parts.push({ file, options: wanted });
 }
+
+/** Trials by part, so that their order does not depend on which thread is done first. */
+const found: Trial[][] = parts.map(() => []);
+let next = 0;
+let done = 0;
+const started = performance.now();
+
+/** One thread, which takes the next part as soon as it has done one. */
+async function lane(): Promise<void> {
+  const worker = new Worker(new URL('./bench-worker.ts', import.meta.url));
+  try {
+    while (next < parts.length) {
+      const index = next++;
+      const { file, options: own } = parts[index]!;
+      worker.postMessage(parts[index]);
+      const [trials] = (await once(worker, 'message')) as [Trial[]];
+      found[index] = trials;
+      const seconds = ((performance.now() - started) / 1000).toFixed(0);
+      const name = own.subject === undefined ? file : `${file}, ${own.subject}`;
+      console.error(`${++done} of ${parts.length} parts, ${seconds} s: ${name}, ${trials.length} numbers`);
+    }
+  } finally {
+    await worker.terminate();
+  }
+}
+await Promise.all(Array.from({ length: Math.max(1, Math.min(Number(options.jobs), parts.length)) }, lane));
+const all = found.flat();
 
 const figure = (value: number | null): string =>
   value === null ? '–' : value === 0 ? '0' : Math.abs(value) >= 1000 ? value.toFixed(0) : value.toPrecision(2);

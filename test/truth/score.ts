@@ -22,6 +22,19 @@ export interface TrialOptions {
   seeds: number;
   /** A subset small enough for a test. */
   quick: boolean;
+  /** Only this subject; all where left out. */
+  subject?: string;
+}
+
+/** Whether the trials of a subject are asked for. */
+export const isWanted = (options: TrialOptions, name: string): boolean =>
+  options.subject === undefined || options.subject === name;
+
+/** What a module of this folder exports that holds recordings for the bench. */
+export interface Family {
+  trials: (options: TrialOptions) => Trial[];
+  /** Names of its subjects, for sharing the work; where left out it is done in one piece. */
+  subjectNames?: () => string[];
 }
 
 export interface Score {

@@ -11,7 +11,7 @@ import type { Model } from '../helpers/models.ts';
 import { input } from '../measure/made.ts';
 import { ownSeed } from './current-clamp.ts';
 import { type Clean, type Conditions, type Electrode, fineHz, type Piece, record, run } from './recorder.ts';
-import type { Trial, TrialOptions } from './score.ts';
+import { isWanted, type Trial, type TrialOptions } from './score.ts';
 
 const family = 'slow spikes';
 
@@ -261,6 +261,7 @@ const quickConditions = new Set(['10 kHz, filter 5 kHz, 0.1 mV', '25 kHz, filter
 
 export function* generate(options: TrialOptions): Generator<Trial> {
   for (const subject of subjects()) {
+    if (!isWanted(options, subject.name)) continue;
     const clean: Clean = run(
       { name: subject.name, model: subject.model(), capacitance_pf: subject.capacitance_pf },
       electrode,
@@ -304,3 +305,4 @@ export function* generate(options: TrialOptions): Generator<Trial> {
 }
 
 export const trials = (options: TrialOptions): Trial[] => [...generate(options)];
+export const subjectNames = (): string[] => subjects().map(({ name }) => name);

@@ -6,7 +6,7 @@ import type { Model } from '../helpers/models.ts';
 import { type Cell, cleanSweeps, conditions, passiveCell, trialsOf, twoCompartments, usual } from './current-clamp.ts';
 import { meanOf, slopeOfLine } from './definitions.ts';
 import { type Clean, fineHz } from './recorder.ts';
-import type { Trial, TrialOptions } from './score.ts';
+import { isWanted, type Trial, type TrialOptions } from './score.ts';
 
 /** Where a current that only depends on the potential vanishes, by bisection. */
 function restOf(current: (v: number) => number): number {
@@ -174,6 +174,7 @@ const quickConditions = ['20 kHz, filter 8 kHz', '20 kHz, filter 10 kHz', 'hum 0
 export function trials(options: TrialOptions): Trial[] {
   const all: Trial[] = [];
   for (const cell of cells()) {
+    if (!isWanted(options, cell.name)) continue;
     const clean = cleanSweeps(cell);
     for (const under of conditions) {
       if (options.quick && !quickConditions.includes(under.name)) continue;
@@ -182,3 +183,5 @@ export function trials(options: TrialOptions): Trial[] {
   }
   return all;
 }
+
+export const subjectNames = (): string[] => cells().map(({ name }) => name);

@@ -17,7 +17,7 @@ import {
 } from '../../content-sample/generate/models.ts';
 import type { Model } from '../helpers/models.ts';
 import { type Cell, cleanSweeps, conditions, trialsOf } from './current-clamp.ts';
-import type { Trial, TrialOptions } from './score.ts';
+import { isWanted, type Trial, type TrialOptions } from './score.ts';
 
 /** A model of the sample's generator, at its own rest, as the bench runs it. All have 1 µF/cm²: 1 µA/cm² is 1 V/s. */
 function asBenchModel(model: SampleModel, from_mv: number): Model {
@@ -80,6 +80,7 @@ export function trials(options: TrialOptions): Trial[] {
     ? ['20 kHz, filter 8 kHz', '50 kHz, filter 20 kHz, 0.02 mV', '10 kHz, filter 4 kHz']
     : null;
   return untunedCells().flatMap((one) => {
+    if (!isWanted(options, one.name)) return [];
     const clean = cleanSweeps(one);
     return conditions
       .filter(({ name }) => wanted?.includes(name) ?? true)
@@ -91,3 +92,5 @@ export function trials(options: TrialOptions): Trial[] {
       );
   });
 }
+
+export const subjectNames = (): string[] => untunedCells().map(({ name }) => name);

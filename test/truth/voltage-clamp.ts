@@ -5,7 +5,7 @@
 import { measureSweep } from '../../pipeline/measure/sweep.ts';
 import { neuron, uniform } from '../measure/made.ts';
 import { type Circuit, type Rig, recordClamp } from './clamp-recorder.ts';
-import type { Trial, TrialOptions } from './score.ts';
+import { isWanted, type Trial, type TrialOptions } from './score.ts';
 
 const circuits: Circuit[] = (
   [
@@ -67,15 +67,19 @@ export const rigs: Rig[] = [
 ];
 const quickRigs = new Set([usual.name, '50 kHz, 10 kHz filter', 'filter not stated', 'hum 10 pA']);
 
-export function trials({ seeds, quick }: TrialOptions): Trial[] {
+export function trials(options: TrialOptions): Trial[] {
+  const { seeds, quick } = options;
   const out: Trial[] = [];
   for (const condition of rigs.filter((one) => !quick || quickRigs.has(one.name)))
     for (const circuit of quick ? circuits.slice(0, 3) : circuits) {
+      if (!isWanted(options, circuit.name)) continue;
       for (let seed = 1; seed <= seeds; seed++)
         out.push(...measuredTrials(circuit, drawn(condition, `${condition.name} ${circuit.name} ${seed}`), seed));
     }
   return out;
 }
+
+export const subjectNames = (): string[] => circuits.map(({ name }) => name);
 
 /** A number for each text, the same in every run. */
 function seedOf(text: string): number {
