@@ -151,14 +151,22 @@ function latencyAt(sweep: NumberedSweep): Reading {
 function spontaneousRate(sweeps: readonly NumberedSweep[], own: ReturnType<typeof ownFiring>): Reading {
   if (own.seconds === 0)
     return absent(sweeps.some((sweep) => sweep.stimulus.kind === 'unknown') ? 'no-stimulus' : 'sweep-too-short');
-  if (!own.own) return absent('not-spontaneous', { note: `${own.spikes} spikes in ${own.seconds.toFixed(1)} s` });
+  if (!own.own) return withoutOwnFiring(own);
   const value = own.spikes / own.seconds;
   return measured(value, { n: own.spikes, se: Math.sqrt(own.spikes) / own.seconds });
 }
 
+/** One or two spikes in a recording that is only so long do not say that a cell rests, nor how often it fires. */
+function withoutOwnFiring(own: ReturnType<typeof ownFiring>): Reading {
+  const few = own.spikes > 0 && own.spikes < 3 && own.spikes / own.seconds >= 0.2;
+  return absent(few ? 'too-few-spikes' : 'not-spontaneous', {
+    note: `${own.spikes} spikes in ${own.seconds.toFixed(1)} s`,
+  });
+}
+
 function diastolic(sweeps: readonly NumberedSweep[], own: ReturnType<typeof ownFiring>): Reading {
   if (own.seconds === 0) return spontaneousRate(sweeps, own);
-  if (!own.own) return absent('not-spontaneous');
+  if (!own.own) return withoutOwnFiring(own);
   const value = median(own.minima);
   if (value === null) return absent('too-few-spikes');
   const where = sweeps.find((sweep) => (sweep.spontaneous?.minima_mv.length ?? 0) > 0);

@@ -299,8 +299,10 @@ test('rundown: 10 % over the 600 spikes fired is 1.67 % per 100', () => {
     outcome('height-rundown', { sweeps, readings: { height_rundown_percent_per_100_spikes: read(value) } });
   expect([rundown(-1.6), rundown(-1.7), rundown(2)]).toEqual(['within', 'outside', 'outside']);
   const sentence = (value: number, more: Record<string, Reading>) =>
-    finding('height-rundown', { sweeps, readings: { height_rundown_percent_per_100_spikes: read(value), ...more } })
-      .sentence;
+    finding('height-rundown', {
+      sweeps,
+      readings: { height_rundown_percent_per_100_spikes: read(value, { u95: 0.01 }), ...more },
+    }).sentence;
   const alone = { expected_rundown_percent_per_100_spikes: read(-1.2, { u95: 0.9 }) };
   expect(sentence(-2.5, alone)).toMatch(
     /sodium that firing brings in would explain −1\.20? %? ?± 0\.90? % of it, without pump/,

@@ -355,6 +355,24 @@ describe('firing of a cell', () => {
     expectComplete(readings);
   });
 
+  it('is not said to rest where one beat is all there is', () => {
+    const noise = normalNoise(4);
+    const voltage = signalOf(0.4, 5000, (t) => {
+      const phase = t / 0.4;
+      return (
+        -65 +
+        10 * phase +
+        (phase > 0.5 && phase < 0.7 ? 85 * Math.sin(((phase - 0.5) / 0.2) * Math.PI) : 0) +
+        0.05 * noise()
+      );
+    });
+    const sweep = numbered(measureSweep(input({ voltage, current: signalOf(0.4, 5000, () => 0) }), heart), 0);
+    const { readings } = measureCell([sweep], () => cellContext(heart)).conditions[0]!;
+    expect(numberIn(readings, 'spikes')).toBe(1);
+    for (const id of ['maximum_diastolic_potential_mv', 'spontaneous_rate_hz'])
+      expect(readings[id]!.why).toBe('too-few-spikes');
+  });
+
   it('has no diastolic potential and no rate of its own when it rests', () => {
     const readings = measure(ofCircuit(circuit, [-20, 0]));
     expect(readings['maximum_diastolic_potential_mv']!.why).toBe('not-spontaneous');
