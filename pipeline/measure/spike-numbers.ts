@@ -273,5 +273,10 @@ export function withHalfWidths(spike: Spike, errors: Errors, slow: SlowNoise, ba
           : 0;
     u95[id] = coverage95Biased(bias, Math.hypot(sd, extra));
   }
+  // A slow spike brings its peak's half-width along, slow noise included.
+  const top = spike.u95?.['peak_mv'];
+  const height = spike.values['height_from_rest_mv'] ?? null;
+  if (peakError === undefined && top !== undefined && baselineU95 !== null && height !== null)
+    u95['height_from_rest_mv'] = Math.hypot(top, baselineU95);
   return { ...spike, u95: { ...spike.u95, ...u95 } };
 }

@@ -369,6 +369,8 @@ describe('firing of a cell', () => {
     const sweep = numbered(measureSweep(input({ voltage, current: signalOf(0.4, 5000, () => 0) }), heart), 0);
     const { readings } = measureCell([sweep], () => cellContext(heart)).conditions[0]!;
     expect(numberIn(readings, 'spikes')).toBe(1);
+    // The height above a baseline is known no better than the baseline is.
+    expect(readings['height_from_rest_mv']!.u95!).toBeGreaterThanOrEqual(sweep.readings['baseline_mv']!.u95!);
     for (const id of ['maximum_diastolic_potential_mv', 'spontaneous_rate_hz'])
       expect(readings[id]!.why).toBe('too-few-spikes');
   });
