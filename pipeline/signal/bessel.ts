@@ -57,20 +57,26 @@ export function besselLowPass(cornerKhz: number): LowPass {
   const rate = (2 * Math.PI * cornerKhz) / corner;
   const p = poles.map(({ re, im }) => ({ re: re * rate, im: im * rate }));
   const r = residues.map(({ re, im }) => ({ re: re * rate, im: im * rate }));
-  const stepWeights = p.map((pole, k) => over(r[k]!, pole));
-  const slopeWeights = p.map((pole, k) => times(r[k]!, pole));
+  // Flat, eight numbers a pole: fits ask for millions of values.
+  const flat = Float64Array.from(
+    p.flatMap((pole, k) => {
+      const [stepWeight, slopeWeight] = [over(r[k]!, pole), times(r[k]!, pole)];
+      const own = r[k]!;
+      return [pole.re, pole.im, own.re, own.im, slopeWeight.re, slopeWeight.im, stepWeight.re, stepWeight.im];
+    }),
+  );
   // By partial fractions the decaying step is Σ w·(exp(pt) − exp(−t/tau)) with w = r/(p + 1/tau).
   let heldTau = Number.NaN;
-  let once: Complex[] = [];
-  let twice: Complex[] = [];
+  const byTau = new Float64Array(8);
   let gain = 1;
   let gainSlope = 0;
   const prepare = (tau: number): void => {
     if (tau === heldTau) return;
     heldTau = tau;
     const shifted = p.map((pole) => ({ re: pole.re + 1 / tau, im: pole.im }));
-    once = shifted.map((own, k) => over(r[k]!, own));
-    twice = shifted.map((own, k) => over(once[k]!, own));
+    const once = shifted.map((own, k) => over(r[k]!, own));
+    const twice = shifted.map((own, k) => over(once[k]!, own));
+    byTau.set(once.flatMap((own, k) => [own.re, own.im, twice[k]!.re, twice[k]!.im]));
     gain = -2 * (once[0]!.re + once[1]!.re);
     gainSlope = 2 * (twice[0]!.re + twice[1]!.re);
   };
@@ -91,15 +97,17 @@ export function besselLowPass(cornerKhz: number): LowPass {
       let byRate = (gainSlope - gain * ms) * late;
       if (ms < settled)
         for (let k = 0; k < 2; k++) {
-          const size = 2 * Math.exp(p[k]!.re * ms);
-          const angle = p[k]!.im * ms;
+          const pole = 8 * k;
+          const at = 4 * k;
+          const size = 2 * Math.exp(flat[pole]! * ms);
+          const angle = flat[pole + 1]! * ms;
           const c = size * Math.cos(angle);
           const s = size * Math.sin(angle);
-          into.impulse += r[k]!.re * c - r[k]!.im * s;
-          into.impulseSlope += slopeWeights[k]!.re * c - slopeWeights[k]!.im * s;
-          into.step += stepWeights[k]!.re * c - stepWeights[k]!.im * s;
-          into.decay += once[k]!.re * c - once[k]!.im * s;
-          byRate -= twice[k]!.re * c - twice[k]!.im * s;
+          into.impulse += flat[pole + 2]! * c - flat[pole + 3]! * s;
+          into.impulseSlope += flat[pole + 4]! * c - flat[pole + 5]! * s;
+          into.step += flat[pole + 6]! * c - flat[pole + 7]! * s;
+          into.decay += byTau[at]! * c - byTau[at + 1]! * s;
+          byRate -= byTau[at + 2]! * c - byTau[at + 3]! * s;
         }
       into.decayByLogTau = -byRate / tau;
     },

@@ -48,12 +48,14 @@ export function leastSquares(
   const priorCost = (p: readonly number[]): number =>
     p.reduce((sum, value, k) => sum + precision[k]! * (value - priors[k]!.mean) ** 2, 0);
   let parameters = held(start);
-  let r = evaluate(parameters, false).residuals;
+  // Most first steps are taken, and then their derivatives are wanted as well: they are had together.
+  let here = evaluate(parameters, true);
+  let r = here.residuals;
   let chi2 = squares(r);
   let cost = chi2 + priorCost(parameters);
   let damping = 1e-3;
   const system = (): { normal: number[][]; gradient: number[] } => {
-    const columns = evaluate(parameters, true).columns!;
+    const columns = here.columns ?? evaluate(parameters, true).columns!;
     const normal = columns.map(() => new Array<number>(columns.length).fill(0));
     for (let j = 0; j < columns.length; j++)
       for (let k = j; k < columns.length; k++) {
@@ -80,14 +82,15 @@ export function leastSquares(
       const move = solve(damped, current.gradient);
       if (move) {
         const next = held(parameters.map((value, k) => value - move[k]!));
-        const nextR = evaluate(next, false).residuals;
-        const nextChi2 = squares(nextR);
+        const there = evaluate(next, trial === 0);
+        const nextChi2 = squares(there.residuals);
         const nextCost = nextChi2 + priorCost(next);
         if (Number.isFinite(nextCost) && nextCost < cost) {
           improved = true;
           slow = cost - nextCost > 1e-6 * (1 + cost) ? 0 : slow + 1;
           parameters = next;
-          r = nextR;
+          here = there;
+          r = there.residuals;
           chi2 = nextChi2;
           cost = nextCost;
           damping = Math.max(1e-9, damping / 4);
