@@ -664,7 +664,8 @@ export const quantities: readonly Quantity[] = list([
     ...mv,
     decimals: 1,
     absolute_potential: true,
-    definition: 'Potential before the stimulus, over at most 500 ms, spikes, test pulses and mains hum excluded.',
+    definition:
+      'Potential before the stimulus, over at most 500 ms, spikes, test pulses and mains hum excluded. Where no stimulus is known and the level is known no better than 5 mV, none is given.',
     formula:
       'median of the means over 2 ms before onset, about their line; hum: the least-squares sine and its harmonics, where resolved, are taken off first',
     source: practice,

@@ -111,7 +111,7 @@ function currentClampSweep(
   const quantum = digitizerStep(voltage);
   const lines = hum(voltage, quiet, context.mains_hz);
   const passive = freedOfHum({ ...found.passive, quantum_mv: quantum.value }, quiet, lines['mains_hum_hz']!);
-  const baseline = measureBaseline(passive);
+  const baseline = steadyBaseline(measureBaseline(passive), stimulus);
   const level = baseline['baseline_mv']!;
   const riding = slowNoise(lines, baseline, found.noise_mv);
   const fast_mv = fastNoise(voltage.samples, voltage.rate_hz);
@@ -211,6 +211,24 @@ function freedOfHum(passive: PassiveInput, quiet: readonly Stretch[], hum_hz: Re
     : [];
   const parts = [...quiet, ...late];
   return { ...passive, voltage: withoutHum(voltage, parts, tried, hum_hz.value !== null), recorded: voltage };
+}
+
+/** A level known no better than this, mV, where no stimulus is known: common practice, no source. */
+const vaguestBaseline_mv = 5;
+
+/**
+ * Where no stimulus was recorded or stated, a stretch whose potential travels (a ramp, a relaxation) is no baseline: the
+ * mean of a journey is nobody's level. Its spread stays.
+ */
+function steadyBaseline(baseline: Readings, stimulus: Stimulus): Readings {
+  const { value, u95 = 0, sd = 0 } = baseline['baseline_mv']!;
+  if (stimulus.kind !== 'unknown' || value === null || u95 <= vaguestBaseline_mv) return baseline;
+  const note = `the potential travels (SD ${sd.toFixed(0)} mV) and no stimulus says why`;
+  return {
+    ...baseline,
+    baseline_mv: absent('no-baseline', { note }),
+    baseline_drift_mv_per_s: absent('no-baseline', { note }),
+  };
 }
 
 /** Wander of the baseline up to this counts as the recorder's, mV; what is more is the cell's own (common practice, no source). */

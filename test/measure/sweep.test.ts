@@ -218,6 +218,26 @@ describe('firing', () => {
   });
 });
 
+describe('a baseline where no stimulus is known', () => {
+  const noise = normalNoise(6);
+  // A relaxation of 30 mV and back again, as a current ramp that nobody wrote down makes it.
+  const travelling = (mv: number) =>
+    measureSweep(
+      input({ voltage: signalOf(1, 5000, (t) => -30 + mv * Math.cos(4 * t) + 0.05 * noise()), current: null }),
+      neuron,
+    ).readings;
+
+  it('is none where the potential travels', () => {
+    const readings = travelling(30);
+    expect(readings['baseline_mv']).toMatchObject({ value: null, why: 'no-baseline' });
+    expect(readings['baseline_mv']!.note).toContain('travels');
+    expect(numberIn(readings, 'baseline_sd_mv')).toBeGreaterThan(3);
+  });
+
+  it('is the level of a potential that stays', () =>
+    expect(Math.abs(numberIn(travelling(0), 'baseline_mv') + 30)).toBeLessThan(0.05));
+});
+
 describe('holding', () => {
   const voltage = signalOf(1, rate, () => -65);
   it('adds the bias that the file states', () => {
