@@ -63,12 +63,15 @@ const pulseError =
 /** How the trace is read between its samples, for the formulas. */
 const between =
   'V between samples is the band-limited interpolation of the recorded ones (sinc under a Kaiser window, 8 zero crossings, β = 8), or the local cubic by least squares (weights (1 − (d/h)²)² within h samples, h = 3·1.25^k up to half the rise or width) where the widest such cubic reads value and slope there as all narrower ones do, within 3 standard deviations of the noise in the difference';
+/** Half-widths of what slow spikes have like fast ones, for the entries' `uncertainty`. */
+const slowPlaced =
+  'slow classes: 1.96 standard errors; the threshold’s place by the slope’s noise over its change there, the shift that twice the window makes and 0.3 samples, its potential by the trace’s change over that, fast and slow noise; the maximum fall by what the next narrower window shows; a fall’s time by its level’s error and twice the fast noise over the slope there; the rest from these in squares';
 const placed = `±u that holds 95 % of a normal error with the expected bias and standard deviation: noise (covariance of quiet stretches) through the weights of the samples that were used; 0.6 of what the next narrower window would change; what the filter is expected to have taken (restored − measured, by van Cittert’s restoration), known within 15 %, more of it by an electrode of 12 µs and by what restoring cannot reach (14 times the restored share of the rise); for potentials also hum and up to 0.2 mV of slow wander. ${overSpikes}`;
 /** How the filter is undone, for the formulas. */
 const restoration = (what: string): string =>
   `${what} on V + (V − gV) + (V − gV) − g(V − gV), where g is the trace smoothed once more by the filter’s own gain without delay: a four-pole Bessel low-pass at the corner that is stated, or else seen in the noise`;
 const restorationSource =
-  'van Cittert 1931, Z Phys 69:298–308; Bessel low-pass: Thomson 1949, Proc IEE 96:487–490 (both from memory)';
+  'van Cittert 1931, Z Phys 69:298–308; Bessel low-pass: Thomson 1949, Proc IEE 96:487–490 (both from memory). Heart and calcium spikes as the half-width and the maximum fall say';
 const correctedUncertainty =
   'from noise through the restored trace’s weights, 15 % of the correction (with an estimated corner that of the corner twice besides), what restoring cannot reach (14 times the restored share of the rise), and an electrode of 12 µs (12 MΩ · 1 pF, common practice, no source) that no filter statement covers';
 const lossUncertainty =
@@ -179,8 +182,7 @@ export const quantities: readonly Quantity[] = list([
     definition: 'Width of the spike at half its height above threshold.',
     formula: `t_down − t_up at V_thr + H/2. ${between}`,
     source: 'Ekins et al. 2020, eLife 9:e62373; Nagaeva et al. 2020, eLife',
-    uncertainty:
-      'of both crossings (noise over slope), of the level at half height through both slopes, and what the filter is expected to have added; combined as for the threshold',
+    uncertainty: `of both crossings (noise over slope), of the level at half height through both slopes, and what the filter is expected to have added; combined as for the threshold; ${slowPlaced}`,
   },
   {
     id: 'max_rise_v_per_s',
@@ -202,9 +204,9 @@ export const quantities: readonly Quantity[] = list([
     ...rise,
     decimals: 1,
     definition: 'Steepest fall after the peak, as a negative rate.',
-    formula: `min dV/dt from the peak to the afterhyperpolarization minimum, without one to the return to threshold. ${between}`,
+    formula: `min dV/dt from the peak to the afterhyperpolarization minimum, without one to the return to threshold. ${between}. Slow classes: the least-squares slope over ±4 ms where it is steepest, over ±2, 1, 0.5 or 0.25 ms where that is steeper by more than noise makes the steepest of many`,
     source: practice,
-    uncertainty: placed,
+    uncertainty: `${placed}; ${slowPlaced}`,
   },
   {
     id: 'depolarization_ms',
@@ -242,7 +244,7 @@ export const quantities: readonly Quantity[] = list([
     definition:
       'Lowest potential between the peak and the next threshold, the next stimulus edge or the end of the class’s window.',
     formula:
-      'lowest point of the local cubic (weights (1 − (d/h)²)² within h samples of the place) about the lowest sample of that stretch; h the widest of 3·1.8^k, within the stretch, at most 330 samples and 20 ms, whose value all narrower ones have within 3 standard deviations of the noise in their difference',
+      'lowest point of the local cubic (weights (1 − (d/h)²)² within h samples of the place) about the lowest sample of that stretch; h the widest of 3·1.8^k, within the stretch, at most 330 samples and 20 ms, whose value all narrower ones have within 3 standard deviations of the noise in their difference. Slow classes: vertex of the parabola, as for the diastolic potential',
     source: practice,
     uncertainty: placed,
   },

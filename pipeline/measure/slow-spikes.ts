@@ -4,8 +4,8 @@
  * as wide as noise alone explains, so that no single noisy sample sets a number.
  */
 import { coverage95 } from '../signal/coverage.ts';
-import { crossing } from '../signal/crossing.ts';
-import { levelOf, type Parabola, vertexOf, widestParabola } from '../signal/parabola.ts';
+import { crossing, valueAt } from '../signal/crossing.ts';
+import { levelOf, type Parabola, parabolaAround, vertexOf, widestParabola } from '../signal/parabola.ts';
 import { movingAverage } from '../signal/smoothing.ts';
 import { vertex } from '../signal/vertex.ts';
 import type { Pulse } from './artefact.ts';
@@ -100,7 +100,15 @@ export function withSlowValues(
   const upstrokes = found.map((spike) => upstrokeOf(spike, trace));
   const slowNoise = slowNoiseOf(trace, calm, found);
   return spikes.map((spike, k) => {
-    const around: Around = { trace, context, pulses, calm, smooth: smoothed(found[k]!.slope.m), slowNoise };
+    const around: Around = {
+      trace,
+      context,
+      pulses,
+      calm,
+      smooth: smoothed(found[k]!.slope.m),
+
+      slowNoise,
+    };
     return withValues(spike, k, found, upstrokes, around);
   });
 }
@@ -230,7 +238,162 @@ function withValues(
   );
   put('plateau_mv', plateauOf(rise, to90!, around));
   put('stimulus_artefact_mv', artefactOf(rise, own, around));
+  const bottom = bottomOf(spike, around);
+  if (known(bottom)) {
+    put('ahp_minimum_mv', { ...bottom, se: Math.hypot(bottom.se, slowNoise) });
+    if (values['threshold_mv'] != null) values['ahp_below_threshold_mv'] = values['threshold_mv'] - bottom.value;
+  }
+  if (values['max_fall_v_per_s'] != null) put('max_fall_v_per_s', maxFall(own, values, around));
+  for (const [id, se] of Object.entries(commonErrors(own, values, peak, bottom, around)))
+    if (values[id] != null && Number.isFinite(se)) u95[id] = normal * se;
   return { ...spike, values, why, u95 };
+}
+
+/** The minimum after the spike, where the samples have shown one: vertex of a parabola, as the diastolic level. */
+function bottomOf(spike: Spike, around: Around): Maybe {
+  const { trace, calm } = around;
+  const { ahp_minimum_mv } = spike.values;
+  const phase = spike.phases.find(({ name }) => name === 'afterhyperpolarization');
+  if (ahp_minimum_mv == null || !phase) return spike.why['ahp_minimum_mv'] ?? 'unresolved';
+  const found = Math.round((phase.to_s - trace.startS) * trace.rateHz);
+  const back = Math.round((phase.from_s - trace.startS) * trace.rateHz);
+  const reach = Math.round(widestBottom_s * trace.rateHz);
+  const lowest = lowestIn(calm, Math.max(back, found - reach), found + Math.min(reach, Math.round((found - back) / 2)));
+  return lowest === null ? 'unresolved' : bottomAt(lowest, around);
+}
+
+/** Windows that a fall is looked for with, ms on each side, the widest first. */
+const fallWindows_ms = [4, 2, 1, 0.5, 0.25];
+
+/**
+ * Steepest fall from the peak to the return to threshold, or to 90 % repolarization: the least-squares slope over the
+ * widest window, unless a narrower one shows a steeper fall by more than noise makes the steepest of many slopes.
+ */
+function maxFall(spike: FoundSpike, values: Spike['values'], { trace }: Around): AbsenceCode | Omit<Known, 'at'> {
+  const span_ms = values['repolarization_ms'] ?? values['apd90_ms'];
+  if (span_ms == null) return 'unresolved';
+  const perMs = trace.rateHz / 1000;
+  const to = spike.peak + Math.ceil(span_ms * perMs);
+  interface Fall {
+    at: number;
+    slope: number;
+    se: number;
+    half: number;
+  }
+  let best = null as Fall | null;
+  // What the next narrower window would say: it shows what the chosen one has averaged away, and noise.
+  let narrower = null as Fall | null;
+  for (const ms of fallWindows_ms) {
+    const half = Math.max(2, Math.round(ms * perMs));
+    const se = trace.noiseMv * Math.sqrt(3 / (half * (half + 1) * (2 * half + 1)));
+    let own = null as Fall | null;
+    for (let i = spike.peak + Math.ceil(half / 2); i <= to; i += Math.max(1, half >> 2)) {
+      const fit = parabolaAround(trace.masked, i, half);
+      if (fit && (own === null || fit.c1 < own.slope)) own = { at: i, slope: fit.c1, se, half };
+    }
+    // The steepest of N independent slopes lies √(2 ln N) of their standard deviations out.
+    const push = se * (2 + Math.sqrt(2 * Math.log(Math.max(2, (to - spike.peak) / half))));
+    if (own && (best === null || own.slope < best.slope - push)) {
+      best = own;
+      narrower = null;
+    } else narrower ??= own;
+  }
+  if (best === null) return 'unresolved';
+  if (unreadable(trace, best.at, best.at)) return 'unreadable';
+  const other = narrower?.slope ?? parabolaAround(trace.masked, best.at, Math.max(2, best.half >> 1))?.c1 ?? best.slope;
+  return { value: best.slope * perMs, se: Math.hypot(best.se, other - best.slope) * perMs };
+}
+
+/** How many samples before the crossing lies earlier where the slope is taken over twice the window; 0 if not found. */
+function widerShift({ steepest, threshold, slope }: FoundSpike, { trace }: Around): number {
+  if (threshold === null) return 0;
+  const level = valueAt(slope.values, threshold);
+  for (let i = steepest; i > threshold - 20 * slope.m && i > 2 * slope.m; i--) {
+    const fit = parabolaAround(trace.masked, i, 2 * slope.m);
+    if (!fit) return 0;
+    if ((fit.c1 * trace.rateHz) / 1000 < level) return Math.abs(threshold - (i + 0.5));
+  }
+  return 0;
+}
+
+/**
+ * Standard errors of threshold, height, widths and phases of a slow spike. The crossing of the criterion is uncertain by
+ * the noise of the slope over the slope's own change there, by what a window twice as wide would shift it, and by 0.3
+ * samples; a time of falling by the error of its level, the fast noise and the slow one over the slope there.
+ */
+function commonErrors(
+  spike: FoundSpike,
+  values: Spike['values'],
+  peak: Maybe,
+  bottom: Maybe,
+  around: Around,
+): Record<string, number> {
+  const { trace, slowNoise } = around;
+  const { slope } = spike;
+  const perMs = trace.rateHz / 1000;
+  const at = spike.threshold;
+  if (at === null || values['threshold_mv'] == null) return {};
+  const i = Math.floor(at);
+  const [before, after] = [slope.values[i - slope.m], slope.values[i + 1 + slope.m]];
+  const bend = before === undefined || after === undefined ? Number.NaN : (after - before) / (2 * slope.m + 1);
+  // Noise cannot move the crossing past the steepest point, nor as far the other way.
+  const placeSe = Math.min(
+    Math.hypot(bend > 0 ? slope.noise / bend : Number.POSITIVE_INFINITY, widerShift(spike, around), 0.3),
+    spike.steepest - at,
+  );
+  const thresholdSe = Math.hypot(chord(trace, at, placeSe), trace.noiseMv / Math.sqrt(2 * slope.m + 1), slowNoise);
+  const out: Record<string, number> = {
+    threshold_mv: thresholdSe,
+    threshold_at_s: placeSe / trace.rateHz,
+  };
+  if (known(bottom)) out['ahp_below_threshold_mv'] = Math.hypot(thresholdSe, bottom.se, slowNoise);
+  if (!known(peak)) return out;
+  const top = widestParabola(trace.masked, Math.round(peak.at), trace.noiseMv, Math.round(widestTop_s * trace.rateHz));
+  const peakPlace = top && top.c2 < 0 ? Math.max(0.5, Math.sqrt(peak.se / -top.c2) / 2) : Number.NaN;
+  const heightSe = Math.hypot(thresholdSe, peak.se);
+  Object.assign(out, {
+    peak_at_s: peakPlace / trace.rateHz,
+    spike_height_mv: heightSe,
+    height_from_rest_mv: Math.hypot(peak.se, slowNoise),
+    depolarization_ms: Math.hypot(placeSe, peakPlace) / perMs,
+  });
+  const height = values['spike_height_mv'];
+  if (height == null) return out;
+  const half = values['threshold_mv'] + height / 2;
+  const halfSe = Math.hypot(thresholdSe / 2, peak.se / 2);
+  const down = fallErrorAt(half, halfSe, peak.at, around);
+  const rises = valueAt(slope.values, spike.steepest) / perMs;
+  if (down !== null)
+    out['half_width_ms'] = Math.hypot(down, Math.hypot(halfSe, 2 * trace.noiseMv) / rises, 0.3) / perMs;
+  const back = fallErrorAt(values['threshold_mv'], thresholdSe, peak.at, around);
+  if (back !== null) out['repolarization_ms'] = Math.hypot(back, peakPlace) / perMs;
+  return out;
+}
+
+/** How much the trace changes on average over ±`reach` samples about a place. */
+function chord(trace: SpikeTrace, at: number, reach: number): number {
+  const [from, to] = [valueAt(trace.masked, at - Math.max(1, reach)), valueAt(trace.masked, at + Math.max(1, reach))];
+  const change = Math.abs(to - from) / 2;
+  return Number.isFinite(change) ? change * Math.min(1, reach) : 0;
+}
+
+/** Standard error, samples, of the first fall through a level of known error. */
+function fallErrorAt(level: number, levelSe: number, from: number, around: Around): number | null {
+  const { trace, smooth, slowNoise } = around;
+  const rough = crossing(smooth, level, { from: Math.floor(from), to: trace.mv.length - 1, direction: 'down' });
+  if (rough === null) return null;
+  const centre = Math.round(rough);
+  const least = Math.max(1, Math.min(Math.round(0.002 * trace.rateHz), centre - Math.ceil(from)));
+  const broad = widestParabola(
+    trace.masked,
+    centre,
+    trace.noiseMv,
+    Math.max(least, Math.round(0.01 * trace.rateHz)),
+    least,
+  );
+  if (!broad || broad.c1 === 0) return null;
+  // The first fall of a noisy trace comes early by as much as its noise: no averaging helps against that.
+  return Math.hypot(levelSe, 2 * trace.noiseMv, slowNoise) / Math.abs(broad.c1);
 }
 
 /** The top as `peakAt` reads it. */

@@ -77,7 +77,18 @@ describe('slow spikes through electrode, filter, noise and sampling', () => {
       expect(broken(limit, all)).toEqual([]));
 
   test('half-widths hold the truth about as often as they say', () => {
-    for (const quantity of ['apd50_ms', 'apd90_ms', 'cycle_length_ms', 'diastolic_potential_mv', 'plateau_mv']) {
+    for (const quantity of [
+      'apd50_ms',
+      'apd90_ms',
+      'cycle_length_ms',
+      'diastolic_potential_mv',
+      'plateau_mv',
+      'threshold_mv',
+      'spike_height_mv',
+      'half_width_ms',
+      'repolarization_ms',
+      'max_fall_v_per_s',
+    ]) {
       const { held, withWidth } = score(all.filter((trial) => trial.quantity === quantity));
       expect(withWidth).toBeGreaterThan(40);
       expect([quantity, held! >= 0.85]).toEqual([quantity, true]);

@@ -225,9 +225,43 @@ export function beatsOf(mv: Float64Array, hz: number): TrueBeat[] {
       const to = Math.round(upstroke + (0.6 * apd90 * hz) / 1000);
       values['plateau_mv'] = mv.subarray(from, to + 1).reduce((sum, v) => sum + v, 0) / (to + 1 - from);
     }
+    // Threshold: where the slope last crosses a twentieth of its largest before that; what follows from it.
+    const slope = (i: number): number => mv[i + 1]! - mv[i]!;
+    const criterion = 0.05 * slope(steepest[k]!);
+    let foot = steepest[k]!;
+    while (foot > 0 && slope(foot) >= criterion) foot--;
+    const threshold = mv[foot + 1]!;
+    const height = peak - threshold;
+    const firstBelow = (level: number): number => {
+      let i = peaks[k]!;
+      while (i < mv.length && i < (ups[k + 1] ?? mv.length) && mv[i]! > level) i++;
+      return i < mv.length && mv[i]! <= level ? i : Number.NaN;
+    };
+    let up = steepest[k]!;
+    while (up > foot && mv[up]! > threshold + height / 2) up--;
+    while (mv[up]! < threshold + height / 2) up++;
+    Object.assign(values, { threshold_mv: threshold, spike_height_mv: height, threshold_at_s: (foot + 1) / hz });
+    const down = firstBelow(threshold + height / 2);
+    if (Number.isFinite(down)) values['half_width_ms'] = ((down - up) / hz) * 1000;
+    const back = firstBelow(threshold);
+    if (Number.isFinite(back)) {
+      values['repolarization_ms'] = ((back - peaks[k]!) / hz) * 1000;
+      let fall = 0;
+      for (let i = peaks[k]!; i < back; i++) fall = Math.min(fall, slope(i) * hz);
+      values['max_fall_v_per_s'] = fall / 1000;
+    }
     return { upstroke_s: upstroke / hz, values };
   });
 }
+
+const fromThreshold = new Set([
+  'threshold_mv',
+  'threshold_at_s',
+  'spike_height_mv',
+  'half_width_ms',
+  'repolarization_ms',
+  'max_fall_v_per_s',
+]);
 
 /** The spikes of a sweep against its beats; `delay_s` is what the filter holds everything back. */
 function* compared(
@@ -241,7 +275,13 @@ function* compared(
   for (const [k, beat] of beats.entries()) {
     if (k === 0 && subject.skipFirst) continue;
     const spike = spikes.find((one) => Math.abs((one.values['upstroke_at_s'] ?? -1) - beat.upstroke_s) < 0.02);
-    const truths = { ...beat.values, ...(artefact_mv === 0 ? {} : { stimulus_artefact_mv: artefact_mv }) };
+    const crossed_s = beat.values['threshold_at_s'] ?? -1;
+    // While a pulse lasts its own charging passes the criterion: which crossing counts is then a matter of convention.
+    const pulsed = subject.pieces.slice(1, -1).some(({ from_s }, j) => {
+      return crossed_s >= from_s && crossed_s < subject.pieces[j + 2]!.from_s + 0.0005;
+    });
+    const kept = Object.entries(beat.values).filter(([id]) => !pulsed || !fromThreshold.has(id));
+    const truths = { ...Object.fromEntries(kept), ...(artefact_mv === 0 ? {} : { stimulus_artefact_mv: artefact_mv }) };
     for (const [quantity, truth] of Object.entries(truths)) {
       const value = spike?.values[quantity] ?? null;
       const why = spike?.why[quantity];
