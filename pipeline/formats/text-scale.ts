@@ -43,8 +43,8 @@ export function potentialUnit(role: ColumnRole, size: Size, problems: Problem[])
       code: role.guessed ? 'COLUMN_MEANING_UNKNOWN' : 'UNIT_UNKNOWN',
       place: role.name,
       message: role.guessed
-        ? `Nothing says what ${role.name} is, and its numbers (median ${plain(size.median)}, reaching ${plain(size.largest)}) do not tell.`
-        : `No unit is stated for ${role.name}, and its numbers (reaching ${plain(size.largest)}) do not tell.`,
+        ? `Nothing says what ${role.name} is, and its numbers (median ${plain(size.median)}, up to ${plain(size.largest)} from zero) do not tell.`
+        : `No unit is stated for ${role.name}, and its numbers (up to ${plain(size.largest)} from zero) do not tell.`,
       remedy: role.guessed ? 'Say in the sidecar which column is what.' : 'State the unit in the sidecar.',
       sidecar: role.guessed
         ? `${ask(role, 'voltage', 'mV')}   # or\n${ask(role, 'current', 'pA').replace(/^table:\n/, '# ')}`
@@ -55,7 +55,7 @@ export function potentialUnit(role: ColumnRole, size: Size, problems: Problem[])
       code: role.guessed ? 'COLUMN_GUESSED' : 'UNIT_GUESSED',
       place: role.name,
       message: role.guessed
-        ? `Nothing says what ${role.name} is. Its numbers (median ${plain(size.median)}, reaching ${plain(size.largest)}) are those of a membrane potential in ${guess}, and it is read as one.`
+        ? `Nothing says what ${role.name} is. Its numbers (median ${plain(size.median)}, up to ${plain(size.largest)} from zero) are those of a membrane potential in ${guess}, and it is read as one.`
         : `No unit is stated for ${role.name}. Its numbers reach ${plain(size.largest)}, and only ${guess} makes that a membrane potential, so ${guess} is taken.`,
       remedy: 'State the column and its unit in the sidecar.',
       sidecar: ask(role, 'voltage', guess),
