@@ -240,9 +240,20 @@ const incidental: ReadonlySet<string> = new Set([
   'stimulus_pa',
 ]);
 
+/** Counts of events: finding none in a recording too short or empty for anything else is no measurement. */
+const eventCounts: ReadonlySet<string> = new Set([
+  'doublets',
+  'bursts',
+  'spikelets',
+  'rebound_spikes',
+  'escaped_currents',
+]);
+
 function nothingMeasured(input: JudgeInput): boolean {
   const substantial = (readings: Setting['measure']['readings']): boolean =>
-    Object.entries(readings).some(([id, reading]) => !incidental.has(id) && isPresent(reading));
+    Object.entries(readings).some(
+      ([id, reading]) => !incidental.has(id) && isPresent(reading) && !(eventCounts.has(id) && reading.value === 0),
+    );
   return (
     input.sweeps.length === 0 ||
     !(

@@ -62,7 +62,7 @@ const pulseError =
 
 /** How the trace is read between its samples, for the formulas. */
 const between =
-  'V between samples is the band-limited interpolation of the recorded ones (sinc under a Kaiser window, 8 zero crossings, β = 8), or the local cubic by least squares (weights (1 − (d/h)²)² within h samples, h = 3·1.25^k up to half the rise or width) where the widest such cubic reads value and slope there as all narrower ones do, within 3 standard deviations of the noise in the difference';
+  'V between samples is that of the local cubic by least squares about the place (weights (1 − (d/h)²)² within h samples): of h = 3·1.25^k up to half the rise or width the widest whose reading all narrower ones and the band-limited interpolation share within 3 standard deviations of the noise in the difference; where there is none, the band-limited interpolation of the recorded samples (sinc under a Kaiser window, 8 zero crossings, β = 8)';
 /** Half-widths of what slow spikes have like fast ones, for the entries' `uncertainty`. */
 const slowPlaced =
   'slow classes: 1.96 standard errors; the threshold’s place by the slope’s noise over its change there, the shift that twice the window makes and 0.3 samples, its potential by the trace’s change over that, fast and slow noise; the maximum fall by what the next narrower window shows; a fall’s time by its level’s error and twice the fast noise over the slope there; the rest from these in squares';
@@ -455,7 +455,7 @@ export const quantities: readonly Quantity[] = list([
     id: 'peak_corrected_mv',
     levels: ['spike', 'cell'],
     label: 'Peak without the filter',
-    symbol: 'V_peak₀',
+    symbol: 'V_{peak,0}',
     ...mv,
     decimals: 1,
     absolute_potential: true,
@@ -679,7 +679,7 @@ export const quantities: readonly Quantity[] = list([
     id: 'baseline_sd_mv',
     levels: ['sweep', 'cell'],
     label: 'Baseline spread',
-    symbol: 'SD_base',
+    symbol: 'σ_base',
     ...mv,
     decimals: 2,
     definition: 'Standard deviation of the potential before the stimulus, hum included.',

@@ -82,8 +82,13 @@ export function quantityRows(cell: CellRow): QuantityRow[] {
   const first = cell.measure.conditions[0]?.condition;
   return quantitiesOf('cell').flatMap(({ id, label, symbol, unit }) => {
     const readings = cell.measure.conditions.map((one) => one.readings[id] ?? null);
-    // What is not given for this kind of cell is no gap in its numbers.
-    if (readings.every((reading) => reading === null || reading.why === 'not-this-class')) return [];
+    // What is not given for this kind of cell or in its clamp mode is no gap in its numbers.
+    if (
+      readings.every(
+        (reading) => reading === null || reading.why === 'not-this-class' || reading.why === 'not-this-clamp',
+      )
+    )
+      return [];
     const findings = cell.judgement.findings
       .filter(
         (one) => one.quantity === id && one.sweep === null && one.condition === first && one.outcome !== 'not measured',

@@ -324,7 +324,8 @@ describe('a cell is judged on what it has', () => {
     const nothing = { value: null, why: 'unreadable' } as const;
     const bare = six(() => ({ spikes: [] })).map((one) => ({
       ...one,
-      readings: { baseline_mv: nothing, missing_fraction: read(0.03) },
+      // One sample long: no event can be found in it, which says nothing of the cell.
+      readings: { baseline_mv: nothing, missing_fraction: read(0.03), spikelets: read(0), escaped_currents: read(0) },
     }));
     const input = made({ sweeps: bare });
     input.measure.conditions[0]!.readings = { resting_potential_mv: nothing, sample_interval_us: read(50) };
