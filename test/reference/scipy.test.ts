@@ -302,19 +302,25 @@ describe.skipIf(!python)('spikes', () => {
   ] as const) {
     const peaks = scipy<{ index: number[]; half_width_samples: number[] }>('peaks', { mv, prominence: 20 });
     const gradient = scipy<number[]>('gradient', { mv, rate_hz: rateHz });
+    const fineGradient = scipy<number[]>('fine_gradient', { mv, rate_hz: rateHz });
     test(`${name}: as many spikes as find_peaks with a prominence of 20 mV, at the same samples, as steep`, () => {
       const theirs = peaks();
       const slope = gradient();
+      const fine = fineGradient();
       const ours = measured(mv, rateHz);
       expect(ours).toHaveLength(theirs.index.length);
       ours.forEach((spike, k) => {
         const at = theirs.index[k]!;
         expect(Math.abs(spike.values['peak_at_s']! * rateHz - at)).toBeLessThanOrEqual(1);
-        expect(spike.values['peak_mv']!).toBeGreaterThanOrEqual(mv[at]!);
+        // The highest of noisy samples stands above the top that is read through the noise.
+        expect(spike.values['peak_mv']!).toBeGreaterThanOrEqual(mv[at]! - (mv === noisy ? 0.5 : 0));
         expect(spike.values['peak_mv']! - mv[at]!).toBeLessThan(1);
         const from = Math.floor(spike.values['threshold_at_s']! * rateHz);
-        const steepest = Math.max(...slope.slice(from, at + 1));
-        expect(spike.values['max_rise_v_per_s']!).toBeCloseTo(steepest, 6);
+        // The central difference of the samples blunts the rise; a resampling of SciPy's own does not.
+        const steepest = Math.max(...fine.slice(20 * from, 20 * (at + 1)));
+        const rise = spike.values['max_rise_v_per_s']!;
+        expect(Math.abs(rise / steepest - 1)).toBeLessThan(mv === noisy ? 0.05 : 0.01);
+        expect(rise).toBeGreaterThan(0.98 * Math.max(...slope.slice(from, at + 1)));
         // SciPy's width lies at half the prominence, which is taken from a lower base than threshold: wider than ours.
         const wider = (theirs.half_width_samples[k]! / rateHz) * 1000;
         expect(spike.values['half_width_ms']!).toBeLessThan(wider);
