@@ -91,8 +91,8 @@ ${wrap(
 #   voltage: { columns: [2, 3, 4], unit: mV }
 #   stimulus: { kind: step, start_s: 0.2, end_s: 0.7, from_pa: -100, by_pa: 50 }
 #   clamp: current
-# In voltage clamp without a recorded command:  clamp: voltage  and the command as it was given
-#   stimulus: { kind: levels, at_s: [0, 0.1, 0.15], mv: [-70, -65, -70] }
+# In voltage clamp without a recorded command:  clamp: voltage  and as the stimulus the command that was given,
+#   { kind: levels, at_s: [0, 0.1, 0.15], mv: [-70, -65, -70] }
 
 # A file or folder that holds no recording:
 # other: "calibration pulses into the bath"
