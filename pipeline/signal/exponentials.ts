@@ -26,7 +26,7 @@ export interface ExponentialSum {
   correlation: number;
   /** Degrees of freedom behind the covariance. */
   freedom: number;
-  /** False where a time constant ran to an edge of its range, or the Jacobian has no inverse. */
+  /** False where a time constant ran to an edge of its range, a term is nil, or the Jacobian has no inverse. */
   converged: boolean;
 }
 
@@ -320,6 +320,8 @@ function described(points: Points, { p, rss, matrix, residuals, bounds }: Refine
     const [from, to] = bounds[k]!;
     return p[2 * k + 2]! > from + 1e-6 && p[2 * k + 2]! < to - 1e-6;
   });
+  // A level trace leaves rounding to fit: a term of that size is none.
+  const there = terms.every(({ amplitude }) => Math.abs(amplitude) > 1e-13 * Math.abs(p[0]!));
   return {
     offset: p[0]!,
     terms,
@@ -329,7 +331,7 @@ function described(points: Points, { p, rss, matrix, residuals, bounds }: Refine
     covariance: inverse ? inverse.map((row) => row.map((value) => value * variance)) : [],
     correlation: white > 0 ? variance / white : 1,
     freedom: slow && slow.variance > white ? slow.freedom : n - p.length,
-    converged: inverse !== null && inside,
+    converged: inverse !== null && inside && there,
   };
 }
 

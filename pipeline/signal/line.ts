@@ -13,7 +13,8 @@ export interface LineFit {
   n: number;
 }
 
-function pairs(x: ArrayLike<number>, y: ArrayLike<number>): { x: number[]; y: number[] } {
+/** The pairs of which both are finite. @throws RangeError where x and y are not of one length */
+export function finitePairs(x: ArrayLike<number>, y: ArrayLike<number>): { x: number[]; y: number[] } {
   if (x.length !== y.length) throw new RangeError(`x and y must be of one length, got ${x.length} and ${y.length}`);
   const kept = { x: [] as number[], y: [] as number[] };
   for (let i = 0; i < x.length; i++)
@@ -30,7 +31,7 @@ function pairs(x: ArrayLike<number>, y: ArrayLike<number>): { x: number[]; y: nu
  * @see Draper & Smith, Applied Regression Analysis (from memory)
  */
 export function linearFit(x: ArrayLike<number>, y: ArrayLike<number>): LineFit | null {
-  const points = pairs(x, y);
+  const points = finitePairs(x, y);
   const n = points.x.length;
   if (n < 2) return null;
   const meanX = points.x.reduce((sum, value) => sum + value, 0) / n;
@@ -79,7 +80,7 @@ const mostPoints = 1500;
  * @see Theil 1950; Sen 1968, J Am Stat Assoc 63:1379–1389
  */
 export function theilSen(x: ArrayLike<number>, y: ArrayLike<number>): TheilSenFit | null {
-  const all = pairs(x, y);
+  const all = finitePairs(x, y);
   const stride = Math.max(1, Math.ceil(all.x.length / mostPoints));
   const px = all.x.filter((_, i) => i % stride === 0);
   const py = all.y.filter((_, i) => i % stride === 0);

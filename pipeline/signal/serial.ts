@@ -2,6 +2,7 @@
  * Means and straight lines of samples that are not independent of their neighbours: filtered noise, channel noise,
  * slow wander. The textbook standard error counts every sample as a new observation and comes out far too small.
  */
+import { finitePairs } from './line.ts';
 
 /** A number with its standard error and the degrees of freedom behind that error. */
 export interface SerialMean {
@@ -61,7 +62,7 @@ const firstFour = 24 ** (1 / 4);
  * Intervals of 95 % hold the truth in 92–98 % for noise whose correlation time is below a hundredth of the span, in
  * about 90 % where it is a twentieth; noise slower than that cannot be told from the mean itself, and the error comes
  * out too small (1/f noise down to the span: about 85 %). Hum makes it too large, the more the stronger it is: take it
- * out first (`sineFit`).
+ * out first (`sineInPieces`).
  *
  * @returns null where nothing is readable
  * @see Müller 2007, J Econometrics 141:1331–1352; Lazarus, Lewis, Stock & Watson 2018, J Bus Econ Stat 36:541–559 (both
@@ -92,14 +93,7 @@ export function serialMean(values: ArrayLike<number>): SerialMean | null {
  * @returns null for fewer than two pairs or where x has no span
  */
 export function serialLine(x: ArrayLike<number>, y: ArrayLike<number>): SerialLine | null {
-  if (x.length !== y.length) throw new RangeError(`x and y must be of one length, got ${x.length} and ${y.length}`);
-  const px: number[] = [];
-  const py: number[] = [];
-  for (let i = 0; i < x.length; i++)
-    if (Number.isFinite(x[i]!) && Number.isFinite(y[i]!)) {
-      px.push(x[i]!);
-      py.push(y[i]!);
-    }
+  const { x: px, y: py } = finitePairs(x, y);
   const n = px.length;
   if (n < 2) return null;
   const mean_x = px.reduce((sum, value) => sum + value, 0) / n;

@@ -3,7 +3,7 @@
  * stimuli. The pieces lie on one grid, so that the sine keeps its phase across the gaps.
  */
 import { requireRate } from './derivative.ts';
-import { goldenMinimum } from './exponential.ts';
+import { goldenMinimum } from './golden.ts';
 
 /** Consecutive finite samples; `from` is the index of the first on the common grid. */
 export interface Piece {

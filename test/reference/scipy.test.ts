@@ -12,7 +12,6 @@ import {
   coverage95,
   derivativeVPerS,
   type ExponentialTerm,
-  exponentialFit,
   exponentialSum,
   finiteStretches,
   linearFit,
@@ -23,14 +22,13 @@ import {
   quantile,
   robustSpread,
   runningMedian,
-  sineFit,
-  sineNear,
   slopeVPerS,
   standardDeviation,
   theilSen,
   zeroPhase,
 } from '../../pipeline/signal/index.ts';
 import { hodgkinHuxley, normalNoise, pospischil, quantized, simulate, withNoise } from '../helpers/models.ts';
+import { oneExponential, oneSine, oneSineNear } from '../signal/single-fits.ts';
 import { findPython } from '../tooling/prepare.ts';
 
 const python = findPython();
@@ -129,8 +127,11 @@ describe.skipIf(!python)('kernels', () => {
     const y = x.map((v) => -70 - 6 * Math.exp(-(v - 3) / tau) + 0.2 * next());
     const fitted = scipy<{ best: number[]; se: number[] }>('exponential', { x, y });
     test(`exponential of ${tau} ms in noise: parameters and standard errors of curve_fit`, () => {
-      const ours = exponentialFit(x, y)!;
-      const mine = [ours.offset, ours.amplitude, ours.tau, ours.se_offset, ours.se_amplitude, ours.se_tau];
+      const ours = oneExponential(x, y)!;
+      // Ours are scaled to the slow part of the residuals.
+      const white = Math.sqrt(ours.correlation);
+      const errors = [ours.se_offset, ours.se_amplitude, ours.se_tau].map((se) => se / white);
+      const mine = [ours.offset, ours.amplitude, ours.tau, ...errors];
       const theirs = [...fitted().best, ...fitted().se];
       theirs.forEach((value, k) => {
         expect(mine[k]! / value).toBeCloseTo(1, 4);
@@ -186,7 +187,7 @@ describe.skipIf(!python)('kernels', () => {
   });
   const hum = noisy.slice(0, 2000).map((v, i) => v + 0.2 * Math.sin((2 * Math.PI * 50 * i) / 20_000));
   const amplitude = scipy<number>('sine', { mv: hum, rate_hz: 20_000, frequency_hz: 50 });
-  test('sine beside a straight line', () => expect(sineFit(hum, 20_000, 50)!.amplitude).toBeCloseTo(amplitude(), 8));
+  test('sine beside a straight line', () => expect(oneSine(hum, 20_000, 50)!.amplitude).toBeCloseTo(amplitude(), 8));
 });
 
 describe.skipIf(!python)('more kernels', () => {
@@ -233,7 +234,7 @@ describe.skipIf(!python)('more kernels', () => {
     frequency_hz: 50.3,
   });
   test('the frequency and amplitude of hum are those of a non-linear least-squares fit', () => {
-    const ours = sineNear(hum, 20_000, 50, 2)!;
+    const ours = oneSineNear(hum, 20_000, 50, 2)!;
     expect(ours.frequency_hz).toBeCloseTo(nearest().frequency_hz, 2);
     expect(ours.amplitude / nearest().amplitude).toBeCloseTo(1, 3);
   });

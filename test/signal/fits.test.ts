@@ -1,7 +1,8 @@
 import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
-import { exponentialFit, linearFit, sineFit, sineNear, theilSen } from '../../pipeline/signal/index.ts';
+import { linearFit, theilSen } from '../../pipeline/signal/index.ts';
 import { normalNoise } from '../helpers/models.ts';
+import { oneExponential, oneSine, oneSineNear } from './single-fits.ts';
 
 const range = (n: number, step = 1): number[] => Array.from({ length: n }, (_, i) => i * step);
 
@@ -58,17 +59,17 @@ describe('straight lines', () => {
 
 describe('exponential', () => {
   test('too little to fit, no span, a flat and a straight line', () => {
-    expect(exponentialFit([], [])).toBeNull();
-    expect(exponentialFit(range(4), [4, 3, 2, 1])).toBeNull();
-    expect(exponentialFit([1, 1, 1, 1, 1, 1], [1, 2, 3, 4, 5, 6])).toBeNull();
+    expect(oneExponential([], [])).toBeNull();
+    expect(oneExponential(range(4), [4, 3, 2, 1])).toBeNull();
+    expect(oneExponential([1, 1, 1, 1, 1, 1], [1, 2, 3, 4, 5, 6])).toBeNull();
     expect(
-      exponentialFit(
+      oneExponential(
         range(50),
         range(50).map(() => 3),
       )?.converged ?? false,
     ).toBe(false);
-    expect(exponentialFit(range(50), range(50))?.converged ?? false).toBe(false);
-    expect(() => exponentialFit([1], [])).toThrow(/one length/);
+    expect(oneExponential(range(50), range(50))?.converged ?? false).toBe(false);
+    expect(() => oneExponential([1], [])).toThrow(/one length/);
   });
   test('gives back what was put in', () => {
     fc.assert(
@@ -80,7 +81,7 @@ describe('exponential', () => {
         (tau, size, offset, down) => {
           const x = range(400, 0.25);
           const amplitude = down ? -size : size;
-          const fit = exponentialFit(
+          const fit = oneExponential(
             x,
             x.map((v) => offset + amplitude * Math.exp(-v / tau)),
           )!;
@@ -99,7 +100,7 @@ describe('exponential', () => {
     const taus: number[] = [];
     let stated = 0;
     for (let k = 0; k < 60; k++) {
-      const fit = exponentialFit(
+      const fit = oneExponential(
         x,
         x.map((v) => -70 - 5 * Math.exp(-v / 12) + 0.3 * next()),
       )!;
@@ -116,7 +117,7 @@ describe('exponential', () => {
     const next = normalNoise(4);
     let claimed = 0;
     for (let k = 0; k < 20; k++) {
-      const fit = exponentialFit(
+      const fit = oneExponential(
         range(200),
         range(200).map(() => next()),
       );
@@ -127,7 +128,7 @@ describe('exponential', () => {
   test('unreadable samples are left out', () => {
     const x = range(200, 0.5);
     const y = x.map((v, i) => (i % 7 === 0 ? Number.NaN : 3 + 2 * Math.exp(-v / 10)));
-    expect(exponentialFit(x, y)!.tau).toBeCloseTo(10, 5);
+    expect(oneExponential(x, y)!.tau).toBeCloseTo(10, 5);
   });
 });
 
@@ -140,31 +141,30 @@ describe('sine', () => {
     );
   };
   test('amplitude, phase and the line beside it', () => {
-    const fit = sineFit(hum(10_000, 20_000, 50, 0.2, 0), 20_000, 50)!;
+    const fit = oneSine(hum(10_000, 20_000, 50, 0.2, 0), 20_000, 50)!;
     expect(fit.amplitude).toBeCloseTo(0.2, 6);
     expect(fit.phase_rad).toBeCloseTo(0.7, 5);
     expect(fit.slope_per_s).toBeCloseTo(0.5, 5);
   });
   test('in noise ten times as large, within its standard error', () => {
-    const fit = sineFit(hum(20_000, 20_000, 50, 0.05, 0.5), 20_000, 50)!;
+    const fit = oneSine(hum(20_000, 20_000, 50, 0.05, 0.5), 20_000, 50)!;
     expect(fit.se_amplitude).toBeCloseTo(0.5 * Math.sqrt(2 / 20_000), 4);
     expect(Math.abs(fit.amplitude - 0.05)).toBeLessThan(4 * fit.se_amplitude);
   });
   test('the frequency is found when the rate is misdeclared by 2 %', () => {
-    const fit = sineNear(hum(20_000, 20_000, 51, 0.1, 0.1), 20_000, 50, 3)!;
+    const fit = oneSineNear(hum(20_000, 20_000, 51, 0.1, 0.1), 20_000, 50, 3)!;
     expect(fit.frequency_hz).toBeCloseTo(51, 1);
     expect(fit.amplitude).toBeCloseTo(0.1, 2);
   });
-  test('less than a period, nothing readable, an impossible frequency', () => {
-    expect(sineFit(hum(100, 20_000, 50, 1, 0), 20_000, 50)).toBeNull();
-    expect(sineFit(new Float64Array(5000).fill(Number.NaN), 20_000, 50)).toBeNull();
-    expect(sineNear(new Float64Array(5000).fill(Number.NaN), 20_000, 50, 2)).toBeNull();
-    expect(() => sineFit(new Float64Array(10), 1000, 500)).toThrow(/frequencyHz must lie between 0 and 500 Hz/);
+  test('nothing readable, an impossible frequency', () => {
+    expect(oneSine(new Float64Array(5000).fill(Number.NaN), 20_000, 50)).toBeNull();
+    expect(oneSineNear(new Float64Array(5000).fill(Number.NaN), 20_000, 50, 2)).toBeNull();
+    expect(() => oneSine(new Float64Array(10), 1000, 500)).toThrow(/frequencyHz must lie between 0 and 500 Hz/);
   });
   test('a gap does not spoil it', () => {
     const samples = hum(20_000, 20_000, 50, 0.2, 0);
     samples.fill(Number.NaN, 3000, 6000);
-    expect(sineFit(samples, 20_000, 50)!.amplitude).toBeCloseTo(0.2, 6);
-    expect(sineNear(samples, 20_000, 50, 1)!.frequency_hz).toBeCloseTo(50, 2);
+    expect(oneSine(samples, 20_000, 50)!.amplitude).toBeCloseTo(0.2, 6);
+    expect(oneSineNear(samples, 20_000, 50, 1)!.frequency_hz).toBeCloseTo(50, 2);
   });
 });

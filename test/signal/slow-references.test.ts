@@ -10,7 +10,6 @@ import {
   derivativeVPerS,
   envelope,
   excursions,
-  exponentialFit,
   finiteStretches,
   goldenMinimum,
   linearFit,
@@ -25,8 +24,6 @@ import {
   runningMedian,
   serialLine,
   serialMean,
-  sineFit,
-  sineNear,
   slopeVPerS,
   standardDeviation,
   theilSen,
@@ -34,6 +31,7 @@ import {
   vertex,
 } from '../../pipeline/signal/index.ts';
 import { normalNoise } from '../helpers/models.ts';
+import { oneExponential, oneSine, oneSineNear } from './single-fits.ts';
 
 const made = (n: number, formula: (i: number) => number): Float64Array =>
   Float64Array.from({ length: n }, (_, i) => formula(i));
@@ -330,11 +328,10 @@ describe('sines', () => {
   const hum = made(4000, (i) => 1e3 + 0.002 * i + 0.3 * Math.cos((2 * Math.PI * 49.7 * i) / 5000 + 1) + 0.2 * g());
   for (const [name, samples] of [
     ['plain', hum],
-    ['with gaps', hum.map((v, i) => (i % 13 === 0 || (i > 900 && i < 1500) ? Number.NaN : v))],
     ['a millionth in size', hum.map((v) => v * 1e-6)],
   ] as const)
     test(`amplitude, phase, level and error, ${name}`, () => {
-      const fit = sineFit(samples, 5000, 50)!;
+      const fit = oneSine(samples, 5000, 50)!;
       const at = Array.from(samples.keys()).filter((i) => Number.isFinite(samples[i]!));
       const w = (2 * Math.PI * 50) / 5000;
       const { beta, rss } = leastSquares(
@@ -354,11 +351,11 @@ describe('sines', () => {
     const rate = n === 4000 ? 5000 : 500;
     const next = noise(n);
     const samples = made(n, (i) => 0.2 * Math.sin((2 * Math.PI * 51.234 * i) / rate) + 0.3 * next());
-    const fit = sineNear(samples, rate, hz, range)!;
+    const fit = oneSineNear(samples, rate, hz, range)!;
     const step = rate / n / 12;
     let [best, least] = [0, Number.POSITIVE_INFINITY];
     for (let f = 51.234 - 12 * step; f <= 51.234 + 12 * step; f += step / 2) {
-      const sd = sineFit(samples, rate, f)!.residual_sd;
+      const sd = oneSine(samples, rate, f)!.residual_sd;
       if (sd < least) [best, least] = [f, sd];
     }
     expect(Math.abs(fit.frequency_hz - best)).toBeLessThanOrEqual(step);
@@ -369,7 +366,7 @@ describe('sines', () => {
     const amplitudes: number[] = [];
     let stated = 0;
     for (let k = 0; k < 200; k++) {
-      const fit = sineFit(
+      const fit = oneSine(
         made(1000, (i) => Math.sin((2 * Math.PI * 50 * i) / 5000) + 0.7 * next()),
         5000,
         50,
@@ -409,7 +406,7 @@ describe('exponentials', () => {
     const g = noise(31);
     const x = Array.from({ length: 300 }, (_, i) => 7 + 0.1 * i);
     const y = x.map((v) => shift + scale * (-70 - 6 * Math.exp(-(v - 7) / 8) + 0.1 * g()));
-    const ours = exponentialFit(x, y)!;
+    const ours = oneExponential(x, y)!;
     const { beta, rss } = gaussNewton(x, y, [shift - 70 * scale, -6 * scale, 8]);
     expect(Math.abs(ours.offset - beta[0]!)).toBeLessThan(1e-4 * scale + 1e-9);
     expect(ours.amplitude / beta[1]!).toBeCloseTo(1, 5);
@@ -423,7 +420,7 @@ describe('exponentials', () => {
     let count = 0;
     for (let k = 0; k < 300; k++) {
       const own = maker(next);
-      const fit = exponentialFit(
+      const fit = oneExponential(
         x,
         x.map((v) => -70 - 5 * Math.exp(-v / 12) + 0.15 * own()),
       )!;
@@ -437,12 +434,13 @@ describe('exponentials', () => {
     expect(share).toBeGreaterThan(91.5);
     expect(share).toBeLessThan(98.5);
   });
-  test('in noise with a correlation time of ten samples it is far too small', () => {
+  test('in noise with a correlation time of ten samples it nearly holds, for the slow part of the residuals counts', () => {
     const share = held((next) => {
       let v = next();
       return () => (v = 0.905 * v + Math.sqrt(1 - 0.905 ** 2) * next());
     }, 38);
-    expect(share).toBeLessThan(65);
+    // The errors of white noise alone would hold it in fewer than 65 of 100.
+    expect(share).toBeGreaterThan(85);
   });
   test('the golden section finds a minimum', () => {
     for (const at of [-3, 0.001, 7]) expect(goldenMinimum((x) => (x - at) ** 2, -10, 10)).toBeCloseTo(at, 6);
