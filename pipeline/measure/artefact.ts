@@ -5,6 +5,7 @@
 import { linearFit } from '../signal/line.ts';
 import { median } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
+import { join } from './spike-trace.ts';
 import { timeAt } from './stretches.ts';
 import type { Reading, Signal, Spike, Stimulus } from './types.ts';
 
@@ -54,7 +55,7 @@ export function withoutArtefacts(
       : briefPulses(stimulus).map((pair) => ({
           ...pair,
           inferred: false,
-          spread_s: Math.max(settle_s, current ? edgeSpread_s(current, pair.on_s) + 0.0001 : 0),
+          spread_s: spreadOf_s(current, pair.on_s),
         }));
   if (edges.length === 0) return { voltage, pulses: [], guard: null, remarks };
   const samples = voltage.samples.slice();
@@ -118,6 +119,10 @@ function edgeSpread_s(current: Signal, edge_s: number): number {
   }
   return Math.max(at - first, last - at) / rate_hz;
 }
+
+/** How long an edge and what the electrode makes of it last, s. */
+const spreadOf_s = (current: Signal | null, edge_s: number): number =>
+  Math.max(settle_s, current ? edgeSpread_s(current, edge_s) + 0.0001 : 0);
 
 interface Line {
   at: number;
@@ -204,8 +209,7 @@ function lower(
   for (let i = Math.max(0, index(on_s)); i < Math.min(samples.length, index(off_s)); i++) samples[i]! -= jump;
   for (const edge of [index(on_s), index(off_s)]) {
     const [from, to] = [Math.max(0, edge - guard.before - 1), Math.min(samples.length - 1, edge + guard.after + 1)];
-    for (let i = from + 1; i < to; i++)
-      samples[i] = samples[from]! + ((samples[to]! - samples[from]!) * (i - from)) / (to - from);
+    join(samples, from, to);
   }
 }
 
@@ -283,7 +287,7 @@ export function pulseResponse(
   const peaks = spikes.map((spike) => spike.values['peak_at_s'] ?? Number.NaN);
   const found = pulses.flatMap(({ on_s, off_s }) => {
     if (peaks.some((peak) => peak >= on_s && peak <= off_s)) return [];
-    const spread_s = Math.max(settle_s, current ? edgeSpread_s(current, on_s) + 0.0001 : 0);
+    const spread_s = spreadOf_s(current, on_s);
     const from = Math.ceil((on_s + spread_s - voltage.start_s) * voltage.rate_hz);
     const to =
       Math.floor((off_s - Math.max(1 / voltage.rate_hz, spread_s - settle_s) - voltage.start_s) * voltage.rate_hz) - 1;

@@ -1,4 +1,5 @@
 /** How alike the beats of a heart cell are: variability from beat to beat and alternans. */
+import { invert } from '../signal/least-squares.ts';
 import { mean } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import type { NumberedSweep, Reading, Readings } from './types.ts';
@@ -64,22 +65,12 @@ export function alternating(y: readonly number[]): { c: number; se: number } {
   const rows = y.map((_, k) => [1, k - (n - 1) / 2, k % 2 === 0 ? 1 : -1]);
   const normal = [0, 1, 2].map((i) => [0, 1, 2].map((j) => rows.reduce((sum, row) => sum + row[i]! * row[j]!, 0)));
   const right = [0, 1, 2].map((i) => rows.reduce((sum, row, k) => sum + row[i]! * y[k]!, 0));
-  const inverse = inverted(normal);
+  // Three terms of which none is made of the others: it has an inverse from three beats on.
+  const inverse = invert(normal)!;
   const solution = inverse.map((row) => row.reduce((sum, value, j) => sum + value * right[j]!, 0));
   const left = y.reduce(
     (sum, value, k) => sum + (value - rows[k]!.reduce((s, x, j) => s + x * solution[j]!, 0)) ** 2,
     0,
   );
   return { c: solution[2]!, se: Math.sqrt((left / Math.max(1, n - 3)) * inverse[2]![2]!) };
-}
-
-/** Inverse of a 3 × 3 matrix by cofactors. */
-function inverted(m: readonly (readonly number[])[]): number[][] {
-  const cofactor = (i: number, j: number): number => {
-    const [a, b] = [0, 1, 2].filter((k) => k !== i) as [number, number];
-    const [c, d] = [0, 1, 2].filter((k) => k !== j) as [number, number];
-    return (m[a]![c]! * m[b]![d]! - m[a]![d]! * m[b]![c]!) * ((i + j) % 2 === 0 ? 1 : -1);
-  };
-  const determinant = [0, 1, 2].reduce((sum, j) => sum + m[0]![j]! * cofactor(0, j), 0);
-  return [0, 1, 2].map((i) => [0, 1, 2].map((j) => cofactor(j, i) / determinant));
 }

@@ -69,7 +69,7 @@ export function uncertaintyOver(
 }
 
 /** What the numbers' own uncertainties count for against their scatter: as much as so many degrees of freedom. */
-const ownFreedom = 10;
+export const ownFreedom = 10;
 /** And to the size of a scatter that exceeds them. */
 export const scatterFreedom = 2;
 
@@ -126,3 +126,14 @@ export function longSteps(sweeps: readonly NumberedSweep[]): NumberedSweep[] {
 /** Why a cell has no steps to speak of. */
 export const stimulusReason = (sweeps: readonly NumberedSweep[]): AbsenceCode =>
   sweeps.some((sweep) => !['none', 'unknown'].includes(sweep.stimulus.kind)) ? 'stimulus-not-a-step' : 'no-stimulus';
+
+/** Why no hyperpolarizing step could be used: none was made, or those made could not be measured. */
+export function withoutHyperpolarizing(sweeps: readonly NumberedSweep[]): Reading {
+  const made = longSteps(sweeps).filter((sweep) => stepPa(sweep)! < 0);
+  if (made.length > 0) return commonReason(made, 'steady_deflection_mv', 'no-hyperpolarizing-steps');
+  return absent(
+    sweeps.length > 0 && sweeps.every((sweep) => sweep.stimulus.kind === 'unknown')
+      ? 'no-stimulus'
+      : 'no-hyperpolarizing-steps',
+  );
+}

@@ -1,11 +1,10 @@
 /** Time constants from the averaged onset of hyperpolarizing steps. */
 import { type ExponentialSum, type ExponentialTerm, exponentialSum, tauError } from '../signal/exponentials.ts';
 import { mean, median } from '../signal/statistics.ts';
-import { type Point, stepPa, uncertaintyOver } from './cell-numbers.ts';
-import { withoutHyperpolarizing } from './cell-passive.ts';
-import { backToEdge, electrodeLimit_ms } from './edge.ts';
+import { type Point, stepPa, uncertaintyOver, withoutHyperpolarizing } from './cell-numbers.ts';
+import { backToEdge, electrodeLimit_ms, secondTermF } from './edge.ts';
 import { filterAtEdge } from './passive.ts';
-import { absent, combinedError, measured } from './reading.ts';
+import { absent, combinedError, errorOf, measured } from './reading.ts';
 import type { NumberedSweep, Reading } from './types.ts';
 
 /** Responses up to this deflection, mV, count as small; sag up to this share of it counts as none. */
@@ -180,9 +179,7 @@ export function timeConstants(
         )
       : null;
   const spread =
-    scatter?.se !== undefined && scatter.se > 1.5 * one!.se
-      ? { se: scatter.se, ...(scatter.freedom === undefined ? {} : { freedom: scatter.freedom }) }
-      : { se: one!.se, freedom: one!.freedom };
+    scatter?.se !== undefined && scatter.se > 1.5 * one!.se ? errorOf(scatter) : { se: one!.se, freedom: one!.freedom };
   const none = absent('unresolved', { note: 'one exponential describes the onset as well' });
   return {
     membrane_time_constant_ms: measured(one!.tau, {
@@ -225,8 +222,6 @@ function single(response: Response, from_ms: number, whole: boolean): Single | n
     : null;
 }
 
-/** A second exponential is taken where F exceeds this: about 1 in 1000 by chance. */
-const secondTermF = 7;
 /** A fast part below this share of the response is not told from noise. */
 const leastShare = 0.03;
 

@@ -5,18 +5,20 @@ import {
   longSteps,
   medianOver,
   ownError,
+  ownFreedom,
   type Point,
   placeOf,
   pointsOf,
   scatterFreedom,
   stepPa,
   uncertaintyOver,
+  withoutHyperpolarizing,
 } from './cell-numbers.ts';
 import { averaged, responseOf, timeConstants } from './cell-onset.ts';
 import { backToEdge } from './edge.ts';
 import { spikesDuring } from './firing.ts';
 import { filterAtEdge } from './passive.ts';
-import { absent, combinedError, measured } from './reading.ts';
+import { absent, combinedError, errorOf, measured } from './reading.ts';
 import type { CellContext, NumberedSweep, Reading, Readings, VIPoint } from './types.ts';
 
 /** Steady potential change on current, for every step without a spike in it. */
@@ -96,9 +98,6 @@ function bendFreeScatter(x: readonly number[], y: readonly number[]): { variance
   return { variance: rss / (x.length - 3), freedom: x.length - 3 };
 }
 
-/** What the points' own uncertainties count for against their scatter: as much as so many degrees of freedom. */
-const ownFreedom = 10;
-
 /**
  * Uncertainty of a slope from the points' own and from their scatter (both variances of the slope): pooled where the
  * scatter is no more than chance makes of the points' own (F at 95 %), else the scatter alone, as over sweeps.
@@ -125,13 +124,7 @@ function inputResistance(sweeps: readonly NumberedSweep[], down: readonly Point[
   if (!fit) return absent('too-few-points');
   const left = bridge.value;
   // Whatever the bridge left over stands in the slope: where it is not known, neither is the uncertainty.
-  const error =
-    left === null
-      ? {}
-      : combinedError([
-          { ...fit, se: fit.se * mohmPer },
-          { se: bridge.se ?? 0, ...(bridge.freedom === undefined ? {} : { freedom: bridge.freedom }) },
-        ]);
+  const error = left === null ? {} : combinedError([{ ...fit, se: fit.se * mohmPer }, errorOf(bridge)]);
   return measured(fit.value * mohmPer - (left ?? 0), {
     n: down.length,
     ...error,
@@ -143,17 +136,6 @@ function inputResistance(sweeps: readonly NumberedSweep[], down: readonly Point[
   });
 }
 
-/** Why no hyperpolarizing step could be used: none was made, or those made could not be measured. */
-export function withoutHyperpolarizing(sweeps: readonly NumberedSweep[]): Reading {
-  const made = longSteps(sweeps).filter((sweep) => stepPa(sweep)! < 0);
-  if (made.length > 0) return commonReason(made, 'steady_deflection_mv', 'no-hyperpolarizing-steps');
-  return absent(
-    sweeps.length > 0 && sweeps.every((sweep) => sweep.stimulus.kind === 'unknown')
-      ? 'no-stimulus'
-      : 'no-hyperpolarizing-steps',
-  );
-}
-
 /** ms/MΩ is nF. */
 function capacitance(resistance: Reading, timeConstant: Reading): Reading {
   if (timeConstant.value === null) return { ...timeConstant };
@@ -161,8 +143,8 @@ function capacitance(resistance: Reading, timeConstant: Reading): Reading {
   if (!(resistance.value > 0)) return absent('unresolved');
   const value = (timeConstant.value / resistance.value) * 1000;
   const part = (reading: Reading) => ({
+    ...errorOf(reading),
     se: (value * (reading.se ?? 0)) / Math.abs(reading.value!),
-    ...(reading.freedom === undefined ? {} : { freedom: reading.freedom }),
   });
   return measured(value, {
     n: timeConstant.n ?? 1,
@@ -197,9 +179,9 @@ function sagAndRebound(sweeps: readonly NumberedSweep[], down: readonly Point[],
   const steady = nearest.sweep.readings['steady_deflection_mv']!;
   const base = nearest.sweep.readings['baseline_mv']?.se ?? 0;
   const own = (reading: Reading): { se: number; freedom?: number } => ({
+    ...errorOf(reading),
     // Both deflections are taken from one baseline, whose error cancels in their difference.
     se: Math.sqrt(Math.max(0, (reading.se ?? 0) ** 2 - base ** 2)),
-    ...(reading.freedom === undefined ? {} : { freedom: reading.freedom }),
   });
   const difference = steady.value! - nearest.value;
   const error = combinedError([own(steady), own(nearest.reading)]);
@@ -317,8 +299,8 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
   ]);
   const both = measured(after.mv * mohmPer, {
     n: responses.length,
+    ...errorOf(own),
     se: own.se * mohmPer,
-    ...(own.freedom === undefined ? {} : { freedom: own.freedom }),
     at: { sweep: responses[0]!.sweep.sweep, from_s: responses[0]!.sweep.stimulus.onset_s! },
     note: [
       `averaged onset of ${responses.length} steps`,
@@ -328,10 +310,7 @@ function bridgeError(sweeps: readonly NumberedSweep[], filter_khz: number | null
   // Large depolarizing steps and ends of steps may say more than small onsets; the delays are common to all of them. A
   // second exponential that the average shows is lost in the noise of single sweeps, and they would be wrong by it.
   if (after.terms > 1 || single.value === null || single.n! < 3) return both;
-  const shared = combinedError([
-    { se: single.se ?? 0, ...(single.freedom === undefined ? {} : { freedom: single.freedom }) },
-    { se: after.lag_se * mohmPer },
-  ]);
+  const shared = combinedError([errorOf(single), { se: after.lag_se * mohmPer }]);
   const { u95: _, freedom: __, ...rest } = single;
   const other = measured(single.value, { ...rest, ...shared });
   return other.u95! < 0.7 * both.u95! ? other : both;
@@ -463,13 +442,13 @@ function accessChange(points: readonly Point[], least: number): Reading {
   const before = median(first!)!;
   const after = median(last!)!;
   if (!(before > 0)) return absent('unresolved');
-  const error = (part: readonly Point[]): { se: number; freedom?: number } => {
-    const { se, freedom } = uncertaintyOver(
-      part.map((point) => point.value),
-      part.map(({ reading }) => ownError(reading)),
+  const error = (part: readonly Point[]) =>
+    errorOf(
+      uncertaintyOver(
+        part.map((point) => point.value),
+        part.map(({ reading }) => ownError(reading)),
+      ),
     );
-    return { se: se ?? 0, ...(freedom === undefined ? {} : { freedom }) };
-  };
   const both = combinedError([error(points.slice(0, tenth)), error(points.slice(-tenth))]);
   return measured((100 * (after - before)) / before, {
     n: points.length,

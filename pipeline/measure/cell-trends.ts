@@ -12,7 +12,7 @@ import {
 } from './cell-numbers.ts';
 import { spikesDuring } from './firing.ts';
 import { quantizationError } from './passive.ts';
-import { absent, combinedError, measured } from './reading.ts';
+import { absent, combinedError, errorOf, measured } from './reading.ts';
 import type { CellContext, NumberedSweep, Reading, Readings } from './types.ts';
 
 /** Baseline, noise, hum and what the recorder did, over all sweeps of the condition. */
@@ -107,10 +107,7 @@ export function restingReadings(sweeps: readonly NumberedSweep[], context: CellC
   const rounding = Math.max(
     ...free.map(({ sweep, reading }) => quantizationError(sweep.readings['quantum_mv']?.value ?? 0, reading.sd ?? 0)),
   );
-  const error = combinedError([
-    { se: over.se, ...(over.freedom === undefined ? {} : { freedom: over.freedom }) },
-    { se: rounding },
-  ]);
+  const error = combinedError([errorOf(over), { se: rounding }]);
   const { u95: _, freedom: __, ...kept } = over;
   return { resting_potential_mv: measured(over.value, { ...kept, ...error }) };
 }

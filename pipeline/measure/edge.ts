@@ -41,7 +41,7 @@ const lateBy = 2;
 /** Where it is too fast to be seen: 1 pF behind 12 MΩ, common values, ms. */
 const unseenElectrode_ms = 0.012 * lateBy;
 /** A second exponential is taken where F exceeds this: about 1 in 1000 by chance. */
-const secondTermF = 7;
+export const secondTermF = 7;
 
 /**
  * Value at the edge of the response that follows it: one exponential with an offset, or two where the second makes the

@@ -1,5 +1,5 @@
 /** Action currents that the clamp did not hold: inward, a millisecond wide, all or none, at times of their own. */
-import { median, quantile } from '../signal/statistics.ts';
+import { madToSd, median, quantile } from '../signal/statistics.ts';
 import type { CommandEdge } from './clamp-fit.ts';
 import { absent, measured } from './reading.ts';
 import { indexAt, type Stretch, timeAt } from './stretches.ts';
@@ -37,7 +37,7 @@ export function escapedCurrents(current: Signal, edges: readonly CommandEdge[]):
   const inward = aboveLocalMedian(current, calm);
   const sizes = inward.filter(Number.isFinite);
   if (sizes.length < 8) return absent('sweep-too-short');
-  const noise = 1.4826 * (quantile(sizes.map(Math.abs), 0.5) ?? 0);
+  const noise = madToSd * (quantile(sizes.map(Math.abs), 0.5) ?? 0);
   const least = Math.max(leastEscaped_pa, timesNoise * noise);
   const found: number[] = [];
   for (let i = 1; i + 1 < inward.length; i++) {

@@ -3,7 +3,7 @@ import { lineErrorAt, type SerialLine, serialLine, serialMean } from '../signal/
 import { countFinite, mean, meanWithin, median, standardDeviation } from '../signal/statistics.ts';
 import { backToEdge, type EdgeValue } from './edge.ts';
 import { stuckStretches } from './quality.ts';
-import { absent, combinedError, measured } from './reading.ts';
+import { absent, combinedError, errorOf, measured } from './reading.ts';
 import type { Level } from './stimulus.ts';
 import {
   filterDelayMs,
@@ -179,6 +179,10 @@ interface Drift {
 
 const resolvedFrom = 3;
 
+/** The next stimulus edge after a step, or the end of the sweep, s. */
+const undisturbedUntil_s = ({ voltage, stimulus }: PassiveInput, step: Step): number =>
+  Math.min(timeAt(voltage, voltage.samples.length), ...stimulus.edges_s.filter((s) => s > step.to_s + 1e-9));
+
 /**
  * The line that the baseline follows under the step. Where the potential comes back to it afterwards, the line through
  * the levels before and after (a slope below three times its standard error counts as none); otherwise the slope
@@ -187,14 +191,11 @@ const resolvedFrom = 3;
  * is one, lies nearer to the line than to the level before.
  */
 function driftUnder(input: PassiveInput, step: Step): Drift {
-  const { voltage, stimulus, spikes, slow } = input;
+  const { voltage, spikes, slow } = input;
   const before = lineIn(voltage, baselineStretches(input).stretches);
   const none = { slope: 0, se: 0, from_s: before?.mean_x ?? step.from_s };
   if (!before || before.se_slope === null) return none;
-  const next_s = Math.min(
-    timeAt(voltage, voltage.samples.length),
-    ...stimulus.edges_s.filter((s) => s > step.to_s + 1e-9),
-  );
+  const next_s = undisturbedUntil_s(input, step);
   const whole = {
     from: indexAt(voltage, step.to_s + Math.max(0.06, 0.5 * (next_s - step.to_s))),
     to: indexAt(voltage, next_s),
@@ -252,10 +253,7 @@ function levelUnder(baseline: Reading, drift: Drift, time_s: number) {
   const reach = time_s - drift.from_s;
   return {
     mv: baseline.value! + drift.slope * reach,
-    errors: [
-      { se: baseline.se ?? 0, ...(baseline.freedom === undefined ? {} : { freedom: baseline.freedom }) },
-      { se: drift.se * reach },
-    ],
+    errors: [errorOf(baseline), { se: drift.se * reach }],
     ...(drift.slope === 0 ? {} : { note: `baseline drift of ${drift.slope.toFixed(2)} mV/s taken off` }),
   };
 }
@@ -347,17 +345,28 @@ function largestDeflection(input: PassiveInput, baseline: Reading, step: Step, d
   if (touchesLimit(input, window)) return absent('clipped');
   const found = extremeOf(voltage, [window], widthFor(step), -1);
   if (!found) return absent('sweep-too-short');
-  const push = slowPush(input, found.width_s, step.to_s - step.from_s);
+  return aboveLevel(input, baseline, drift, found, step.to_s - step.from_s);
+}
+
+/** An extreme found over `span_s` against the baseline under it. */
+function aboveLevel(
+  input: PassiveInput,
+  baseline: Reading,
+  drift: Drift,
+  found: Extreme,
+  span_s: number,
+  ...notes: (string | undefined)[]
+): Reading {
   const level = levelUnder(baseline, drift, found.at_s);
   return measured(found.mv - level.mv, {
     at: { from_s: found.at_s - found.width_s / 2, to_s: found.at_s + found.width_s / 2 },
     ...combinedError([
       ...level.errors,
       found,
-      { se: push },
+      { se: slowPush(input, found.width_s, span_s) },
       { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) },
     ]),
-    ...noteOf(level.note),
+    ...noteOf(...notes, level.note),
   });
 }
 
@@ -445,14 +454,10 @@ const reboundSpan_s = 0.3;
 
 /** Rebound after a hyperpolarizing step: how far above the baseline the potential rises, and spikes fired. */
 function reboundAfter(input: PassiveInput, baseline: Reading, step: Step, drift: Drift): Readings {
-  const { voltage, stimulus, spikes, slow } = input;
+  const { voltage, spikes, slow } = input;
   const both = (reading: Reading): Readings => ({ rebound_mv: reading, rebound_spikes: reading });
   if (step.pa >= 0) return both(absent('no-hyperpolarizing-steps'));
-  const next_s = Math.min(
-    timeAt(voltage, voltage.samples.length),
-    ...stimulus.edges_s.filter((s) => s > step.to_s + 1e-9),
-  );
-  const to_s = Math.min(step.to_s + reboundSpan_s, next_s);
+  const to_s = Math.min(step.to_s + reboundSpan_s, undisturbedUntil_s(input, step));
   if (to_s - step.to_s < 0.03) return both(absent('cut-off-by-sweep-end'));
   const window = { from: indexAt(voltage, step.to_s + 0.001), to: indexAt(voltage, to_s) };
   const fired = spikes.filter((spike) => isIn(spike, voltage, window));
@@ -466,19 +471,10 @@ function reboundAfter(input: PassiveInput, baseline: Reading, step: Step, drift:
   const quiet = { from: window.from, to: first ? indexAt(voltage, first.from_s) : window.to };
   const found = extremeOf(voltage, readable(voltage.samples, quiet), widthFor(step), 1);
   if (!found) return { rebound_mv: absent('unreadable'), rebound_spikes: counted };
-  const level = levelUnder(baseline, drift, found.at_s);
-  const push = slowPush(input, found.width_s, (quiet.to - quiet.from) / voltage.rate_hz);
+  const span_s = (quiet.to - quiet.from) / voltage.rate_hz;
+  const upTo = fired.length > 0 ? 'up to the first rebound spike' : undefined;
   return {
-    rebound_mv: measured(found.mv - level.mv, {
-      at: { from_s: found.at_s - found.width_s / 2, to_s: found.at_s + found.width_s / 2 },
-      ...combinedError([
-        ...level.errors,
-        found,
-        { se: push },
-        { se: quantizationError(input.quantum_mv ?? 0, baseline.sd ?? 0) },
-      ]),
-      ...noteOf(cut.note, fired.length > 0 ? 'up to the first rebound spike' : undefined, level.note),
-    }),
+    rebound_mv: aboveLevel(input, baseline, drift, found, span_s, cut.note, upTo),
     rebound_spikes: counted,
   };
 }

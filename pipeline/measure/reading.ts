@@ -27,6 +27,12 @@ export function absent(why: AbsenceCode, extra: { missing?: string[]; note?: str
   return reading;
 }
 
+/** Standard uncertainty of a reading with its degrees of freedom, for `combinedError`; 0 where it has none. */
+export const errorOf = ({ se, freedom }: Pick<Reading, 'se' | 'freedom'>): { se: number; freedom?: number } => ({
+  se: se ?? 0,
+  ...(freedom === undefined ? {} : { freedom }),
+});
+
 /**
  * Independent standard uncertainties added in squares, with the effective degrees of freedom of Welch and Satterthwaite
  * (JCGM 100:2008, G.4.1). A part without `freedom` is taken as known well.

@@ -1,7 +1,7 @@
 /** The noise of a sweep as its spikes meet it: read where neither spike nor stimulus is, with its covariance. */
 import type { FoundSpike } from './spike-detection.ts';
 import { type SpikeTrace, unreadable } from './spike-trace.ts';
-import type { Stretch } from './stretches.ts';
+import { type Stretch, without } from './stretches.ts';
 
 export interface FastNoise {
   /** Covariance, mV², at lags of 0, 1, 2 … samples up to about 0.5 ms. */
@@ -22,26 +22,17 @@ const mostTimesFast = 3;
 
 /** Stretches without spike, stimulus edge or gap, at least one piece long. */
 export function quietBetween(trace: SpikeTrace, found: readonly FoundSpike[]): Stretch[] {
-  const { rateHz, mv } = trace;
+  const { rateHz } = trace;
   const holes: Stretch[] = [
     ...found.map((spike) => ({
       from: Math.floor((spike.threshold ?? spike.base) - beforeRise_s * rateHz),
       to: Math.ceil(spike.peak + afterPeak_s * rateHz),
     })),
     ...trace.edges.map(({ index }) => ({ from: index - 2, to: Math.ceil(index + afterEdge_s * rateHz) })),
-  ].sort((a, b) => a.from - b.from);
-  const kept: Stretch[] = [];
-  for (const { from, to } of trace.segments) {
-    let at = from;
-    for (const hole of [...holes, { from: to, to }]) {
-      if (hole.to <= at) continue;
-      const end = Math.min(hole.from, to);
-      if (end - at >= piece_s * rateHz) kept.push({ from: at, to: end });
-      at = Math.max(at, hole.to);
-      if (at >= to) break;
-    }
-  }
-  return kept.filter(({ from, to }) => to <= mv.length && from >= 0);
+  ];
+  return trace.segments.flatMap((segment) =>
+    without(segment, holes).filter(({ from, to }) => to - from >= piece_s * rateHz),
+  );
 }
 
 /** Residuals of the least-squares parabola through equally spaced samples. */

@@ -90,7 +90,8 @@ export function prepareTrace(
   return { mv, masked, underEdge, rateHz, startS, segments, missingBefore, guard, edges, noiseMv };
 }
 
-function join(mv: Float64Array, before: number, after: number): void {
+/** Puts the samples between two on the straight line through these. */
+export function join(mv: Float64Array, before: number, after: number): void {
   for (let i = before + 1; i < after; i++)
     mv[i] = mv[before]! + ((mv[after]! - mv[before]!) * (i - before)) / (after - before);
 }
