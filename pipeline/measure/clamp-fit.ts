@@ -5,7 +5,8 @@
  */
 import { besselLowPass, type FilteredStep, type LowPass, noLowPass } from '../signal/bessel.ts';
 import { type Evaluation, type LeastSquares, leastSquares, type Prior } from '../signal/least-squares.ts';
-import { mean } from '../signal/statistics.ts';
+import { clippedRuns } from '../signal/runs.ts';
+import { countFinite, mean } from '../signal/statistics.ts';
 import { indexAt } from './stretches.ts';
 import type { Signal } from './types.ts';
 
@@ -254,26 +255,11 @@ function prepared(current: Signal, edges: readonly CommandEdge[]): { samples: Fl
   return { samples, spans: spans.filter((span) => span.to_s > span.from_s) };
 }
 
-/** Runs of three or more samples at the extreme value are the recorder’s limit, not the current. */
+/** Without the runs at the recorder's limits; as it is where these would be a tenth of it. */
 function withoutClipped(samples: Float64Array): Float64Array {
-  let low = Number.POSITIVE_INFINITY;
-  let high = Number.NEGATIVE_INFINITY;
-  for (const value of samples) {
-    if (value < low) low = value;
-    if (value > high) high = value;
-  }
   const out = samples.slice();
-  if (!(high > low)) return out;
-  for (const limit of [low, high])
-    for (let i = 0; i < samples.length; ) {
-      let to = i;
-      while (to < samples.length && samples[to] === limit) to++;
-      // A resting current of a coarse digitizer is an extreme too: only what stands far from the rest is cut off.
-      if (to - i >= 3) out.fill(Number.NaN, i, to);
-      i = Math.max(to, i + 1);
-    }
-  const left = out.reduce((sum, value) => sum + (Number.isFinite(value) ? 1 : 0), 0);
-  return left > 0.9 * samples.length ? out : samples;
+  for (const { from, to } of clippedRuns(samples)) out.fill(Number.NaN, from, to);
+  return countFinite(out) > 0.9 * samples.length ? out : samples;
 }
 
 /** Samples one by one while the edge passes, then over lengths that grow with the time since it, at most 2 ms. */

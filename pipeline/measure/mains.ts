@@ -1,5 +1,14 @@
-import { type Piece, type PiecesFit, sineInPieces, sineInPiecesNear, withoutSine } from '../signal/sine-pieces.ts';
+import {
+  keptByMeans,
+  noiseBeside,
+  type Piece,
+  type PiecesFit,
+  sineInPieces,
+  sineInPiecesNear,
+  withoutSine,
+} from '../signal/sine-pieces.ts';
 import { meanWithin } from '../signal/statistics.ts';
+import { standsOut } from './quality.ts';
 import { readable, type Stretch } from './stretches.ts';
 import type { Signal } from './types.ts';
 
@@ -11,9 +20,6 @@ const fitRate_hz = 3000;
 
 /** Longest part of the sweep looked at, s: by then the hum's frequency is known to some thousandths of a hertz. */
 const longest_s = 4;
-
-/** A harmonic counts where its amplitude is so many times what noise gives one quadrature at frequencies round about. */
-const standsOut = 5;
 
 /**
  * The potential without the mains hum: the sine near `hum_hz`, fitted to quiet pieces of three periods beside a straight
@@ -94,19 +100,12 @@ function standingOut(pieces: readonly Piece[], rate: number, hz: number): Pieces
   if (!fit) return null;
   const last = pieces.at(-1)!;
   const duration = (last.from + last.samples.length - pieces[0]!.from) / rate;
-  // Pieces with gaps let a sine leak far: it is taken out first.
-  const rest = withoutSine(pieces, rate, fit);
-  const beside = [-5, -4, -3, 3, 4, 5]
-    .map((steps) => hz + steps / duration)
-    .filter((frequency) => frequency > 0 && frequency < 0.49 * rate)
-    .flatMap((frequency) => sineInPieces(rest, rate, frequency)?.amplitude ?? []);
-  const noise = Math.sqrt(beside.reduce((sum, amplitude) => sum + amplitude ** 2, 0) / (2 * beside.length));
-  return beside.length > 0 && fit.amplitude > standsOut * noise ? fit : null;
+  const beside = noiseBeside(withoutSine(pieces, rate, fit), rate, hz, 1 / duration, { above: 0, below: 0.49 * rate });
+  return beside && fit.amplitude > standsOut * beside.se ? fit : null;
 }
 
 /** A sine fitted to means over `block` samples as it stands in the samples: larger, and half a block earlier. */
 function ofSamples({ frequency_hz, amplitude, phase_rad }: PiecesFit, rate_hz: number, block: number) {
   const omega = (2 * Math.PI * frequency_hz) / rate_hz;
-  const kept = block === 1 ? 1 : Math.sin((block * omega) / 2) / (block * Math.sin(omega / 2));
-  return { omega, amplitude: amplitude / kept, phase: phase_rad - (omega * (block - 1)) / 2 };
+  return { omega, amplitude: amplitude / keptByMeans(omega, block), phase: phase_rad - (omega * (block - 1)) / 2 };
 }

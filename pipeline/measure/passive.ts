@@ -169,7 +169,7 @@ function blockMeans(voltage: Signal, stretches: readonly Stretch[], seconds: num
 }
 
 /** Where the baseline is heading under the step: nothing, or a straight line. */
-interface Drift {
+export interface Drift {
   /** mV/s; 0 where none is resolved. */
   slope: number;
   se: number;
@@ -189,8 +189,11 @@ const undisturbedUntil_s = ({ voltage, stimulus }: PassiveInput, step: Step): nu
  * before, continued, a tenth of it taken as uncertain. Slow noise has a slope over any short stretch and none beyond it:
  * the slope before is continued only where it exceeds twice its 95 % half-width and the level after the step, if there
  * is one, lies nearer to the line than to the level before.
+ * @returns null without a step
  */
-function driftUnder(input: PassiveInput, step: Step): Drift {
+export function driftUnder(input: PassiveInput): Drift | null {
+  const step = stepOf(input.stimulus);
+  if (!step) return null;
   const { voltage, spikes, slow } = input;
   const before = lineIn(voltage, baselineStretches(input).stretches);
   const none = { slope: 0, se: 0, from_s: before?.mean_x ?? step.from_s };
@@ -225,7 +228,11 @@ function lineIn(voltage: Signal, stretches: readonly Stretch[]): SerialLine | nu
 const shortestStep_s = 0.0125;
 
 /** `steady_deflection_mv`, `largest_deflection_mv`, `rebound_mv` and `rebound_spikes` of a step. */
-export function measureDeflections(input: PassiveInput, baseline: Reading): Readings {
+export function measureDeflections(
+  input: PassiveInput,
+  baseline: Reading,
+  drift: Drift | null = driftUnder(input),
+): Readings {
   const { voltage, stimulus } = input;
   const every = (reading: Reading): Readings => ({
     steady_deflection_mv: reading,
@@ -234,13 +241,12 @@ export function measureDeflections(input: PassiveInput, baseline: Reading): Read
     rebound_spikes: reading,
   });
   const step = stepOf(stimulus);
-  if (!step) return every(withoutStep(stimulus));
+  if (!step || !drift) return every(withoutStep(stimulus));
   if (baseline.value === null) return every(absent(baseline.why ?? 'no-baseline'));
   if (step.to_s - step.from_s < shortestStep_s)
     return every(absent('sweep-too-short', { note: 'the step is too short' }));
   const ends_s = timeAt(voltage, voltage.samples.length);
   if (step.from_s >= ends_s) return every(absent('cut-off-by-sweep-end'));
-  const drift = driftUnder(input, step);
   return {
     steady_deflection_mv: steadyDeflection(input, baseline, step, drift),
     largest_deflection_mv: largestDeflection(input, baseline, step, drift),
@@ -579,10 +585,13 @@ const responseLead_s = 0.01;
  * The potential from 10 ms before the onset of a hyperpolarizing step without spikes to its end or 300 ms into it, in
  * equal bins that begin exactly at the onset. Times from the start of the sweep. Null for every other sweep.
  */
-export function stepResponse(input: PassiveInput): SweepMeasure['step_response'] {
+export function stepResponse(
+  input: PassiveInput,
+  drift: Drift | null = driftUnder(input),
+): SweepMeasure['step_response'] {
   const { voltage, stimulus, spikes } = input;
   const step = stepOf(stimulus);
-  if (!step || step.pa >= 0 || step.to_s - step.from_s < shortestStep_s) return null;
+  if (!step || !drift || step.pa >= 0 || step.to_s - step.from_s < shortestStep_s) return null;
   const rate = voltage.rate_hz;
   const onset = indexAt(voltage, step.from_s);
   const end = indexAt(voltage, Math.min(step.to_s, step.from_s + responseSpan_s));
@@ -591,12 +600,11 @@ export function stepResponse(input: PassiveInput): SweepMeasure['step_response']
   const lead = Math.floor(Math.min(onset, responseLead_s * rate) / block);
   const bins = lead + Math.floor((end - onset) / block);
   const first = onset - lead * block;
-  const { slope } = driftUnder(input, step);
   const mv: number[] = [];
   for (let k = 0; k < bins; k++) {
     const value = meanWithin(voltage.samples, first + k * block, first + (k + 1) * block);
     if (value === null) return null;
-    const drifted = slope * ((k + 0.5) * (block / rate) - lead * (block / rate));
+    const drifted = drift.slope * ((k + 0.5) * (block / rate) - lead * (block / rate));
     mv.push(Math.round((value - drifted) * 1e4) / 1e4);
   }
   if (bins - lead < 10) return null;

@@ -1,6 +1,14 @@
 import { bandPass } from '../signal/butterworth.ts';
 import { clippedRuns, quantum } from '../signal/runs.ts';
-import { type Piece, type PiecesFit, sineInPieces, sineInPiecesNear, withoutSine } from '../signal/sine-pieces.ts';
+import {
+  keptByMeans,
+  noiseBeside,
+  type Piece,
+  type PiecesFit,
+  sineInPieces,
+  sineInPiecesNear,
+  withoutSine,
+} from '../signal/sine-pieces.ts';
 import { countFinite, meanWithin, median } from '../signal/statistics.ts';
 import { absent, measured } from './reading.ts';
 import { type Stretch, timeAt } from './stretches.ts';
@@ -155,7 +163,7 @@ export function noise(voltage: Signal, quiet: readonly Stretch[], filterKhz: num
 /** Longest stretch, s, over which hum is fitted: enough for a few hundredths of a hertz. */
 const humSpan_s = 2;
 /** A line stands out where its amplitude is so many times what noise alone gives one quadrature of it. */
-const standsOut = 5;
+export const standsOut = 5;
 
 /**
  * Amplitude and frequency of the mains hum: the least-squares sine near the mains frequency (50 and 60 Hz where it is
@@ -180,7 +188,7 @@ export function hum(voltage: Signal, quiet: readonly Stretch[], mainsHz: number 
   if (candidates.length === 0) return both(absent('sweep-too-short'));
   const nearest = candidates.reduce((best, line) => (line.fit.amplitude > best.fit.amplitude ? line : best));
   const amplitude = (line: Line, note?: string): Reading => {
-    const kept = keptByMeans(line.fit.frequency_hz, trace);
+    const kept = keptByMeans((2 * Math.PI * line.fit.frequency_hz) / (rate * trace.block), trace.block);
     return measured(Math.sqrt(Math.max(0, line.fit.amplitude ** 2 - 2 * line.se ** 2)) / kept, {
       n: line.fit.n * trace.block,
       at: { from_s: trace.from_s, to_s: trace.from_s + trace.seconds },
@@ -243,15 +251,14 @@ function lineNear(trace: HumTrace, hz: number, range: number): Line | null {
   const fit = sineInPiecesNear(pieces, rate, hz, range);
   if (!fit) return null;
   const rest = withoutSine(pieces, rate, fit);
-  const beside = [-5, -4, -3, 3, 4, 5]
-    .map((steps) => fit.frequency_hz + steps / seconds)
-    .filter((frequency) => frequency > 2 / seconds && frequency > 8 && frequency < rate * 0.45)
-    .flatMap((frequency) => sineInPieces(rest, rate, frequency)?.amplitude ?? []);
-  if (beside.length === 0) return null;
-  const se = Math.sqrt(beside.reduce((sum, amplitude) => sum + amplitude ** 2, 0) / (2 * beside.length));
+  const beside = noiseBeside(rest, rate, fit.frequency_hz, 1 / seconds, {
+    above: Math.max(2 / seconds, 8),
+    below: rate * 0.45,
+  });
+  if (!beside) return null;
   // White noise alone would leave this much.
   const white = Math.sqrt((2 * fit.rss) / Math.max(1, fit.n - 4) / fit.n);
-  return { fit, se: Math.max(se, 0.5 * white), freedom: 2 * beside.length, nominal_hz: hz };
+  return { fit, se: Math.max(beside.se, 0.5 * white), freedom: beside.freedom, nominal_hz: hz };
 }
 
 function strayLine(trace: HumTrace): Line | null {
@@ -283,12 +290,6 @@ interface HumTrace {
   from_s: number;
   /** From the first to the last sample. */
   seconds: number;
-}
-
-/** What a mean over a block leaves of a sine. */
-function keptByMeans(hz: number, { rate_hz, block }: HumTrace): number {
-  const angle = (Math.PI * hz) / (rate_hz * block);
-  return block === 1 ? 1 : Math.sin(block * angle) / (block * Math.sin(angle));
 }
 
 /** The quiet stretches at about 3 kHz, which is plenty for hum; null where they are shorter than 100 ms in all. */

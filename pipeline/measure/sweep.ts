@@ -5,6 +5,7 @@ import { filterCorner } from './filter.ts';
 import { isBlocked, measureFiring, measureSpontaneous } from './firing.ts';
 import { withoutHum } from './mains.ts';
 import {
+  driftUnder,
   measureBaseline,
   measureBridgeStep,
   measureDeflections,
@@ -118,6 +119,7 @@ function currentClampSweep(
   const spikes = found.passive.spikes.map((spike, index) =>
     withHalfWidths(withHeightFromRest(spike, level.value), found.errors[index]!, riding, level.u95 ?? null),
   );
+  const drift = driftUnder(passive);
   const bridgeStep = measureBridgeStep(passive);
   const blocked = isBlocked(spikes, stimulus, voltage, context.slow);
   const trains = measureTrains(spikes, stimulus, voltage, blocked, context.slow);
@@ -137,7 +139,7 @@ function currentClampSweep(
           context.prominence_mv,
           trains['block_onset_ms']?.at?.from_s ?? null,
         ),
-    ...measureDeflections(passive, baseline['baseline_mv']!),
+    ...measureDeflections(passive, level, drift),
     bridge_step_mv: bridgeStep,
     access_resistance_mohm: accessFromBridge(input.bridge_mohm, bridgeStep, stimulus),
     noise_rms_mv: noise(voltage, quiet, context.filter_khz),
@@ -160,7 +162,7 @@ function currentClampSweep(
     voltage_envelope: envelopeOf(voltage, outlineColumns),
     current_envelope,
     first_spike: spikes[0] ? excerptOf(voltage, spikes[0]) : null,
-    step_response: stepResponse(passive),
+    step_response: stepResponse(passive, drift),
     spontaneous: measureSpontaneous(spikes, stimulus, voltage, context),
     ...carried,
   };

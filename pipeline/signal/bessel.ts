@@ -12,7 +12,7 @@ const poles = [
   { re: -2.896210602820372, im: 0.8672341289345038 },
   { re: -2.103789397179628, im: 2.6574180418567526 },
 ] as const;
-const corner = 2.11391767490422;
+export const besselCorner = 2.11391767490422;
 
 interface Complex {
   re: number;
@@ -54,7 +54,7 @@ export interface LowPass {
 export function besselLowPass(cornerKhz: number): LowPass {
   if (!(cornerKhz > 0 && Number.isFinite(cornerKhz)))
     throw new RangeError(`cornerKhz must be a finite frequency above 0 kHz, got ${cornerKhz}`);
-  const rate = (2 * Math.PI * cornerKhz) / corner;
+  const rate = (2 * Math.PI * cornerKhz) / besselCorner;
   const p = poles.map(({ re, im }) => ({ re: re * rate, im: im * rate }));
   const r = residues.map(({ re, im }) => ({ re: re * rate, im: im * rate }));
   // Flat, eight numbers a pole: fits ask for millions of values.

@@ -1,22 +1,20 @@
 /** The four-pole Bessel low-pass of most amplifiers, as far as it changes shapes and not times. */
+import { besselCorner } from './bessel.ts';
 import { requireRate } from './derivative.ts';
 
-/** −3 dB point of 105/(s⁴ + 10s³ + 45s² + 105s + 105), 1/s at a group delay of 1 s (Thomson 1949, Proc IEE 96:487–490; from memory). */
-const corner = 2.113917675;
-
-/** Gain at a frequency. @param cornerHz −3 dB point, Hz, above 0 */
+/** Gain of 105/(s⁴ + 10s³ + 45s² + 105s + 105) at a frequency. @param cornerHz −3 dB point, Hz, above 0 */
 export function besselGain(hz: number, cornerHz: number): number {
-  const w = (corner * hz) / cornerHz;
+  const w = (besselCorner * hz) / cornerHz;
   const re = w ** 4 - 45 * w ** 2 + 105;
   const im = 105 * w - 10 * w ** 3;
   return 105 / Math.hypot(re, im);
 }
 
 /** Standard deviation in time of its impulse response, s: the delay over √7, as 1 − |H|² begins with w²/7. */
-export const besselSpread_s = (cornerHz: number): number => corner / (2 * Math.PI * cornerHz * Math.sqrt(7));
+export const besselSpread_s = (cornerHz: number): number => besselCorner / (2 * Math.PI * cornerHz * Math.sqrt(7));
 
 /** Delay at low frequencies, s. */
-export const besselDelay_s = (cornerHz: number): number => corner / (2 * Math.PI * cornerHz);
+export const besselDelay_s = (cornerHz: number): number => besselCorner / (2 * Math.PI * cornerHz);
 
 /**
  * The filter's gain without its delay, as a symmetric kernel on the sampling grid: weights at lags of 0, 1, 2 …, the

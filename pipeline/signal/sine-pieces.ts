@@ -161,3 +161,30 @@ export function withoutSine(pieces: readonly Piece[], rateHz: number, fit: Piece
     samples: samples.map((value, i) => value - fit.amplitude * Math.sin(omega * (from + i) + fit.phase_rad)),
   }));
 }
+
+/**
+ * What noise does to one quadrature of a sine's amplitude, from the amplitudes at ±3, ±4 and ±5 times `spacingHz` beside
+ * it: slow noise is not white. The sine itself must be taken out first, since pieces with gaps let it leak far.
+ * @param rest the pieces without the sine (`withoutSine`)
+ * @param above,below frequencies outside these, Hz, are left out
+ * @returns standard uncertainty and degrees of freedom; null where no frequency is left
+ */
+export function noiseBeside(
+  rest: readonly Piece[],
+  rateHz: number,
+  frequencyHz: number,
+  spacingHz: number,
+  { above, below }: { above: number; below: number },
+): { se: number; freedom: number } | null {
+  const beside = [-5, -4, -3, 3, 4, 5]
+    .map((steps) => frequencyHz + steps * spacingHz)
+    .filter((hz) => hz > above && hz < below)
+    .flatMap((hz) => sineInPieces(rest, rateHz, hz)?.amplitude ?? []);
+  if (beside.length === 0) return null;
+  const squares = beside.reduce((sum, amplitude) => sum + amplitude ** 2, 0);
+  return { se: Math.sqrt(squares / (2 * beside.length)), freedom: 2 * beside.length };
+}
+
+/** Share of a sine's amplitude that means over `block` samples leave. @param omega rad a sample */
+export const keptByMeans = (omega: number, block: number): number =>
+  block === 1 ? 1 : Math.sin((block * omega) / 2) / (block * Math.sin(omega / 2));
