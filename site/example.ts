@@ -2,20 +2,17 @@
  * The worked example of the methods page: from numbers that can be downloaded to those of the tables, in plain
  * arithmetic that a person can follow. Nothing here is taken from measuring: each step is done anew from the samples.
  */
+import { physicalConstants } from '../pipeline/judge/checks.ts';
 import { classRanges, type ShippedClass } from '../pipeline/judge/class-ranges.ts';
 import type { SolutionIons } from '../pipeline/judge/types.ts';
 import type { CellRow, SweepRow } from '../pipeline/ledger/types.ts';
 import { quantity } from '../pipeline/measure/quantities.ts';
 import type { Excerpt, Spike } from '../pipeline/measure/types.ts';
-import {
-  elementaryChargeC,
-  faradayCPerMol,
-  gasConstantJPerMolK,
-  zeroCelsiusK,
-} from '../pipeline/membrane/constants.ts';
 import type { Almanac, CellSummary } from './almanac.ts';
 import { shownSpike } from './cell/view.ts';
 import { knownHalfWidth, number, printed, withHalfWidth } from './format.ts';
+
+const { elementaryChargeC, faradayCPerMol, gasConstantJPerMolK, zeroCelsiusK } = physicalConstants;
 
 /** One number: how it is had, with the figures in it, and what the tables say. */
 export interface Step {

@@ -1,5 +1,5 @@
 /** How numbers, dates and counts are printed, everywhere alike. */
-import { decimalsWith, quantity } from '../pipeline/measure/quantities.ts';
+import { cutAt, decimalsWith, leastShown, quantity } from '../pipeline/measure/quantities.ts';
 
 export { counted } from './sizes.ts';
 
@@ -39,8 +39,7 @@ export const knownHalfWidth = (id: string, u95: number | null | undefined): numb
   quantity(id).uncertainty === undefined ? undefined : (u95 ?? undefined);
 
 /** Rounded to a place that may lie left of the point. */
-const toPlace = (value: number, decimals: number): string =>
-  decimals >= 0 ? number(value, decimals) : number(Math.round(value * 10 ** decimals) / 10 ** decimals);
+const toPlace = (value: number, decimals: number): string => number(cutAt(value, decimals), Math.max(0, decimals));
 
 /**
  * Value and half-width cut at the same place: the half-width has two significant digits at most, never more decimals
@@ -53,8 +52,7 @@ export function cutTogether(value: number, u95: number | undefined, most: number
   if (u95 === undefined || !(u95 >= 0)) return { value: toPlace(value, most), u95: '', decimals: most };
   if (u95 === 0) return { value: toPlace(value, most), u95: toPlace(0, most), decimals: most };
   const decimals = decimalsWith(u95, most);
-  const least = 10 ** -decimals;
-  return { value: toPlace(value, decimals), u95: toPlace(u95 < least / 2 ? least : u95, decimals), decimals };
+  return { value: toPlace(value, decimals), u95: toPlace(leastShown(u95, decimals), decimals), decimals };
 }
 
 /** A quantity's number with its half-width, where the registry says how that is had. */

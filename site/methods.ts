@@ -1,18 +1,13 @@
 /** What the page of methods says about this archive: limits, classes and solutions in force. */
 
-import { judgingConstants } from '../pipeline/judge/checks.ts';
+import { judgingConstants, physicalConstants } from '../pipeline/judge/checks.ts';
 import { type ClassInfo, classRanges, type ShippedClass } from '../pipeline/judge/class-ranges.ts';
 import type { CheckEntry, Ground } from '../pipeline/judge/types.ts';
 import { type Level, type Quantity, quantities } from '../pipeline/measure/quantities.ts';
-import {
-  avogadroPerMol,
-  boltzmannJPerK,
-  elementaryChargeC,
-  faradayCPerMol,
-  gasConstantJPerMolK,
-  zeroCelsiusK,
-} from '../pipeline/membrane/constants.ts';
 import { type Almanac, type CellSummary, groupBy, type Sizes, type Solutions, sizesOf } from './almanac.ts';
+
+const { avogadroPerMol, boltzmannJPerK, elementaryChargeC, faradayCPerMol, gasConstantJPerMolK, zeroCelsiusK } =
+  physicalConstants;
 
 export const levelTitles: Record<Level, string> = { spike: 'Of a spike', sweep: 'Of a sweep', cell: 'Of a cell' };
 

@@ -4,13 +4,10 @@ import { classRanges } from '../judge/class-ranges.ts';
 import type { Circumstances, IonPotential, SolutionIons } from '../judge/types.ts';
 import { spikeCriteria } from '../measure/spike-criteria.ts';
 import type { CellContext, MeasureContext } from '../measure/types.ts';
-import { junctionPotential } from '../membrane/junction.ts';
+import { junctionPotential, usualCelsiusUncertainty } from '../membrane/junction.ts';
 import { thermalVoltageMv } from '../membrane/nernst.ts';
 import { dissolve, equilibria } from '../membrane/solutions.ts';
 import { clockSeconds, type FactValues, numberFact, textFact } from './facts.ts';
-
-/** Half-width (95 %) taken for a stated bath temperature, °C; common practice, no source. */
-const temperatureUncertaintyC = 1;
 
 /**
  * Temperature at which a solution is brought to its pH, °C: a recipe states the pH as read on the bench, and the titrant
@@ -92,10 +89,10 @@ function dissolvedIons(pipette: Recipe, bath: Recipe, celsius: number): Ions {
     pipette: inside,
     bath: outside,
     celsius,
-    celsiusUncertainty: temperatureUncertaintyC,
+    celsiusUncertainty: usualCelsiusUncertainty,
   });
   const sodium = inside.ions.find((ion) => ion.ion === 'Na')?.millimolar ?? null;
-  const junction = junctionPotential(inside, outside, celsius, temperatureUncertaintyC);
+  const junction = junctionPotential(inside, outside, celsius);
   return {
     e_na: potentials.e_na,
     e_k: potentials.e_k,

@@ -3,8 +3,10 @@
  * Ground `lab` has no entries yet: control limits need a history of at least 20 cells and come with a later stage.
  */
 import { isQuantity, quantities, quantity } from '../measure/quantities.ts';
+import * as constants from '../membrane/constants.ts';
+import { computedJunctionUncertaintyMv, usualCelsiusUncertainty } from '../membrane/junction.ts';
 import { classRanges } from './class-ranges.ts';
-import { largestJunctionMv, offsetUncertaintyMv, physicsFloorMv } from './compare.ts';
+import { largestJunctionMv, offsetUncertaintyMv, physicsFloorMv, statedJunctionUncertaintyMv } from './compare.ts';
 import type { CheckEntry, Contradiction } from './types.ts';
 
 const practice = 'common practice, no source';
@@ -641,6 +643,9 @@ export function check(id: string): CheckEntry {
   throw new RangeError(`no check "${id}" in the registry`);
 }
 
+/** The physical constants of every formula, for the pages that print and use them. */
+export const physicalConstants = constants;
+
 /** A number that judging uses and no recording gives. */
 export interface JudgingConstant {
   label: string;
@@ -657,10 +662,15 @@ export const judgingConstants: readonly JudgingConstant[] = [
     unit: 'mV',
     source: practice,
   },
-  { label: 'Stated junction potential, 95 % half-width', value: 1, unit: 'mV', source: practice },
+  {
+    label: 'Stated junction potential, 95 % half-width',
+    value: statedJunctionUncertaintyMv,
+    unit: 'mV',
+    source: practice,
+  },
   {
     label: 'Computed junction potential, least 95 % half-width',
-    value: 3.5,
+    value: computedJunctionUncertaintyMv,
     unit: 'mV',
     source: `concentrations for activities, reference electrode not ideal; ${practice}`,
   },
@@ -676,5 +686,5 @@ export const judgingConstants: readonly JudgingConstant[] = [
     unit: 'mV',
     source: 'K-gluconate in saline, +12 to +16 mV; Barry & Lynch 1991, J Membr Biol 121:101–117 (from memory)',
   },
-  { label: 'Stated bath temperature, 95 % half-width', value: 1, unit: '°C', source: practice },
+  { label: 'Stated bath temperature, 95 % half-width', value: usualCelsiusUncertainty, unit: '°C', source: practice },
 ];

@@ -1,5 +1,6 @@
 /** Holding a number against limits. Pure arithmetic; every check goes through here. */
 import type { Reading } from '../measure/types.ts';
+import { computedJunctionUncertaintyMv } from '../membrane/junction.ts';
 import type { Circumstances, Outcome } from './types.ts';
 
 export interface Comparison {
@@ -58,6 +59,8 @@ export const combined = (...halfWidths: number[]): number => Math.hypot(...halfW
 
 /** Electrode and amplifier offset left after zeroing in the bath, mV (DESIGN: ±2 mV). */
 export const offsetUncertaintyMv = 2;
+/** 95 % half-width of a junction potential that is stated, mV (DESIGN: ±1 mV). */
+export const statedJunctionUncertaintyMv = 1;
 /** Largest junction potential of the pipette solutions in common use, mV: K-gluconate in saline, +12 to +16 mV. */
 export const largestJunctionMv = 16;
 /** No physical limit is held tighter than this, mV. */
@@ -77,7 +80,9 @@ export interface JunctionReadings {
 export function junctionReadings(
   circumstances: Pick<Circumstances, 'reading' | 'ljp_mv' | 'ljp_from' | 'ljp_uncertainty_mv'>,
 ): JunctionReadings {
-  const uncertainty_mv = circumstances.ljp_uncertainty_mv ?? (circumstances.ljp_from === 'stated' ? 1 : 3.5);
+  const uncertainty_mv =
+    circumstances.ljp_uncertainty_mv ??
+    (circumstances.ljp_from === 'stated' ? statedJunctionUncertaintyMv : computedJunctionUncertaintyMv);
   if (circumstances.reading === 'corrected') return { shifts: [0], uncertainty_mv };
   return { shifts: [0, -(circumstances.ljp_mv ?? largestJunctionMv)], uncertainty_mv };
 }

@@ -1,5 +1,5 @@
 /** Plain sentences with the numbers in them. Every finding's wording is put together here. */
-import { decimalsWith, quantity } from '../measure/quantities.ts';
+import { cutAt, decimalsWith, leastShown, quantity } from '../measure/quantities.ts';
 import type { Comparison } from './compare.ts';
 
 /** A minus sign, never a hyphen, and no sign before a zero. */
@@ -30,8 +30,7 @@ export function amount(quantityId: string, value: number): string {
 }
 
 /** Rounded at a place that may lie left of the point. */
-const cut = (value: number, decimals: number): string =>
-  decimals >= 0 ? value.toFixed(decimals) : (Math.round(value * 10 ** decimals) / 10 ** decimals).toFixed(0);
+const cut = (value: number, decimals: number): string => cutAt(value, decimals).toFixed(Math.max(0, decimals));
 
 /**
  * A number with its own 95 % half-width: '+61.5 ± 0.4 mV'; as `amount` where that is not known or nil. Cut at the same
@@ -43,8 +42,7 @@ export function amountWithin(quantityId: string, value: number, u95: number | nu
   const percent = quantityId.endsWith('_fraction');
   const scale = percent ? 100 : 1;
   const places = decimalsWith(scale * u95, decimals - (percent ? 2 : 0));
-  const least = 10 ** -places;
-  const half = cut(scale * u95 < least / 2 ? least : scale * u95, places);
+  const half = cut(leastShown(scale * u95, places), places);
   const size = cut(scale * Math.abs(value), places);
   const sign = Number(size) === 0 ? '' : value < 0 ? '−' : absolute_potential ? '+' : '';
   return withUnit(`${sign}${size} ± ${half}`, percent ? '%' : unit);

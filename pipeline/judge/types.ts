@@ -1,5 +1,6 @@
 /** What judging takes in and gives out. Plain data; no file, no clock. */
 import type { CellMeasure, NumberedSweep, Reading } from '../measure/types.ts';
+import type { JunctionTerm, UncertaintyPart } from '../membrane/junction.ts';
 
 export type Ground = 'physics' | 'conditions' | 'class' | 'lab' | 'policy';
 export type Outcome = 'within' | 'near limit' | 'outside' | 'not measured';
@@ -61,7 +62,7 @@ export interface IonPotential {
   inside_mm: number;
   outside_mm: number;
   /** What the half-width is made of, mV each, largest first; in quadrature. */
-  parts?: { cause: string; mv: number }[];
+  parts?: UncertaintyPart[];
   valence?: number;
 }
 
@@ -72,22 +73,11 @@ export interface SolutionIons {
   thermal_mv: number;
   pipette_ph: number;
   bath_ph: number;
-  /** Free concentrations on both sides, valence, mobility relative to potassium with its 95 % share and its source. */
-  ions: {
-    ion: string;
-    valence: number;
-    pipette_mm: number;
-    bath_mm: number;
-    mobility: number;
-    mobility_uncertainty: number;
-    mobility_source: string;
-    /** What that half-width moves the junction potential by, mV. */
-    mobility_mv: number;
-  }[];
+  ions: JunctionTerm[];
   /** Computed from these ions, whatever is stated. */
   ljp_mv: number;
   ljp_uncertainty_mv: number;
-  ljp_parts: { cause: string; mv: number }[];
+  ljp_parts: UncertaintyPart[];
   /** What had to be assumed. */
   notes: string[];
 }

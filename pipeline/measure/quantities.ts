@@ -1567,3 +1567,13 @@ export function decimalsWith(u95: number, most: number): number {
   // 9.96 cut at the tenth would be 10.0, three digits: cut once more where rounding carried.
   return Math.min(first, second(Number(`${Math.round(u95 * 10 ** first)}e${-first}`) || u95));
 }
+
+/** A number cut at a decimal place, which may lie left of the point. Print it with that many decimals, or none. */
+export const cutAt = (value: number, decimals: number): number =>
+  decimals >= 0 ? value : Math.round(value * 10 ** decimals) / 10 ** decimals;
+
+/** A half-width that would be printed as nothing at a decimal place is rounded up to one there. */
+export const leastShown = (u95: number, decimals: number): number => {
+  const least = 10 ** -decimals;
+  return u95 < least / 2 ? least : u95;
+};

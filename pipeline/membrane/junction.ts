@@ -116,8 +116,8 @@ export const hendersonErrorMv = 2.9;
  */
 export const computedJunctionUncertaintyMv = 3.5;
 
-/** Half-width (95 %) taken for a stated temperature, K; common practice, no source. */
-const usualCelsiusUncertainty = 1;
+/** Half-width (95 %) taken for a stated bath temperature, K; common practice, no source. */
+export const usualCelsiusUncertainty = 1;
 
 interface Sum extends JunctionIon {
   ion: string;

@@ -52,7 +52,6 @@ const allowed: Record<string, { folders: string[]; typesOf?: string[]; files?: s
       'pipeline/judge/checks.ts',
       'pipeline/judge/class-ranges.ts',
       'pipeline/archive/fact-keys.ts',
-      'pipeline/membrane/constants.ts',
     ],
   },
   'content-sample': { folders: [] },
