@@ -1,5 +1,5 @@
 import { faradayCPerMol, gasConstantJPerMolK, zeroCelsiusK } from './constants.ts';
-import { requireCelsius, requireConcentration, requireNonNegative, requireValence } from './guards.ts';
+import { requireCelsius, requireConcentration, requireValence } from './guards.ts';
 
 /**
  * Thermal voltage RT/F, mV.
@@ -30,41 +30,8 @@ export function nernstPotential(valence: number, outsideMm: number, insideMm: nu
   return (thermalVoltageMv(celsius) / valence) * Math.log(outsideMm / insideMm) + 0;
 }
 
-export interface UncertainNernst {
-  valence: number;
-  outsideMm: number;
-  insideMm: number;
-  celsius: number;
-  /** 95 % half-widths as a share of the concentration: 0.02 is 2 %. */
-  outsideRelative: number;
-  insideRelative: number;
-  /** 95 % half-width of the temperature, K. */
-  celsiusUncertainty: number;
-}
-
 /**
  * Half-width of ln c for a relative half-width of c, taken on the wider side and never beyond a factor of ten: the
  * logarithm of a concentration known to ±100 % has no lower end.
  */
 export const logHalfWidth = (relative: number): number => -Math.log(1 - Math.min(relative, 0.9));
-
-/**
- * Nernst potential with its 95 % half-width: concentrations and temperature as independent, added in quadrature.
- * @returns mv and uncertainty_mv, both mV
- * @throws RangeError as nernstPotential; also for a relative or temperature half-width below 0
- */
-export function nernstWithUncertainty(given: UncertainNernst): { mv: number; uncertainty_mv: number } {
-  requireNonNegative('outsideRelative', given.outsideRelative, '');
-  requireNonNegative('insideRelative', given.insideRelative, '');
-  requireNonNegative('celsiusUncertainty', given.celsiusUncertainty, ' K');
-  const mv = nernstPotential(given.valence, given.outsideMm, given.insideMm, given.celsius);
-  const perLog = thermalVoltageMv(given.celsius) / Math.abs(given.valence);
-  return {
-    mv,
-    uncertainty_mv: Math.hypot(
-      perLog * logHalfWidth(given.outsideRelative),
-      perLog * logHalfWidth(given.insideRelative),
-      (mv / (given.celsius + zeroCelsiusK)) * given.celsiusUncertainty,
-    ),
-  };
-}
