@@ -145,23 +145,7 @@ export function localCubic(position: number, half: number, first: number, last: 
   const to = Math.min(last, Math.floor(position + half));
   const n = to - from + 1;
   if (n < 5) return null;
-  // Columns of the inverse of the normal equations that belong to the cubic's value and slope at the place.
-  let [m0, m1, m2, m3, m4, m5, m6] = [0, 0, 0, 0, 0, 0, 0];
-  for (let j = 0; j < n; j++) {
-    const d = (from + j - position) / half;
-    const d2 = d * d;
-    const w = (1 - d2) * (1 - d2);
-    const wd = w * d;
-    const d4 = d2 * d2;
-    m0 += w;
-    m1 += wd;
-    m2 += w * d2;
-    m3 += wd * d2;
-    m4 += w * d4;
-    m5 += wd * d4;
-    m6 += w * d2 * d4;
-  }
-  if (!solveTwo(m0, m1, m2, m3, m4, m5, m6)) return null;
+  if (!cubicAt(position, half, from, to)) return null;
   const [v0, v1, v2, v3] = [solved[0]!, solved[1]!, solved[2]!, solved[3]!];
   const [s0, s1, s2, s3] = [solved[4]!, solved[5]!, solved[6]!, solved[7]!];
   const value = new Float64Array(n);
@@ -194,8 +178,24 @@ export function localCubicOf(
   if (to - from + 1 < 5) return Number.NaN;
   // A level near the trace's own keeps rounding small.
   const level = samples[Math.round(position)]!;
+  if (!cubicAt(position, half, from, to)) return Number.NaN;
+  const at = what === 'value' ? 0 : 4;
+  const [c0, c1, c2, c3] = [solved[at]!, solved[at + 1]!, solved[at + 2]!, solved[at + 3]!];
+  let sum = 0;
+  for (let i = from; i <= to; i++) {
+    const d = (i - position) / half;
+    const w = 1 - d * d;
+    sum += w * w * (c0 + d * (c1 + d * (c2 + d * c3))) * (samples[i]! - level);
+  }
+  return what === 'value' ? level + sum : sum / half;
+}
+
+/**
+ * Leaves in `solved` the cubic's value and slope at a place as polynomials in d = (i − position)/half that weigh the
+ * samples from `from` to `to`; false where they are too few.
+ */
+function cubicAt(position: number, half: number, from: number, to: number): boolean {
   let [m0, m1, m2, m3, m4, m5, m6] = [0, 0, 0, 0, 0, 0, 0];
-  let [y0, y1, y2, y3] = [0, 0, 0, 0];
   for (let i = from; i <= to; i++) {
     const d = (i - position) / half;
     const d2 = d * d;
@@ -209,16 +209,8 @@ export function localCubicOf(
     m4 += w * d4;
     m5 += wd * d4;
     m6 += w * d2 * d4;
-    const y = samples[i]! - level;
-    y0 += w * y;
-    y1 += wd * y;
-    y2 += w * d2 * y;
-    y3 += wd * d2 * y;
   }
-  if (!solveTwo(m0, m1, m2, m3, m4, m5, m6)) return Number.NaN;
-  return what === 'value'
-    ? level + solved[0]! * y0 + solved[1]! * y1 + solved[2]! * y2 + solved[3]! * y3
-    : (solved[4]! * y0 + solved[5]! * y1 + solved[6]! * y2 + solved[7]! * y3) / half;
+  return solveTwo(m0, m1, m2, m3, m4, m5, m6);
 }
 
 /** Where `solveTwo` works and leaves its answer: it is asked far too often for arrays of its own. */
